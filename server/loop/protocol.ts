@@ -1,0 +1,155 @@
+/**
+ * What the loop and its local clients (the web process, the command line) say to each other: one
+ * JSON object a line over a Unix socket (a named pipe on Windows).
+ *
+ * `hello`, `quiet` and `end` never change across versions, so that an old client can always stop a
+ * new loop.
+ */
+import type { Trust } from '../rules/instant.js';
+import type { StampedDecision } from '../session/decisions.js';
+import type { OperatorAct } from '../session/inputs.js';
+
+export const LOCAL_PROTOCOL = 1;
+
+/** Client to loop. Every request may carry a number that the answer repeats. */
+export type ClientMessage = { readonly request?: number } & (
+  | { readonly say: 'hello'; readonly token: string; readonly client: string }
+  | { readonly say: 'quiet' }
+  | { readonly say: 'end'; readonly reason: string }
+  /** Begin sending state (latest only, at most `hz` times a second) and events after `after`. */
+  | { readonly say: 'watch'; readonly hz: number; readonly after: number }
+  | {
+      readonly say: 'begin';
+      /** A path below the rules folder. */
+      readonly rules: string;
+      readonly subject: string;
+      readonly experimenter?: string;
+      readonly seed?: string;
+    }
+  | { readonly say: 'act'; readonly act: OperatorAct; readonly who: string; readonly from: string }
+);
+
+/** Loop to client. */
+export type LoopMessage =
+  | {
+      readonly tell: 'hello';
+      readonly protocol: number;
+      readonly version: string;
+      readonly rig: string;
+    }
+  | { readonly tell: 'done'; readonly request: number }
+  | {
+      readonly tell: 'error';
+      readonly request?: number;
+      readonly code: string;
+      readonly message: string;
+      readonly remedy: string;
+    }
+  | { readonly tell: 'setup'; readonly setup: Setup }
+  | { readonly tell: 'state'; readonly state: Snapshot }
+  | { readonly tell: 'events'; readonly events: readonly NumberedEvent[] }
+  /** The client fell behind: events `from` to `to` are in the record and not sent. */
+  | { readonly tell: 'gap'; readonly from: number; readonly to: number };
+
+export interface NumberedEvent {
+  readonly number: number;
+  readonly event: StampedDecision;
+}
+
+/** What stays the same while a session runs (or the loop is idle). */
+export interface Setup {
+  readonly rig: string;
+  readonly simulated: boolean;
+  readonly beltLengthCm: number;
+  readonly outputs: readonly {
+    readonly name: string;
+    readonly kind: 'valve' | 'stimulus' | 'mark';
+  }[];
+  readonly inputs: readonly string[];
+  /** Rules files that can be begun, as paths below the rules folder. */
+  readonly rulesFiles: readonly string[];
+  readonly session: null | {
+    readonly folder: string;
+    readonly title: string;
+    readonly subject: string;
+    readonly experimenter: string;
+    readonly seed: string;
+    readonly startedAt: string;
+    readonly rulesText: string;
+    readonly rules: readonly string[];
+    readonly phases: readonly string[];
+    readonly buttons: readonly string[];
+    readonly choices: readonly {
+      readonly name: string;
+      readonly unit: string;
+      readonly least?: number;
+      readonly most?: number;
+      readonly options?: readonly (number | string)[];
+    }[];
+  };
+}
+
+/** The state now, at most 50 times a second; a client that is slow sees only the latest. */
+export interface Snapshot {
+  /** The last engine input. */
+  readonly input: number;
+  /** Extended board time, microseconds; the page calls itself stale when it stops moving. */
+  readonly boardUs: number;
+  readonly session: 'idle' | 'running' | 'ended';
+  readonly endedBecause: string | null;
+  readonly sessionS: number;
+  readonly link: {
+    readonly state: 'up' | 'connecting' | 'down';
+    readonly reason: string;
+    readonly remedy: string;
+    readonly port: string;
+    readonly board: string;
+    readonly framesPerS: number;
+    readonly lostFrames: number;
+    readonly badFrames: number;
+  };
+  readonly trust: Trust;
+  readonly trustReason: string;
+  readonly positionCm: number | null;
+  readonly speedCmPerS: number;
+  readonly lap: number;
+  readonly lickOn: boolean;
+  readonly licks: number;
+  readonly phase: string | null;
+  readonly phaseLap: number;
+  readonly places: readonly {
+    readonly name: string;
+    readonly fromCm: number;
+    /** Same as `fromCm` for a point. */
+    readonly toCm: number;
+  }[];
+  readonly choices: readonly {
+    readonly name: string;
+    readonly value: number | string;
+    readonly queued: number | string | null;
+  }[];
+  readonly rules: readonly {
+    readonly name: string;
+    readonly firings: number;
+    readonly shams: number;
+    readonly withheld: number;
+    readonly missed: number;
+    readonly armed: boolean;
+  }[];
+  /** Bit n for output n. */
+  readonly outputs: number;
+  readonly inputs: number;
+  readonly waterUl: number;
+  /** Of drops never accounted for. */
+  readonly waterUncertainUl: number;
+  readonly waterLimitUl: number;
+  readonly waterTodayUl: number;
+  readonly waterDayLimitUl: number;
+  readonly held: { readonly stimulus: string | null; readonly water: string | null };
+  readonly record: {
+    readonly state: 'off' | 'writing' | 'failed';
+    readonly bytes: number;
+    readonly reason: string;
+    readonly diskFreeGb: number;
+  };
+}

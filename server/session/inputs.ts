@@ -1,0 +1,44 @@
+import type { Clock, Edge, Fault, Identity, Outcome, Sample } from '../wire/messages.js';
+
+/**
+ * Everything that can change what the engine decides, in one order. The record keeps exactly this
+ * list, and a replay feeds it back; nothing else reaches the engine.
+ */
+export type EngineInput =
+  | { readonly kind: 'sample'; readonly message: Sample }
+  | { readonly kind: 'edge'; readonly message: Edge }
+  | { readonly kind: 'outcome'; readonly message: Outcome }
+  | { readonly kind: 'fault'; readonly message: Fault }
+  | { readonly kind: 'clock'; readonly message: Clock }
+  | { readonly kind: 'link up'; readonly identity: Identity; readonly tag: number }
+  | { readonly kind: 'link down'; readonly reason: string }
+  /** Frames that the sequence numbers say were lost. */
+  | { readonly kind: 'gap'; readonly frames: number }
+  | { readonly kind: 'bad frame'; readonly why: string }
+  | { readonly kind: 'operator'; readonly act: OperatorAct; readonly by: Actor }
+  /** The loop came back: what was recorded has been replayed, and this follows it. */
+  | { readonly kind: 'resume'; readonly note: string }
+  | { readonly kind: 'begin' };
+
+/** Inputs that come a few times a second at most: all but the sample. */
+export type RareInput = Exclude<EngineInput, { kind: 'sample' }>;
+
+/** Who did it and from where: `keyboard`, `dashboard 127.0.0.1`, `button box`. */
+export interface Actor {
+  readonly who: string;
+  readonly from: string;
+}
+
+export type OperatorAct =
+  | { readonly act: 'press'; readonly button: string }
+  | { readonly act: 'choose'; readonly name: string; readonly value: number | string }
+  | { readonly act: 'hold'; readonly what: 'stimulus' | 'water'; readonly on: boolean }
+  | { readonly act: 'phase'; readonly to: string | 'next' | 'previous' | 'repeat' }
+  | { readonly act: 'new cell'; readonly fields: Readonly<Record<string, string>> }
+  | { readonly act: 'exclude lap'; readonly lap: number }
+  | { readonly act: 'note'; readonly text: string }
+  /** Stop everything: all outputs idle, stimuli and water held until released; recording goes on. */
+  | { readonly act: 'stop everything' }
+  /** After a board restart or a watchdog trip, stimulation waits for this. */
+  | { readonly act: 'allow stimulation' }
+  | { readonly act: 'end'; readonly reason: string };
