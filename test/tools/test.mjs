@@ -1,0 +1,113 @@
+/**
+ * `npm test`: installs what is missing where it may, then lint, types, build and every test.
+ *
+ * The last line is `N passed, N failed`. The tests are counted; a step before them that fails
+ * (lint, types, build) counts as one more failure. Arguments go on to vitest:
+ * `npm test -- test/link`.
+ */
+import { spawnSync } from 'node:child_process';
+import fs from 'node:fs';
+import os from 'node:os';
+import path from 'node:path';
+import { fileURLToPath } from 'node:url';
+
+const root = fileURLToPath(new URL('../..', import.meta.url));
+const BROWSERS = ['chromium', 'chromium-browser', 'google-chrome-stable', 'google-chrome'];
+const windows = process.platform === 'win32';
+
+function run(command, args, env = {}) {
+  const options = { cwd: root, stdio: 'inherit', env: { ...process.env, ...env } };
+  return spawnSync(command, args, options).status === 0;
+}
+
+function onPath(name) {
+  const folders = (process.env.PATH ?? '').split(path.delimiter);
+  return folders.map((folder) => path.join(folder, name)).find((file) => fs.existsSync(file));
+}
+
+const findBrowser = () =>
+  process.env.LAPWING_CHROMIUM ?? BROWSERS.map(onPath).find((file) => file !== undefined);
+
+/** The browser that the dashboard's tests drive; Debian's package is installed when root. */
+function ensureBrowser() {
+  const found = findBrowser();
+  if (found !== undefined) return found;
+  if (process.getuid?.() === 0 && onPath('apt-get') !== undefined) {
+    console.log('test: no chromium here; installing the Debian package');
+    const env = { DEBIAN_FRONTEND: 'noninteractive' };
+    run('apt-get', ['update', '-q'], env);
+    run('apt-get', ['install', '-q', '-y', '--no-install-recommends', 'chromium'], env);
+    const installed = findBrowser();
+    if (installed !== undefined) return installed;
+  }
+  console.log(
+    'test: no chromium found, so the browser tests will fail. Install it with ' +
+      '`sudo apt-get install chromium` (Debian, Ubuntu), or set LAPWING_CHROMIUM to the program.',
+  );
+  return '';
+}
+
+function ensurePackages() {
+  if (fs.existsSync(path.join(root, 'node_modules', 'vitest', 'package.json'))) return true;
+  console.log('test: node_modules is missing; running `npm ci`');
+  return spawnSync('npm', ['ci'], { cwd: root, stdio: 'inherit', shell: windows }).status === 0;
+}
+
+/** Runs a package's own program with this Node, whatever the shell. */
+function tool(file, args, env) {
+  return run(process.execPath, [path.join(root, 'node_modules', file), ...args], env);
+}
+
+/** Exact counts out of vitest's JSON report; a file that would not load is one failure. */
+function countTests(file) {
+  if (!fs.existsSync(file)) return { passed: 0, failed: 0, skipped: 0 };
+  const report = JSON.parse(fs.readFileSync(file, 'utf8'));
+  const broken = report.testResults.filter(
+    (result) => result.status === 'failed' && !result.assertionResults.some(isFailed),
+  );
+  return {
+    passed: report.numPassedTests,
+    failed: report.numFailedTests + broken.length,
+    skipped: report.numPendingTests + report.numTodoTests,
+  };
+}
+const isFailed = (assertion) => assertion.status === 'failed';
+
+function runTests(filters, browser) {
+  const folder = fs.mkdtempSync(path.join(os.tmpdir(), 'lapwing-test-'));
+  const file = path.join(folder, 'report.json');
+  const args = ['run', '--config', 'test/vitest.config.ts', ...filters];
+  const reporters = ['--reporter=default', '--reporter=json', `--outputFile.json=${file}`];
+  const good = tool('vitest/vitest.mjs', [...args, ...reporters], { LAPWING_CHROMIUM: browser });
+  const counts = countTests(file);
+  fs.rmSync(folder, { recursive: true, force: true });
+  return { good, ...counts };
+}
+
+let failedSteps = 0;
+function step(name, good) {
+  if (good) return;
+  failedSteps++;
+  console.error(`test: ${name} failed`);
+}
+
+function main() {
+  if (!ensurePackages()) {
+    console.error('test: `npm ci` failed');
+    return { passed: 0, failed: 1 };
+  }
+  const browser = ensureBrowser();
+  step('lint (biome check)', tool('@biomejs/biome/bin/biome', ['check', '.']));
+  step('the type check (tsc)', tool('typescript/bin/tsc', ['--noEmit']));
+  step('the build', run(process.execPath, ['test/tools/build.mjs']));
+  const tests = runTests(process.argv.slice(2), browser);
+  if (tests.skipped > 0) console.log(`test: ${tests.skipped} skipped`);
+  // vitest also fails on an error outside any test, and when there is no test at all.
+  const counted = tests.failed > 0;
+  step('the test run', counted || (tests.good && tests.passed > 0));
+  return { passed: tests.passed, failed: tests.failed + failedSteps };
+}
+
+const { passed, failed } = main();
+console.log(`${passed} passed, ${failed} failed`);
+process.exitCode = failed === 0 ? 0 : 1;
