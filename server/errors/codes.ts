@@ -28,6 +28,66 @@ export const ERRORS = {
     'Another program has the serial port open.',
     'End that program (a serial monitor, another Lapwing) and start again.',
   ),
+  linkPermission: entry(
+    'LINK_PERMISSION',
+    'This user may not open the serial port.',
+    'Join the group that owns it, `sudo usermod -aG dialout $USER` on Debian and Ubuntu, then log out and in again.',
+  ),
+  linkOpenFailed: entry(
+    'LINK_OPEN_FAILED',
+    'The serial port could not be opened or set up.',
+    'Check that the path is a serial device (`lapwing ports`) and that it can run at the baud rate in the rig file.',
+  ),
+  linkBadAddress: entry(
+    'LINK_BAD_ADDRESS',
+    'The port is neither a device path nor `tcp://host:port`.',
+    'Write a path such as /dev/serial/by-id/..., or tcp://127.0.0.1:7001; `lapwing ports` lists what is connected.',
+  ),
+  linkTcpRefused: entry(
+    'LINK_TCP_REFUSED',
+    'Nothing listens at the address of the simulated board.',
+    'Start the simulated board first, and check the host and port in the rig file.',
+  ),
+  linkTcpUnreachable: entry(
+    'LINK_TCP_UNREACHABLE',
+    'The address of the simulated board cannot be reached.',
+    'Check the host name, the network and any firewall between the two.',
+  ),
+  linkUnplugged: entry(
+    'LINK_UNPLUGGED',
+    'The port closed by itself.',
+    "Check the USB cable and the board's power; Lapwing reconnects by itself when the board is back.",
+  ),
+  linkSilent: entry(
+    'LINK_SILENT',
+    'The board fell silent: no good frame came for 250 ms.',
+    'Check the cable and the board; Lapwing reconnects by itself. If it recurs, look for a loose plug or a sleeping USB hub.',
+  ),
+  linkWriteFailed: entry(
+    'LINK_WRITE_FAILED',
+    'The port did not take a whole command.',
+    'Lapwing reconnects by itself, and no part of the command is sent again. If it recurs, replace the cable or the USB hub.',
+  ),
+  linkTagEnded: entry(
+    'LINK_TAG_ENDED',
+    'The board ended the connection: it was reset, or had not heard from the host for too long.',
+    'Lapwing connects again by itself. Look for a brown-out of the board, or a host too busy to answer.',
+  ),
+  linkNoAnswer: entry(
+    'LINK_NO_ANSWER',
+    'The port is open, but no Lapwing board answers.',
+    'Check that this is the right port (`lapwing ports`), that the board has Lapwing firmware, and the baud rate in the rig file.',
+  ),
+  linkProtocol: entry(
+    'LINK_PROTOCOL',
+    'The board speaks another version of the wire protocol.',
+    'Load the firmware that comes with this version of Lapwing onto the board, or use the version of Lapwing that it was made for.',
+  ),
+  linkOtherBoard: entry(
+    'LINK_OTHER_BOARD',
+    'The board that answered is not the one that the rig file names.',
+    'Connect the board with that number, or put the number of this one into the rig file as `board_id`.',
+  ),
   rigUnreadable: entry(
     'RIG_UNREADABLE',
     'The rig file cannot be read.',
@@ -92,6 +152,77 @@ export const ERRORS = {
     'WEB_INTERNAL',
     'The web process met a fault of its own; the session is not touched by it.',
     'Load the page again. If it comes back, report it with the lines that the service printed.',
+  ),
+  recordExists: entry(
+    'RECORD_EXISTS',
+    'The session folder already holds a record, and a record is never overwritten.',
+    'Begin a new session; each has a folder of its own.',
+  ),
+  recordBusy: entry(
+    'RECORD_BUSY',
+    'The session is being recorded by a running process.',
+    'End the session first; while it runs its record can be read but not finished or mended.',
+  ),
+  recordUnwritable: entry(
+    'RECORD_UNWRITABLE',
+    'The record could not be begun, so the session was not.',
+    'Check that the sessions folder exists, that you may write there (`ls -ld FOLDER`), and that the disk is not full (`df -h FOLDER`).',
+  ),
+  recordMissing: entry(
+    'RECORD_MISSING',
+    'There is no record in the folder.',
+    'Give the path of a session folder: the one that holds `record.mcap`.',
+  ),
+  recordTooNew: entry(
+    'RECORD_TOO_NEW',
+    'The record was written by a later version of Lapwing than this one.',
+    'Open it with that version or a later one.',
+  ),
+  recordUnreadable: entry(
+    'RECORD_UNREADABLE',
+    'The record could not be read from the disk.',
+    'Check the disk and its cable, copy the session folder elsewhere if it can be copied, and try again there.',
+  ),
+  recordUnfinished: entry(
+    'RECORD_UNFINISHED',
+    'The finished file did not come out the same as the live record, or could not be written; the live record is untouched.',
+    'Check that the disk has room for the record once more (`df -h FOLDER`), then run `lapwing mend SESSION`.',
+  ),
+  recordFolderRemote: entry(
+    'RECORD_FOLDER_REMOTE',
+    'The sessions folder is on a network share or is synchronised to another machine; a live recording there can stall or be lost.',
+    'Record onto a disk of this computer, and copy the session folder away when it is finished.',
+  ),
+  recordFolderBad: entry(
+    'RECORD_FOLDER_BAD',
+    'The session folder could not be made.',
+    'Check that the sessions folder exists and that you may write there (`ls -ld FOLDER`).',
+  ),
+  recordDescriptionBad: entry(
+    'RECORD_DESCRIPTION_BAD',
+    "The session's description, `session.json`, is missing or not as its schema says.",
+    'Compare it with `server/session/session.schema.json`, and mend it by hand; the record does not depend on it.',
+  ),
+  loopRigTaken: entry(
+    'LOOP_RIG_TAKEN',
+    'Another Lapwing runs this rig.',
+    'Use its dashboard, or end it first; `lapwing quiet --rig RIG` sets its outputs idle at once.',
+  ),
+  loopKeepsFailing: entry(
+    'LOOP_KEEPS_FAILING',
+    'The loop process died again and again, and is not started any more.',
+    'The outputs are idle and the record is kept. Look at the log above; `lapwing mend SESSION` closes the record.',
+  ),
+  loopBusy: entry(
+    'LOOP_BUSY',
+    'A session is running on this rig.',
+    'End it before another begins.',
+  ),
+  loopNoSession: entry('LOOP_NO_SESSION', 'No session is running on this rig.', 'Begin one first.'),
+  loopBadAct: entry(
+    'LOOP_BAD_ACT',
+    'The act is not one that this session allows.',
+    'Choose a button, a choice within its bounds, or a phase that the rules file names.',
   ),
   loopAway: entry(
     'LOOP_AWAY',
