@@ -1,0 +1,474 @@
+import type { Instant, Trust } from '../rules/instant.js';
+import type { Clock, Edge, Identity, Outcome, Sample } from '../wire/messages.js';
+import { OUTCOME } from '../wire/messages.js';
+import { extend32 } from '../wire/time.js';
+import { type BeltConfig, SPEED_WINDOW_US, UNSEEN_US } from './beltConfig.js';
+import { BoardClock } from './boardClock.js';
+import type { TrackEvent, TrackListener } from './events.js';
+import { LickSensor } from './lickSensor.js';
+import { SeamFollower } from './seamFollower.js';
+import { SpeedWindow } from './speedWindow.js';
+
+/** An instant to be filled again and again. */
+export function blankInstant(): Instant {
+  return {
+    nowUs: 0,
+    trust: 'unknown',
+    placed: false,
+    lapCounts: 0,
+    travelFrom: 0,
+    travelTo: 0,
+    progressFrom: 0,
+    progressTo: 0,
+    positionCm: Number.NaN,
+    speedCmPerS: 0,
+    lap: 0,
+    lapBegan: false,
+    lick: false,
+    inputs: 0,
+    rose: 0,
+    fell: 0,
+  };
+}
+
+/**
+ * Decoded board frames in, the motion part of an `Instant` out: one frame, one instant.
+ *
+ * Travel is the belt unrolled in whole counts, lap n beginning at `n * lapCounts`. `lapCounts` is
+ * the belt's length rounded to a whole count, so that every comparison downstream is exact; what
+ * rounding takes (half a count a lap at most) is less than any calibration knows, and a seam mark
+ * takes it back each lap. Cm and counts are related by `lengthCm / lapCounts` throughout.
+ */
+export class Tracker {
+  readonly lapCounts: number;
+  readonly #clock = new BoardClock();
+  readonly #speed: SpeedWindow;
+  readonly #seam: SeamFollower | null;
+  readonly #seamInput: number;
+  readonly #lick: LickSensor | null;
+  readonly #lickBit: number;
+  readonly #artefactOutputs: number;
+  readonly #direction: 1 | -1;
+  readonly #cmPerCount: number;
+  readonly #events: TrackEvent[] = [];
+  readonly #listener: TrackListener | undefined;
+
+  /** The belt's count, extended, and whether it is known at all. */
+  #count = 0;
+  #counted = false;
+  /** Counts in `direction`, and what turns them into travel. */
+  #moved = 0;
+  #offset = 0;
+  #homed = false;
+  #travel = 0;
+  #progress = 0;
+  #lap = 0;
+  #placed = false;
+  /** Travel at the start of the lap that the belt is in now, which reversing may move back. */
+  #turn = 0;
+  #forwards = true;
+  #inputs = 0;
+  #outputs = 0;
+  #levelsKnown = false;
+  /** Inputs at which the last sample disagreed with what edges told. */
+  #differed = 0;
+  /** The next frame's movement happened unseen. */
+  #unseen = false;
+  #newestUs = 0;
+  // Declared places (no seam mark) are trusted until the board restarts.
+  #declaredTrust: Trust = 'unknown';
+  #declaredReason = 'waiting for the board';
+
+  // This instant's movement and edges.
+  #travelFrom = 0;
+  #progressFrom = 0;
+  #rose = 0;
+  #fell = 0;
+  #licked = false;
+
+  constructor(config: BeltConfig, listener?: TrackListener) {
+    this.lapCounts = Math.round(config.lengthCm * config.countsPerCm);
+    if (!(this.lapCounts >= 16)) {
+      throw new RangeError(`a belt of ${this.lapCounts} counts a lap cannot be followed`);
+    }
+    this.#cmPerCount = config.lengthCm / this.lapCounts;
+    this.#direction = config.direction;
+    this.#listener = listener;
+    this.#speed = new SpeedWindow(config.speedWindowUs ?? SPEED_WINDOW_US);
+    const { seam, lick } = config;
+    this.#seam =
+      seam === null ? null : new SeamFollower(seam, this.lapCounts, this.#cmPerCount, this.#events);
+    this.#seamInput = seam === null ? -1 : seam.input;
+    this.#lick = lick === null ? null : new LickSensor(lick, this.#events);
+    this.#lickBit = lick === null ? 0 : 1 << lick.input;
+    this.#artefactOutputs = lick?.artefactOutputs ?? 0xffff;
+  }
+
+  /** Extended board time of the newest instant, microseconds. */
+  get nowUs(): number {
+    return this.#clock.nowUs;
+  }
+
+  /** The last frame's own stamp, extended: what a cause is reckoned from. At most `nowUs`. */
+  get stampUs(): number {
+    return this.#clock.stampUs;
+  }
+
+  get trust(): Trust {
+    return this.#seam === null ? this.#declaredTrust : this.#seam.trust;
+  }
+
+  /** Why trust is what it is, in words for the screen. */
+  get trustReason(): string {
+    return this.#seam === null ? this.#declaredReason : this.#seam.reason;
+  }
+
+  /** Slip at the newest accepted mark, mm: positive when the mark came late. */
+  get slipMm(): number {
+    return this.#seam === null ? 0 : this.#seam.slipCounts * this.#cmPerCount * 10;
+  }
+
+  /** The lick sensor is touched now. */
+  get contact(): boolean {
+    return this.#lick?.contact ?? false;
+  }
+
+  /** A sample: the instant at its stamp. */
+  sample(m: Sample, into: Instant): void {
+    const newest = this.#clock.take(m.boardUs);
+    this.#begin();
+    if (newest) this.#move(m.count);
+    if (m.outputs !== this.#outputs) this.#outputsAre(m.outputs);
+    if (m.inputs !== this.#inputs || this.#differed !== 0 || !this.#levelsKnown) {
+      this.#levels(m.inputs);
+    }
+    this.#end(into);
+  }
+
+  /** An edge: the instant at its stamp, or at the newest sample's when that overtook it. */
+  edge(m: Edge, into: Instant): void {
+    const newest = this.#clock.take(m.boardUs);
+    this.#begin();
+    const count = extend32(this.#count, m.count);
+    const movedAtEdge = this.#counted ? count * this.#direction : this.#moved;
+    // An edge that was overtaken lies behind what has moved since.
+    const heading = newest ? movedAtEdge - this.#moved : this.#moved - movedAtEdge;
+    if (heading !== 0) this.#forwards = heading > 0;
+    if (newest || !this.#counted) this.#move(m.count);
+    const bit = 1 << m.input;
+    if (m.level === 1) {
+      this.#inputs |= bit;
+      this.#rose |= bit;
+    } else {
+      this.#inputs &= ~bit;
+      this.#fell |= bit;
+    }
+    this.#differed &= ~bit;
+    if (bit === this.#lickBit) this.#lickEdge(m.level === 1, this.#clock.stampUs);
+    if (m.input === this.#seamInput) this.#seamEdge(m.level === 1, extend32(this.#count, m.count));
+    this.#end(into);
+  }
+
+  /**
+   * An outcome: no instant of its own, but it says exactly when an output changed.
+   * @returns the outcome's own stamp, extended
+   */
+  outcome(m: Outcome): number {
+    const stampUs = this.#clock.extend(m.boardUs);
+    if (m.repeated !== 0) return stampUs;
+    const bit = 1 << m.output;
+    if (m.kind === OUTCOME.fired) this.#outputs |= bit;
+    else if (m.kind === OUTCOME.done) this.#outputs &= ~bit;
+    else return stampUs;
+    if ((bit & this.#artefactOutputs) !== 0) this.#lick?.outputChanged(stampUs);
+    return stampUs;
+  }
+
+  /** The instant as it stands, without movement: for an input that is no frame of the belt. */
+  unmoved(into: Instant): void {
+    this.#begin();
+    this.#end(into);
+  }
+
+  /** A clock frame: time is right again after a silence longer than time's wrap. */
+  clock(m: Clock): void {
+    this.#clock.takeWraps(m.wraps, m.boardUs);
+  }
+
+  /** As `clock`, at a handshake. After a restart call `linkResumed(false)` first. */
+  identity(m: Identity): void {
+    this.#clock.takeWraps(m.wraps, m.boardUs);
+  }
+
+  /** The board began anew: its time, its count and so the position are not what they were. */
+  boardRestarted(): void {
+    this.#clock.restarted();
+    this.#counted = false;
+    this.#homed = false;
+    this.#placed = false;
+    this.#levelsKnown = false;
+    this.#outputs = 0;
+    this.#seam?.lost('the board restarted; waiting for the seam mark');
+    if (this.#seam === null && this.#declaredTrust !== 'unknown') {
+      this.#declare('unknown', 'the board restarted; the start must be declared again');
+    }
+    this.#flush();
+  }
+
+  /**
+   * Frames come again. Of the same boot: laps go on, and places passed meanwhile are missed. Of
+   * another: `boardRestarted`.
+   */
+  linkResumed(sameBoot: boolean): void {
+    if (!sameBoot) {
+      this.boardRestarted();
+      return;
+    }
+    this.#unseen = true;
+    this.#levelsKnown = false;
+  }
+
+  /**
+   * On a rig without a seam mark: where the belt stands now is 0 cm, and the next lap begins. The
+   * first frame of a session declares it by itself; after a board restart a person must.
+   */
+  declareStart(): void {
+    if (this.#seam !== null || !this.#counted) return;
+    this.#home((this.#lap + 1) * this.lapCounts);
+    this.#declare('trusted', 'start declared; there is no seam mark to check it');
+  }
+
+  /**
+   * The board's 32-bit count at which the belt, moving `forwards` or backwards, has come to
+   * `travelCounts`.
+   * @throws RangeError while position is unknown
+   */
+  boardCountAt(travelCounts: number, forwards = true): number {
+    if (!this.#homed) throw new RangeError('position is unknown: no count stands for a place');
+    const travel = forwards ? Math.ceil(travelCounts) : Math.floor(travelCounts);
+    return ((travel - this.#offset) * this.#direction) | 0;
+  }
+
+  /** True when the board's count rises as the belt moves `forwards` (or backwards). */
+  countRises(forwards: boolean): boolean {
+    return forwards === (this.#direction === 1);
+  }
+
+  /** Travel at a 32-bit board count near now, by today's correction; NaN while unknown. */
+  travelAtCount(count: number): number {
+    if (!this.#homed) return Number.NaN;
+    return extend32(this.#count, count) * this.#direction + this.#offset;
+  }
+
+  /** Place along the belt, [0, length) cm. */
+  positionCmOf(travelCounts: number): number {
+    return this.#inTurn(travelCounts) * this.#cmPerCount;
+  }
+
+  /** Travel at `placeCm` of lap `lap`, counts; not a whole number as a rule. */
+  travelOf(lap: number, placeCm: number): number {
+    return lap * this.lapCounts + placeCm / this.#cmPerCount;
+  }
+
+  /** Extended time of a 32-bit stamp near now. */
+  extendUs(raw: number): number {
+    return this.#clock.extend(raw);
+  }
+
+  /** What the board's clock says at extended time `us`: what commands to it must carry. */
+  toBoardUs(us: number): number {
+    return this.#clock.toBoard(us);
+  }
+
+  // ---- one frame -----------------------------------------------------------------------------
+
+  #begin(): void {
+    this.#travelFrom = this.#travel;
+    this.#progressFrom = this.#progress;
+    this.#rose = 0;
+    this.#fell = 0;
+    this.#licked = false;
+  }
+
+  #move(raw: number): void {
+    const nowUs = this.#clock.nowUs;
+    if (!this.#counted) {
+      this.#firstCount(raw, nowUs);
+      return;
+    }
+    const count = this.#count + ((raw - this.#count) | 0);
+    const silentUs = nowUs - this.#newestUs;
+    this.#newestUs = nowUs;
+    if (count === this.#count && !this.#unseen) return;
+    const moved = count * this.#direction;
+    const by = moved - this.#moved;
+    this.#count = count;
+    this.#moved = moved;
+    if (by !== 0) this.#forwards = by > 0;
+    if (!this.#homed) {
+      this.#unseen = false;
+      return;
+    }
+    const travel = moved + this.#offset;
+    this.#travel = travel;
+    if (travel > this.#progress) this.#progress = travel;
+    if (this.#unseen || silentUs > UNSEEN_US) this.#movedUnseen(by, silentUs);
+  }
+
+  #firstCount(raw: number, nowUs: number): void {
+    this.#counted = true;
+    this.#count = raw;
+    this.#moved = raw * this.#direction;
+    this.#newestUs = nowUs;
+    this.#unseen = false;
+    this.#speed.restart(nowUs, this.#moved);
+    if (this.#seam === null && this.#lap === 0) this.declareStart();
+  }
+
+  /** Nobody saw when places on the way were passed, so movement begins where it ended. */
+  #movedUnseen(by: number, forUs: number): void {
+    this.#unseen = false;
+    if (by === 0) return;
+    this.#travelFrom = this.#travel;
+    this.#progressFrom = this.#progress;
+    this.#events.push({ kind: 'unseen', movedCm: by * this.#cmPerCount, forUs });
+    this.#seam?.unseen(this.#travel);
+  }
+
+  #seamEdge(rose: boolean, count: number): void {
+    // The leading edge rises under a belt that moves forwards and falls under one that backs.
+    if (this.#seam === null || rose !== this.#forwards) return;
+    const moved = count * this.#direction;
+    if (!this.#homed) {
+      if (!rose) return;
+      const travel = this.#seam.first(this.#lap);
+      this.#home(travel + this.#moved - moved);
+      // The belt came onto the mark by that count at least, so a place at the seam is reached.
+      this.#travelFrom = this.#travel - 1;
+      if (this.#progress === this.#travel) this.#progressFrom = this.#travelFrom;
+      return;
+    }
+    const shift = this.#seam.met(moved + this.#offset, rose);
+    if (shift !== 0) this.#shift(shift);
+  }
+
+  /** Position becomes known: the belt stands at `travel`. */
+  #home(travel: number): void {
+    this.#homed = true;
+    this.#offset = travel - this.#moved;
+    this.#travel = travel;
+    if (travel > this.#progress) this.#progress = travel;
+    this.#travelFrom = this.#travel;
+    this.#progressFrom = this.#progress;
+  }
+
+  /** Corrects travel without movement: what is jumped over is missed, nothing comes up twice. */
+  #shift(counts: number): void {
+    this.#offset += counts;
+    this.#travelFrom += counts;
+    this.#travel += counts;
+    if (this.#travelFrom > this.#progressFrom) this.#progressFrom = this.#travelFrom;
+    if (this.#progressFrom > this.#progress) this.#progress = this.#progressFrom;
+    if (this.#travel > this.#progress) this.#progress = this.#travel;
+  }
+
+  #outputsAre(outputs: number): void {
+    const changed = (outputs ^ this.#outputs) & this.#artefactOutputs;
+    this.#outputs = outputs;
+    if (changed !== 0 && this.#levelsKnown) this.#lick?.outputChanged(this.#clock.stampUs);
+  }
+
+  /**
+   * Input levels of a sample. Edges come first on the wire, so a difference that two samples show
+   * is an edge whose frame was lost.
+   */
+  #levels(inputs: number): void {
+    if (!this.#levelsKnown) {
+      this.#levelsKnown = true;
+      this.#inputs = inputs;
+      this.#differed = 0;
+      this.#lick?.adopt((inputs & this.#lickBit) !== 0, this.#clock.nowUs);
+      return;
+    }
+    const differs = inputs ^ this.#inputs;
+    const lost = differs & this.#differed;
+    this.#differed = differs & ~lost;
+    if (lost === 0) return;
+    this.#inputs ^= lost;
+    this.#rose = lost & inputs;
+    this.#fell = lost & ~inputs;
+    if ((lost & this.#lickBit) !== 0) {
+      this.#lickEdge((inputs & this.#lickBit) !== 0, this.#clock.stampUs);
+    }
+  }
+
+  #lickEdge(rose: boolean, stampUs: number): void {
+    if (this.#lick === null) return;
+    if (!rose) this.#lick.fall(stampUs);
+    else if (this.#lick.rise(stampUs)) this.#licked = true;
+  }
+
+  #end(into: Instant): void {
+    const nowUs = this.#clock.nowUs;
+    const travel = this.#travel;
+    const seam = this.#seam;
+    if (seam !== null && (travel > seam.missedAbove || travel < seam.missedBelow)) {
+      seam.missed(travel);
+    }
+    if (this.#lick?.contact) this.#lick.checkStuck(nowUs);
+
+    into.nowUs = nowUs;
+    into.lapCounts = this.lapCounts;
+    into.lapBegan = false;
+    if (this.#homed && this.#progress >= (this.#lap + 1) * this.lapCounts) this.#newLap(into);
+    if (this.#homed && !this.#placed && this.#lap > 0) this.#place();
+    into.trust = seam === null ? this.#declaredTrust : seam.trust;
+    into.placed = this.#placed;
+    into.lap = this.#lap;
+    into.travelFrom = this.#travelFrom;
+    into.travelTo = travel;
+    into.progressFrom = this.#progressFrom;
+    into.progressTo = this.#progress;
+    into.positionCm = this.#placed ? this.#inTurn(travel) * this.#cmPerCount : Number.NaN;
+    into.speedCmPerS = this.#speed.take(nowUs, this.#moved) * this.#cmPerCount * 1_000_000;
+    into.lick = this.#licked;
+    into.inputs = this.#inputs;
+    into.rose = this.#rose;
+    into.fell = this.#fell;
+    if (this.#events.length > 0) this.#flush();
+  }
+
+  #newLap(into: Instant): void {
+    this.#lap = Math.floor(this.#progress / this.lapCounts);
+    into.lapBegan = true;
+    this.#events.push({ kind: 'lap began', lap: this.#lap });
+  }
+
+  /** The lap before the first is no lap: nothing in it is reached as lap 1 begins. */
+  #place(): void {
+    this.#placed = true;
+    const least = this.#lap * this.lapCounts - 1;
+    if (this.#travelFrom < least) this.#travelFrom = least;
+    if (this.#progressFrom < least) this.#progressFrom = least;
+  }
+
+  #inTurn(travel: number): number {
+    let counts = travel - this.#turn;
+    if (counts < 0 || counts >= this.lapCounts) {
+      this.#turn = Math.floor(travel / this.lapCounts) * this.lapCounts;
+      counts = travel - this.#turn;
+    }
+    return counts;
+  }
+
+  #declare(trust: Trust, reason: string): void {
+    this.#declaredTrust = trust;
+    this.#declaredReason = reason;
+    this.#events.push({ kind: 'trust', trust, reason });
+  }
+
+  #flush(): void {
+    for (const event of this.#events) this.#listener?.tracked(event);
+    this.#events.length = 0;
+  }
+}
