@@ -1,0 +1,98 @@
+import type { NumberedEvent, Setup, Snapshot } from '../loop/protocol.js';
+import type { StreamMessage } from './streamMessages.js';
+
+/**
+ * What the web process knows of the loop: the newest setup and state, and the newest events, each
+ * already in the text that goes out. Serialising once however many watch keeps two hundred viewers
+ * as cheap as one.
+ */
+export class Mirror {
+  setup: Setup | undefined;
+  state: Snapshot | undefined;
+  loop: Extract<StreamMessage, { tell: 'loop' }> = {
+    tell: 'loop',
+    state: 'away',
+    reason: 'Not connected yet.',
+    remedy: '',
+  };
+  /** Counts states, so that a client knows whether it has this one. */
+  stateCount = 0;
+  private stateText: Buffer | undefined;
+  private stateTextOf = -1;
+  private readonly texts: (string | undefined)[];
+  private readonly numbers: Float64Array;
+  private oldest = 0;
+  private newest = 0;
+
+  constructor(private readonly keepEvents: number) {
+    this.texts = new Array(keepEvents);
+    this.numbers = new Float64Array(keepEvents);
+  }
+
+  /** Number of the newest event, 0 when there is none. */
+  get lastNumber(): number {
+    return this.newest > this.oldest ? this.numbers[(this.newest - 1) % this.keepEvents]! : 0;
+  }
+
+  takeState(state: Snapshot): void {
+    this.state = state;
+    this.stateCount++;
+  }
+
+  takeEvents(events: readonly NumberedEvent[]): void {
+    for (const event of events) {
+      // Numbers that go back mean another life of the loop: its events replace the ones kept.
+      if (event.number <= this.lastNumber) this.forget();
+      const slot = this.newest % this.keepEvents;
+      this.texts[slot] = JSON.stringify(event);
+      this.numbers[slot] = event.number;
+      this.newest++;
+      if (this.newest - this.oldest > this.keepEvents) this.oldest++;
+    }
+  }
+
+  forget(): void {
+    this.oldest = this.newest;
+  }
+
+  /** The newest state as a message; made once, whoever asks. */
+  stateMessage(): Buffer | undefined {
+    if (!this.state) return undefined;
+    if (this.stateTextOf !== this.stateCount) {
+      const message: StreamMessage = { tell: 'state', state: this.state };
+      this.stateText = Buffer.from(JSON.stringify(message));
+      this.stateTextOf = this.stateCount;
+    }
+    return this.stateText;
+  }
+
+  /**
+   * The messages that bring a client that has events up to `after` further on, `most` events at a
+   * time, and where it then is. A gap comes first when what follows `after` is no longer kept.
+   */
+  eventsAfter(after: number, most: number): { messages: string[]; upTo: number } {
+    // A client ahead of us watched another life of the loop.
+    const from = after > this.lastNumber ? 0 : after;
+    let index = this.oldest;
+    let low = this.oldest;
+    let high = this.newest;
+    while (low < high) {
+      const middle = (low + high) >>> 1;
+      if (this.numbers[middle % this.keepEvents]! > from) high = middle;
+      else low = middle + 1;
+    }
+    index = low;
+    if (index >= this.newest) return { messages: [], upTo: Math.min(after, this.lastNumber) };
+    const messages: string[] = [];
+    const first = this.numbers[index % this.keepEvents]!;
+    if (from > 0 && index === this.oldest && first > from + 1) {
+      const gap: StreamMessage = { tell: 'gap', from: from + 1, to: first - 1 };
+      messages.push(JSON.stringify(gap));
+    }
+    const until = Math.min(this.newest, index + most);
+    const parts: string[] = [];
+    for (; index < until; index++) parts.push(this.texts[index % this.keepEvents]!);
+    messages.push(`{"tell":"events","events":[${parts.join(',')}]}`);
+    return { messages, upTo: this.numbers[(until - 1) % this.keepEvents]! };
+  }
+}

@@ -1,0 +1,52 @@
+/** JSON Schema of every body that the HTTP interface takes. Unknown fields are refused everywhere. */
+
+const text = (maxLength: number, minLength = 0) => ({ type: 'string', minLength, maxLength });
+const closed = (required: string[], properties: Record<string, unknown>) => ({
+  type: 'object',
+  additionalProperties: false,
+  required,
+  properties,
+});
+const act = (name: string, properties: Record<string, unknown> = {}) =>
+  closed(['act', ...Object.keys(properties)], { act: { const: name }, ...properties });
+
+const name = text(64, 1);
+const who = text(64);
+
+/** One operator act, told apart by its `act` (server/session/inputs.ts). */
+const operatorAct = {
+  type: 'object',
+  required: ['act'],
+  discriminator: { propertyName: 'act' },
+  oneOf: [
+    act('press', { button: name }),
+    act('choose', { name, value: { type: ['number', 'string'], maxLength: 64 } }),
+    act('hold', { what: { enum: ['stimulus', 'water'] }, on: { type: 'boolean' } }),
+    act('phase', { to: name }),
+    act('new cell', {
+      fields: {
+        type: 'object',
+        maxProperties: 16,
+        propertyNames: { maxLength: 64 },
+        additionalProperties: text(200),
+      },
+    }),
+    act('exclude lap', { lap: { type: 'integer', minimum: 0, maximum: 1_000_000 } }),
+    act('note', { text: text(2000, 1) }),
+    act('stop everything'),
+    act('allow stimulation'),
+    act('end', { reason: text(200) }),
+  ],
+} as const;
+
+export const bodies = {
+  begin: closed(['rules', 'subject'], {
+    rules: text(200, 1),
+    subject: text(64, 1),
+    experimenter: text(64),
+    seed: text(64),
+  }),
+  act: closed(['act'], { act: operatorAct, who }),
+  end: closed([], { reason: text(200) }),
+  quiet: closed([], {}),
+} as const;

@@ -1,0 +1,216 @@
+/**
+ * The websocket side: every page gets the setup, the newest state and the events it lacks. Each
+ * client is served at its own pace: one that does not read is skipped, then ended, and costs the
+ * others nothing.
+ */
+import type { IncomingMessage } from 'node:http';
+import type { Duplex } from 'node:stream';
+import type { FastifyBaseLogger } from 'fastify';
+import { type WebSocket, WebSocketServer } from 'ws';
+import type { Mirror } from './mirror.js';
+import { STREAM_VERSION, type StreamMessage } from './streamMessages.js';
+
+export interface StreamLimits {
+  /** A client with more than this waiting gets nothing more until it has read. */
+  readonly softBytes: number;
+  /** With more than this waiting, or over `softBytes` for `stallMs`, it is ended. */
+  readonly hardBytes: number;
+  readonly stallMs: number;
+  readonly mostClients: number;
+  /** Least time between two states to one client. */
+  readonly stateMs: number;
+  /** A client that answers no ping for two of these is gone. */
+  readonly pingMs: number;
+}
+
+export const STREAM_LIMITS: StreamLimits = {
+  softBytes: 256 << 10,
+  hardBytes: 4 << 20,
+  stallMs: 10_000,
+  mostClients: 256,
+  stateMs: 48,
+  pingMs: 15_000,
+};
+
+/** Events in one message: about 60 kB, well below `softBytes`. */
+const EVENTS_A_MESSAGE = 250;
+
+interface Viewer {
+  readonly socket: WebSocket;
+  after: number;
+  stateCount: number;
+  stalledSinceMs: number;
+  alive: boolean;
+  quietAsks: number;
+}
+
+export class Stream {
+  private readonly server = new WebSocketServer({
+    noServer: true,
+    maxPayload: 1024,
+    perMessageDeflate: false,
+    clientTracking: false,
+  });
+  private readonly viewers = new Set<Viewer>();
+  private readonly ping: NodeJS.Timeout;
+  private lastPumpMs = Number.NEGATIVE_INFINITY;
+  private pumpTimer: NodeJS.Timeout | undefined;
+  private closing = false;
+  /** Clients ended because they did not read. */
+  dropped = 0;
+
+  constructor(
+    private readonly mirror: Mirror,
+    private readonly quiet: () => Promise<void>,
+    private readonly log: FastifyBaseLogger,
+    private readonly limits: StreamLimits,
+    private readonly version: string,
+  ) {
+    this.ping = setInterval(() => this.checkAlive(), limits.pingMs);
+    this.ping.unref();
+  }
+
+  get clients(): number {
+    return this.viewers.size;
+  }
+
+  get full(): boolean {
+    return this.closing || this.viewers.size >= this.limits.mostClients;
+  }
+
+  /** Takes over a checked upgrade request. */
+  accept(request: IncomingMessage, socket: Duplex, head: Buffer): void {
+    const asked = Number(new URL(request.url ?? '/', 'http://any').searchParams.get('after'));
+    this.server.handleUpgrade(request, socket, head, (ws) => {
+      const after = Number.isSafeInteger(asked) && asked > 0 ? asked : 0;
+      this.add({
+        socket: ws,
+        after,
+        stateCount: -1,
+        stalledSinceMs: Number.NaN,
+        alive: true,
+        quietAsks: 0,
+      });
+    });
+  }
+
+  /** Something new to show: goes out now, or when the least time between states has passed. */
+  changed(): void {
+    if (this.pumpTimer || this.closing) return;
+    const waitMs = this.lastPumpMs + this.limits.stateMs - performance.now();
+    if (waitMs <= 0) this.pump();
+    else this.pumpTimer = setTimeout(() => this.pump(), waitMs);
+  }
+
+  /** A message for every client, outside the latest-only order: setup, loop up or away. */
+  announce(message: StreamMessage): void {
+    const text = JSON.stringify(message);
+    for (const viewer of this.viewers) viewer.socket.send(text);
+  }
+
+  /** Tells the clients to come back, then ends the ones that do not answer. */
+  async close(): Promise<void> {
+    this.closing = true;
+    clearInterval(this.ping);
+    clearTimeout(this.pumpTimer);
+    const leaving = [...this.viewers].map(
+      (viewer) => new Promise<void>((resolve) => viewer.socket.once('close', () => resolve())),
+    );
+    for (const viewer of this.viewers) viewer.socket.close(1001, 'The web process is stopping.');
+    const impatience = setTimeout(() => {
+      for (const viewer of this.viewers) viewer.socket.terminate();
+    }, 500);
+    await Promise.all(leaving);
+    clearTimeout(impatience);
+    this.server.close();
+  }
+
+  private add(viewer: Viewer): void {
+    const { socket } = viewer;
+    this.viewers.add(viewer);
+    socket.on('close', () => this.viewers.delete(viewer));
+    socket.on('error', () => socket.terminate());
+    socket.on('pong', () => {
+      viewer.alive = true;
+    });
+    socket.on('message', (data) => this.hear(viewer, String(data)));
+    const say = (message: StreamMessage) => socket.send(JSON.stringify(message));
+    say({ tell: 'welcome', version: STREAM_VERSION, lapwing: this.version });
+    say(this.mirror.loop);
+    if (this.mirror.setup) say({ tell: 'setup', setup: this.mirror.setup });
+    this.serve(viewer);
+  }
+
+  /** The one thing a page may ask here; anything else is ignored, and too much of it ends it. */
+  private hear(viewer: Viewer, text: string): void {
+    viewer.quietAsks++;
+    if (viewer.quietAsks > 1000) {
+      viewer.socket.terminate();
+      return;
+    }
+    let ask: unknown;
+    try {
+      ask = (JSON.parse(text) as { ask?: unknown } | null)?.ask;
+    } catch {
+      return;
+    }
+    if (ask !== 'quiet') return;
+    const answer = (done: boolean, detail: string) => {
+      const message: StreamMessage = { tell: 'quiet', done, detail };
+      if (viewer.socket.readyState === viewer.socket.OPEN) {
+        viewer.socket.send(JSON.stringify(message));
+      }
+    };
+    this.quiet().then(
+      () => answer(true, ''),
+      (error: Error) => answer(false, error.message),
+    );
+  }
+
+  private pump(): void {
+    this.pumpTimer = undefined;
+    this.lastPumpMs = performance.now();
+    for (const viewer of this.viewers) this.serve(viewer);
+  }
+
+  /** Sends what this client lacks, if it has read what it was sent before. */
+  private serve(viewer: Viewer): void {
+    const { socket } = viewer;
+    if (socket.readyState !== socket.OPEN || this.isStalled(viewer)) return;
+    for (;;) {
+      const { messages, upTo } = this.mirror.eventsAfter(viewer.after, EVENTS_A_MESSAGE);
+      viewer.after = upTo;
+      for (const message of messages) socket.send(message);
+      if (messages.length === 0 || socket.bufferedAmount > this.limits.softBytes) break;
+    }
+    const state = this.mirror.stateMessage();
+    if (state && viewer.stateCount !== this.mirror.stateCount) {
+      viewer.stateCount = this.mirror.stateCount;
+      socket.send(state, { binary: false });
+    }
+  }
+
+  private isStalled(viewer: Viewer): boolean {
+    const waiting = viewer.socket.bufferedAmount;
+    if (waiting <= this.limits.softBytes) {
+      viewer.stalledSinceMs = Number.NaN;
+      return false;
+    }
+    const now = performance.now();
+    if (Number.isNaN(viewer.stalledSinceMs)) viewer.stalledSinceMs = now;
+    if (waiting > this.limits.hardBytes || now - viewer.stalledSinceMs > this.limits.stallMs) {
+      this.dropped++;
+      this.log.warn({ waiting }, 'a page that does not read was dropped');
+      viewer.socket.terminate();
+    }
+    return true;
+  }
+
+  private checkAlive(): void {
+    for (const viewer of this.viewers) {
+      if (!viewer.alive) viewer.socket.terminate();
+      viewer.alive = false;
+      if (viewer.socket.readyState === viewer.socket.OPEN) viewer.socket.ping();
+    }
+  }
+}

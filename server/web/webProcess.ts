@@ -1,0 +1,62 @@
+/** The web process's entry: `webProcess --socket PATH --token-file FILE [--host H] [--port N]`. */
+import { fileURLToPath } from 'node:url';
+import { parseArgs } from 'node:util';
+import { LapwingError } from '../errors/codes.js';
+import { buildWeb } from './buildWeb.js';
+import { isLoopback } from './gates.js';
+
+export const DEFAULT_PORT = 8711;
+
+/**
+ * Serves until SIGTERM or SIGINT. Prints one JSON line, `{"listening":"http://127.0.0.1:8711"}`, to
+ * standard output once the page can be opened; logs go to standard error.
+ */
+export async function runWeb(argv: readonly string[]): Promise<void> {
+  const { values } = parseArgs({
+    args: [...argv],
+    options: {
+      socket: { type: 'string' },
+      'token-file': { type: 'string' },
+      host: { type: 'string', default: '127.0.0.1' },
+      port: { type: 'string', default: String(DEFAULT_PORT) },
+      dashboard: { type: 'string' },
+      log: { type: 'string', default: 'info' },
+    },
+  });
+  if (values.socket === undefined) throw new LapwingError('loopAway', '`--socket` is missing.');
+  if (!isLoopback(values.host))
+    throw new LapwingError('webHostNotLoopback', `--host ${values.host}`);
+  // Beside this file in dist/: dist/server/web and dist/dashboard.
+  const built = fileURLToPath(new URL('../../dashboard/', import.meta.url));
+  const app = buildWeb({
+    socketPath: values.socket,
+    ...(values['token-file'] === undefined ? {} : { tokenFile: values['token-file'] }),
+    dashboard: values.dashboard ?? built,
+    log: values.log === 'silent' ? false : values.log,
+  });
+  let stopping = false;
+  const stop = () => {
+    if (stopping) process.exit(1);
+    stopping = true;
+    void app.close().then(() => process.exit(0));
+  };
+  process.on('SIGTERM', stop);
+  process.on('SIGINT', stop);
+  try {
+    const listening = await app.listen({ host: values.host, port: Number(values.port) });
+    process.stdout.write(JSON.stringify({ listening }) + '\n');
+  } catch (error) {
+    await app.close();
+    if ((error as NodeJS.ErrnoException).code === 'EADDRINUSE') {
+      throw new LapwingError('webPortBusy', `${values.host}:${values.port}`, { cause: error });
+    }
+    throw error;
+  }
+}
+
+if (process.argv[1] === fileURLToPath(import.meta.url)) {
+  runWeb(process.argv.slice(2)).catch((error: Error & { code?: string; remedy?: string }) => {
+    process.stderr.write(`${error.code ?? 'ERROR'}: ${error.message}\n${error.remedy ?? ''}\n`);
+    process.exit(1);
+  });
+}
