@@ -307,7 +307,7 @@ export const OUTCOME = {
 } as const;
 export type OutcomeKind = keyof typeof OUTCOME;
 
-/** Why an id was refused, or (from `cut` on) why it ended before its time. */
+/** Why an id was refused, or why it ended before its time; the wire page has a line for each. */
 export const REASON = {
   none: 0,
   busy: 1,
@@ -326,6 +326,7 @@ export const REASON = {
   silence: 14,
   cut: 15,
   unwanted: 16,
+  newTag: 17,
 } as const;
 export type RefusalReason = keyof typeof REASON;
 
@@ -336,8 +337,22 @@ export const FAULT = {
   wrongTag: 4,
   badProtocol: 5,
   brownOut: 6,
+  syncRefused: 7,
 } as const;
 export type FaultKind = keyof typeof FAULT;
+
+/** What made the board start, as far as its chip can tell. */
+export const RESET_CAUSE = {
+  unknown: 0,
+  powerOn: 1,
+  resetPin: 2,
+  brownOut: 3,
+  chipWatchdog: 4,
+  software: 5,
+} as const;
+
+/** In `edge.input`: not an input but an output that a sync train moves; the low bits say which. */
+export const SYNC_EDGE = 0x80;
 
 export const CAPABILITY = {
   /** No wire leaves this board: its outputs are a model's. */

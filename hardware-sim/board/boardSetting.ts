@@ -1,0 +1,41 @@
+import { CAPABILITY } from '../../server/wire/messages.js';
+
+/** What a board has and is. */
+export interface BoardSetting {
+  readonly outputs: number;
+  readonly inputs: number;
+  readonly slots: number;
+  /** Places for pulses that start at a time still ahead. */
+  readonly waiting: number;
+  /** Outcomes kept until reset. */
+  readonly outcomesKept: number;
+  readonly model: string;
+  readonly firmware: number;
+  readonly boardId: number;
+  readonly capabilities: number;
+  /** Boot ids are drawn from it. */
+  readonly seed: number;
+  /** What the board's clock shows when it is first switched on: for tests of its wrap. */
+  readonly startUs: number;
+  /** What the encoder shows when it is first switched on: for tests of its wrap. */
+  readonly startCount: number;
+}
+export type BoardOptions = Partial<BoardSetting>;
+
+export function settingOf(options: BoardOptions): BoardSetting {
+  return {
+    outputs: 8,
+    inputs: 8,
+    slots: 16,
+    waiting: 16,
+    outcomesKept: 64,
+    model: 'simulated',
+    firmware: 1,
+    boardId: 0,
+    capabilities: CAPABILITY.simulated | CAPABILITY.slots | CAPABILITY.sync,
+    seed: 1,
+    startUs: 0,
+    startCount: 0,
+    ...options,
+  };
+}

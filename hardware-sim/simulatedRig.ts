@@ -1,0 +1,258 @@
+/**
+ * A whole rig without hardware: the animal runs, the belt turns the encoder, the mark and the
+ * tongue touch their sensors, the board reports and fires, and the drops reach the animal. On a
+ * virtual clock: only `advanceTo` moves it, in microseconds of world time.
+ */
+import { Animal } from './animal/animal.js';
+import { BELT, Belt, type BeltParameters } from './animal/belt.js';
+import { Dice } from './animal/dice.js';
+import { ANIMAL, type AnimalParameters } from './animal/parameters.js';
+import { PendingInputs } from './animal/pendingInputs.js';
+import { SeamMark } from './animal/seamMark.js';
+import { Board } from './board/board.js';
+import type { BoardOutput } from './board/boardOutput.js';
+import type { BoardOptions } from './board/boardSetting.js';
+
+/** Which number on the board goes where. */
+export interface Wiring {
+  readonly lickInput: number;
+  readonly seamInput: number;
+  readonly valveOutput: number;
+}
+
+/** The simulated valve's line: open for `deadUs + ul * usPerUl`. */
+export interface ValveParameters {
+  readonly deadUs: number;
+  readonly usPerUl: number;
+}
+
+export interface SimulatedRigOptions {
+  readonly seed?: number;
+  /** Has learned already that water comes at `spoutCm`. */
+  readonly trained?: boolean;
+  readonly spoutCm?: number;
+  /** Where the animal stands at first, cm along the belt. */
+  readonly startCm?: number;
+  readonly belt?: Partial<BeltParameters>;
+  readonly animal?: Partial<AnimalParameters>;
+  readonly board?: BoardOptions;
+  readonly wiring?: Partial<Wiring>;
+  readonly valve?: Partial<ValveParameters>;
+  /** Extra changes at the beginning of a lick's contact. */
+  readonly lickBounces?: number;
+}
+
+const SEGMENT_US = 1000;
+const EVENT = { none: 0, input: 1, lick: 2, output: 3, mark: 4, slot: 5 } as const;
+
+export class SimulatedRig {
+  readonly board: Board;
+  readonly animal: Animal;
+  readonly belt: Belt;
+  readonly wiring: Wiring;
+  readonly valve: ValveParameters;
+  /** The belt is driven at this speed, whatever the animal wants; undefined: the animal runs. */
+  forcedCmPerS: number | undefined;
+  nowUs = 0;
+  readonly #mark: SeamMark;
+  readonly #pending = new PendingInputs();
+  readonly #dice: Dice;
+  readonly #lickBounces: number;
+  #segmentEndUs = SEGMENT_US;
+  #cmPerUs = 0;
+  /** Whole counts told to the board so far, not wrapped. */
+  #count: number;
+  #valveOpenedUs = 0;
+
+  constructor(options: SimulatedRigOptions = {}, output?: BoardOutput) {
+    const seed = options.seed ?? 1;
+    const beltParameters = { ...BELT, ...options.belt };
+    const animalParameters = { ...ANIMAL, ...options.animal };
+    const startCm = options.startCm ?? beltParameters.lengthCm * 0.9;
+    this.wiring = { lickInput: 0, seamInput: 1, valveOutput: 0, ...options.wiring };
+    this.valve = { deadUs: 5_000, usPerUl: 8_000, ...options.valve };
+    this.#lickBounces = options.lickBounces ?? 0;
+    this.#dice = new Dice(seed + 5);
+    this.board = new Board({ seed: seed + 1, ...options.board }, output);
+    this.#count = this.board.setting.startCount;
+    this.belt = new Belt(beltParameters, startCm, this.#count, seed + 2);
+    this.#mark = new SeamMark(beltParameters, startCm, seed + 3);
+    this.animal = new Animal(
+      animalParameters,
+      beltParameters.lengthCm,
+      seed + 4,
+      options.trained ?? false,
+      options.spoutCm ?? beltParameters.lengthCm / 2,
+    );
+    if (this.#mark.level === 1) this.board.setInput(this.wiring.seamInput, 1);
+    this.board.probe((number, on, worldUs) => this.#outputChanged(number, on, worldUs));
+  }
+
+  /** Lets the world run until `us`, whole microseconds. */
+  advanceTo(us: number): void {
+    while (this.#segmentEndUs <= us) {
+      this.#runTo(this.#segmentEndUs);
+      this.#segmentEndUs += SEGMENT_US;
+      const wants = this.animal.step(this.nowUs, this.belt.positionCm);
+      this.#cmPerUs = (this.forcedCmPerS ?? wants) * 1e-6;
+    }
+    if (us > this.nowUs) this.#runTo(us);
+  }
+
+  /** The encoder turns without the belt, by so many cm as it would read them, at this moment. */
+  slip(cm: number): void {
+    this.belt.slip(cm);
+    this.#followEncoder();
+  }
+
+  /** Runs to a time within the present millisecond, in which the speed stays as it is. */
+  #runTo(untilUs: number): void {
+    const { belt, board, animal } = this;
+    for (;;) {
+      let atUs = untilUs;
+      let event: number = EVENT.none;
+      if (this.#pending.nextUs < atUs) {
+        atUs = this.#pending.nextUs;
+        event = EVENT.input;
+      }
+      if (animal.licking.nextUs < atUs) {
+        atUs = animal.licking.nextUs;
+        event = EVENT.lick;
+      }
+      if (board.nextOutputUs < atUs) {
+        atUs = board.nextOutputUs;
+        event = EVENT.output;
+      }
+      const cmPerUs = this.#cmPerUs;
+      if (atUs < this.nowUs) atUs = this.nowUs;
+      if (cmPerUs !== 0) {
+        const forwards = cmPerUs > 0;
+        const cm = cmPerUs * (atUs - this.nowUs);
+        const markCm = forwards ? this.#mark.upCm : this.#mark.downCm;
+        const travelled = belt.travelCm + cm;
+        if (forwards ? travelled >= markCm : travelled < markCm) {
+          const us = this.nowUs + Math.ceil((markCm - belt.travelCm) / cmPerUs);
+          atUs = us < this.nowUs ? this.nowUs : Math.min(us, atUs);
+          event = EVENT.mark;
+        }
+        const slotUs = this.#slotUs(atUs);
+        if (slotUs <= atUs) {
+          this.#fireSlotAt(Math.max(slotUs, this.nowUs));
+          continue;
+        }
+        this.#moveBeltTo(atUs);
+      }
+      board.advanceTo(atUs);
+      this.nowUs = atUs;
+      if (event === EVENT.none) return;
+      this.#act(event);
+    }
+  }
+
+  #act(event: number): void {
+    const { board, wiring } = this;
+    if (event === EVENT.input) {
+      const { input, level } = this.#pending.take();
+      board.setInput(input, level);
+    } else if (event === EVENT.lick) {
+      this.#lick();
+    } else if (event === EVENT.mark) {
+      if (this.#mark.cross(this.#cmPerUs > 0)) this.#edge(wiring.seamInput, this.#mark.level);
+    }
+  }
+
+  /** Turns the belt to where it is at `atUs`; no slot lies on the way. */
+  #moveBeltTo(atUs: number): void {
+    this.belt.move(this.#cmPerUs * (atUs - this.nowUs));
+    this.#followEncoder();
+  }
+
+  #followEncoder(): void {
+    const count = Math.floor(this.belt.encoder);
+    if (count !== this.#count) {
+      this.board.move(count - this.#count);
+      this.#count = count;
+    }
+  }
+
+  /** When the encoder comes to the nearest armed slot in its direction; Infinity: not by `atUs`. */
+  #slotUs(atUs: number): number {
+    const { belt, board } = this;
+    const countsPerUs = this.#cmPerUs * belt.countsPerTravelCm;
+    const counts = Math.floor(belt.encoder + countsPerUs * (atUs - this.nowUs)) - this.#count;
+    if (counts > 0) {
+      const gap = board.countsToSlot(1);
+      if (counts < gap) return Number.POSITIVE_INFINITY;
+      return Math.min(
+        atUs,
+        this.nowUs + Math.ceil((this.#count + gap - belt.encoder) / countsPerUs),
+      );
+    }
+    if (counts < 0) {
+      const gap = board.countsToSlot(-1);
+      if (-counts < gap) return Number.POSITIVE_INFINITY;
+      return Math.min(
+        atUs,
+        this.nowUs + Math.ceil((this.#count - gap + 1 - belt.encoder) / countsPerUs),
+      );
+    }
+    return Number.POSITIVE_INFINITY;
+  }
+
+  /** The count that fires a slot happens at its own microsecond. */
+  #fireSlotAt(atUs: number): void {
+    const { belt, board } = this;
+    const forwards = this.#cmPerUs > 0;
+    const gap = board.countsToSlot(forwards ? 1 : -1);
+    belt.move(this.#cmPerUs * (atUs - this.nowUs));
+    const target = this.#count + (forwards ? gap : -gap);
+    board.move(target - this.#count - (forwards ? 1 : -1));
+    board.advanceTo(atUs);
+    board.move(forwards ? 1 : -1);
+    this.nowUs = atUs;
+    this.#count = target;
+    // Rounding must not set the encoder back over the count that it has just passed.
+    if (forwards) belt.encoder = Math.max(belt.encoder, target);
+    else belt.encoder = Math.min(belt.encoder, target + 1 - 1e-6);
+  }
+
+  #edge(input: number, level: 0 | 1): void {
+    const { markBounces } = this.belt.parameters;
+    this.board.setInput(input, level);
+    let us = this.nowUs;
+    for (let n = 0; n < markBounces; n++) {
+      us += this.#mark.bounceUs();
+      this.#pending.add(us, input, level === 1 ? 0 : 1);
+      us += this.#mark.bounceUs();
+      this.#pending.add(us, input, level);
+    }
+  }
+
+  #lick(): void {
+    const { animal, board, wiring } = this;
+    const { tongue } = animal.licking;
+    const contactUs = animal.licking.touch();
+    if (tongue) animal.licked();
+    board.setInput(wiring.lickInput, 1);
+    let us = this.nowUs;
+    for (let n = 0; n < this.#lickBounces; n++) {
+      us += Math.round(this.#dice.between(100, 900));
+      this.#pending.add(us, wiring.lickInput, 0);
+      us += Math.round(this.#dice.between(100, 900));
+      this.#pending.add(us, wiring.lickInput, 1);
+    }
+    this.#pending.add(this.nowUs + Math.max(contactUs, us - this.nowUs + 1), wiring.lickInput, 0);
+  }
+
+  #outputChanged(output: number, on: boolean, worldUs: number): void {
+    if (output !== this.wiring.valveOutput) return;
+    if (on) {
+      this.#valveOpenedUs = worldUs;
+      return;
+    }
+    const openUs = worldUs - this.#valveOpenedUs - this.valve.deadUs;
+    if (openUs > 0) {
+      this.animal.drop(openUs / this.valve.usPerUl, this.belt.positionCm, worldUs);
+    }
+  }
+}
