@@ -27,11 +27,12 @@ export interface PortDescription {
 }
 
 /** Every serial device that is connected now. */
-export async function describePorts(roots: SystemRoots = systemRoots): Promise<PortDescription[]> {
-  return process.platform === 'linux' ? describeLinux(roots) : describeElsewhere();
+export async function describePorts(): Promise<PortDescription[]> {
+  return process.platform === 'linux' ? describeLinux(systemRoots) : describeElsewhere();
 }
 
-function describeLinux(roots: SystemRoots): PortDescription[] {
+/** The same from Linux's own view of its devices, which tests lay out in a folder. */
+export function describeLinux(roots: SystemRoots): PortDescription[] {
   const stable = new Map([...stableNames(roots.dev)].map(([link, device]) => [device, link]));
   const users = usersOf(roots);
   return list(path.join(roots.sys, 'class/tty'))
@@ -39,11 +40,13 @@ function describeLinux(roots: SystemRoots): PortDescription[] {
     .map((name) => {
       const device = path.join(roots.dev, name);
       const link = stable.get(realPath(device) ?? device);
+      const facts = usbFacts(name, roots);
       return {
         path: link ?? device,
         device,
-        stable: link !== undefined,
-        ...usbFacts(name, roots),
+        // A UART on the board itself keeps its number.
+        stable: link !== undefined || facts.usb === null,
+        ...facts,
         usedBy: users.get(device) ?? null,
         warnings: portWarnings(device, roots),
       };

@@ -92,6 +92,7 @@ for (const means of ['terminal', 'stream'] as const) {
       link.start();
       await until('up', () => link.state === 'up');
       const first = board.terminal.path;
+      board.terminal.write(board.bytesOf('edge', { input: 1 }).subarray(0, 9));
       board.unplug();
       await until('down', () => handler.of('down').length === 1);
       expect(handler.of('down')[0]!.why.code).toMatch(/LINK_(UNPLUGGED|SILENT|WRITE_FAILED)/);
@@ -104,8 +105,31 @@ for (const means of ['terminal', 'stream'] as const) {
       await until('up again', () => upCount() === 2);
       expect(board.terminal.path).not.toBe(first);
       expect(handler.of('up')[1]!.event.sameBoot).toBe(true);
+      board.say('edge', { input: 2 });
+      await until('an edge', () => handler.of('edge').length > 0);
+      expect(handler.of('edge').map((item) => item.message.input)).toEqual([2]);
       expect(board.stale).toEqual([]);
       placeholder.unplug();
+    });
+
+    it('loses the link when the board takes nothing, and sends none of that under the next', async () => {
+      link.start();
+      await until('up', () => link.state === 'up');
+      board.terminal.pause(true);
+      let sent = 0;
+      // A pseudo-terminal holds some 20 kB; the frame that does not fit ends the connection.
+      while (link.send('beat', { finishedUs: sent, wanted: 0 })) sent++;
+      expect(link.send('quiet', { outputs: 0xffff })).toBe(false);
+      await until('down', () => handler.of('down').length === 1);
+      expect(handler.of('down')[0]!.why.code).toBe('LINK_WRITE_FAILED');
+      board.terminal.pause(false);
+      await until('up again', () => upCount() === 2);
+      expect(link.send('quiet', { outputs: 1 })).toBe(true);
+      await until('the only quiet', () => board.of('quiet').length > 0);
+      const last = board.received.findLastIndex((item) => item.name === 'identify');
+      const since = board.received.slice(last + 1);
+      expect(since.map((item) => item.name)).toEqual(['quiet']);
+      expect(since[0]!.tag).toBe(handler.of('up')[1]!.event.tag);
     });
 
     it('refuses a port that another link holds, and takes it when it is free', async () => {
