@@ -1,6 +1,13 @@
 import type { Instant, Trust } from '../rules/instant.js';
-import type { Clock, Edge, Identity, Outcome, Sample } from '../wire/messages.js';
-import { OUTCOME } from '../wire/messages.js';
+import {
+  type Clock,
+  type Edge,
+  type Identity,
+  OUTCOME,
+  type Outcome,
+  type Sample,
+  SYNC_EDGE,
+} from '../wire/messages.js';
 import { extend32 } from '../wire/time.js';
 import { type BeltConfig, SPEED_WINDOW_US, UNSEEN_US } from './beltConfig.js';
 import { BoardClock } from './boardClock.js';
@@ -8,6 +15,9 @@ import type { TrackEvent, TrackListener } from './events.js';
 import { LickSensor } from './lickSensor.js';
 import { SeamFollower } from './seamFollower.js';
 import { SpeedWindow } from './speedWindow.js';
+
+/** Inputs have a bit each in a sample. */
+const INPUTS = 16;
 
 /** An instant to be filled again and again. */
 export function blankInstant(): Instant {
@@ -155,17 +165,11 @@ export class Tracker {
     const heading = newest ? movedAtEdge - this.#moved : this.#moved - movedAtEdge;
     if (heading !== 0) this.#forwards = heading > 0;
     if (newest || !this.#counted) this.#move(m.count);
-    const bit = 1 << m.input;
-    if (m.level === 1) {
-      this.#inputs |= bit;
-      this.#rose |= bit;
-    } else {
-      this.#inputs &= ~bit;
-      this.#fell |= bit;
+    if (m.input < INPUTS) {
+      this.#inputEdge(m);
+    } else if ((m.input & SYNC_EDGE) !== 0) {
+      this.#outputIs(1 << (m.input & ~SYNC_EDGE), m.level === 1, this.#clock.stampUs);
     }
-    this.#differed &= ~bit;
-    if (bit === this.#lickBit) this.#lickEdge(m.level === 1, this.#clock.stampUs);
-    if (m.input === this.#seamInput) this.#seamEdge(m.level === 1, extend32(this.#count, m.count));
     this.#end(into);
   }
 
@@ -176,11 +180,8 @@ export class Tracker {
   outcome(m: Outcome): number {
     const stampUs = this.#clock.extend(m.boardUs);
     if (m.repeated !== 0) return stampUs;
-    const bit = 1 << m.output;
-    if (m.kind === OUTCOME.fired) this.#outputs |= bit;
-    else if (m.kind === OUTCOME.done) this.#outputs &= ~bit;
-    else return stampUs;
-    if ((bit & this.#artefactOutputs) !== 0) this.#lick?.outputChanged(stampUs);
+    const fired = m.kind === OUTCOME.fired;
+    if (fired || m.kind === OUTCOME.done) this.#outputIs(1 << m.output, fired, stampUs);
     return stampUs;
   }
 
@@ -370,6 +371,26 @@ export class Tracker {
     if (this.#travelFrom > this.#progressFrom) this.#progressFrom = this.#travelFrom;
     if (this.#progressFrom > this.#progress) this.#progress = this.#progressFrom;
     if (this.#travel > this.#progress) this.#progress = this.#travel;
+  }
+
+  #inputEdge(m: Edge): void {
+    const rose = m.level === 1;
+    const bit = 1 << m.input;
+    if (rose) {
+      this.#inputs |= bit;
+      this.#rose |= bit;
+    } else {
+      this.#inputs &= ~bit;
+      this.#fell |= bit;
+    }
+    this.#differed &= ~bit;
+    if (bit === this.#lickBit) this.#lickEdge(rose, this.#clock.stampUs);
+    if (m.input === this.#seamInput) this.#seamEdge(rose, extend32(this.#count, m.count));
+  }
+
+  #outputIs(bit: number, on: boolean, stampUs: number): void {
+    this.#outputs = on ? this.#outputs | bit : this.#outputs & ~bit;
+    if ((bit & this.#artefactOutputs) !== 0) this.#lick?.outputChanged(stampUs);
   }
 
   #outputsAre(outputs: number): void {
