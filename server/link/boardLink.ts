@@ -87,7 +87,7 @@ export class BoardLink {
       counters: this.counters,
       identity: (message) => this.#answered(message),
       earlyFault: (message) => this.#earlyFault(message),
-      untagged: () => this.#tagEnded(),
+      tagEnded: () => this.#tagEnded(),
       heard: () => {
         this.#heardMs = this.#timers.now();
       },
@@ -252,8 +252,10 @@ export class BoardLink {
   // ---- losing it -----------------------------------------------------------------------------
 
   #earlyFault(message: Fault): void {
-    // A board of another version may well answer with this alone.
-    if (message.fault === FAULT.badProtocol) this.#lose(protocolError(message.detail, ''));
+    if (message.fault !== FAULT.badProtocol) return;
+    // An identity that names its version comes first, unless that one was lost.
+    const text = `The board refuses protocol ${PROTOCOL_VERSION}, which this Lapwing speaks.`;
+    this.#lose(new LapwingError('linkProtocol', text));
   }
 
   /** The board goes on without a tag: it was reset, or its watchdog has tripped. */

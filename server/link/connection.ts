@@ -2,6 +2,7 @@ import type { LapwingError } from '../errors/codes.js';
 import { blank, FrameEncoder } from '../wire/codec.js';
 import { type BadFrame, type Frame, FrameDecoder } from '../wire/frameDecoder.js';
 import {
+  FAULT,
   type Fault,
   type HostMessageName,
   type Identity,
@@ -21,8 +22,8 @@ export interface ConnectionOwner {
   identity(message: Identity): void;
   /** A fault came before the handshake was done. */
   earlyFault(message: Fault): void;
-  /** A frame without a tag came while up: the board has left the connection. */
-  untagged(): void;
+  /** The board has left the connection: it said so, or sent a frame without a tag. */
+  tagEnded(): void;
   /** At least one good frame under the tag came in what was just handed on. */
   heard(): void;
   portClosed(why: LapwingError): void;
@@ -101,10 +102,7 @@ export class Connection implements PortListener {
     counters.frames++;
     const { type } = frame.shape;
     if (type === MESSAGES.identity.type) {
-      this.#sequence = frame.sequence;
-      const identity = blank('identity');
-      frame.read(identity);
-      this.#owner.identity(identity);
+      this.#identity(frame);
       return;
     }
     if (!this.#up || frame.tag !== this.#tag) {
@@ -134,6 +132,8 @@ export class Connection implements PortListener {
       case MESSAGES.fault.type:
         frame.read(this.#fault);
         handler.fault(this.#fault);
+        // Its last word under this tag.
+        if (this.#fault.fault === FAULT.watchdogOutputs) this.#owner.tagEnded();
         break;
       case MESSAGES.clock.type:
         frame.read(this.#clock);
@@ -143,6 +143,18 @@ export class Connection implements PortListener {
         // A message that only hosts send: an echo, or two hosts on one line.
         counters.foreign++;
     }
+  }
+
+  #identity(frame: Frame): void {
+    // A board that has been reset speaks first, under no tag.
+    if (this.#up && frame.tag === 0) {
+      this.#owner.tagEnded();
+      return;
+    }
+    this.#sequence = frame.sequence;
+    const identity = blank('identity');
+    frame.read(identity);
+    this.#owner.identity(identity);
   }
 
   /** A frame that is not of this connection; only what it says about the connection matters. */
@@ -162,7 +174,7 @@ export class Connection implements PortListener {
       frame.read(this.#fault);
       this.#owner.handler.fault(this.#fault);
     }
-    this.#owner.untagged();
+    this.#owner.tagEnded();
   }
 
   #bad(why: BadFrame): void {

@@ -124,11 +124,11 @@ describe('the handshake', () => {
   it('understands a board that refuses our protocol with a fault alone', async () => {
     const rig = new VirtualLink();
     rig.board.answers = false;
-    rig.board.onMessage = () => rig.board.say('fault', { fault: FAULT.badProtocol, detail: 4 });
+    rig.board.onMessage = () => rig.board.say('fault', { fault: FAULT.badProtocol, detail: 1 });
     rig.link.start();
     await rig.timers.advance(50);
     expect(rig.handler.of('waiting')[0]!.why.message).toBe(
-      'The board speaks protocol 4; this Lapwing speaks 1.',
+      'The board refuses protocol 1, which this Lapwing speaks.',
     );
   });
 
@@ -303,14 +303,24 @@ describe('losing the link', () => {
     expect(rig.attempts.length).toBe(1);
   });
 
+  it('shakes hands again when a frame without a tag is all that tells of the end', async () => {
+    const rig = new VirtualLink();
+    await rig.up();
+    rig.board.reset();
+    rig.board.say('fault', { fault: FAULT.brownOut });
+    await rig.timers.advance(1);
+    expect(rig.handler.of('fault').map((item) => item.message.fault)).toEqual([FAULT.brownOut]);
+    expect(rig.handler.of('down').map((item) => item.why.code)).toEqual(['LINK_TAG_ENDED']);
+    expect(rig.link.state).toBe('up');
+  });
+
   it('tells a board that was reset from one that only lost its connection', async () => {
     const rig = new VirtualLink();
     await rig.up();
     rig.board.reset();
     rig.board.say('identity', { ...rig.board.identity, nonce: 0 });
-    rig.board.say('sample');
     await rig.timers.advance(1);
-    expect(rig.handler.of('down').length).toBe(1);
+    expect(rig.handler.of('down').map((item) => item.why.code)).toEqual(['LINK_TAG_ENDED']);
     const { event } = rig.handler.of('up')[1]!;
     expect(event).toMatchObject({ sameBoard: true, sameBoot: false });
     expect(event.previous!.bootId).not.toBe(event.identity.bootId);
