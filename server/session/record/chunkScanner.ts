@@ -16,13 +16,14 @@ export interface ChunkSink {
 export type Ending = { readonly kind: 'closed' | 'open' } | { kind: 'torn'; bytesLost: number };
 
 const MAGIC = [0x89, 0x4d, 0x43, 0x41, 0x50, 0x30, 0x0d, 0x0a];
-const OPCODE = { header: 0x01, chunk: 0x06, messageIndex: 0x07, metadata: 0x0c, dataEnd: 0x0f };
+const OPCODE = { header: 0x01, chunk: 0x06, messageIndex: 0x07, dataEnd: 0x0f };
 const RECORD_HEADER = 9;
 /** Data end, footer and magic of a file without a summary. */
 const CLOSING_BYTES = 13 + 29 + MAGIC.length;
 const CHUNK_HEADER = 40;
 /** No chunk, compressed or not, that was ever written is near this. */
 const CHUNK_MOST = 1 << 28;
+const HEADER_MOST = 1024;
 const WINDOW = 1 << 22;
 
 /**
@@ -85,14 +86,29 @@ export class ChunkScanner {
       case OPCODE.chunk:
         return this.#chunk(at, length, sink) ? next : undefined;
       case OPCODE.header:
+        return this.#headerFits(at, length) ? next : undefined;
       case OPCODE.messageIndex:
-      case OPCODE.metadata:
-        return length < CHUNK_MOST ? next : undefined;
+        return this.#indexFits(at, length) ? next : undefined;
       case OPCODE.dataEnd:
         return length === 4 ? 'end' : undefined;
       default:
         return undefined;
     }
+  }
+
+  // No CRC covers these two: a wrong length, which would hide the chunks after it, is known by the
+  // lengths inside.
+
+  #headerFits(at: number, length: number): boolean {
+    if (length < 8 || length > HEADER_MOST) return false;
+    const whole = this.#bytes(at, RECORD_HEADER + length);
+    const profile = whole.readUInt32LE(RECORD_HEADER);
+    if (profile > length - 8) return false;
+    return whole.readUInt32LE(RECORD_HEADER + 4 + profile) === length - 8 - profile;
+  }
+
+  #indexFits(at: number, length: number): boolean {
+    return length >= 6 && this.#bytes(at, RECORD_HEADER + 6).readUInt32LE(11) === length - 6;
   }
 
   #chunk(at: number, length: number, sink: ChunkSink | undefined): boolean {

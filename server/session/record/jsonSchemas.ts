@@ -177,6 +177,8 @@ export const INPUT_SCHEMAS = {
       kind: oneOf('Which.', 'link up', 'link down'),
       identity: wireMessage('identity'),
       tag: whole('Up: the tag every frame of this connection carries.'),
+      sameBoot: yes('Up: the board had not restarted since it was last heard.'),
+      overNetwork: yes('Up: the board is reached over a network.'),
       reason: text('Down: why.'),
     },
     ['input', 'kind'],

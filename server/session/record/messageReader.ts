@@ -1,5 +1,4 @@
 import { LapwingError } from '../../errors/codes.js';
-import type { Beat, Sample } from '../../wire/messages.js';
 import { CHANNELS, RECORD_FORMAT } from './channels.js';
 import { readMicroseconds } from './chunkBuffer.js';
 import type { ChunkSink } from './chunkScanner.js';
@@ -11,7 +10,7 @@ import { SampleReader, type SampleVisitor } from './sampleReader.js';
 
 /** Told each message as it is stored: for copying a record. The bytes are reused after the call. */
 export type MessageSink = (
-  channel: number,
+  topic: string,
   sequence: number,
   timeUs: number,
   data: Uint8Array,
@@ -46,11 +45,13 @@ export class MessageReader implements ChunkSink {
   closed = false;
   /** Of a finished file: how many segments it holds; else 0. */
   joined = 0;
+  /** What a finished file says was missing from those it was made from. */
+  readonly carried: Trouble[] = [];
   readonly #visitor: RecordVisitor;
   readonly #raw: MessageSink | undefined;
   readonly #troubles: Trouble[];
   readonly #samples = new SampleReader();
-  readonly #sampleVisitor: SampleVisitor;
+  readonly #sampleVisitor: SampleVisitor = {};
   /** Where the writer asked its host how long a silence was, the answer is in the log time. */
   readonly #clock = new RecordClock(undefined, () =>
     this.header === undefined ? 0 : this.timeUs - this.header.startedAtMs * 1000,
@@ -58,31 +59,19 @@ export class MessageReader implements ChunkSink {
   readonly #text = new TextDecoder();
   /** By the ids of this file. */
   #what: What[] = [];
+  #topics: string[] = [];
   #file = '';
   /** A trouble just noticed whose far side is not yet known. */
   #damage: { bytes: number; fromUs: number | null; toUs: number | null } | undefined;
-  #lastRawUs = 0;
 
   constructor(visitor: RecordVisitor, raw: MessageSink | undefined, troubles: Trouble[]) {
     this.#visitor = visitor;
     this.#raw = raw;
     this.#troubles = troubles;
-    // The newest stamp is wanted for the clock even where no samples are.
-    const keep = (boardUs: number) => {
-      this.#lastRawUs = boardUs;
-    };
-    this.#sampleVisitor = {
-      sample:
-        visitor.sample === undefined
-          ? (_input: number, sample: Sample) => keep(sample.boardUs)
-          : (input: number, sample: Sample) => {
-              this.#lastRawUs = sample.boardUs;
-              visitor.sample!(input, sample);
-            },
-    };
+    if (visitor.sample !== undefined)
+      this.#sampleVisitor.sample = (input, sample) => visitor.sample!(input, sample);
     if (visitor.command !== undefined)
-      this.#sampleVisitor.beat = (input: number, beat: Beat) =>
-        visitor.command!(input, 'beat', beat);
+      this.#sampleVisitor.beat = (input, beat) => visitor.command!(input, 'beat', beat);
   }
 
   clockPoint(): ClockPoint | undefined {
@@ -95,7 +84,8 @@ export class MessageReader implements ChunkSink {
     this.closed = false;
     // Until the file's own channels are read: should they be damaged, it has those of this version.
     this.#what = [];
-    for (const { id, topic } of CHANNELS) this.#what[id] = whatIs(topic);
+    this.#topics = [];
+    for (const { id, topic } of CHANNELS) this.#name(id, topic);
   }
 
   end(): void {
@@ -120,7 +110,12 @@ export class MessageReader implements ChunkSink {
   #channel(records: Uint8Array, view: DataView, at: number): void {
     const length = view.getUint32(at + 4, true);
     const topic = this.#text.decode(records.subarray(at + 8, at + 8 + length));
-    this.#what[view.getUint16(at, true)] = whatIs(topic);
+    this.#name(view.getUint16(at, true), topic);
+  }
+
+  #name(id: number, topic: string): void {
+    this.#what[id] = whatIs(topic);
+    this.#topics[id] = topic;
   }
 
   #message(records: Uint8Array, view: DataView, at: number, end: number): void {
@@ -132,7 +127,7 @@ export class MessageReader implements ChunkSink {
     if (what === 'segment') {
       if (this.#damage !== undefined) this.#noteDamage(timeUs);
       this.#segment(records.subarray(from, end), timeUs);
-      this.#raw?.(channel, number, timeUs, records.subarray(from, end));
+      this.#raw?.(this.#topics[channel] ?? '', number, timeUs, records.subarray(from, end));
       return;
     }
     // Numbers are stored modulo 2^32; the nearest is meant.
@@ -146,14 +141,15 @@ export class MessageReader implements ChunkSink {
     this.count += ahead + 1;
     this.timeUs = timeUs;
     this.closed = false;
-    this.#raw?.(channel, number, timeUs, records.subarray(from, end));
+    this.#raw?.(this.#topics[channel] ?? '', number, timeUs, records.subarray(from, end));
     this.#tell(what, records, from, end);
   }
 
   #tell(what: What, records: Uint8Array, from: number, end: number): void {
     if (what === 'samples') {
       this.lastInput = this.#samples.read(records, from, end, this.#sampleVisitor);
-      this.#clock.raw(this.#lastRawUs);
+      this.#clock.raw(this.#samples.firstBoardUs);
+      this.#clock.raw(this.#samples.lastBoardUs);
       return;
     }
     const { decision, command } = this.#visitor;
@@ -207,7 +203,7 @@ export class MessageReader implements ChunkSink {
       return;
     }
     this.closed = true;
-    if (message.losses !== undefined) this.#troubles.push(...message.losses);
+    if (message.losses !== undefined) this.carried.push(...message.losses);
     const lost = message.messages - this.count;
     if (lost > 0) {
       this.#noteMissing(lost, null, timeUs);

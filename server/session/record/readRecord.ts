@@ -100,12 +100,14 @@ export class RecordReader {
       lastInput: messages.lastInput,
       clock: messages.clockPoint(),
     };
+    const all = [...messages.carried, ...troubles];
     return {
-      state: worstOf(troubles),
+      state: worstOf(all),
       finished: messages.joined > 0,
       messages: messages.count,
       lastInput: messages.lastInput,
-      troubles,
+      troubles: all,
+      found: troubles.length,
     };
   }
 

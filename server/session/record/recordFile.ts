@@ -1,5 +1,6 @@
 import fs from 'node:fs';
 import path from 'node:path';
+import { syncFolder } from '../writeFileWhole.js';
 
 /** One file being written at its end; a test can put one here that fails as a disk does. */
 export interface RecordFile {
@@ -35,14 +36,3 @@ export const diskFiles: RecordFiles = {
   },
   remove: (file) => fs.rmSync(file, { force: true }),
 };
-
-/** Makes a new name in the folder last over a power cut; Windows has no such call and needs none. */
-export function syncFolder(folder: string): void {
-  if (process.platform === 'win32') return;
-  const fd = fs.openSync(folder, 'r');
-  try {
-    fs.fsyncSync(fd);
-  } finally {
-    fs.closeSync(fd);
-  }
-}

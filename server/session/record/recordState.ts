@@ -47,7 +47,10 @@ export interface RecordState {
   readonly messages: number;
   /** The newest input that could be read; -1: none. */
   readonly lastInput: number;
+  /** Known when the record was finished, then found in the files as they are now. */
   readonly troubles: readonly Trouble[];
+  /** How many of them, at the end of the list, were found in the files as they are now. */
+  readonly found: number;
 }
 
 export function worstOf(troubles: readonly Trouble[]): RecordState['state'] {

@@ -209,6 +209,7 @@ export class Recorder {
   #closeBlock(): void {
     const block = this.#block;
     if (block.samples === 0) return;
+    this.#clock.raw(block.firstBoardUs);
     this.#clock.raw(block.lastBoardUs);
     this.#add(SAMPLES_CHANNEL, block.close());
   }

@@ -17,8 +17,9 @@ export class SampleBlock {
   samples = 0;
   /** Raw board time of the newest sample. */
   lastBoardUs = 0;
+  /** Raw board time of the first. */
+  firstBoardUs = 0;
   #input = 0;
-  #firstBoardUs = 0;
   #firstCount = 0;
   #lastCount = 0;
   #inputs = 0;
@@ -80,7 +81,7 @@ export class SampleBlock {
 
   #begin(input: number, m: Sample): void {
     this.#input = input;
-    this.#firstBoardUs = this.lastBoardUs = m.boardUs;
+    this.firstBoardUs = this.lastBoardUs = m.boardUs;
     this.#firstCount = this.#lastCount = m.count;
     this.#inputs = m.inputs;
     this.#outputs = m.outputs;
@@ -95,7 +96,7 @@ export class SampleBlock {
   close(): Uint8Array {
     const out = this.#out;
     let at = writeField(out, 0, F.input.tag, this.#input);
-    at = writeField(out, at, F.boardUs.tag, this.#firstBoardUs >>> 0);
+    at = writeField(out, at, F.boardUs.tag, this.firstBoardUs >>> 0);
     const first = this.#firstCount;
     at = writeField(out, at, F.count.tag, ((first << 1) ^ (first >> 31)) >>> 0);
     at = writeField(out, at, F.inputs.tag, this.#inputs);

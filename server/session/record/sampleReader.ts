@@ -10,6 +10,9 @@ export interface SampleVisitor {
 
 /** Decodes blocks of samples (`sampleSchema.ts`) into one reused sample. */
 export class SampleReader {
+  /** Raw board times of the first and the last sample of the block read last. */
+  firstBoardUs = 0;
+  lastBoardUs = 0;
   readonly #sample: Sample = {
     boardUs: 0,
     count: 0,
@@ -26,8 +29,7 @@ export class SampleReader {
   #at = 0;
 
   /**
-   * Hands over every sample of the block from input `after` + 1 on, and returns the sequence number
-   * of the last one. Throws `RangeError` where the bytes are no such block.
+   * Hands over every sample of the block and returns the sequence number of the last one. Throws `RangeError` where the bytes are no such block.
    */
   read(data: Uint8Array, start: number, end: number, visitor: SampleVisitor): number {
     const sample = this.#sample;
@@ -82,7 +84,9 @@ export class SampleReader {
       }
     }
     if (samples === 0) throw malformed();
+    this.firstBoardUs = sample.boardUs;
     this.#replay(data, input, samples, visitor);
+    this.lastBoardUs = sample.boardUs;
     return input + samples - 1;
   }
 

@@ -1,0 +1,115 @@
+import fs from 'node:fs';
+import path from 'node:path';
+import { fileURLToPath } from 'node:url';
+import { LapwingError } from '../errors/codes.js';
+import { CAPABILITY, type Identity } from '../wire/messages.js';
+import { writeFileWhole } from './writeFileWhole.js';
+
+const NAME = 'session.json';
+
+/** `session.json`; each field is explained in `session.schema.json`. */
+export interface SessionDescription {
+  readonly format: 1;
+  readonly name: string;
+  readonly subject: string;
+  readonly experimenter: string | null;
+  readonly protocolNumber: string | null;
+  readonly sessionNumber: number | null;
+  readonly title: string;
+  /** RFC 3339 with the zone's offset, as `rfc3339` makes it. */
+  readonly startedAt: string;
+  readonly software: {
+    readonly name: 'lapwing';
+    readonly version: string;
+    readonly node?: string;
+    readonly platform?: string;
+  };
+  readonly board: BoardDescription | null;
+  readonly seed: string;
+  readonly calibrations: readonly {
+    readonly of: string;
+    readonly madeAt?: string;
+    readonly values: Readonly<Record<string, number | string>>;
+  }[];
+  readonly files: readonly StoredFile[];
+  readonly ended: SessionEnd | null;
+  /** What was given, by the board's word; uncertain: drops that nobody can account for. */
+  readonly water?: { readonly givenUl: number; readonly uncertainUl: number };
+  readonly record?: {
+    readonly state: 'whole' | 'open' | 'torn' | 'damaged';
+    readonly messages: number;
+    readonly lastInput: number;
+    readonly bytes: number;
+    readonly missing: readonly string[];
+  };
+}
+
+export interface SessionEnd {
+  readonly how: 'rules' | 'operator' | 'signal' | 'error' | 'mended';
+  readonly at: string;
+  readonly reason: string;
+}
+
+export interface BoardDescription {
+  readonly model: string;
+  readonly boardId: number;
+  readonly firmware: number;
+  readonly protocol: number;
+  readonly simulated: boolean;
+}
+
+export interface StoredFile {
+  readonly role: 'rig' | 'rules' | 'included';
+  /** Path in the session folder, with `/`. */
+  readonly stored: string;
+  /** What it was called where it came from. */
+  readonly source: string;
+  readonly bytes: number;
+  readonly sha256: string;
+}
+
+export function describeBoard(identity: Identity): BoardDescription {
+  const { model, boardId, firmware, protocol, capabilities } = identity;
+  const simulated = (capabilities & CAPABILITY.simulated) !== 0;
+  return { model, boardId, firmware, protocol, simulated };
+}
+
+/** The time as RFC 3339 section 5.6 writes it, in this computer's zone, to the millisecond. */
+export function rfc3339(time: Date): string {
+  const east = -time.getTimezoneOffset();
+  const local = new Date(time.getTime() + east * 60_000).toISOString().slice(0, -1);
+  const two = (value: number) => String(Math.floor(Math.abs(value))).padStart(2, '0');
+  return `${local}${east < 0 ? '-' : '+'}${two(east / 60)}:${two(east % 60)}`;
+}
+
+/** Writes the description: a reader, or a power cut, finds the old one or the new one, whole. */
+export function writeDescription(folder: string, description: SessionDescription): void {
+  writeFileWhole(path.join(folder, NAME), JSON.stringify(description, undefined, 2) + '\n');
+}
+
+/** Reads the description as it is; throws `RECORD_DESCRIPTION_BAD` where that cannot be. */
+export function readDescription(folder: string): SessionDescription {
+  const file = path.join(folder, NAME);
+  try {
+    const value: unknown = JSON.parse(fs.readFileSync(file, 'utf8'));
+    if (typeof value !== 'object' || value === null || (value as { format?: unknown }).format !== 1)
+      throw new Error('it is not a description of format 1');
+    return value as SessionDescription;
+  } catch (error) {
+    throw new LapwingError('recordDescriptionBad', `${file}: ${(error as Error).message}`, {
+      cause: error,
+    });
+  }
+}
+
+/** Changes some fields of the description, whole as `writeDescription` does; others are kept. */
+export function updateDescription(folder: string, change: Partial<SessionDescription>): void {
+  writeDescription(folder, { ...readDescription(folder), ...change });
+}
+
+/** The JSON Schema of `session.json` (draft 2020-12), where a build or the sources keep it. */
+export function sessionSchemaFile(): string {
+  const beside = fileURLToPath(new URL('./session.schema.json', import.meta.url));
+  if (fs.existsSync(beside)) return beside;
+  return fileURLToPath(new URL('../../../server/session/session.schema.json', import.meta.url));
+}
