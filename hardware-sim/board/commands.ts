@@ -113,7 +113,8 @@ export class Commands {
     if (line === undefined) return;
     const idleHigh = (message.flags & CONFIGURE_FLAG.idleHigh) !== 0;
     // A changed idle level is a change at the pin, and 0 is never: the owner ends first.
-    if (line.owner !== 'none' && (line.idleHigh !== idleHigh || message.longestOnUs === 0)) {
+    const ends = line.idleHigh !== idleHigh || message.longestOnUs === 0;
+    if (line.owner !== 'none' && (ends || line.syncForbidden(message))) {
       this.#bank.stop(message.output, REASON.cut);
     }
     line.configure(message);

@@ -211,6 +211,14 @@ export class OutputLine {
     );
   }
 
+  /** Would this sync train break these limits? */
+  syncForbidden(message: Configure): boolean {
+    return (
+      this.owner === 'sync' &&
+      (this.#widthUs > message.longestOnUs || this.#leastWaitUs < message.leastGapUs)
+    );
+  }
+
   beginSync(widthUs: number, leastUs: number, mostUs: number, seed: number, nowUs: number): void {
     this.owner = 'sync';
     this.#widthUs = widthUs;
