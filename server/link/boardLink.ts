@@ -17,7 +17,7 @@ import { hostTimers, type Timer, type Timers } from './timers.js';
 /** A board sends at least every 5 ms; after this long without a good frame the link is lost. */
 export const SILENCE_MS = 250;
 /** The silence may be our own (a suspended host): what waits in the kernel gets this long. */
-export const GRACE_MS = 5;
+export const GRACE_MS = 20;
 /** `identify` is sent again after this long, and given up after `ANSWER_MS`. */
 export const IDENTIFY_MS = 250;
 /** Long enough for a board whose boot loader runs first when its port is opened. */

@@ -4,7 +4,11 @@ import { SerialPort } from 'serialport';
 import { LapwingError } from '../errors/codes.js';
 import type { BytePort, PortListener } from './bytePort.js';
 import { openError } from './openError.js';
+import { PrefixViews } from './prefixViews.js';
 import { openSerialStream } from './serialStreamPort.js';
+
+/** A terminal hands over at most 4 kB at once on Linux. (from memory) */
+const READ_BYTES = 4_096;
 
 export interface SerialOptions {
   /** Line speed, bits a second; a pseudo-terminal ignores it. */
@@ -81,9 +85,10 @@ class TerminalPort implements BytePort {
     this.#binding = binding;
     this.#fd = fd;
     // One buffer for every read, where a stream would take a new one of 64 kB each time.
+    const views = new PrefixViews(READ_BYTES);
     const onread = {
-      buffer: Buffer.alloc(16_384),
-      callback: (length: number, buffer: Buffer) => this.#received(buffer.subarray(0, length)),
+      buffer: views.buffer,
+      callback: (length: number) => this.#received(views.of(length)),
     };
     this.#stream = new tty.ReadStream(fd, { onread } as object);
     const handle = (this.#stream as unknown as { _handle: { fd?: number } })._handle;

@@ -1,8 +1,10 @@
 import net from 'node:net';
 import { LapwingError } from '../errors/codes.js';
 import type { BytePort, PortListener } from './bytePort.js';
+import { PrefixViews } from './prefixViews.js';
 
 const CONNECT_MS = 2_000;
+const READ_BYTES = 16_384;
 
 /**
  * Connects to a board (a simulated one: real stimulus outputs are refused over a network) at
@@ -12,14 +14,12 @@ export function openTcp(host: string, port: number): Promise<BytePort> {
   const name = `tcp://${host.includes(':') ? `[${host}]` : host}:${port}`;
   return new Promise((resolve, reject) => {
     const opened = new TcpPort(name);
+    const views = new PrefixViews(READ_BYTES);
     const socket = net.connect({
       host,
       port,
       noDelay: true,
-      onread: {
-        buffer: Buffer.alloc(16_384),
-        callback: (length, buffer) => opened.received(buffer.subarray(0, length)),
-      },
+      onread: { buffer: views.buffer, callback: (length) => opened.received(views.of(length)) },
     });
     const fail = (error: LapwingError) => {
       socket.destroy();

@@ -236,7 +236,7 @@ describe('losing the link', () => {
     const rig = new VirtualLink();
     await rig.up();
     rig.sample(false);
-    await rig.timers.advance(SILENCE_MS + GRACE_MS - 6);
+    await rig.timers.advance(SILENCE_MS + GRACE_MS - 11);
     rig.board.say('sample');
     await rig.timers.advance(SILENCE_MS - 10);
     expect(rig.link.state).toBe('up');
