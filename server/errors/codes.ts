@@ -203,6 +203,26 @@ export const ERRORS = {
     "The session's description, `session.json`, is missing or not as its schema says.",
     'Compare it with `server/session/session.schema.json`, and mend it by hand; the record does not depend on it.',
   ),
+  rulesInvalid: entry(
+    'RULES_INVALID',
+    'The rules file has mistakes.',
+    'Correct each place named; `lapwing check RULES --rig RIG` shows them again.',
+  ),
+  rulesOutside: entry(
+    'RULES_OUTSIDE',
+    'The rules file asked for does not lie in the rules folder.',
+    'Choose one of the files listed, or start with another `--rules` folder.',
+  ),
+  loopFailed: entry(
+    'LOOP_FAILED',
+    'The loop met an error that it does not know.',
+    'The outputs are idle and the record is kept. Keep the text above; it is a fault in Lapwing.',
+  ),
+  loopNoBoard: entry(
+    'LOOP_NO_BOARD',
+    'No board answers, so no session can begin.',
+    'Look at the port and the cable; `lapwing ports` lists what is connected.',
+  ),
   loopRigTaken: entry(
     'LOOP_RIG_TAKEN',
     'Another Lapwing runs this rig.',

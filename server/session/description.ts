@@ -33,6 +33,8 @@ export interface SessionDescription {
   }[];
   readonly files: readonly StoredFile[];
   readonly ended: SessionEnd | null;
+  /** Given earlier that day, which the day's limit counts. */
+  readonly waterEarlierUl?: number;
   /** What was given, by the board's word; uncertain: drops that nobody can account for. */
   readonly water?: { readonly givenUl: number; readonly uncertainUl: number };
   readonly record?: {

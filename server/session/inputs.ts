@@ -10,7 +10,15 @@ export type EngineInput =
   | { readonly kind: 'outcome'; readonly message: Outcome }
   | { readonly kind: 'fault'; readonly message: Fault }
   | { readonly kind: 'clock'; readonly message: Clock }
-  | { readonly kind: 'link up'; readonly identity: Identity; readonly tag: number }
+  | {
+      readonly kind: 'link up';
+      readonly identity: Identity;
+      readonly tag: number;
+      /** The board had not restarted since it was last heard. */
+      readonly sameBoot: boolean;
+      /** Over a network: real stimuli are refused. */
+      readonly overNetwork: boolean;
+    }
   | { readonly kind: 'link down'; readonly reason: string }
   /** Frames that the sequence numbers say were lost. */
   | { readonly kind: 'gap'; readonly frames: number }

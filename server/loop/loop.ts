@@ -1,0 +1,435 @@
+import { existsSync, readFileSync, rmSync } from 'node:fs';
+import { resolve, sep } from 'node:path';
+import { setTimeout as delay } from 'node:timers/promises';
+import type { Logger } from 'pino';
+import { LapwingError } from '../errors/codes.js';
+import { BoardLink } from '../link/boardLink.js';
+import type { LinkHandler, LinkUp } from '../link/linkHandler.js';
+import { portOpener } from '../link/resolvePort.js';
+import { packageVersion } from '../packageRoot.js';
+import type { StampedDecision } from '../session/decisions.js';
+import type { Actor, OperatorAct, RareInput } from '../session/inputs.js';
+import { idleRules, newSeed, prepareRules } from '../session/prepare.js';
+import { readRecord } from '../session/record/readRecord.js';
+import { Recorder } from '../session/record/recorder.js';
+import type { TroubleKind } from '../session/record/segmentLog.js';
+import type { Rig } from '../session/rig/rig.js';
+import { SessionRunner } from '../session/runner.js';
+import { describeEnd, openSession, recordHeaderOf, waterTodayNl } from '../session/store.js';
+import { writeFileWhole } from '../session/writeFileWhole.js';
+import { CAPABILITY, type Sample } from '../wire/messages.js';
+import { checkAct } from './checkAct.js';
+import { EventRing } from './eventRing.js';
+import { finishRecord, LiveRecord } from './liveRecord.js';
+import { LocalServer, type LoopService } from './localServer.js';
+import type { BeginOptions, LoopOptions, LoopReport } from './options.js';
+import type { ClientMessage, Setup, Snapshot } from './protocol.js';
+import { type RigAddress, rigAddress } from './rigLock.js';
+import { type RunningSession, setupOf, snapshotOf } from './view.js';
+
+const EVENTS_KEPT = 20_000;
+const TICK_MS = 20;
+/** What was cut short at the end is reported within a few frames. */
+const LAST_WORDS_MS = 600;
+
+/** The running session as a restarted loop finds it. */
+interface CurrentSession {
+  readonly folder: string;
+  readonly rulesPath: string;
+  readonly subject: string;
+  readonly experimenter: string;
+  readonly seed: string;
+  readonly startedAt: string;
+  readonly waterTodayNl: number;
+}
+
+/**
+ * One rig's loop: owns the port and the record, and runs one session after another. Between
+ * sessions the same code follows the belt with rules that do nothing, so that the page shows the
+ * animal before anything is begun.
+ */
+export class Loop implements LinkHandler, LoopService {
+  readonly version = packageVersion;
+  readonly rig: string;
+  readonly events = new EventRing(EVENTS_KEPT);
+  readonly #rigFile: Rig;
+  readonly #options: LoopOptions;
+  readonly #log: Logger;
+  readonly #report: (report: LoopReport) => void;
+  readonly #leave: () => void;
+  readonly #address: RigAddress;
+  readonly #server: LocalServer;
+  readonly #link: BoardLink;
+  readonly #record: LiveRecord;
+  readonly #recordFolder: string;
+  readonly #rulesFolder: string;
+  #runner: SessionRunner;
+  #session: RunningSession | undefined;
+  #ended: string | null = null;
+  #lastUp: LinkUp | undefined;
+  #toBegin: BeginOptions | undefined;
+  #tick: NodeJS.Timeout | undefined;
+  #framesBefore = 0;
+  #framesAtMs = performance.now();
+  #framesPerS = 0;
+  #closing: Promise<void> = Promise.resolve();
+
+  constructor(
+    rig: Rig,
+    options: LoopOptions,
+    log: Logger,
+    report: (report: LoopReport) => void,
+    leave: () => void,
+  ) {
+    this.rig = rig.name;
+    this.#rigFile = rig;
+    this.#options = options;
+    this.#log = log;
+    this.#report = report;
+    this.#leave = leave;
+    this.#recordFolder = options.recordFolder ?? rig.recordFolder;
+    this.#rulesFolder = options.rulesFolder ?? rig.rulesFolder;
+    this.#address = rigAddress(rig.name);
+    this.#server = new LocalServer(this, this.#address);
+    this.#record = new LiveRecord(this.#recordFolder, (kind, error) => this.#trouble(kind, error));
+    this.#runner = this.#idleRunner();
+    const { baudRate, boardId } = rig;
+    this.#link = new BoardLink({
+      openPort: portOpener(options.port ?? rig.port, { baudRate }),
+      handler: this,
+      ...(boardId === undefined ? {} : { boardId }),
+    });
+  }
+
+  /** @throws LapwingError LOOP_RIG_TAKEN, or what is wrong with the rules file to begin with */
+  async start(): Promise<void> {
+    await this.#server.open();
+    if (existsSync(this.#address.currentFile)) await this.#resume();
+    else this.#toBegin = this.#options.begin;
+    this.#link.start();
+    this.#tick = setInterval(() => this.#everyTick(), TICK_MS);
+    this.#report({ report: 'ready' });
+  }
+
+  /** Ends the session, waits briefly for the board's last words, and closes the record. */
+  async close(reason: string): Promise<void> {
+    if (this.#session !== undefined) {
+      this.#take({ kind: 'operator', act: { act: 'end', reason }, by: SELF });
+      const untilMs = performance.now() + LAST_WORDS_MS;
+      while (this.#session !== undefined && performance.now() < untilMs) await delay(5);
+      if (this.#session !== undefined) this.down(new LapwingError('linkSilent', reason));
+    }
+    this.#link.send('quiet', { outputs: 0xffff });
+    clearInterval(this.#tick);
+    await this.#link.close();
+    this.#server.close();
+  }
+
+  // ---- the board -----------------------------------------------------------------------------
+
+  sample(message: Sample): void {
+    this.#runner.sample(message);
+  }
+  edge(message: Extract<RareInput, { kind: 'edge' }>['message']): void {
+    this.#take({ kind: 'edge', message });
+  }
+  outcome(message: Extract<RareInput, { kind: 'outcome' }>['message']): void {
+    this.#take({ kind: 'outcome', message });
+  }
+  fault(message: Extract<RareInput, { kind: 'fault' }>['message']): void {
+    this.#log.warn({ fault: message }, 'the board reported a fault');
+    this.#take({ kind: 'fault', message });
+  }
+  clock(message: Extract<RareInput, { kind: 'clock' }>['message']): void {
+    this.#take({ kind: 'clock', message });
+  }
+  gap(frames: number): void {
+    this.#take({ kind: 'gap', frames });
+  }
+  badFrame(why: string): void {
+    this.#take({ kind: 'bad frame', why });
+  }
+
+  up(event: LinkUp): void {
+    this.#log.info({ port: event.port, model: event.identity.model }, 'the board answers');
+    this.#lastUp = event;
+    this.#take(linkUpInput(event));
+    const begin = this.#toBegin;
+    if (begin === undefined) return;
+    this.#toBegin = undefined;
+    try {
+      this.#begin(begin);
+    } catch (error) {
+      this.#fail(error);
+    }
+  }
+
+  down(why: LapwingError): void {
+    this.#log.warn({ code: why.code }, why.message);
+    this.#take({ kind: 'link down', reason: why.message });
+    this.batchEnd();
+  }
+
+  waiting(why: LapwingError, retryMs: number): void {
+    this.#log.debug({ code: why.code, retryMs }, why.message);
+    // Whoever asked for a session now wants to hear now; later, a board is waited for.
+    if (this.#toBegin !== undefined && this.#lastUp === undefined) this.#fail(why);
+  }
+
+  batchEnd(): void {
+    this.#runner.batchEnd();
+    if (this.#session !== undefined && this.#runner.core.state === 'ended') {
+      this.#endSession(this.#runner.core.endedBy);
+    }
+  }
+
+  // ---- local clients -------------------------------------------------------------------------
+
+  setup(): Setup {
+    return setupOf(this.#rigFile, this.#rulesFolder, this.#link, this.#session);
+  }
+
+  snapshot(): Snapshot {
+    return snapshotOf(
+      this.#runner.core,
+      this.#link,
+      this.#session,
+      this.#record.view(),
+      this.#framesPerS,
+      this.#ended,
+    );
+  }
+
+  quiet(): void {
+    this.#act({ act: 'stop everything' }, { who: 'a local client', from: 'local socket' });
+    // Sent once more whatever the session thinks: it can only make things idle.
+    this.#link.send('quiet', { outputs: 0xffff });
+  }
+
+  end(reason: string): void {
+    if (this.#session === undefined) throw new LapwingError('loopNoSession', 'Nothing to end.');
+    this.#act({ act: 'end', reason }, { who: 'a local client', from: 'local socket' });
+  }
+
+  begin(message: Extract<ClientMessage, { say: 'begin' }>): void {
+    const rulesPath = resolve(this.#rulesFolder, String(message.rules));
+    if (!rulesPath.startsWith(this.#rulesFolder + sep)) {
+      throw new LapwingError('rulesOutside', `\`${message.rules}\` leads out of the rules folder.`);
+    }
+    const subject = String(message.subject ?? '').trim();
+    if (subject === '') throw new LapwingError('loopBadAct', 'A session needs a subject.');
+    const experimenter = String(message.experimenter ?? '');
+    const { seed } = message;
+    this.#begin({ rulesPath, subject, experimenter, ...(seed ? { seed } : {}) });
+  }
+
+  act(message: Extract<ClientMessage, { say: 'act' }>): void {
+    this.#act(message.act, { who: String(message.who), from: String(message.from) });
+  }
+
+  // ---- sessions ------------------------------------------------------------------------------
+
+  #begin(begin: BeginOptions): void {
+    if (this.#session !== undefined) throw new LapwingError('loopBusy', 'End it first.');
+    const up = this.#link.state === 'up' ? this.#lastUp : undefined;
+    if (up === undefined) throw new LapwingError('loopNoBoard', 'The board does not answer.');
+    const rules = prepareRules(begin.rulesPath, this.#rigFile);
+    const { subject, experimenter } = begin;
+    const seed = begin.seed ?? newSeed();
+    const startedAt = new Date();
+    const earlierNl = waterTodayNl(this.#recordFolder, subject, startedAt);
+    const card = { subject, experimenter, seed, startedAt, waterTodayNl: earlierNl };
+    const opened = openSession(this.#recordFolder, this.#rigFile, rules, card, up.identity, {
+      onTrouble: (kind, error) => this.#trouble(kind, error),
+    });
+    const { folder } = opened;
+    const current: CurrentSession = {
+      ...{ folder, rulesPath: rules.path, subject, experimenter, seed },
+      ...{ startedAt: startedAt.toISOString(), waterTodayNl: earlierNl },
+    };
+    writeFileWhole(this.#address.currentFile, JSON.stringify(current));
+    this.#record.recorder = opened.recorder;
+    this.#session = { folder, rules, ...card };
+    this.#ended = null;
+    this.#runner = new SessionRunner(
+      ...([
+        {
+          rig: this.#rigFile,
+          program: rules.program,
+          title: rules.file.title,
+          seed,
+          waterTodayNl: earlierNl,
+        },
+      ] as const),
+      this.#send,
+      opened.recorder,
+      this.#onDecision,
+    );
+    this.#take(linkUpInput({ ...up, sameBoot: false }));
+    this.#take({ kind: 'begin' });
+    this.batchEnd();
+    this.#log.info({ folder }, 'session begun');
+    this.#server.announceSetup();
+  }
+
+  /** Takes up the session that a loop which died was running, from its record. */
+  async #resume(): Promise<void> {
+    const text = readFileSync(this.#address.currentFile, 'utf8');
+    const current = JSON.parse(text) as CurrentSession;
+    const { folder, subject, experimenter, seed } = current;
+    const rules = prepareRules(current.rulesPath, this.#rigFile);
+    const reader = await readRecord(folder);
+    const setup = {
+      ...{ rig: this.#rigFile, program: rules.program, title: rules.file.title, seed },
+      waterTodayNl: current.waterTodayNl,
+    };
+    const recorder = { current: undefined as Recorder | undefined };
+    const runner = new SessionRunner(
+      setup,
+      this.#send,
+      {
+        sample: (input, m) => recorder.current?.sample(input, m),
+        input: (input, what) => recorder.current?.input(input, what),
+        command: (input, name, message) => recorder.current?.command(input, name, message),
+        decision: (decision) => recorder.current?.decision(decision),
+        batchEnd: (commanded) => recorder.current?.batchEnd(commanded),
+      },
+      this.#onDecision,
+    );
+    runner.replay(() =>
+      reader.visit({
+        sample: (_, sample) => runner.sample(sample),
+        input: (_, input) => runner.take(input),
+      }),
+    );
+    recorder.current = Recorder.create(folder, recordHeaderOf(folder), {
+      onTrouble: (kind, error) => this.#trouble(kind, error),
+      resume: reader.resumePoint(),
+    });
+    this.#record.recorder = recorder.current;
+    this.#session = {
+      folder,
+      rules,
+      subject,
+      experimenter,
+      seed,
+      startedAt: new Date(current.startedAt),
+    };
+    this.#runner = runner;
+    this.#take({ kind: 'link down', reason: 'the loop was restarted' });
+    this.#take({ kind: 'resume', note: 'the loop was restarted; what was recorded was replayed' });
+    this.#log.warn({ folder, inputs: runner.core.input }, 'session resumed');
+  }
+
+  #endSession(how: 'rules' | 'operator' | 'signal'): void {
+    const session = this.#session!;
+    const { core } = this.#runner;
+    const { folder } = session;
+    this.#session = undefined;
+    this.#ended = core.endReason;
+    const whole = this.#record.recorder?.close(core.endReason) ?? false;
+    this.#record.recorder = undefined;
+    try {
+      describeEnd(folder, core, how);
+    } catch (error) {
+      this.#log.error({ error, folder }, 'the description could not be brought up to date');
+    }
+    rmSync(this.#address.currentFile, { force: true });
+    this.#runner = this.#idleRunner();
+    if (this.#lastUp !== undefined && this.#link.state === 'up') {
+      this.#take(linkUpInput({ ...this.#lastUp, sameBoot: false }));
+    }
+    this.#log.info({ folder, reason: core.endReason }, 'session ended');
+    this.#server.announceSetup();
+    this.#report({ report: 'session ended', folder, reason: core.endReason });
+    if (whole) {
+      this.#closing = finishRecord(folder).catch((error: Error) =>
+        this.#log.error({ folder }, error.message),
+      );
+    }
+    if (this.#options.exitWhenEnded) void this.#closing.then(() => this.#leave());
+  }
+
+  #idleRunner(): SessionRunner {
+    const rules = idleRules(this.#rigFile);
+    return new SessionRunner(
+      { rig: this.#rigFile, program: rules, title: '', seed: '', waterTodayNl: 0 },
+      this.#send,
+    );
+  }
+
+  // ---- within --------------------------------------------------------------------------------
+
+  readonly #send: ConstructorParameters<typeof SessionRunner>[1] = (name, message) => {
+    this.#link.send(name, message);
+  };
+
+  readonly #onDecision = (decision: StampedDecision): void => this.events.push(decision);
+
+  #take(input: RareInput): void {
+    this.#runner.take(input);
+  }
+
+  #act(act: OperatorAct, by: Actor): void {
+    checkAct(act, this.#runner.core, this.#session?.rules.program);
+    this.#take({ kind: 'operator', act, by });
+    this.batchEnd();
+  }
+
+  /** A record that cannot be kept ends stimulation, and water too where the rig file says so. */
+  #trouble(kind: TroubleKind | 'low', error: Error): void {
+    const grave = kind === 'full' || kind === 'io' || kind === 'lost';
+    this.#log[kind === 'recovered' ? 'info' : 'error']({ kind }, `record: ${error.message}`);
+    if (!grave || this.#session === undefined) return;
+    // Not from within the recorder, which is in the middle of its work.
+    queueMicrotask(() => {
+      if (this.#session === undefined) return;
+      this.#act(
+        { act: 'hold', what: 'stimulus', on: true },
+        { who: `the disk (${error.message})`, from: 'Lapwing' },
+      );
+      if (this.#rigFile.whenFull === 'water stops') {
+        this.#act(
+          { act: 'hold', what: 'water', on: true },
+          { who: `the disk (${error.message})`, from: 'Lapwing' },
+        );
+      }
+    });
+  }
+
+  #everyTick(): void {
+    const nowMs = performance.now();
+    this.#record.tick(nowMs);
+    const seconds = (nowMs - this.#framesAtMs) / 1000;
+    if (seconds < 1) return;
+    const { frames } = this.#link.counters;
+    this.#framesPerS = (frames - this.#framesBefore) / seconds;
+    this.#framesBefore = frames;
+    this.#framesAtMs = nowMs;
+  }
+
+  #fail(error: unknown): void {
+    const known = error instanceof LapwingError ? error : undefined;
+    this.#report({
+      report: 'failed',
+      code: known?.code ?? 'LOOP_FAILED',
+      message: (error as Error).message,
+      remedy: known?.remedy ?? '',
+    });
+    process.exitCode = 2;
+    this.#leave();
+  }
+}
+
+const SELF: Actor = { who: 'Lapwing', from: 'this computer' };
+
+function linkUpInput({ identity, tag, sameBoot, transport }: LinkUp): RareInput {
+  const simulated = (identity.capabilities & CAPABILITY.simulated) !== 0;
+  return {
+    kind: 'link up',
+    identity,
+    tag,
+    sameBoot,
+    overNetwork: transport === 'tcp' && !simulated,
+  };
+}

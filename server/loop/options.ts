@@ -1,0 +1,34 @@
+/** What the launcher tells the loop process, as one JSON argument. */
+export interface LoopOptions {
+  readonly rigPath: string;
+  /** Instead of the rig file's port: where the simulated rig is found. */
+  readonly port?: string;
+  /** Instead of the rig file's folders. */
+  readonly recordFolder?: string;
+  readonly rulesFolder?: string;
+  /** A session to begin as soon as the board answers. */
+  readonly begin?: BeginOptions;
+  /** Leave when that session has ended and its record is closed. */
+  readonly exitWhenEnded: boolean;
+}
+
+export interface BeginOptions {
+  /** Absolute path of the rules file. */
+  readonly rulesPath: string;
+  readonly subject: string;
+  readonly experimenter: string;
+  /** The seed of every draw; made up and recorded where nothing is said. */
+  readonly seed?: string;
+}
+
+/** What the loop process tells its launcher over their IPC channel. */
+export type LoopReport =
+  | { readonly report: 'ready' }
+  | { readonly report: 'session ended'; readonly folder: string; readonly reason: string }
+  /** It cannot run at all, and starting it again would not help. */
+  | {
+      readonly report: 'failed';
+      readonly code: string;
+      readonly message: string;
+      readonly remedy: string;
+    };

@@ -1,0 +1,136 @@
+import { readdirSync } from 'node:fs';
+import { join, relative, sep } from 'node:path';
+import type { BoardLink } from '../link/boardLink.js';
+import type { SessionCore } from '../session/core/sessionCore.js';
+import type { PreparedRules } from '../session/prepare.js';
+import type { Rig } from '../session/rig/rig.js';
+import { CAPABILITY } from '../wire/messages.js';
+import type { Setup, Snapshot } from './protocol.js';
+
+/** What a session's card and files say, for the setup. */
+export interface RunningSession {
+  readonly folder: string;
+  readonly rules: PreparedRules;
+  readonly subject: string;
+  readonly experimenter: string;
+  readonly seed: string;
+  readonly startedAt: Date;
+}
+
+export interface RecordView {
+  readonly state: Snapshot['record']['state'];
+  readonly bytes: number;
+  readonly reason: string;
+  readonly diskFreeGb: number;
+}
+
+/** What stays the same while a session runs, or while none does. */
+export function setupOf(
+  rig: Rig,
+  rulesFolder: string,
+  link: BoardLink,
+  session: RunningSession | undefined,
+): Setup {
+  return {
+    rig: rig.name,
+    simulated: ((link.identity?.capabilities ?? 0) & CAPABILITY.simulated) !== 0,
+    beltLengthCm: rig.belt.lengthCm,
+    outputs: rig.outputs.map(({ name, kind }) => ({ name, kind })),
+    inputs: rig.inputs.map(({ name }) => name),
+    rulesFiles: rulesFilesBelow(rulesFolder),
+    session: session === undefined ? null : describe(session),
+  };
+}
+
+function describe(session: RunningSession): NonNullable<Setup['session']> {
+  const { folder, rules, subject, experimenter, seed, startedAt } = session;
+  const { program, file } = rules;
+  return {
+    folder,
+    title: file.title,
+    subject,
+    experimenter,
+    seed,
+    startedAt: startedAt.toISOString(),
+    rulesText: file.sources[0]!.text,
+    rules: file.rules.map(({ name }) => name.name),
+    phases: file.phases.map(({ name }) => name.name),
+    buttons: program.buttons,
+    choices: program.choices,
+  };
+}
+
+/** Every rules file below the folder, at most a few levels down, as paths with `/`. */
+export function rulesFilesBelow(folder: string): string[] {
+  try {
+    return readdirSync(folder, { recursive: true, withFileTypes: true })
+      .filter((entry) => entry.isFile() && /\.ya?ml$/i.test(entry.name))
+      .map((entry) => relative(folder, join(entry.parentPath, entry.name)).split(sep).join('/'))
+      .filter((path) => path.split('/').length <= 4)
+      .sort()
+      .slice(0, 500);
+  } catch {
+    return [];
+  }
+}
+
+/** The state now. */
+export function snapshotOf(
+  core: SessionCore,
+  link: BoardLink,
+  session: RunningSession | undefined,
+  record: RecordView,
+  framesPerS: number,
+  ended: string | null,
+): Snapshot {
+  const { instant, tracker, guard, holds, engine, firings, rig } = core;
+  const view = engine.view();
+  const { identity, trouble, counters } = link;
+  return {
+    input: core.input,
+    boardUs: instant.nowUs,
+    session: session === undefined ? (ended === null ? 'idle' : 'ended') : 'running',
+    endedBecause: ended,
+    sessionS: session === undefined ? 0 : view.sessionUs / 1_000_000,
+    link: {
+      state: link.state,
+      reason: trouble?.message ?? '',
+      remedy: trouble?.remedy ?? '',
+      port: link.port ?? rig.port,
+      board: identity === undefined ? '' : identity.model,
+      framesPerS,
+      lostFrames: counters.lost,
+      badFrames: counters.bad,
+    },
+    trust: instant.trust,
+    trustReason: tracker.trustReason,
+    positionCm: instant.placed ? instant.positionCm : null,
+    speedCmPerS: instant.speedCmPerS,
+    lap: instant.lap,
+    lickOn: tracker.contact,
+    licks: core.licks,
+    phase: view.phase,
+    phaseLap: view.phaseLap,
+    places: view.places,
+    choices: view.choices,
+    rules: view.rules.map((rule, index) => ({ ...rule, armed: firings.isArmed(index) })),
+    outputs: inOrder(tracker.outputs, rig.outputs),
+    inputs: inOrder(instant.inputs, rig.inputs),
+    waterUl: guard.waterGivenNl / 1_000,
+    waterUncertainUl: guard.waterUncertainNl / 1_000,
+    waterLimitUl: rig.water.perSessionNl / 1_000,
+    waterTodayUl: (core.waterEarlierNl + guard.waterGivenNl) / 1_000,
+    waterDayLimitUl: rig.water.perDayNl / 1_000,
+    held: { stimulus: holds.reason('stimulus'), water: holds.reason('water') },
+    record,
+  };
+}
+
+/** From a mask by the board's lines to one by the order of the rig file, as the setup lists them. */
+function inOrder(mask: number, lines: readonly { readonly line: number }[]): number {
+  let ordered = 0;
+  lines.forEach(({ line }, index) => {
+    if ((mask & (1 << line)) !== 0) ordered |= 1 << index;
+  });
+  return ordered;
+}

@@ -1,0 +1,40 @@
+#!/usr/bin/env node
+/** The command line: the one place that names every command. */
+import { Command } from 'commander';
+import { packageVersion } from '../packageRoot.js';
+import { checkCommand } from './check.js';
+import { demoCommand } from './demo.js';
+import { explainCommand } from './explain.js';
+import { mendCommand } from './mend.js';
+import { portsCommand } from './ports.js';
+import { quietCommand } from './quiet.js';
+import { rehearseCommand } from './rehearse.js';
+import { replayCommand } from './replay.js';
+import { runCommand } from './run.js';
+import { serveCommand } from './serve.js';
+import { tellError } from './tellError.js';
+
+const program = new Command('lapwing')
+  .description('Closed-loop triggers for a belt-treadmill rig. Not a safety interlock.')
+  .version(packageVersion)
+  .addCommand(demoCommand())
+  .addCommand(serveCommand())
+  .addCommand(runCommand())
+  .addCommand(rehearseCommand())
+  .addCommand(checkCommand())
+  .addCommand(explainCommand())
+  .addCommand(replayCommand())
+  .addCommand(mendCommand())
+  .addCommand(portsCommand())
+  .addCommand(quietCommand());
+
+// A reader that closes early (`lapwing explain FILE | head`) is no error.
+process.stdout.on('error', (error: NodeJS.ErrnoException) => {
+  if (error.code === 'EPIPE') process.exit(0);
+  throw error;
+});
+
+program.parseAsync().catch((error: unknown) => {
+  tellError(error);
+  process.exitCode = 1;
+});

@@ -1,0 +1,45 @@
+import { resolve } from 'node:path';
+import { Command } from 'commander';
+import { prepareRules } from '../session/prepare.js';
+import { readRig } from '../session/rig/readRig.js';
+import { loginName, rigOption } from './arguments.js';
+import { runLive } from './live.js';
+import { tellWarnings } from './tellWarnings.js';
+
+interface RunFlags {
+  rig: string;
+  subject: string;
+  experimenter: string;
+  seed?: string;
+  records?: string;
+  web?: boolean;
+  port: number;
+}
+
+/** `lapwing run RULES --rig RIG`: one session, without a page unless asked for. */
+export function runCommand(): Command {
+  return new Command('run')
+    .description('run one session in this terminal; Ctrl-C ends it, twice at once')
+    .argument('<rules>', 'the rules file')
+    .addOption(rigOption())
+    .option('--subject <name>', 'the animal', 'nobody')
+    .option('--experimenter <name>', 'who runs it', loginName())
+    .option('--seed <text>', 'the seed of every draw; made up and recorded where nothing is said')
+    .option('--records <folder>', "instead of the rig file's record folder")
+    .option('--web', 'serve the page too')
+    .option('--port <number>', 'where the page is served', Number, 8033)
+    .action(async (rules: string, flags: RunFlags) => {
+      const rig = readRig(flags.rig);
+      // Mistakes in the file are told before any process starts.
+      tellWarnings(prepareRules(resolve(rules), rig));
+      const { subject, experimenter, seed } = flags;
+      await runLive({
+        rig,
+        rigPath: flags.rig,
+        exitWhenEnded: true,
+        begin: { rulesPath: resolve(rules), subject, experimenter, ...(seed ? { seed } : {}) },
+        ...(flags.records === undefined ? {} : { recordFolder: resolve(flags.records) }),
+        ...(flags.web ? { web: { host: '127.0.0.1', port: flags.port } } : {}),
+      });
+    });
+}

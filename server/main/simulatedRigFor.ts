@@ -1,0 +1,33 @@
+import { SimulatedRig, type SimulatedRigOptions } from '../../hardware-sim/simulatedRig.js';
+import type { VirtualRig } from '../session/rehearsal.js';
+import type { Rig } from '../session/rig/rig.js';
+
+/** A simulated rig that is wired, long and calibrated as a rig file says, in virtual time. */
+export function simulatedRigFor(
+  rig: Rig,
+  animal: { readonly seed: number; readonly trained: boolean },
+): VirtualRig & { readonly simulated: SimulatedRig } {
+  const { belt } = rig;
+  const valve = rig.outputs.find((output) => output.kind === 'valve');
+  const simulated = new SimulatedRig({
+    ...animal,
+    belt: { lengthCm: belt.lengthCm, countsPerCm: belt.countsPerCm },
+    wiring: {
+      ...(rig.lick === undefined ? {} : { lickInput: rig.lick.line }),
+      ...(belt.seam === undefined ? {} : { seamInput: belt.seam.line }),
+      ...(valve === undefined ? {} : { valveOutput: valve.line }),
+    },
+    ...(valve?.valve === undefined
+      ? {}
+      : { valve: { deadUs: valve.valve.deadUs, usPerUl: valve.valve.usPerNl * 1_000 } }),
+  } satisfies SimulatedRigOptions);
+  return {
+    simulated,
+    get nowUs() {
+      return simulated.nowUs;
+    },
+    advanceTo: (us) => simulated.advanceTo(us),
+    connect: (listener) => simulated.board.connect(listener),
+    receive: (name, message, tag) => simulated.board.receive(name, message, tag),
+  };
+}

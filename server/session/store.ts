@@ -1,0 +1,147 @@
+import { readdirSync, readFileSync } from 'node:fs';
+import { basename, dirname, join, relative } from 'node:path';
+import { packageVersion } from '../packageRoot.js';
+import type { Identity } from '../wire/messages.js';
+import type { SessionCore } from './core/sessionCore.js';
+import {
+  describeBoard,
+  readDescription,
+  rfc3339,
+  type SessionDescription,
+  type SessionEnd,
+  updateDescription,
+  writeDescription,
+} from './description.js';
+import { createSessionFolder, type InputFile, storeInputFiles } from './folder.js';
+import type { PreparedRules } from './prepare.js';
+import { Recorder, type RecorderOptions, type RecordHeader } from './record/recorder.js';
+import type { Rig } from './rig/rig.js';
+
+/** Who and what a session is for. */
+export interface SessionCard {
+  readonly subject: string;
+  readonly experimenter: string;
+  readonly seed: string;
+  readonly startedAt: Date;
+  /** Given to this animal earlier today. */
+  readonly waterTodayNl: number;
+}
+
+/** Makes a session's folder: copies of its files, its description, and a recorder ready to write. */
+export function openSession(
+  root: string,
+  rig: Rig,
+  rules: PreparedRules,
+  card: SessionCard,
+  board: Identity | null,
+  options: RecorderOptions,
+): { readonly folder: string; readonly recorder: Recorder } {
+  const { title } = rules.file;
+  const { subject, startedAt, seed } = card;
+  const live = options.mode !== 'bulk';
+  const folder = createSessionFolder(root, { subject, title, startedAt }, { live });
+  const files = storeInputFiles(folder, inputFiles(rig, rules));
+  writeDescription(folder, {
+    format: 1,
+    name: basename(folder),
+    subject,
+    experimenter: card.experimenter || null,
+    protocolNumber: null,
+    sessionNumber: null,
+    title,
+    startedAt: rfc3339(startedAt),
+    software: {
+      name: 'lapwing',
+      version: packageVersion,
+      node: process.version,
+      platform: process.platform,
+    },
+    board: board && describeBoard(board),
+    seed,
+    calibrations: calibrationsOf(rig),
+    files,
+    ended: null,
+    waterEarlierUl: card.waterTodayNl / 1_000,
+  });
+  return { folder, recorder: Recorder.create(folder, recordHeaderOf(folder), options) };
+}
+
+/** What the record's files say of their session, from its description. */
+export function recordHeaderOf(folder: string): RecordHeader {
+  const { name, startedAt, seed } = readDescription(folder);
+  const software = `lapwing ${packageVersion}`;
+  return { session: name, startedAtMs: Date.parse(startedAt), software, seed };
+}
+
+/** Writes into the description how a session ended and what water it gave. */
+export function describeEnd(folder: string, core: SessionCore, how: SessionEnd['how']): void {
+  updateDescription(folder, {
+    ended: { how, at: rfc3339(new Date()), reason: core.endReason },
+    water: waterOf(core),
+  });
+}
+
+/** What a session gave, for the water book; the uncertain is what nobody can account for. */
+export function waterOf(core: SessionCore): NonNullable<SessionDescription['water']> {
+  return {
+    givenUl: core.guard.waterGivenNl / 1_000,
+    uncertainUl: core.guard.waterUncertainNl / 1_000,
+  };
+}
+
+/** Water that the records say a subject was given on the day of `now`, uncertain drops included. */
+export function waterTodayNl(root: string, subject: string, now: Date): number {
+  const today = rfc3339(now).slice(0, 10);
+  let nl = 0;
+  for (const name of namesBelow(root)) {
+    // A session's folder begins with its day, so other days need not be opened.
+    if (!name.startsWith(today)) continue;
+    try {
+      const { subject: whose, water } = readDescription(join(root, name));
+      if (whose === subject && water) nl += (water.givenUl + water.uncertainUl) * 1_000;
+    } catch {
+      // A folder without a readable description is no session of anybody's.
+    }
+  }
+  return nl;
+}
+
+function namesBelow(root: string): string[] {
+  try {
+    return readdirSync(root);
+  } catch {
+    return [];
+  }
+}
+
+function inputFiles(rig: Rig, rules: PreparedRules): InputFile[] {
+  const base = dirname(rules.path);
+  const bytes = (text: string) => Buffer.from(text, 'utf8');
+  const [main, ...included] = rules.file.sources;
+  return [
+    { role: 'rig', source: rig.path, content: bytes(rig.text) },
+    { role: 'rules', source: rules.path, content: bytes(main!.text) },
+    ...included.map(
+      (file): InputFile => ({
+        role: 'included',
+        source: relative(base, file.path),
+        content: bytes(file.text),
+      }),
+    ),
+    ...rules.file.tables.map(
+      (table): InputFile => ({
+        role: 'included',
+        source: table.file.name,
+        content: readFileSync(join(base, table.file.name)),
+      }),
+    ),
+  ];
+}
+
+function calibrationsOf(rig: Rig): SessionDescription['calibrations'] {
+  const valves = rig.outputs.flatMap(({ name, valve }) =>
+    valve === undefined ? [] : [{ of: name, values: { ...valve } }],
+  );
+  const { lengthCm, countsPerCm } = rig.belt;
+  return [{ of: 'belt', values: { lengthCm, countsPerCm } }, ...valves];
+}
