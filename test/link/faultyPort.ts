@@ -11,6 +11,7 @@ export class FaultyPort implements BytePort {
   readonly #pieces: readonly number[];
   readonly #piece = new Uint8Array(4096);
   readonly #held: Uint8Array[] = [];
+  readonly #heldWrites: Uint8Array[] = [];
   #listener!: PortListener;
   #flips: ReadonlySet<number> = new Set();
   #losses: ReadonlySet<number> = new Set();
@@ -18,6 +19,8 @@ export class FaultyPort implements BytePort {
   #turn = 0;
   /** True: bytes are kept back until `release()`. */
   holding = false;
+  /** True: what the host writes is taken and kept back until `releaseWrites()`. */
+  holdingWrites = false;
 
   /** `pieces` are the lengths in which bytes arrive, used in turn. */
   constructor(inner: BytePort, pieces: readonly number[]) {
@@ -39,7 +42,15 @@ export class FaultyPort implements BytePort {
   }
 
   write(bytes: Uint8Array): boolean {
-    return this.#inner.write(bytes);
+    if (!this.holdingWrites) return this.#inner.write(bytes);
+    this.#heldWrites.push(bytes.slice());
+    return true;
+  }
+
+  /** Lets out what the host wrote meanwhile, as a line does once it moves again. */
+  releaseWrites(): void {
+    this.holdingWrites = false;
+    for (const bytes of this.#heldWrites.splice(0)) this.#inner.write(bytes);
   }
 
   close(): Promise<void> {

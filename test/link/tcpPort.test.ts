@@ -2,6 +2,7 @@ import net from 'node:net';
 import { afterEach, beforeEach, describe, expect, it } from 'vitest';
 import { BoardLink } from '../../server/link/boardLink.js';
 import { parseAddress, portOpener } from '../../server/link/resolvePort.js';
+import { blank } from '../../server/wire/codec.js';
 import { Recorder } from './recorder.js';
 import { ScriptedBoard } from './scriptedBoard.js';
 import { until } from './until.js';
@@ -78,7 +79,7 @@ describe('a link over TCP', () => {
     for (const socket of sockets) socket.pause();
     let sent = 0;
     // Some megabytes fit into the kernel's buffers; a frame more must not be kept for later.
-    while (link.send('beat', { finishedUs: sent, wanted: 0 })) sent++;
+    while (link.send('pulse', { ...blank('pulse'), id: sent })) sent++;
     await until('down', () => handler.of('down').length === 1);
     expect(handler.of('down')[0]!.why.code).toBe('LINK_WRITE_FAILED');
   });

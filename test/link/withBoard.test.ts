@@ -5,6 +5,7 @@ import { BoardLink } from '../../server/link/boardLink.js';
 import { inProcessPair } from '../../server/link/inProcessPort.js';
 import { blank } from '../../server/wire/codec.js';
 import { FAULT, OUTCOME } from '../../server/wire/messages.js';
+import { FaultyPort } from './faultyPort.js';
 import { Recorder } from './recorder.js';
 import { VirtualTimers } from './virtualTimers.js';
 
@@ -15,6 +16,7 @@ class Bench {
   readonly board = new Board({ boardId: 5, startUs: 0xffff_0000 });
   readonly link: BoardLink;
   readonly #startUs = this.board.worldUs;
+  port!: FaultyPort;
   beating = true;
 
   constructor() {
@@ -26,7 +28,8 @@ class Bench {
         const { host, board } = inProcessPair({ defer });
         this.board.connect(new FramedOutput((bytes) => board.send(bytes)));
         board.onBytes = (bytes) => this.board.receiveBytes(bytes);
-        return host;
+        this.port = new FaultyPort(host, [4096]);
+        return this.port;
       },
     });
     // Beats come from what was finished, as in the loop: here, from each sample.
@@ -110,6 +113,27 @@ describe('the link with the simulated board', () => {
     await bench.run(20);
     expect(bench.link.state).toBe('up');
     expect(bench.handler.of('up')[1]!.event).toMatchObject({ sameBoard: true, sameBoot: false });
+  });
+
+  it('never lets what lay in the line for 3 s act, and shakes hands anew', async () => {
+    bench.configure();
+    await bench.run(5);
+    let rises = 0;
+    bench.board.probe(() => rises++);
+    bench.port.holdingWrites = true;
+    for (let id = 1; id <= 20; id++) bench.pulse(id);
+    await bench.run(3_000);
+    expect(bench.handler.of('down').map((item) => item.why.code)).toContain('LINK_TAG_ENDED');
+    bench.port.releaseWrites();
+    await bench.run(300);
+    expect(rises).toBe(0);
+    const faults = bench.handler.of('fault').map((item) => item.message.fault);
+    expect(faults).toContain(FAULT.watchdogOutputs);
+    expect(bench.link.state).toBe('up');
+    bench.configure();
+    bench.pulse(1);
+    await bench.run(10);
+    expect(rises).toBe(2);
   });
 
   it('never lets a command of an ended connection act', async () => {
