@@ -44,8 +44,11 @@ export interface LickConfig {
 
 /** Speed over 100-250 ms: common practice, no source. */
 export const SPEED_WINDOW_US = 200_000;
-/** Slip of 1-5 mm a lap is usual; 1 cm and 3 cm: common practice, no source. */
-export const SEAM_DEFAULTS = { warnCm: 1, stopCm: 3 } as const;
+/**
+ * Slip of 1-5 mm a lap is usual; 1 cm and 3 cm, and marks wider than 3 mm: common practice, no
+ * source.
+ */
+export const SEAM_DEFAULTS = { warnCm: 1, stopCm: 3, bounceCm: 0.3 } as const;
 /**
  * Lockout 40-60 ms, contacts of 15-80 ms at 5-9 Hz, nothing above 12 Hz, stuck after 1 s, an
  * output's echo within 5 ms: common practice, no source. The bounce is shorter than the shortest

@@ -9,8 +9,8 @@ const AS_EXPECTED = 'the seam mark came where expected';
  * how far position can be trusted.
  *
  * Mark n lies at travel `n * lapCounts + offset`. The follower knows between which two marks the
- * belt is, so a bouncing edge and a strip's trailing edge are no second mark, and a mark that does
- * not come is noticed whichever way the belt moves.
+ * belt is, so a bouncing edge is no second mark, and a mark that does not come is noticed whichever
+ * way the belt moves.
  */
 export class SeamFollower {
   /** `unknown` until the first mark. */
@@ -26,10 +26,15 @@ export class SeamFollower {
   readonly #offsetCounts: number;
   readonly #warnCounts: number;
   readonly #stopCounts: number;
+  readonly #bounceCounts: number;
   readonly #mmPerCount: number;
   readonly #events: TrackEvent[];
   /** The belt is between this mark and the next. */
   #mark = 0;
+  /** The sensor's last edge. */
+  #edgeRose = false;
+  #edgeForwards = true;
+  #edgeMoved = Number.NEGATIVE_INFINITY;
   /** The last mark accepted. */
   #lastMet = Number.NaN;
   /** Where the last mark that was not believed was met; NaN when there is none. */
@@ -42,6 +47,7 @@ export class SeamFollower {
     this.#offsetCounts = Math.round(config.offsetCm / cmPerCount);
     this.#warnCounts = (config.warnCm ?? SEAM_DEFAULTS.warnCm) / cmPerCount;
     this.#stopCounts = (config.stopCm ?? SEAM_DEFAULTS.stopCm) / cmPerCount;
+    this.#bounceCounts = SEAM_DEFAULTS.bounceCm / cmPerCount;
     this.#events = events;
   }
 
@@ -50,7 +56,26 @@ export class SeamFollower {
     this.missedBelow = Number.NEGATIVE_INFINITY;
     this.missedAbove = Number.POSITIVE_INFINITY;
     this.#lastMet = Number.NaN;
+    this.#edgeMoved = Number.NEGATIVE_INFINITY;
     this.#trustNow('unknown', reason);
+  }
+
+  /**
+   * Whether an edge of the sensor is the mark's leading edge: it rises under a belt that moves
+   * forwards and falls under one that backs. The trailing edge's chatter does so too, and is told
+   * by the edge before it: the trailing edge, met the same way, and nearer than any mark is wide.
+   * Two rises or two falls in a row near each other mean that a frame was lost: neither can be told.
+   */
+  leads(rose: boolean, forwards: boolean, moved: number): boolean {
+    const apart = Math.abs(moved - this.#edgeMoved);
+    const chatter =
+      this.#edgeRose === rose
+        ? apart < this.#lapCounts / 2
+        : this.#edgeForwards === forwards && apart < this.#bounceCounts;
+    this.#edgeRose = rose;
+    this.#edgeForwards = forwards;
+    this.#edgeMoved = moved;
+    return rose === forwards && !chatter;
   }
 
   /**
@@ -76,7 +101,7 @@ export class SeamFollower {
     const slip = travel - (mark * this.#lapCounts + this.#offsetCounts);
     const beyond = forwards ? mark : mark - 1;
     if (Math.abs(slip) > this.#stopCounts) return this.#surprised(travel, slip, beyond);
-    // Already past it: the edge bounces, or it is the trailing edge's chatter.
+    // Already past it: the edge bounces.
     if (this.#mark === beyond) return 0;
     const good = Math.abs(slip) <= this.#warnCounts;
     const again = mark === this.#lastMet;

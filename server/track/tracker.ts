@@ -77,6 +77,9 @@ export class Tracker {
   /** Travel at the start of the lap that the belt is in now, which reversing may move back. */
   #turn = 0;
   #forwards = true;
+  /** The same before the newest frame's movement, for edges which that frame overtook. */
+  #movedBefore = 0;
+  #forwardsBefore = true;
   #inputs = 0;
   #outputs = 0;
   #levelsKnown = false;
@@ -138,6 +141,11 @@ export class Tracker {
     return this.#seam === null ? 0 : this.#seam.slipCounts * this.#cmPerCount * 10;
   }
 
+  /** Output states as the board last told them, bit n for output n. */
+  get outputs(): number {
+    return this.#outputs;
+  }
+
   /** The lick sensor is touched now. */
   get contact(): boolean {
     return this.#lick?.contact ?? false;
@@ -159,17 +167,15 @@ export class Tracker {
   edge(m: Edge, into: Instant): void {
     const newest = this.#clock.take(m.boardUs);
     this.#begin();
-    const count = extend32(this.#count, m.count);
-    const movedAtEdge = this.#counted ? count * this.#direction : this.#moved;
-    // An edge that was overtaken lies behind what has moved since.
-    const heading = newest ? movedAtEdge - this.#moved : this.#moved - movedAtEdge;
-    if (heading !== 0) this.#forwards = heading > 0;
     if (newest || !this.#counted) this.#move(m.count);
+    else this.#headAt(extend32(this.#count, m.count) * this.#direction);
     if (m.input < INPUTS) {
-      this.#inputEdge(m);
+      this.#inputEdge(m, newest ? this.#forwards : this.#forwardsBefore);
     } else if ((m.input & SYNC_EDGE) !== 0) {
       this.#outputIs(1 << (m.input & ~SYNC_EDGE), m.level === 1, this.#clock.stampUs);
     }
+    // An overtaken edge may tell that the belt has been further than any sample showed.
+    if (!newest && this.#homed) this.#wasAt(this.travelAtCount(m.count));
     this.#end(into);
   }
 
@@ -300,6 +306,8 @@ export class Tracker {
     const count = this.#count + ((raw - this.#count) | 0);
     const silentUs = nowUs - this.#newestUs;
     this.#newestUs = nowUs;
+    this.#movedBefore = this.#moved;
+    this.#forwardsBefore = this.#forwards;
     if (count === this.#count && !this.#unseen) return;
     const moved = count * this.#direction;
     const by = moved - this.#moved;
@@ -312,14 +320,22 @@ export class Tracker {
     }
     const travel = moved + this.#offset;
     this.#travel = travel;
-    if (travel > this.#progress) this.#progress = travel;
+    this.#wasAt(travel);
     if (this.#unseen || silentUs > UNSEEN_US) this.#movedUnseen(by, silentUs);
+  }
+
+  /** The heading at an edge that was overtaken: from the count before what overtook it. */
+  #headAt(moved: number): void {
+    const by = moved - this.#movedBefore;
+    if (by !== 0) this.#forwardsBefore = by > 0;
+    this.#movedBefore = moved;
   }
 
   #firstCount(raw: number, nowUs: number): void {
     this.#counted = true;
     this.#count = raw;
     this.#moved = raw * this.#direction;
+    this.#movedBefore = this.#moved;
     this.#newestUs = nowUs;
     this.#unseen = false;
     this.#speed.restart(nowUs, this.#moved);
@@ -336,17 +352,16 @@ export class Tracker {
     this.#seam?.unseen(this.#travel);
   }
 
-  #seamEdge(rose: boolean, count: number): void {
-    // The leading edge rises under a belt that moves forwards and falls under one that backs.
-    if (this.#seam === null || rose !== this.#forwards) return;
-    const moved = count * this.#direction;
+  #seamEdge(rose: boolean, forwards: boolean, moved: number): void {
+    if (!this.#seam?.leads(rose, forwards, moved)) return;
     if (!this.#homed) {
       if (!rose) return;
+      const before = this.#progress;
       const travel = this.#seam.first(this.#lap);
       this.#home(travel + this.#moved - moved);
       // The belt came onto the mark by that count at least, so a place at the seam is reached.
       this.#travelFrom = this.#travel - 1;
-      if (this.#progress === this.#travel) this.#progressFrom = this.#travelFrom;
+      this.#progressFrom = Math.max(before, travel - 1);
       return;
     }
     const shift = this.#seam.met(moved + this.#offset, rose);
@@ -358,9 +373,13 @@ export class Tracker {
     this.#homed = true;
     this.#offset = travel - this.#moved;
     this.#travel = travel;
-    if (travel > this.#progress) this.#progress = travel;
+    this.#wasAt(travel);
     this.#travelFrom = this.#travel;
     this.#progressFrom = this.#progress;
+  }
+
+  #wasAt(travel: number): void {
+    if (travel > this.#progress) this.#progress = travel;
   }
 
   /** Corrects travel without movement: what is jumped over is missed, nothing comes up twice. */
@@ -370,10 +389,10 @@ export class Tracker {
     this.#travel += counts;
     if (this.#travelFrom > this.#progressFrom) this.#progressFrom = this.#travelFrom;
     if (this.#progressFrom > this.#progress) this.#progress = this.#progressFrom;
-    if (this.#travel > this.#progress) this.#progress = this.#travel;
+    this.#wasAt(this.#travel);
   }
 
-  #inputEdge(m: Edge): void {
+  #inputEdge(m: Edge, forwards: boolean): void {
     const rose = m.level === 1;
     const bit = 1 << m.input;
     if (rose) {
@@ -385,7 +404,9 @@ export class Tracker {
     }
     this.#differed &= ~bit;
     if (bit === this.#lickBit) this.#lickEdge(rose, this.#clock.stampUs);
-    if (m.input === this.#seamInput) this.#seamEdge(rose, extend32(this.#count, m.count));
+    if (m.input === this.#seamInput) {
+      this.#seamEdge(rose, forwards, extend32(this.#count, m.count) * this.#direction);
+    }
   }
 
   #outputIs(bit: number, on: boolean, stampUs: number): void {

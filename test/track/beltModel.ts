@@ -50,7 +50,7 @@ export class BeltModel {
   readonly #markWidth: number;
   readonly #seamInput: number;
   #inside: boolean;
-  #missing = false;
+  #missedAt = Number.NEGATIVE_INFINITY;
   #held: Edge[] = [];
   #lastSampleUs = Number.NEGATIVE_INFINITY;
   #lastSample = '';
@@ -142,11 +142,17 @@ export class BeltModel {
   }
 
   #lookAtMark(): void {
+    // A sensor that misses the mark misses it for as long as the belt trembles there.
+    const missing = Math.abs(this.belt - this.#missedAt) <= this.#markWidth + 30;
+    if (!missing) this.#missedAt = Number.NEGATIVE_INFINITY;
     const inside = this.#onMark();
     if (inside === this.#inside) return;
     this.#inside = inside;
-    if (inside) this.#missing = this.#options.misses?.() ?? false;
-    if (this.#missing) return;
+    if (missing) return;
+    if (inside && this.#options.misses?.()) {
+      this.#missedAt = this.belt;
+      return;
+    }
     const level = inside ? 1 : 0;
     this.edge(this.#seamInput, level);
     for (let i = 0; i < (this.#options.bounces ?? 0); i++) {

@@ -49,7 +49,9 @@ export class TrackedBelt {
   get seams(): string[] {
     return this.events.flatMap((event) => {
       if (event.kind !== 'seam') return [];
-      return event.slipMm === null ? [event.event] : [`${event.event} ${event.slipMm}`];
+      return event.slipMm === null
+        ? [event.event]
+        : [`${event.event} ${Math.round(event.slipMm * 10) / 10}`];
     });
   }
 
