@@ -37,8 +37,8 @@ export const linkAlone: Contestant = {
 };
 
 /** Forks a compiled program beside this one, which says `ready` to its parent. */
-async function forked(program: string, pty: string): Promise<RunningContestant> {
-  const child = fork(fileURLToPath(new URL(program, import.meta.url)), [pty]);
+export async function forked(program: string, ...args: string[]): Promise<RunningContestant> {
+  const child = fork(fileURLToPath(new URL(program, import.meta.url)), args);
   await new Promise<void>((resolve, reject) => {
     child.once('message', () => resolve());
     child.once('exit', (code) => reject(new Error(`${program} ended with ${code}`)));
@@ -46,13 +46,16 @@ async function forked(program: string, pty: string): Promise<RunningContestant> 
   return running(child);
 }
 
-function running(child: ChildProcess): RunningContestant {
+export function running(
+  child: ChildProcess,
+  signal: NodeJS.Signals = 'SIGTERM',
+): RunningContestant {
   return {
     stop: () =>
       new Promise((resolve) => {
-        if (child.exitCode !== null) return resolve();
+        if (child.exitCode !== null || child.signalCode !== null) return resolve();
         child.once('exit', () => resolve());
-        child.kill();
+        child.kill(signal);
       }),
   };
 }

@@ -6,7 +6,8 @@
  * usage: peer bare|board INPUT
  *   bare   every frame that comes back is the reply to the oldest cause not yet answered
  *   board  speaks the wire: answers identify, takes pulses, tells their outcomes; a pulse answers
- *          the cause whose stamp lies a constant window before the pulse's expiry
+ *          the cause whose stamp lies a constant window before the pulse's expiry. The belt runs at
+ *          one count a millisecond, and its mark passes the seam sensor every LAP counts
  *
  * Out: `pty PATH`, then `identified` at each handshake. In: `block CAUSES`. Out for each block: a
  * line `rtt NS` for each cause (-1: never answered), then `end DROPPED UNMATCHED`.
@@ -29,6 +30,7 @@ enum { IDENTIFY = 0x41, PULSE = 0x43, ARM = 0x44 };
 enum { FIRED = 1, DONE = 2, REFUSED = 6, BAD_SLOT = 8 };
 /* Ticks of 500 us: samples on the even ones, edges on odd ones of a cycle of 5 ms. */
 enum { TICK_NS = 500000, CYCLE = 10, RISE_AT = 1, FALL_AT = 5, IDLE_EVERY = 10 };
+enum { SEAM_INPUT = 1, LAP = 4500, MARK = 10 };
 enum { MOST_CAUSES = 1 << 20, PENDING = 64, GRACE_TICKS = 400 };
 
 struct cause { uint32_t stamp; int64_t sent, rtt; };
@@ -39,7 +41,7 @@ static uint16_t tag;
 static uint8_t sequence;
 static int64_t zero;
 static int32_t count;
-static int level;
+static int level, seam;
 static uint32_t window;
 static struct { uint32_t id, at, width; uint8_t output; int on; } pending[PENDING];
 
@@ -198,8 +200,15 @@ static void say_sample(void) {
     }
   }
   begin(SAMPLE);
-  put(at, 4), put(count, 4), put(level << input, 2), put(outputs, 2);
+  put(at, 4), put(count, 4), put(level << input | seam << SEAM_INPUT, 2), put(outputs, 2);
   put(0, 2), put(0, 1), put(0, 1);
+  finish();
+}
+
+static void say_seam(int to) {
+  seam = to;
+  begin(EDGE);
+  put(board_us(), 4), put(count, 4), put(SEAM_INPUT, 1), put(to, 1);
   finish();
 }
 
@@ -235,6 +244,8 @@ static int tick(int64_t n) {
   }
   if (n % 2 == 0) {
     count++;
+    if (!bare && count % LAP == 0) say_seam(1);
+    if (!bare && count % LAP == MARK) say_seam(0);
     say_sample();
   } else if (place == RISE_AT && sent < asked && level == 0) {
     say_edge(1);

@@ -1,0 +1,129 @@
+import { spawn } from 'node:child_process';
+import fs from 'node:fs';
+import net from 'node:net';
+import os from 'node:os';
+import path from 'node:path';
+import { fileURLToPath } from 'node:url';
+import { type Contestant, forked, type RunningContestant, running } from './contestants.js';
+
+const MAIN = fileURLToPath(new URL('../../../server/main/main.js', import.meta.url));
+
+/** Input 2 rises and a mark is asked for; the other rules are there to be evaluated. */
+const RULES = `title: Round trip
+belt: 180 cm
+
+places:
+  target: 45 cm
+  zone: 80 to 100 cm
+
+rules:
+  answer:
+    when: probe rises
+    do: pulse marker for 1 ms
+  water:
+    when: reaches 90 cm
+    do: give 4 uL
+  lit:
+    when: enters zone
+    if: speed >= 80 cm/s
+    do: pulse light for 10 ms
+  again:
+    when: reaches target
+    if: lap >= 100000
+    do: pulse light for 10 ms
+  licked:
+    when: lick in zone
+    do: note
+`;
+
+const rigWith = (port: string) => `rig: round-trip-${path.basename(port)}
+board:
+  port: ${port}
+belt:
+  length: 180 cm
+  counts_per_cm: 25
+  seam:
+    input: seam
+inputs:
+  lick:
+    line: 0
+    use: lick
+  seam:
+    line: 1
+  probe:
+    line: 2
+outputs:
+  valve:
+    line: 0
+    kind: valve
+    longest_on: 250 ms
+    calibration:
+      dead: 8 ms
+      per_uL: 12 ms
+      from: 1 uL
+      to: 12 uL
+      measured: invented for the bench
+  marker:
+    line: 4
+    kind: mark
+    longest_on: 100 ms
+  light:
+    line: 1
+    kind: stimulus
+    longest_on: 500 ms
+water:
+  per_session: 1000 mL
+  per_day: 1000 mL
+  largest_drop: 12 uL
+`;
+
+/** Lapwing itself, recording, with so many dashboards watching (0: no web process at all). */
+export function wholeLoop(dashboards: number): Contestant {
+  return {
+    name: `Lapwing, ${dashboards} dashboards`,
+    kind: 'board',
+    start: (pty) => startLapwing(pty, dashboards),
+  };
+}
+
+async function startLapwing(pty: string, dashboards: number): Promise<RunningContestant> {
+  const folder = fs.mkdtempSync(path.join(os.tmpdir(), 'lapwing-bench-'));
+  const rig = path.join(folder, 'rig.yaml');
+  const rules = path.join(folder, 'rules.yaml');
+  fs.writeFileSync(rig, rigWith(pty));
+  fs.writeFileSync(rules, RULES);
+  const args = ['run', rules, '--rig', rig, '--records', path.join(folder, 'records')];
+  const port = dashboards > 0 ? await freePort() : 0;
+  if (dashboards > 0) args.push('--web', '--port', String(port));
+  const child = spawn(process.execPath, [MAIN, ...args], { stdio: ['ignore', 'pipe', 'pipe'] });
+  let said = '';
+  for (const stream of [child.stdout, child.stderr]) {
+    stream.on('data', (text) => {
+      said = `${said}${text}`.slice(-4_000);
+    });
+  }
+  const early = (code: number | null) => {
+    console.error(`bench: lapwing ended with ${code}; it said:\n${said}`);
+  };
+  child.once('exit', early);
+  const url = `ws://127.0.0.1:${port}/api/stream`;
+  const pages = dashboards > 0 ? await forked('./viewers.js', url, String(dashboards)) : undefined;
+  const lapwing = running(child, 'SIGINT');
+  return {
+    async stop() {
+      child.off('exit', early);
+      await pages?.stop();
+      await lapwing.stop();
+      fs.rmSync(folder, { recursive: true, force: true });
+    },
+  };
+}
+
+function freePort(): Promise<number> {
+  return new Promise((resolve) => {
+    const server = net.createServer().listen(0, '127.0.0.1', () => {
+      const { port } = server.address() as net.AddressInfo;
+      server.close(() => resolve(port));
+    });
+  });
+}
