@@ -1,0 +1,166 @@
+/**
+ * The page's one loop: messages change what is known, and at most once per animation frame the page
+ * is rendered and the canvases that changed are drawn.
+ */
+import { render } from 'preact';
+import { Charts } from './draw/charts.js';
+import { freshness } from './model/freshness.js';
+import { emptyLive, take } from './model/live.js';
+import { STOP_RETRY_MS, stopAsked, stopConfirmed, stopFailed, stopIdle } from './model/stop.js';
+import { type Answer, api } from './stream/api.js';
+import { Connection } from './stream/connection.js';
+import type { Actions, Theme } from './view/actions.js';
+import { listenForKeys, setSingleKeys } from './view/keys.js';
+import { Page } from './view/page.js';
+
+const live = emptyLive();
+const root = document.getElementById('page')!;
+// The word that it is loading goes; what is rendered comes.
+root.replaceChildren();
+const still = matchMedia('(prefers-reduced-motion: reduce)');
+const charts = new Charts(() => schedule());
+let theme = (document.documentElement.dataset.theme ?? 'dark') as Theme;
+let keys = recall('lapwing.keys') !== 'off';
+let escapeHeld = false;
+let changed = true;
+let frame = 0;
+let titleShown = '';
+
+function schedule(): void {
+  if (frame === 0) frame = requestAnimationFrame(paint);
+}
+
+function touch(): void {
+  changed = true;
+  schedule();
+}
+
+function paint(): void {
+  frame = 0;
+  const nowMs = performance.now();
+  if (changed) {
+    changed = false;
+    render(<Page {...{ live, nowMs, theme, keys, escapeHeld, actions, charts }} />, root);
+    showTitle(nowMs);
+  }
+  const moving =
+    !still.matches && live.state?.session === 'running' && freshness(live, nowMs).fresh;
+  if (charts.draw(live, nowMs, moving)) schedule();
+}
+
+/** The tab says the lap, for whoever works in another one. */
+function showTitle(nowMs: number): void {
+  const { state } = live;
+  const { fresh } = freshness(live, nowMs);
+  const lap = state?.session === 'running' ? `Lap ${state.lap} · ${state.phase ?? ''} · ` : '';
+  const title = `${fresh ? '' : '(stale) '}${lap}Lapwing`;
+  if (title === titleShown) return;
+  titleShown = title;
+  document.title = title;
+}
+
+async function asked(what: string, request: Promise<Answer>): Promise<Answer> {
+  const answer = await request;
+  live.notice = answer.done
+    ? undefined
+    : { kind: 'bad', text: `${what}: ${answer.text}`, remedy: answer.remedy };
+  touch();
+  return answer;
+}
+
+/** Over HTTP and over the stream at once; then again every second until the loop confirms. */
+function stopEverything(): void {
+  live.stop = stopAsked(live.stop, performance.now());
+  touch();
+  connection.askQuiet();
+  void api.quiet().then((answer) => {
+    if (answer.done) stopDone();
+    else live.stop = stopFailed(live.stop, answer.text);
+    touch();
+  });
+}
+
+function stopDone(): void {
+  live.stop = stopConfirmed(live.stop, performance.now(), new Date().toLocaleTimeString());
+}
+
+setInterval(() => {
+  if (live.stop.is === 'asking' && performance.now() - live.stop.sinceMs > STOP_RETRY_MS) {
+    stopEverything();
+  }
+}, STOP_RETRY_MS);
+
+const actions: Actions = {
+  stopEverything,
+  dismissStop: () => {
+    live.stop = stopIdle;
+    touch();
+  },
+  begin: (session) => asked('Not begun', api.begin(session)),
+  end: (reason) => asked('Not ended', api.end(reason)),
+  act: (act) => asked('Not done', api.act(act)),
+  setTheme: (name) => {
+    theme = name;
+    document.documentElement.dataset.theme = name;
+    keep('lapwing.theme', name);
+    charts.themeChanged();
+    touch();
+  },
+  setKeys: (on) => {
+    keys = on;
+    setSingleKeys(on);
+    keep('lapwing.keys', on ? 'on' : 'off');
+    touch();
+  },
+  dismissNotice: () => {
+    live.notice = undefined;
+    touch();
+  },
+};
+
+const stream = `${location.protocol === 'https:' ? 'wss' : 'ws'}://${location.host}/api/stream`;
+const connection = new Connection(stream, {
+  after: () => live.lastEvent,
+  status: (status) => {
+    live.stream = status;
+    touch();
+  },
+  message: (message) => {
+    if (message.tell === 'quiet') {
+      if (message.done) stopDone();
+      else live.stop = stopFailed(live.stop, message.detail);
+    } else {
+      take(live, message, performance.now());
+    }
+    touch();
+  },
+});
+
+// While nothing arrives, the age of what is shown must still grow.
+setInterval(() => {
+  if (live.stop.is === 'asking' || !freshness(live, performance.now()).fresh) touch();
+}, 200);
+
+function recall(name: string): string | null {
+  try {
+    return localStorage.getItem(name);
+  } catch {
+    return null;
+  }
+}
+
+function keep(name: string, value: string): void {
+  try {
+    localStorage.setItem(name, value);
+  } catch {
+    // Without storage the choice lasts as long as the page.
+  }
+}
+
+setSingleKeys(keys);
+listenForKeys(stopEverything, (is) => {
+  escapeHeld = is;
+  touch();
+});
+connection.open();
+schedule();

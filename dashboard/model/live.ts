@@ -1,0 +1,153 @@
+/** Everything the page knows, and how each message changes it. Nothing here touches the screen. */
+import type { NumberedEvent, Setup, Snapshot } from '../../server/loop/protocol.js';
+import type { StreamMessage } from '../../server/web/streamMessages.js';
+import { LapStore, MARK, type Mark } from './laps.js';
+import { Profile } from './profile.js';
+import { type Stop, stopIdle } from './stop.js';
+import { SpeedTrace } from './trace.js';
+
+export const EVENTS_KEPT = 200;
+
+export interface Live {
+  stream: 'opening' | 'open' | 'lost';
+  loop: { state: 'up' | 'away'; reason: string; remedy: string } | undefined;
+  setup: Setup | undefined;
+  state: Snapshot | undefined;
+  /** Page time at which board time was last seen to move; NaN before any state. */
+  movedAtMs: number;
+  readonly laps: LapStore;
+  readonly trace: SpeedTrace;
+  readonly profile: Profile;
+  /** The newest events that are told in words (licks are only drawn), oldest first. */
+  readonly events: NumberedEvent[];
+  lastEvent: number;
+  /** Events that were never sent to this page. */
+  unseen: number;
+  stop: Stop;
+  /** The answer to the last thing asked. */
+  notice:
+    | { readonly kind: 'good' | 'bad'; readonly text: string; readonly remedy: string }
+    | undefined;
+}
+
+export function emptyLive(): Live {
+  return {
+    stream: 'opening',
+    loop: undefined,
+    setup: undefined,
+    state: undefined,
+    movedAtMs: Number.NaN,
+    laps: new LapStore(),
+    trace: new SpeedTrace(),
+    profile: new Profile(),
+    events: [],
+    lastEvent: 0,
+    unseen: 0,
+    stop: stopIdle,
+    notice: undefined,
+  };
+}
+
+/** Takes one message of the stream; `nowMs` is page time. */
+export function take(live: Live, message: StreamMessage, nowMs: number): void {
+  switch (message.tell) {
+    case 'loop':
+      live.loop = { state: message.state, reason: message.reason, remedy: message.remedy };
+      return;
+    case 'setup':
+      takeSetup(live, message.setup);
+      return;
+    case 'state':
+      takeState(live, message.state, nowMs);
+      return;
+    case 'events':
+      for (const event of message.events) takeEvent(live, event);
+      return;
+    case 'gap':
+      live.unseen += message.to - message.from + 1;
+      live.lastEvent = Math.max(live.lastEvent, message.to);
+      return;
+    default:
+      return;
+  }
+}
+
+function takeSetup(live: Live, setup: Setup): void {
+  const before = live.setup?.session;
+  const after = setup.session;
+  const another =
+    before && after && (before.folder !== after.folder || before.startedAt !== after.startedAt);
+  if (another) forgetSession(live);
+  live.setup = setup;
+}
+
+function takeState(live: Live, state: Snapshot, nowMs: number): void {
+  if (state.boardUs !== live.state?.boardUs) live.movedAtMs = nowMs;
+  live.state = state;
+  live.trace.add(state.boardUs, state.speedCmPerS);
+  if (state.session !== 'running' || state.positionCm === null) return;
+  live.laps.reach(state.lap);
+  const lengthCm = live.setup?.beltLengthCm ?? 0;
+  if (lengthCm > 0)
+    live.profile.addSpeed(state.lap, state.positionCm / lengthCm, state.speedCmPerS);
+}
+
+function takeEvent(live: Live, numbered: NumberedEvent): void {
+  const { number, event } = numbered;
+  if (number <= live.lastEvent) {
+    // Numbers that go back are another life of the loop, told from its beginning.
+    forgetSession(live);
+    live.unseen = 0;
+  } else if (live.lastEvent > 0 && number > live.lastEvent + 1) {
+    live.unseen += number - live.lastEvent - 1;
+  }
+  live.lastEvent = number;
+  if (event.kind === 'session began') forgetSession(live);
+  if (event.kind === 'lap began') live.laps.reach(event.lap);
+  // A page that joined late learns the speeds of the laps before from the events' own stamps.
+  const lengthCm = live.setup?.beltLengthCm ?? 0;
+  if (lengthCm > 0 && event.positionCm !== null) {
+    live.profile.addSpeed(event.lap, event.positionCm / lengthCm, event.speedCmPerS);
+  }
+  const mark = markOf(live, event);
+  const at = event.kind === 'fired' ? (event.riseCm ?? event.placeCm) : event.positionCm;
+  const positionCm = at ?? event.positionCm;
+  if (mark !== undefined && positionCm !== null && event.lap >= 0) {
+    live.laps.add(event.lap, positionCm, mark);
+    if (mark === MARK.lick && lengthCm > 0) live.profile.addLick(event.lap, positionCm / lengthCm);
+  }
+  if (event.kind === 'lick') return;
+  live.events.push(numbered);
+  if (live.events.length > EVENTS_KEPT) live.events.shift();
+}
+
+function markOf(live: Live, event: NumberedEvent['event']): Mark | undefined {
+  switch (event.kind) {
+    case 'lick':
+      return event.artefact ? MARK.artefact : MARK.lick;
+    case 'missed':
+      return MARK.missed;
+    case 'withheld':
+    case 'refused':
+      return MARK.withheld;
+    case 'fired': {
+      if (event.sham) return MARK.sham;
+      const kind = outputKind(live, event.output);
+      if (kind === 'valve') return MARK.water;
+      return kind === 'mark' ? undefined : MARK.stimulus;
+    }
+    default:
+      return undefined;
+  }
+}
+
+/** What an output is for; undefined when it is not known. */
+export function outputKind(live: Live, name: string | null): string | undefined {
+  return live.setup?.outputs.find((output) => output.name === name)?.kind;
+}
+
+function forgetSession(live: Live): void {
+  live.laps.clear();
+  live.profile.clear();
+  live.events.length = 0;
+}

@@ -1,0 +1,143 @@
+import type { StampedDecision } from '../../server/session/decisions.js';
+import type { OperatorAct } from '../../server/session/inputs.js';
+import { fixed, plural } from './format.js';
+
+export type Tone = 'plain' | 'good' | 'warn' | 'bad' | 'stim' | 'water' | 'faint';
+
+export interface Told {
+  readonly text: string;
+  readonly tone: Tone;
+}
+
+const say = (text: string, tone: Tone = 'plain'): Told => ({ text, tone });
+
+/** One event as a sentence for the list of recent events; `kindOf` says what an output is for. */
+export function eventWords(
+  event: StampedDecision,
+  kindOf: (output: string | null) => string | undefined = () => undefined,
+): Told {
+  switch (event.kind) {
+    case 'session began':
+      return say(`Session began: ${event.title} (seed ${event.seed})`, 'good');
+    case 'session ended':
+      return say(`Session ended: ${event.reason}`, 'warn');
+    case 'lap began':
+      return say(`Lap ${event.lap} began`, 'faint');
+    case 'seam':
+      return seamWords(event.event, event.slipMm);
+    case 'trust':
+      return say(
+        `Position ${event.trust}: ${event.reason}`,
+        event.trust === 'trusted' ? 'good' : 'warn',
+      );
+    case 'lick':
+      return say(event.artefact ? 'Lick, perhaps an artefact' : 'Lick', 'faint');
+    case 'lick sensor':
+      return say(`Lick sensor ${event.state}`, event.state === 'released' ? 'good' : 'bad');
+    case 'asked':
+      return say(`${event.rule} was asked of the board`, 'faint');
+    case 'armed':
+      return say(`${event.rule} is armed${atPlace(event.placeCm)}`, 'faint');
+    case 'disarmed':
+      return say(`${event.rule} was disarmed: ${event.reason}`, 'faint');
+    case 'fired':
+      return firedWords(event, kindOf(event.output));
+    case 'pulse done':
+      return say(pulseWords(event), 'faint');
+    case 'withheld':
+      return say(`${event.rule} was withheld: ${event.reason}`, 'warn');
+    case 'missed':
+      return say(`${event.rule} was missed: ${event.reason}`, 'warn');
+    case 'refused':
+      return say(`${event.rule} was refused by the board: ${event.reason}`, 'bad');
+    case 'uncertain':
+      return say(
+        `${event.rule} may have fired, and is charged as if it had: ${event.reason}`,
+        'bad',
+      );
+    case 'drawn':
+      return say(`Drawn: ${event.draw} is ${event.value} (${event.scope} ${event.index})`, 'faint');
+    case 'phase began':
+      return say(`Phase ${event.phase} began: ${event.reason}`, 'good');
+    case 'cell began':
+      return say(`Cell ${event.index} began`, 'good');
+    case 'note':
+      return say(`Note: ${event.text}`);
+    case 'operator':
+      return say(`${event.who || event.from}: ${actWords(event.act)}`);
+    case 'link':
+      return say(
+        `Board link ${event.state}: ${event.reason}`,
+        event.state === 'down' ? 'bad' : 'good',
+      );
+    case 'board fault':
+      return say(`The board reports a fault: ${event.fault} (${event.detail})`, 'bad');
+    case 'frames lost':
+      return say(`${plural(event.frames, 'frame')} lost: ${event.why}`, 'warn');
+    default:
+      // A newer loop may tell of more than this page knows.
+      return say(String((event as { kind: string }).kind), 'faint');
+  }
+}
+
+function seamWords(event: string, slipMm: number | null): Told {
+  const slip = slipMm === null ? '' : `, slip ${fixed(slipMm, 1)} mm`;
+  if (event === 'first') return say(`First seam mark${slip}`, 'good');
+  if (event === 'accepted') return say(`Seam mark${slip}`, 'faint');
+  if (event === 'missed') return say('Seam mark missed', 'warn');
+  if (event === 'rehomed')
+    return say(`Two seam marks agreed elsewhere: position set anew${slip}`, 'warn');
+  return say(`Seam mark ignored, far from where it should be${slip}`, 'warn');
+}
+
+function firedWords(
+  event: Extract<StampedDecision, { kind: 'fired' }>,
+  outputKind: string | undefined,
+): Told {
+  if (event.sham)
+    return say(`${event.rule}: sham firing${atPlace(event.riseCm ?? event.placeCm)}`, 'stim');
+  const how = event.armed ? 'by the board' : 'by the host';
+  const error = event.errorMm === null ? '' : `, ${fixed(event.errorMm, 1)} mm off`;
+  const place = atPlace(event.riseCm ?? event.placeCm);
+  const tone = outputKind === 'valve' ? 'water' : 'stim';
+  const output = event.output === null ? '' : ` (${event.output})`;
+  return say(`${event.rule} fired${output}${place}${error}, ${how}`, tone);
+}
+
+function pulseWords(event: Extract<StampedDecision, { kind: 'pulse done' }>): string {
+  const volume = event.volumeNl > 0 ? `, ${fixed(event.volumeNl / 1000, 1)} µL` : '';
+  const why = event.reason === '' ? '' : ` (${event.reason})`;
+  return `${event.output} off after ${fixed(event.onUs / 1000, 1)} ms${volume}${why}`;
+}
+
+function atPlace(cm: number | null): string {
+  return cm === null ? '' : ` at ${fixed(cm, 1)} cm`;
+}
+
+/** An operator's act, as others read it. */
+export function actWords(act: OperatorAct): string {
+  switch (act.act) {
+    case 'press':
+      return `pressed ${act.button}`;
+    case 'choose':
+      return `set ${act.name} to ${act.value}`;
+    case 'hold':
+      return act.on ? `holds the ${act.what}` : `released the ${act.what}`;
+    case 'phase':
+      return `asked for phase: ${act.to}`;
+    case 'new cell':
+      return 'began the next cell';
+    case 'exclude lap':
+      return `excluded lap ${act.lap}`;
+    case 'note':
+      return `note: ${act.text}`;
+    case 'stop everything':
+      return 'stopped everything';
+    case 'allow stimulation':
+      return 'allowed stimulation';
+    case 'end':
+      return `ended the session: ${act.reason}`;
+    default:
+      return (act as { act: string }).act;
+  }
+}

@@ -1,0 +1,16 @@
+import type { OperatorAct } from '../../server/session/inputs.js';
+import type { Answer, Beginning } from '../stream/api.js';
+
+export type Theme = 'dark' | 'red' | 'light';
+
+/** What the page can do; everything that a view calls. */
+export interface Actions {
+  stopEverything(): void;
+  dismissStop(): void;
+  begin(session: Beginning): Promise<Answer>;
+  end(reason: string): Promise<Answer>;
+  act(act: OperatorAct): Promise<Answer>;
+  setTheme(theme: Theme): void;
+  setKeys(on: boolean): void;
+  dismissNotice(): void;
+}

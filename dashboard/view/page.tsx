@@ -1,0 +1,60 @@
+import type { Charts } from '../draw/charts.js';
+import { freshness } from '../model/freshness.js';
+import type { Live } from '../model/live.js';
+import type { Actions, Theme } from './actions.js';
+import { Banners } from './banners.js';
+import { BeltPanel, SpeedPanel } from './beltPanel.js';
+import { EventsPanel } from './eventsPanel.js';
+import { HealthPanel } from './healthPanel.js';
+import { RulesPanel } from './rulesPanel.js';
+import { SessionPanel } from './sessionPanel.js';
+import { SteerPanel } from './steerPanel.js';
+import { TopBar } from './topBar.js';
+import { Vitals } from './vitals.js';
+
+export interface PageProps {
+  readonly live: Live;
+  readonly nowMs: number;
+  readonly theme: Theme;
+  readonly keys: boolean;
+  readonly escapeHeld: boolean;
+  readonly actions: Actions;
+  readonly charts: Charts;
+}
+
+/** The whole page from what is known now. What is stale turns grey; the controls never do. */
+export function Page(props: PageProps) {
+  const { live, nowMs, actions, charts } = props;
+  const fresh = freshness(live, nowMs);
+  const stale = fresh.fresh ? '' : 'stale';
+  return (
+    <>
+      <TopBar {...props} freshness={fresh} />
+      <Banners live={live} freshness={fresh} nowMs={nowMs} actions={actions} />
+      <main>
+        <div class={`shown now ${stale}`}>
+          <Vitals live={live} />
+        </div>
+        <div class={`shown seen ${stale}`}>
+          <BeltPanel live={live} charts={charts} />
+          <SpeedPanel charts={charts} />
+        </div>
+        <div class="side">
+          <SessionPanel live={live} actions={actions} />
+          <SteerPanel live={live} actions={actions} />
+          <div class={`shown ${stale}`}>
+            <RulesPanel live={live} />
+          </div>
+          <HealthPanel live={live} />
+          <div class={`shown events ${stale}`}>
+            <EventsPanel live={live} />
+          </div>
+        </div>
+      </main>
+      <footer>
+        Lapwing is not a safety interlock. It may be used only under an approved protocol, your
+        local rules and by trained staff, with a manual switch that cuts the outputs.
+      </footer>
+    </>
+  );
+}
