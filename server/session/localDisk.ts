@@ -29,11 +29,17 @@ const LOCAL_FUSE = new Set(['fuseblk']);
  */
 const SYNC_MARK = /^\.[_~]?sync(ed|ing)?($|[._-])/i;
 
-/** Why nothing should be recorded live below `folder`; undefined when it looks like a local disk. */
-export function whyNotLocal(folder: string): string | undefined {
+/**
+ * Why nothing should be recorded live below `folder`; undefined when it looks like a local disk.
+ * `typeOf` gives a file system's number as statfs(2) does.
+ */
+export function whyNotLocal(
+  folder: string,
+  typeOf: (folder: string) => number = (at) => fs.statfsSync(at).type,
+): string | undefined {
   const real = fs.realpathSync.native(folder);
   if (real.startsWith('\\\\')) return 'it is a network share';
-  const kind = REMOTE.get(fs.statfsSync(real).type >>> 0);
+  const kind = REMOTE.get(typeOf(real) >>> 0);
   if (kind !== undefined && !LOCAL_FUSE.has(mountKind(real)))
     return `it is on a ${kind} file system`;
   for (let at = real; ; at = path.dirname(at)) {

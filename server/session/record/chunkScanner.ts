@@ -34,13 +34,14 @@ export class ChunkScanner {
   readonly #fd: number;
   readonly #size: number;
   readonly #decompress: Decompress;
-  #window = Buffer.allocUnsafe(WINDOW);
+  #window: Buffer;
   #windowAt = 0;
   #windowEnd = 0;
 
   constructor(path: string, decompress: Decompress) {
     this.#fd = fs.openSync(path, 'r');
     this.#size = fs.fstatSync(this.#fd).size;
+    this.#window = Buffer.allocUnsafe(Math.min(WINDOW, this.#size));
     this.#decompress = decompress;
   }
 

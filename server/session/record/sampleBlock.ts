@@ -3,6 +3,8 @@ import { SAMPLE_FIELDS as F } from './sampleSchema.js';
 
 /** A block is closed at this many samples: one second at 1 kHz. */
 export const MOST_SAMPLES = 1000;
+/** Nor does it span more than this: far from where 32-bit time is ambiguous, or goes back. */
+const MOST_US = 10_000_000;
 const MOST_BEATS = 64;
 const MOST_VARINT = 5;
 /** Header fields, three beat arrays and the lengths of five arrays. */
@@ -51,7 +53,8 @@ export class SampleBlock {
       m.outputs !== this.#outputs ||
       m.illegal !== this.#illegal ||
       m.badFrames !== this.#badFrames ||
-      m.overruns !== this.#overruns
+      m.overruns !== this.#overruns ||
+      (m.boardUs - this.firstBoardUs) >>> 0 > MOST_US
     )
       return false;
     this.#timesEnd = writeVarint(this.#times, this.#timesEnd, (m.boardUs - this.lastBoardUs) >>> 0);

@@ -72,9 +72,10 @@ export class SegmentLog {
   append(chunk: Uint8Array, now: number): void {
     const end = this.#end + chunk.length;
     // Once one chunk is lost all are, until the disk recovers: what is held stays in one piece.
-    if (end > HELD_MOST && this.state === 'failed') {
+    if (this.state === 'failed' && (this.lostChunks > 0 || end > HELD_MOST)) {
       if (this.lostChunks++ === 0)
         this.#options.onTrouble('lost', new Error(`${this.#end} bytes are held already`));
+      this.poll(now);
       return;
     }
     if (end > this.#held.length) {
