@@ -8,6 +8,7 @@ import {
   type Identity,
   MESSAGES,
   type MessageOf,
+  PROTOCOL_VERSION,
 } from '../wire/messages.js';
 import type { BytePort, PortListener } from './bytePort.js';
 import type { LinkCounters, LinkHandler } from './linkHandler.js';
@@ -56,6 +57,7 @@ export class Connection implements PortListener {
     this.#decoder = new FrameDecoder({
       frame: (frame) => this.#frame(frame),
       bad: (why) => this.#bad(why),
+      otherLength: (frame) => this.#otherLength(frame),
     });
     port.listen(this);
   }
@@ -175,6 +177,15 @@ export class Connection implements PortListener {
       this.#owner.handler.fault(this.#fault);
     }
     this.#owner.tagEnded();
+  }
+
+  /** Another version's identity begins like ours, and so can say which version it is. */
+  #otherLength(frame: Frame): void {
+    if (this.#over || frame.shape.type !== MESSAGES.identity.type) return;
+    const identity = blank('identity');
+    identity.nonce = frame.u32(0);
+    identity.protocol = frame.u8(4);
+    if (identity.protocol !== PROTOCOL_VERSION) this.#owner.identity(identity);
   }
 
   #bad(why: BadFrame): void {

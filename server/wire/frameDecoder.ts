@@ -11,6 +11,11 @@ export interface FrameSink {
   frame(frame: Frame): void;
   /** Bytes between two delimiters that are no frame; decoding goes on at the next one. */
   bad(why: BadFrame): void;
+  /**
+   * A frame with a good CRC and a known type whose payload is longer or shorter than this version's:
+   * `bad('length')` follows. Only fields that no version moves may be read, by `u8` and `u32`.
+   */
+  otherLength?(frame: Frame): void;
 }
 
 /** One decoded frame; a single instance is reused for every frame of a decoder. */
@@ -27,6 +32,16 @@ export class Frame {
   /** Reads the payload into a message made by `blank(frame.shape.name)`. */
   read(into: object): void {
     readPayload(this.shape, this.#view, HEADER_BYTES, into);
+  }
+
+  /** One byte of the payload. */
+  u8(offset: number): number {
+    return this.#view.getUint8(HEADER_BYTES + offset);
+  }
+
+  /** Four bytes of the payload. */
+  u32(offset: number): number {
+    return this.#view.getUint32(HEADER_BYTES + offset, true);
   }
 }
 
@@ -95,10 +110,11 @@ export class FrameDecoder {
     if (view.getUint16(crcAt, true) !== crc16(this.#buffer, 0, crcAt)) return 'crc';
     const shape = SHAPE_BY_TYPE[this.#buffer[0]!];
     if (shape === undefined) return 'unknown type';
-    if (shape.payloadBytes !== crcAt - HEADER_BYTES) return 'length';
     this.#frame.shape = shape;
     this.#frame.sequence = this.#buffer[1]!;
     this.#frame.tag = view.getUint16(2, true);
-    return undefined;
+    if (shape.payloadBytes === crcAt - HEADER_BYTES) return undefined;
+    this.#sink.otherLength?.(this.#frame);
+    return 'length';
   }
 }

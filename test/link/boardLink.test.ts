@@ -2,6 +2,8 @@ import { describe, expect, it } from 'vitest';
 import { LapwingError } from '../../server/errors/codes.js';
 import { ANSWER_MS, GRACE_MS, IDENTIFY_MS, SILENCE_MS } from '../../server/link/boardLink.js';
 import type { BytePort } from '../../server/link/bytePort.js';
+import { cobsEncode } from '../../server/wire/cobs.js';
+import { crc16 } from '../../server/wire/crc16.js';
 import { FAULT, type MessageOf } from '../../server/wire/messages.js';
 import { VirtualLink } from './virtualLink.js';
 
@@ -119,6 +121,26 @@ describe('the handshake', () => {
     rig.board.identity.protocol = 1;
     await rig.timers.advance(100);
     expect(rig.link.state).toBe('up');
+  });
+
+  it('names both versions even when the other one has another identity', async () => {
+    const rig = new VirtualLink();
+    rig.board.answers = false;
+    rig.board.onMessage = () => {
+      const { nonce } = rig.board.of('identify').at(-1) as MessageOf['identify'];
+      // As on the wire page: type, sequence, tag, then nonce and protocol, which never move.
+      const bytes = Uint8Array.of(0x01, 0, 0, 0, 0, 0, 0, 0, 7, 1, 2, 3, 0, 0);
+      const view = new DataView(bytes.buffer);
+      view.setUint32(4, nonce, true);
+      view.setUint16(12, crc16(bytes, 0, 12), true);
+      const stuffed = new Uint8Array(20);
+      rig.cable.send(stuffed.subarray(0, cobsEncode(bytes, bytes.length, stuffed) + 1));
+    };
+    rig.link.start();
+    await rig.timers.advance(50);
+    expect(rig.handler.of('waiting')[0]!.why.message).toBe(
+      'The board speaks protocol 7; this Lapwing speaks 1.',
+    );
   });
 
   it('understands a board that refuses our protocol with a fault alone', async () => {
