@@ -1,18 +1,18 @@
-const CAPACITY = 512;
+const MOST = 512;
 
 /**
- * On-time of one output in a sliding window. Exact for the last 256 firings at least, a train
- * being one; where more fall into the window, older ones are joined in pairs and taken as later
- * than they were, which can only count too much.
+ * On-time of one output in a sliding window. Exact while at most 512 firings lie in it, a train
+ * being one; beyond that neighbours are joined and taken as later than they were, which can only
+ * count too much.
  */
 export class DutyWindow {
   readonly windowUs: number;
   /** Most on-time in any window. */
   readonly budgetUs: number;
-  readonly #startUs = new Float64Array(CAPACITY);
-  readonly #widthUs = new Float64Array(CAPACITY);
-  readonly #periodUs = new Float64Array(CAPACITY);
-  readonly #onUs = new Float64Array(CAPACITY);
+  #startUs = new Float64Array(16);
+  #widthUs = new Float64Array(16);
+  #periodUs = new Float64Array(16);
+  #onUs = new Float64Array(16);
   #size = 0;
 
   constructor(share: number, windowUs: number) {
@@ -22,7 +22,8 @@ export class DutyWindow {
 
   /** Pulses of `widthUs` every `periodUs` from `startUs` on, `onUs` of on-time in all. */
   add(startUs: number, widthUs: number, periodUs: number, onUs: number): void {
-    if (this.#size === CAPACITY) this.#halve();
+    if (this.#size === MOST) this.#join();
+    else if (this.#size === this.#onUs.length) this.#grow();
     this.#put(this.#size++, startUs, widthUs, periodUs, onUs);
   }
 
@@ -61,13 +62,29 @@ export class DutyWindow {
     return this.#startUs[i]! + (pulses - 1) * this.#periodUs[i]! + lastOnUs;
   }
 
-  #halve(): void {
-    for (let i = 0; i + 1 < this.#size; i += 2) {
-      const onUs = this.#onUs[i]! + this.#onUs[i + 1]!;
-      const endUs = Math.max(this.#endUs(i), this.#endUs(i + 1));
-      this.#put(i >> 1, endUs, onUs, onUs, onUs);
+  /** Joins the two neighbours whose joining moves on-time least. */
+  #join(): void {
+    let at = 0;
+    let least = Number.POSITIVE_INFINITY;
+    for (let i = 0; i + 1 < this.#size; i++) {
+      const cost = this.#onUs[i]! * Math.abs(this.#endUs(i + 1) - this.#endUs(i));
+      if (cost < least) {
+        least = cost;
+        at = i;
+      }
     }
-    this.#size >>= 1;
+    const onUs = this.#onUs[at]! + this.#onUs[at + 1]!;
+    const endUs = Math.max(this.#endUs(at), this.#endUs(at + 1));
+    this.#put(at, endUs, onUs, onUs, onUs);
+    this.#size--;
+    for (let i = at + 1; i < this.#size; i++) this.#copy(i + 1, i);
+  }
+
+  #grow(): void {
+    this.#startUs = doubled(this.#startUs);
+    this.#widthUs = doubled(this.#widthUs);
+    this.#periodUs = doubled(this.#periodUs);
+    this.#onUs = doubled(this.#onUs);
   }
 
   #put(i: number, startUs: number, widthUs: number, periodUs: number, onUs: number): void {
@@ -83,4 +100,10 @@ export class DutyWindow {
     this.#periodUs[to] = this.#periodUs[from]!;
     this.#onUs[to] = this.#onUs[from]!;
   }
+}
+
+function doubled(array: Float64Array<ArrayBuffer>): Float64Array<ArrayBuffer> {
+  const larger = new Float64Array(array.length * 2);
+  larger.set(array);
+  return larger;
 }
