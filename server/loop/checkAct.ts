@@ -1,26 +1,31 @@
 import { LapwingError } from '../errors/codes.js';
-import type { Program } from '../rules/engine/program.js';
 import type { SessionCore } from '../session/core/sessionCore.js';
 import type { OperatorAct } from '../session/inputs.js';
+import type { PreparedRules } from '../session/prepare.js';
 
 const LONGEST_TEXT = 2_000;
 
 /**
  * Refuses an act that the session does not allow, before it becomes an input: what is recorded is
  * what was done.
- * @param program undefined while no session runs: only stopping everything makes sense then
+ * @param rules undefined while no session runs: only stopping everything makes sense then
  * @throws LapwingError LOOP_BAD_ACT or LOOP_NO_SESSION
  */
-export function checkAct(act: OperatorAct, core: SessionCore, program: Program | undefined): void {
+export function checkAct(
+  act: OperatorAct,
+  core: SessionCore,
+  rules: PreparedRules | undefined,
+): void {
   const { act: name } = (act ?? {}) as { act?: unknown };
   if (name === 'stop everything') return;
-  if (program === undefined) throw new LapwingError('loopNoSession', 'There is nothing to act on.');
+  if (rules === undefined) throw new LapwingError('loopNoSession', 'There is nothing to act on.');
+  const { program, choices } = rules;
   switch (act.act) {
     case 'press':
       oneOf('button', act.button, program.buttons);
       return;
     case 'choose':
-      checkChoice(act.name, act.value, program);
+      checkChoice(act.name, act.value, choices);
       return;
     case 'hold':
       oneOf('hold', act.what, ['stimulus', 'water']);
@@ -50,14 +55,11 @@ export function checkAct(act: OperatorAct, core: SessionCore, program: Program |
   }
 }
 
-function checkChoice(name: unknown, value: unknown, program: Program): void {
-  const choice = program.choices.find((one) => one.name === name);
+function checkChoice(name: unknown, value: unknown, choices: PreparedRules['choices']): void {
+  const choice = choices.find((one) => one.name === name);
   if (choice === undefined) {
-    oneOf(
-      'choice',
-      name,
-      program.choices.map((one) => one.name),
-    );
+    const names = choices.map((one) => one.name);
+    oneOf('choice', name, names);
     return;
   }
   if (choice.options !== undefined) {

@@ -1,5 +1,3 @@
-import { type ChildProcess, fork } from 'node:child_process';
-import { fileURLToPath } from 'node:url';
 import { diskFree } from '../session/localDisk.js';
 import type { Recorder } from '../session/record/recorder.js';
 import type { TroubleKind } from '../session/record/segmentLog.js';
@@ -28,8 +26,8 @@ export class LiveRecord {
     this.recorder?.tick();
     if (nowMs - this.#lookedMs < LOOK_MS) return;
     this.#lookedMs = nowMs;
-    this.#diskFree = diskFree(this.#folder);
-    if (this.#diskFree > LOW_DISK_BYTES || this.#toldLow) return;
+    this.#diskFree = freeOrUnknown(this.#folder);
+    if (!(this.#diskFree <= LOW_DISK_BYTES) || this.#toldLow) return;
     this.#toldLow = true;
     this.#onTrouble('low', new Error(`${Math.round(this.#diskFree / 1e6)} MB left on the disk`));
   }
@@ -43,20 +41,11 @@ export class LiveRecord {
   }
 }
 
-/**
- * Rewrites a closed record, compressed and indexed, in a process of its own. The record is whole
- * without it, so a failure is told and nothing more.
- */
-export function finishRecord(folder: string): Promise<void> {
-  const script = fileURLToPath(new URL('../session/record/finishProcess.js', import.meta.url));
-  return new Promise((resolve, reject) => {
-    const child: ChildProcess = fork(script, [folder], {
-      stdio: ['ignore', 'ignore', 'inherit', 'ipc'],
-    });
-    child.once('error', reject);
-    child.once('exit', (code) => {
-      if (code === 0) resolve();
-      else reject(new Error(`finishing the record left with status ${code}`));
-    });
-  });
+/** NaN where the folder is not there yet. */
+function freeOrUnknown(folder: string): number {
+  try {
+    return diskFree(folder);
+  } catch {
+    return Number.NaN;
+  }
 }

@@ -22,7 +22,7 @@ export interface LoopService {
   snapshot(): Snapshot;
   quiet(): void;
   end(reason: string): void;
-  begin(message: Extract<ClientMessage, { say: 'begin' }>): void;
+  begin(message: Extract<ClientMessage, { say: 'begin' }>): Promise<void>;
   act(message: Extract<ClientMessage, { say: 'act' }>): void;
 }
 
@@ -104,8 +104,12 @@ export class LocalServer {
     if (!client.greeted) {
       throw new LapwingError('loopTokenRefused', 'The first line must be `hello` with the token.');
     }
+    void this.#answer(client, message);
+  }
+
+  async #answer(client: Client, message: ClientMessage): Promise<void> {
     try {
-      this.#obey(client, message);
+      await this.#obey(client, message);
       if (message.request !== undefined) {
         client.socket.write(lineOf({ tell: 'done', request: message.request }));
       }
@@ -123,7 +127,7 @@ export class LocalServer {
     client.socket.write(lineOf({ tell: 'hello', protocol: LOCAL_PROTOCOL, version, rig }));
   }
 
-  #obey(client: Client, message: ClientMessage): void {
+  #obey(client: Client, message: ClientMessage): Promise<void> | void {
     switch (message.say) {
       case 'quiet':
         this.#service.quiet();
@@ -132,8 +136,7 @@ export class LocalServer {
         this.#service.end(textOf(message.reason) || 'asked to end');
         return;
       case 'begin':
-        this.#service.begin(message);
-        return;
+        return this.#service.begin(message);
       case 'act':
         this.#service.act(message);
         return;

@@ -1,5 +1,5 @@
 import { existsSync, readFileSync, rmSync } from 'node:fs';
-import { resolve, sep } from 'node:path';
+import { join, resolve, sep } from 'node:path';
 import { setTimeout as delay } from 'node:timers/promises';
 import type { Logger } from 'pino';
 import { LapwingError } from '../errors/codes.js';
@@ -7,20 +7,22 @@ import { BoardLink } from '../link/boardLink.js';
 import type { LinkHandler, LinkUp } from '../link/linkHandler.js';
 import { portOpener } from '../link/resolvePort.js';
 import { packageVersion } from '../packageRoot.js';
+import type { SessionSetup } from '../session/core/sessionCore.js';
 import type { StampedDecision } from '../session/decisions.js';
 import type { Actor, OperatorAct, RareInput } from '../session/inputs.js';
 import { idleRules, newSeed, prepareRules } from '../session/prepare.js';
+import { finish } from '../session/record/finish.js';
 import { readRecord } from '../session/record/readRecord.js';
 import { Recorder } from '../session/record/recorder.js';
 import type { TroubleKind } from '../session/record/segmentLog.js';
 import type { Rig } from '../session/rig/rig.js';
-import { SessionRunner } from '../session/runner.js';
+import { type SessionRecorder, SessionRunner } from '../session/runner.js';
 import { describeEnd, openSession, recordHeaderOf, waterTodayNl } from '../session/store.js';
 import { writeFileWhole } from '../session/writeFileWhole.js';
 import { CAPABILITY, type Sample } from '../wire/messages.js';
 import { checkAct } from './checkAct.js';
 import { EventRing } from './eventRing.js';
-import { finishRecord, LiveRecord } from './liveRecord.js';
+import { LiveRecord } from './liveRecord.js';
 import { LocalServer, type LoopService } from './localServer.js';
 import type { BeginOptions, LoopOptions, LoopReport } from './options.js';
 import type { ClientMessage, Setup, Snapshot } from './protocol.js';
@@ -35,7 +37,6 @@ const LAST_WORDS_MS = 600;
 /** The running session as a restarted loop finds it. */
 interface CurrentSession {
   readonly folder: string;
-  readonly rulesPath: string;
   readonly subject: string;
   readonly experimenter: string;
   readonly seed: string;
@@ -68,6 +69,7 @@ export class Loop implements LinkHandler, LoopService {
   #ended: string | null = null;
   #lastUp: LinkUp | undefined;
   #toBegin: BeginOptions | undefined;
+  #beginning = false;
   #tick: NodeJS.Timeout | undefined;
   #framesBefore = 0;
   #framesAtMs = performance.now();
@@ -157,11 +159,7 @@ export class Loop implements LinkHandler, LoopService {
     const begin = this.#toBegin;
     if (begin === undefined) return;
     this.#toBegin = undefined;
-    try {
-      this.#begin(begin);
-    } catch (error) {
-      this.#fail(error);
-    }
+    this.#begin(begin).catch((error: unknown) => this.#fail(error));
   }
 
   down(why: LapwingError): void {
@@ -211,7 +209,7 @@ export class Loop implements LinkHandler, LoopService {
     this.#act({ act: 'end', reason }, { who: 'a local client', from: 'local socket' });
   }
 
-  begin(message: Extract<ClientMessage, { say: 'begin' }>): void {
+  begin(message: Extract<ClientMessage, { say: 'begin' }>): Promise<void> {
     const rulesPath = resolve(this.#rulesFolder, String(message.rules));
     if (!rulesPath.startsWith(this.#rulesFolder + sep)) {
       throw new LapwingError('rulesOutside', `\`${message.rules}\` leads out of the rules folder.`);
@@ -220,7 +218,7 @@ export class Loop implements LinkHandler, LoopService {
     if (subject === '') throw new LapwingError('loopBadAct', 'A session needs a subject.');
     const experimenter = String(message.experimenter ?? '');
     const { seed } = message;
-    this.#begin({ rulesPath, subject, experimenter, ...(seed ? { seed } : {}) });
+    return this.#begin({ rulesPath, subject, experimenter, ...(seed ? { seed } : {}) });
   }
 
   act(message: Extract<ClientMessage, { say: 'act' }>): void {
@@ -229,46 +227,57 @@ export class Loop implements LinkHandler, LoopService {
 
   // ---- sessions ------------------------------------------------------------------------------
 
-  #begin(begin: BeginOptions): void {
-    if (this.#session !== undefined) throw new LapwingError('loopBusy', 'End it first.');
+  /**
+   * Begins a session. What takes long (compiling, syncing files) is done in steps, and frames are
+   * taken in between, so that the board never misses a beat.
+   */
+  async #begin(begin: BeginOptions): Promise<void> {
+    if (this.#session !== undefined || this.#beginning) {
+      throw new LapwingError('loopBusy', 'End it before another begins.');
+    }
+    this.#beginning = true;
+    try {
+      const rules = prepareRules(begin.rulesPath, this.#rigFile);
+      await frames();
+      const { subject, experimenter } = begin;
+      const seed = begin.seed ?? newSeed();
+      const startedAt = new Date();
+      const earlierNl = waterTodayNl(this.#recordFolder, subject, startedAt);
+      const card = { subject, experimenter, seed, startedAt, waterTodayNl: earlierNl };
+      await frames();
+      const board = this.#link.identity ?? null;
+      const opened = openSession(this.#recordFolder, this.#rigFile, rules, card, board, {
+        onTrouble: (kind, error) => this.#trouble(kind, error),
+      });
+      await frames();
+      this.#start({ folder: opened.folder, rules, ...card }, opened.recorder);
+    } finally {
+      this.#beginning = false;
+    }
+  }
+
+  #start(session: RunningSession, recorder: Recorder): void {
     const up = this.#link.state === 'up' ? this.#lastUp : undefined;
-    if (up === undefined) throw new LapwingError('loopNoBoard', 'The board does not answer.');
-    const rules = prepareRules(begin.rulesPath, this.#rigFile);
-    const { subject, experimenter } = begin;
-    const seed = begin.seed ?? newSeed();
-    const startedAt = new Date();
-    const earlierNl = waterTodayNl(this.#recordFolder, subject, startedAt);
-    const card = { subject, experimenter, seed, startedAt, waterTodayNl: earlierNl };
-    const opened = openSession(this.#recordFolder, this.#rigFile, rules, card, up.identity, {
-      onTrouble: (kind, error) => this.#trouble(kind, error),
-    });
-    const { folder } = opened;
-    const current: CurrentSession = {
-      ...{ folder, rulesPath: rules.path, subject, experimenter, seed },
-      ...{ startedAt: startedAt.toISOString(), waterTodayNl: earlierNl },
-    };
-    writeFileWhole(this.#address.currentFile, JSON.stringify(current));
-    this.#record.recorder = opened.recorder;
-    this.#session = { folder, rules, ...card };
+    if (up === undefined) {
+      recorder.close('the board was gone before the session began');
+      throw new LapwingError('loopNoBoard', 'The board does not answer.');
+    }
+    const { folder } = session;
+    writeFileWhole(this.#address.currentFile, JSON.stringify(currentOf(session)));
+    this.#record.recorder = recorder;
+    this.#session = session;
     this.#ended = null;
     this.#runner = new SessionRunner(
-      ...([
-        {
-          rig: this.#rigFile,
-          program: rules.program,
-          title: rules.file.title,
-          seed,
-          waterTodayNl: earlierNl,
-        },
-      ] as const),
+      setupFor(this.#rigFile, session),
       this.#send,
-      opened.recorder,
+      recorder,
       this.#onDecision,
     );
     this.#take(linkUpInput({ ...up, sameBoot: false }));
     this.#take({ kind: 'begin' });
     this.batchEnd();
     this.#log.info({ folder }, 'session begun');
+    this.#report({ report: 'session began', folder });
     this.#server.announceSetup();
   }
 
@@ -276,49 +285,30 @@ export class Loop implements LinkHandler, LoopService {
   async #resume(): Promise<void> {
     const text = readFileSync(this.#address.currentFile, 'utf8');
     const current = JSON.parse(text) as CurrentSession;
-    const { folder, subject, experimenter, seed } = current;
-    const rules = prepareRules(current.rulesPath, this.#rigFile);
+    const { folder } = current;
+    const rules = prepareRules(join(folder, 'rules.yaml'), this.#rigFile);
+    const session = { ...current, rules, startedAt: new Date(current.startedAt) };
     const reader = await readRecord(folder);
-    const setup = {
-      ...{ rig: this.#rigFile, program: rules.program, title: rules.file.title, seed },
-      waterTodayNl: current.waterTodayNl,
-    };
-    const recorder = { current: undefined as Recorder | undefined };
-    const runner = new SessionRunner(
-      setup,
-      this.#send,
-      {
-        sample: (input, m) => recorder.current?.sample(input, m),
-        input: (input, what) => recorder.current?.input(input, what),
-        command: (input, name, message) => recorder.current?.command(input, name, message),
-        decision: (decision) => recorder.current?.decision(decision),
-        batchEnd: (commanded) => recorder.current?.batchEnd(commanded),
-      },
-      this.#onDecision,
-    );
+    const recorder = new LateRecorder();
+    const setup = setupFor(this.#rigFile, session);
+    const runner = new SessionRunner(setup, this.#send, recorder, this.#onDecision);
     runner.replay(() =>
       reader.visit({
         sample: (_, sample) => runner.sample(sample),
         input: (_, input) => runner.take(input),
       }),
     );
-    recorder.current = Recorder.create(folder, recordHeaderOf(folder), {
+    this.#runner = runner;
+    this.#session = session;
+    recorder.to = Recorder.create(folder, recordHeaderOf(folder), {
       onTrouble: (kind, error) => this.#trouble(kind, error),
       resume: reader.resumePoint(),
     });
-    this.#record.recorder = recorder.current;
-    this.#session = {
-      folder,
-      rules,
-      subject,
-      experimenter,
-      seed,
-      startedAt: new Date(current.startedAt),
-    };
-    this.#runner = runner;
+    this.#record.recorder = recorder.to;
     this.#take({ kind: 'link down', reason: 'the loop was restarted' });
-    this.#take({ kind: 'resume', note: 'the loop was restarted; what was recorded was replayed' });
+    this.#take({ kind: 'resume', note: 'what was recorded has been replayed' });
     this.#log.warn({ folder, inputs: runner.core.input }, 'session resumed');
+    if (runner.core.state === 'ended') this.#endSession(runner.core.endedBy);
   }
 
   #endSession(how: 'rules' | 'operator' | 'signal'): void {
@@ -343,8 +333,10 @@ export class Loop implements LinkHandler, LoopService {
     this.#server.announceSetup();
     this.#report({ report: 'session ended', folder, reason: core.endReason });
     if (whole) {
-      this.#closing = finishRecord(folder).catch((error: Error) =>
-        this.#log.error({ folder }, error.message),
+      // The record is whole without it, so a failure is told and nothing more.
+      this.#closing = finish(folder).then(
+        () => {},
+        (error: Error) => this.#log.error({ folder }, error.message),
       );
     }
     if (this.#options.exitWhenEnded) void this.#closing.then(() => this.#leave());
@@ -371,7 +363,7 @@ export class Loop implements LinkHandler, LoopService {
   }
 
   #act(act: OperatorAct, by: Actor): void {
-    checkAct(act, this.#runner.core, this.#session?.rules.program);
+    checkAct(act, this.#runner.core, this.#session?.rules);
     this.#take({ kind: 'operator', act, by });
     this.batchEnd();
   }
@@ -432,4 +424,39 @@ function linkUpInput({ identity, tag, sameBoot, transport }: LinkUp): RareInput 
     sameBoot,
     overNetwork: transport === 'tcp' && !simulated,
   };
+}
+
+function currentOf(session: RunningSession): CurrentSession {
+  const { folder, subject, experimenter, seed, startedAt, waterTodayNl } = session;
+  return { folder, subject, experimenter, seed, startedAt: startedAt.toISOString(), waterTodayNl };
+}
+
+function setupFor(rig: Rig, { rules, seed, waterTodayNl }: RunningSession): SessionSetup {
+  return { rig, program: rules.program, title: rules.file.title, seed, waterTodayNl };
+}
+
+/** Lets everything that has come from the board in the meantime be taken. */
+function frames(): Promise<void> {
+  return new Promise((resolve) => setTimeout(resolve, 1));
+}
+
+/** Stands in for the recorder until what was recorded has been replayed. */
+class LateRecorder implements SessionRecorder {
+  to: Recorder | undefined;
+
+  sample(...args: Parameters<SessionRecorder['sample']>): void {
+    this.to?.sample(...args);
+  }
+  input(...args: Parameters<SessionRecorder['input']>): void {
+    this.to?.input(...args);
+  }
+  command(...args: Parameters<SessionRecorder['command']>): void {
+    this.to?.command(...args);
+  }
+  decision(...args: Parameters<SessionRecorder['decision']>): void {
+    this.to?.decision(...args);
+  }
+  batchEnd(commanded: boolean): void {
+    this.to?.batchEnd(commanded);
+  }
 }

@@ -24,6 +24,7 @@ export interface BeginOptions {
 /** What the loop process tells its launcher over their IPC channel. */
 export type LoopReport =
   | { readonly report: 'ready' }
+  | { readonly report: 'session began'; readonly folder: string }
   | { readonly report: 'session ended'; readonly folder: string; readonly reason: string }
   /** It cannot run at all, and starting it again would not help. */
   | {

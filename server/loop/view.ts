@@ -15,6 +15,8 @@ export interface RunningSession {
   readonly experimenter: string;
   readonly seed: string;
   readonly startedAt: Date;
+  /** Given to this animal earlier today. */
+  readonly waterTodayNl: number;
 }
 
 export interface RecordView {
@@ -44,7 +46,7 @@ export function setupOf(
 
 function describe(session: RunningSession): NonNullable<Setup['session']> {
   const { folder, rules, subject, experimenter, seed, startedAt } = session;
-  const { program, file } = rules;
+  const { program, file, choices } = rules;
   return {
     folder,
     title: file.title,
@@ -56,7 +58,7 @@ function describe(session: RunningSession): NonNullable<Setup['session']> {
     rules: file.rules.map(({ name }) => name.name),
     phases: file.phases.map(({ name }) => name.name),
     buttons: program.buttons,
-    choices: program.choices,
+    choices,
   };
 }
 
@@ -91,7 +93,7 @@ export function snapshotOf(
     boardUs: instant.nowUs,
     session: session === undefined ? (ended === null ? 'idle' : 'ended') : 'running',
     endedBecause: ended,
-    sessionS: session === undefined ? 0 : view.sessionUs / 1_000_000,
+    sessionS: session === undefined ? 0 : (instant.nowUs - core.beganUs) / 1_000_000,
     link: {
       state: link.state,
       reason: trouble?.message ?? '',

@@ -1,5 +1,6 @@
 import { userInfo } from 'node:os';
 import { InvalidArgumentError, Option } from 'commander';
+import { DEFAULT_PORT } from '../web/webProcess.js';
 
 /** `--rig RIG`, which every command that needs a rig takes. */
 export function rigOption(): Option {
@@ -22,4 +23,11 @@ export function loginName(): string {
   } catch {
     return '';
   }
+}
+
+/** `--port NUMBER`: where the page is served on this machine. */
+export function portOption(): Option {
+  return new Option('--port <number>', 'where the page is served, on this machine only')
+    .argParser(wholeNumber(0, 65_535))
+    .default(DEFAULT_PORT);
 }

@@ -3,13 +3,14 @@ import { join } from 'node:path';
 import { Command } from 'commander';
 import { packageRoot } from '../packageRoot.js';
 import { readRig } from '../session/rig/readRig.js';
+import { portOption } from './arguments.js';
 import { runLive } from './live.js';
 
 /** `lapwing demo`: the simulated rig, a trained animal and the demo's rules, with the page. */
 export function demoCommand(): Command {
   return new Command('demo')
     .description('run the simulated rig with the demo rules and serve its page')
-    .option('--port <number>', 'where the page is served', Number, 8033)
+    .addOption(portOption())
     .option('--records <folder>', 'where the record goes', join(homedir(), 'lapwing-demo-records'))
     .option('--seed <number>', 'of the simulated animal', '1')
     .action(async (flags: { port: number; records: string; seed: string }) => {

@@ -4,6 +4,7 @@ import { LapwingError } from '../errors/codes.js';
 import type { LoopOptions, LoopReport } from '../loop/options.js';
 import { rigAddress } from '../loop/rigLock.js';
 import type { Rig } from '../session/rig/rig.js';
+import { simulatedRigArguments } from './simulatedRigFor.js';
 
 export interface LaunchPlan {
   readonly rig: Rig;
@@ -91,6 +92,7 @@ export class Launcher {
     const tcp = process.platform === 'win32' ? ['--tcp', '0'] : [];
     const child = this.#fork('../../hardware-sim/simulatedRigProcess.js', [
       ...tcp,
+      ...simulatedRigArguments(this.#plan.rig),
       ...(this.#plan.simulatedRig ?? []),
     ]);
     this.#rig = child;
@@ -111,9 +113,10 @@ export class Launcher {
 
   #hear(report: LoopReport): void {
     if (report.report === 'ready') {
-      this.#begun = true;
       if (this.#plan.web && !this.#web) this.#startWeb();
       this.#events.ready();
+    } else if (report.report === 'session began') {
+      this.#begun = true;
     } else if (report.report === 'session ended') {
       this.#events.sessionEnded(report.folder, report.reason);
     } else {
@@ -154,21 +157,33 @@ export class Launcher {
   #startWeb(): void {
     const { host, port } = this.#plan.web!;
     const { socketPath, tokenFile } = rigAddress(this.#plan.rig.name);
+    const log = process.env.LAPWING_LOG ?? 'warn';
     const child = this.#fork('../web/webProcess.js', [
       ...['--socket', socketPath, '--token-file', tokenFile],
-      ...['--host', host, '--port', String(port)],
+      ...['--host', host, '--port', String(port), '--log', log],
     ]);
     this.#web = child;
     firstLine(child).then(
-      (line) => this.#events.webReady?.((JSON.parse(line) as { url: string }).url),
+      (line) => this.#events.webReady?.((JSON.parse(line) as { listening: string }).listening),
       () => {},
     );
     child.once('exit', (code, signal) => {
       this.#web = undefined;
       if (this.#stopping) return;
+      if (code === CANNOT_RUN) {
+        this.#webCannotRun();
+        return;
+      }
       this.#events.restarted('web', signal ? `killed by ${signal}` : `left with status ${code}`);
       setTimeout(() => !this.#stopping && !this.#web && this.#startWeb(), 500);
     });
+  }
+
+  /** The page is a guest of a session that runs; without a session, it is all there is. */
+  #webCannotRun(): void {
+    if (this.#plan.loop.exitWhenEnded) return;
+    this.#failure = new Error('the page cannot be served');
+    this.stop();
   }
 
   #fork(script: string, args: readonly string[]): ChildProcess {

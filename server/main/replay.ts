@@ -3,7 +3,7 @@ import { Command } from 'commander';
 import { readDescription } from '../session/description.js';
 import { prepareRules } from '../session/prepare.js';
 import { describeTroubles } from '../session/record/recordState.js';
-import { replaySession, type ReplayResult } from '../session/replay.js';
+import { type ReplayResult, replaySession } from '../session/replay.js';
 import { readRig } from '../session/rig/readRig.js';
 
 /** `lapwing replay SESSION`: the record through the engine again, every decision compared. */

@@ -2,7 +2,7 @@ import { resolve } from 'node:path';
 import { Command } from 'commander';
 import { prepareRules } from '../session/prepare.js';
 import { readRig } from '../session/rig/readRig.js';
-import { loginName, rigOption } from './arguments.js';
+import { loginName, portOption, rigOption } from './arguments.js';
 import { runLive } from './live.js';
 import { tellWarnings } from './tellWarnings.js';
 
@@ -27,7 +27,7 @@ export function runCommand(): Command {
     .option('--seed <text>', 'the seed of every draw; made up and recorded where nothing is said')
     .option('--records <folder>', "instead of the rig file's record folder")
     .option('--web', 'serve the page too')
-    .option('--port <number>', 'where the page is served', Number, 8033)
+    .addOption(portOption())
     .action(async (rules: string, flags: RunFlags) => {
       const rig = readRig(flags.rig);
       // Mistakes in the file are told before any process starts.

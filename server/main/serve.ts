@@ -1,12 +1,11 @@
 import { resolve } from 'node:path';
 import { Command } from 'commander';
 import { readRig } from '../session/rig/readRig.js';
-import { rigOption } from './arguments.js';
+import { portOption, rigOption } from './arguments.js';
 import { runLive } from './live.js';
 
 interface ServeFlags {
   rig: string;
-  host: string;
   port: number;
   rules?: string;
   records?: string;
@@ -17,8 +16,7 @@ export function serveCommand(): Command {
   return new Command('serve')
     .description('serve the page of a rig; sessions are begun and ended there')
     .addOption(rigOption())
-    .option('--host <address>', 'where the page is served', '127.0.0.1')
-    .option('--port <number>', 'where the page is served', Number, 8033)
+    .addOption(portOption())
     .option('--rules <folder>', "instead of the rig file's rules folder")
     .option('--records <folder>', "instead of the rig file's record folder")
     .action(async (flags: ServeFlags) => {
@@ -26,7 +24,7 @@ export function serveCommand(): Command {
         rig: readRig(flags.rig),
         rigPath: flags.rig,
         exitWhenEnded: false,
-        web: { host: flags.host, port: flags.port },
+        web: { host: '127.0.0.1', port: flags.port },
         ...(flags.records === undefined ? {} : { recordFolder: resolve(flags.records) }),
         ...(flags.rules === undefined ? {} : { rulesFolder: resolve(flags.rules) }),
       });

@@ -31,3 +31,20 @@ export function simulatedRigFor(
     receive: (name, message, tag) => simulated.board.receive(name, message, tag),
   };
 }
+
+/** The command line by which the simulated rig's own process is made the same. */
+export function simulatedRigArguments(rig: Rig): string[] {
+  const { belt, lick } = rig;
+  const valve = rig.outputs.find((output) => output.kind === 'valve');
+  const options: Record<string, number | undefined> = {
+    'belt-cm': belt.lengthCm,
+    'counts-per-cm': belt.countsPerCm,
+    'lick-input': lick?.line,
+    'seam-input': belt.seam?.line,
+    'valve-output': valve?.line,
+    'valve-dead-us': valve?.valve?.deadUs,
+    'valve-us-per-ul': valve?.valve && valve.valve.usPerNl * 1_000,
+  };
+  const given = Object.entries(options).filter(([, value]) => value !== undefined);
+  return given.flatMap(([name, value]) => [`--${name}`, String(value)]);
+}

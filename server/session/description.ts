@@ -1,7 +1,7 @@
 import fs from 'node:fs';
 import path from 'node:path';
-import { fileURLToPath } from 'node:url';
 import { LapwingError } from '../errors/codes.js';
+import { packageRoot } from '../packageRoot.js';
 import { CAPABILITY, type Identity } from '../wire/messages.js';
 import { writeFileWhole } from './writeFileWhole.js';
 
@@ -109,9 +109,7 @@ export function updateDescription(folder: string, change: Partial<SessionDescrip
   writeDescription(folder, { ...readDescription(folder), ...change });
 }
 
-/** The JSON Schema of `session.json` (draft 2020-12), where a build or the sources keep it. */
+/** The JSON Schema of `session.json` (draft 2020-12). */
 export function sessionSchemaFile(): string {
-  const beside = fileURLToPath(new URL('./session.schema.json', import.meta.url));
-  if (fs.existsSync(beside)) return beside;
-  return fileURLToPath(new URL('../../../server/session/session.schema.json', import.meta.url));
+  return path.join(packageRoot, 'server', 'session', 'session.schema.json');
 }

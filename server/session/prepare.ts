@@ -2,10 +2,12 @@ import { randomBytes } from 'node:crypto';
 import { readFileSync } from 'node:fs';
 import { LapwingError } from '../errors/codes.js';
 import type { RulesFile } from '../rules/ast.js';
-import { checkRules } from '../rules/checks/checkRules.js';
-import { compile, type Program } from '../rules/engine/program.js';
+import { compile } from '../rules/engine/compile.js';
+import type { Program } from '../rules/engine/program.js';
 import { formatProblems, type Problem } from '../rules/problems.js';
+import { type Checked, checkText } from '../rules/readRules.js';
 import { parseRules } from '../rules/text/parseRules.js';
+import { type ChoiceView, choicesOf } from './choices.js';
 import { factsOf, type Rig } from './rig/rig.js';
 
 /** A rules file that may run on a rig. */
@@ -13,19 +15,15 @@ export interface PreparedRules {
   readonly path: string;
   readonly file: RulesFile;
   readonly program: Program;
+  /** What the operator may choose. */
+  readonly choices: readonly ChoiceView[];
   /** What is legal and suspicious. */
   readonly warnings: readonly Problem[];
 }
 
 /** Reads a rules file and everything that it brings in; every problem at once, with its place. */
-export function readRules(
-  path: string,
-  rig: Rig | undefined,
-): { readonly file?: RulesFile; readonly problems: readonly Problem[] } {
-  const read = parseRules(path, (name) => readFileSync(name));
-  if (read.file === undefined) return read;
-  const checked = checkRules(read.file, rig && factsOf(rig));
-  return { file: read.file, problems: [...read.problems, ...checked] };
+export function readRules(path: string, rig: Rig | undefined): Checked {
+  return checkText(path, (name) => readFileSync(name), rig && factsOf(rig));
 }
 
 /**
@@ -33,12 +31,13 @@ export function readRules(
  * @throws LapwingError RULES_INVALID with every error, formatted for people
  */
 export function prepareRules(path: string, rig: Rig): PreparedRules {
-  const { file, problems } = readRules(path, rig);
-  const errors = problems.filter((problem) => problem.severity === 'error');
-  if (file === undefined || errors.length > 0) {
-    throw new LapwingError('rulesInvalid', formatProblems(errors, file?.sources ?? [], {}));
+  const { file, problems, sources } = readRules(path, rig);
+  if (file === undefined) {
+    const errors = problems.filter(({ severity }) => severity === 'error');
+    throw new LapwingError('rulesInvalid', formatProblems(errors, sources, {}));
   }
-  return { path, file, program: compile(file, factsOf(rig)), warnings: problems };
+  const program = compile(file, factsOf(rig));
+  return { path, file, program, choices: choicesOf(file, program), warnings: problems };
 }
 
 /** A seed for a session that was given none: short enough to be read aloud and typed again. */

@@ -71,11 +71,6 @@ export class Firings {
   isArmed(rule: number): boolean {
     return this.#armory.ofRule(rule) !== undefined;
   }
-  /** The firing is one that the board was asked for; a sham or a bare note is not. */
-  isLive(rule: number, serial: number): boolean {
-    return this.#ledger.firing(rule, serial) !== undefined;
-  }
-
   // ---- what rules ask ------------------------------------------------------------------------
 
   /** Guards all orders of a firing together and sends them to the board. */

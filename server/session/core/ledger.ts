@@ -89,13 +89,4 @@ export class Ledger {
   all(): IterableIterator<LiveId> {
     return this.#live.values();
   }
-
-  /** A live firing of this rule and serial number. */
-  firing(rule: number, serial: number): LiveFiring | undefined {
-    for (const live of this.#live.values()) {
-      const { request } = live.firing;
-      if (request.rule === rule && request.serial === serial) return live.firing;
-    }
-    return undefined;
-  }
 }

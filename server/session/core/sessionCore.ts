@@ -61,6 +61,7 @@ export class SessionCore {
   #linked = false;
   #overNetwork = false;
   #beatUs = Number.NEGATIVE_INFINITY;
+  #beganUs = 0;
   #drainedUs = 0;
   #licks = 0;
 
@@ -87,6 +88,10 @@ export class SessionCore {
   }
   get endedBy(): 'rules' | 'operator' {
     return this.#endedBy;
+  }
+  /** Extended board time at which the session began. */
+  get beganUs(): number {
+    return this.#beganUs;
   }
   /** Given to this animal earlier today. */
   get waterEarlierNl(): number {
@@ -173,6 +178,7 @@ export class SessionCore {
 
   #begin(): void {
     this.tracker.unmoved(this.instant);
+    this.#beganUs = this.instant.nowUs;
     this.#state = 'running';
     this.#configure();
     this.#tell({ kind: 'session began', title: this.#setup.title, seed: this.#setup.seed });
@@ -371,7 +377,7 @@ export class SessionCore {
     return {
       // What the board fires is told when the board says so, with its place and time.
       fired: (rule, serial, sham) => {
-        if (this.firings.isLive(rule, serial)) return;
+        if (!sham && this.#drivesOutput(rule)) return;
         this.#tell({
           ...{ kind: 'fired', rule: name(rule), serial, sham, armed: false, output: null },
           ...{ riseUs: null, placeCm: null, riseCm: null, errorMm: null },
@@ -388,6 +394,10 @@ export class SessionCore {
       cellBegan: () => {},
       noted: (rule, serial) => this.#tell({ kind: 'note', text: `${name(rule)} ${serial}` }),
     };
+  }
+
+  #drivesOutput(rule: number): boolean {
+    return this.#setup.program.rules[rule]!.actions.some(({ kind }) => kind === 'order');
   }
 
   #ruleName(rule: number): string {

@@ -1,0 +1,2 @@
+import { Command } from 'commander';
+export const explainCommand = () => new Command('explain');

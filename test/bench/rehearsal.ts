@@ -1,0 +1,95 @@
+import { mkdtempSync, rmSync, writeFileSync } from 'node:fs';
+import { tmpdir } from 'node:os';
+import { join } from 'node:path';
+import { simulatedRigFor } from '../../server/main/simulatedRigFor.js';
+import { packageRoot } from '../../server/packageRoot.js';
+import { prepareRules } from '../../server/session/prepare.js';
+import { rehearse } from '../../server/session/rehearsal.js';
+import { replaySession } from '../../server/session/replay.js';
+import { readRig } from '../../server/session/rig/readRig.js';
+import { openSession } from '../../server/session/store.js';
+
+const TEN_RULES = `title: Ten rules for an hour
+belt: 180 cm
+places:
+  zone: 85 to 95 cm
+rules:
+  water:
+    when: reaches 90 cm
+    do: give 1 uL
+  lap_mark:
+    when: lap begins
+    do: pulse sync for 10 ms
+  light:
+    when: reaches 45 cm
+    if: speed >= 8 cm/s
+    do: pulse laser for 100 ms
+    limit: 1 per lap
+  third:
+    when: 3rd lick in zone this visit
+    do: pulse marker for 5 ms
+  burst:
+    when: 5 licks within 1 s
+    if: not in zone
+    do: note
+    limit: 1 per lap
+  still_tone:
+    when: still and not in zone for 2 s
+    do: pulse tone for 200 ms
+    limit: at least 10 s apart
+  fast:
+    when: speed > 40 cm/s for 500 ms
+    do: note
+  enters_zone:
+    when: enters zone
+    do: note
+  late:
+    when: 2 s after water fires
+    do: note
+  minute:
+    when: every 1 min
+    do: note
+end: time >= 60 min
+`;
+
+export interface RehearsalBench {
+  readonly sessionHours: number;
+  readonly seconds: number;
+  readonly inputs: number;
+  readonly replaySeconds: number;
+  readonly replayedPerSecond: number;
+  readonly identical: boolean;
+}
+
+/** An hour of session with ten rules, its record written, and then that record replayed. */
+export async function benchRehearsal(): Promise<RehearsalBench> {
+  const folder = mkdtempSync(join(tmpdir(), 'lapwing-bench-'));
+  try {
+    const rig = readRig(join(packageRoot, 'hardware-sim/demo/rig.yaml'));
+    const path = join(folder, 'rules.yaml');
+    writeFileSync(path, TEN_RULES);
+    const rules = prepareRules(path, rig);
+    const seed = 'bench';
+    const setup = { rig, program: rules.program, title: rules.file.title, seed, waterTodayNl: 0 };
+    const card = { subject: 'b', experimenter: '', seed, startedAt: new Date(), waterTodayNl: 0 };
+    const virtual = simulatedRigFor(rig, { seed: 1, trained: true });
+    const began = performance.now();
+    const opened = openSession(folder, rig, rules, card, null, { mode: 'bulk' });
+    const runner = rehearse(setup, virtual, { mostUs: 2 * 3.6e9, recorder: opened.recorder });
+    opened.recorder.close(runner.core.endReason);
+    const seconds = (performance.now() - began) / 1000;
+    const replayBegan = performance.now();
+    const { inputs, difference } = await replaySession(opened.folder, setup);
+    const replaySeconds = (performance.now() - replayBegan) / 1000;
+    return {
+      sessionHours: 1,
+      seconds,
+      inputs: runner.core.input + 1,
+      replaySeconds,
+      replayedPerSecond: inputs / replaySeconds,
+      identical: difference === null,
+    };
+  } finally {
+    rmSync(folder, { recursive: true, force: true });
+  }
+}
