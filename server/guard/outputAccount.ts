@@ -112,12 +112,9 @@ export class OutputAccount {
     const rises = Math.min(one.rises, Math.max(1, Math.ceil(onUs / one.widthUs)));
     this.rises += rises;
     this.#fell(fellUs);
-    if (one.rises === 1) {
-      this.#on(fellUs - onUs, onUs, onUs, onUs);
-    } else {
-      const startUs = Number.isNaN(one.firedUs) ? fellUs - one.spanUs : one.firedUs;
-      this.#on(startUs, one.widthUs, one.periodUs, onUs);
-    }
+    // A train whose first rise was never told is taken as late as it can have been.
+    if (one.rises === 1 || Number.isNaN(one.firedUs)) this.#on(fellUs - onUs, onUs, onUs, onUs);
+    else this.#on(one.firedUs, one.widthUs, one.periodUs, onUs);
     return rises;
   }
 
