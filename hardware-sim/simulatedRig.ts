@@ -73,10 +73,11 @@ export class SimulatedRig {
     this.valve = { deadUs: 5_000, usPerUl: 8_000, ...options.valve };
     this.#lickBounces = options.lickBounces ?? 0;
     this.#dice = new Dice(seed + 5);
-    this.board = new Board({ seed: seed + 1, ...options.board }, output);
-    this.#count = this.board.setting.startCount;
+    this.#count = options.board?.startCount ?? 0;
     this.belt = new Belt(beltParameters, startCm, this.#count, seed + 2);
     this.#mark = new SeamMark(beltParameters, startCm, seed + 3);
+    const startInputs = this.#mark.level << this.wiring.seamInput;
+    this.board = new Board({ seed: seed + 1, startInputs, ...options.board }, output);
     this.animal = new Animal(
       animalParameters,
       beltParameters.lengthCm,
@@ -84,7 +85,6 @@ export class SimulatedRig {
       options.trained ?? false,
       options.spoutCm ?? beltParameters.lengthCm / 2,
     );
-    if (this.#mark.level === 1) this.board.setInput(this.wiring.seamInput, 1);
     this.board.probe((number, on, worldUs) => this.#outputChanged(number, on, worldUs));
   }
 

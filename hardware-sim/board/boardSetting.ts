@@ -19,6 +19,8 @@ export interface BoardSetting {
   readonly startUs: number;
   /** What the encoder shows when it is first switched on: for tests of its wrap. */
   readonly startCount: number;
+  /** Inputs that are active when it is first switched on, bit n for input n: no edge is told. */
+  readonly startInputs: number;
 }
 export type BoardOptions = Partial<BoardSetting>;
 
@@ -36,6 +38,7 @@ export function settingOf(options: BoardOptions): BoardSetting {
     seed: 1,
     startUs: 0,
     startCount: 0,
+    startInputs: 0,
     ...options,
   };
 }

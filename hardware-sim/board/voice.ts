@@ -45,6 +45,7 @@ export class Voice {
     this.output = output;
     this.#ring = new OutcomeRing(setting.outcomesKept);
     this.count = setting.startCount | 0;
+    this.inputs = setting.startInputs;
   }
 
   /** Starts afresh, and speaks first: identity under tag 0. Inputs keep the levels they have. */
