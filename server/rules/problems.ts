@@ -3,6 +3,8 @@ import { nearestName } from './nearestName.js';
 import { PROBLEMS, type ProblemCode } from './problemCodes.js';
 import { MOST_PROBLEMS } from './text/caps.js';
 
+export { formatProblems } from './formatProblems.js';
+
 export type Severity = 'error' | 'warning';
 
 /** One thing wrong with, or suspicious about, a rules file. */

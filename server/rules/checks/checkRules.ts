@@ -1,0 +1,57 @@
+import type { RulesFile } from '../ast.js';
+import type { RigFacts } from '../facts.js';
+import { inOrder, type Problem, ProblemList } from '../problems.js';
+import type { Check } from './check.js';
+import { belt } from './errors/belt.js';
+import { circles } from './errors/circles.js';
+import { constants } from './errors/constants.js';
+import { drawChoices } from './errors/drawChoices.js';
+import { drawHabits } from './errors/drawHabits.js';
+import { firingCircles } from './errors/firingCircles.js';
+import { names } from './errors/names.js';
+import { onBelt } from './errors/onBelt.js';
+import { onTimes } from './errors/onTimes.js';
+import { ranges } from './errors/ranges.js';
+import { rigNames } from './errors/rigNames.js';
+import { units } from './errors/units.js';
+import { visits } from './errors/visits.js';
+import { words } from './errors/words.js';
+import { resolve } from './symbols.js';
+
+/** What must be right before anything may run. */
+const ERRORS: readonly Check[] = [
+  names,
+  words,
+  units,
+  constants,
+  visits,
+  circles,
+  firingCircles,
+  ranges,
+  belt,
+  rigNames,
+  onTimes,
+  drawChoices,
+  drawHabits,
+  onBelt,
+];
+
+/** What is legal and suspicious; looked for only in a file without errors. */
+const WARNINGS: readonly Check[] = [];
+
+/**
+ * Checks a parsed file: every error at once, and the warnings when there is no error.
+ * @param rig without it nothing of the rig is checked
+ * @param broken names whose phrase could not be parsed: `Parsed.broken`
+ */
+export function checkRules(
+  file: RulesFile,
+  rig?: RigFacts,
+  broken: ReadonlySet<string> = new Set(),
+): Problem[] {
+  const problems = new ProblemList();
+  const context = { file, rig, symbols: resolve(file, rig, broken), problems };
+  for (const check of ERRORS) check(context);
+  if (!problems.failed) for (const check of WARNINGS) check(context);
+  return inOrder(problems.problems);
+}
