@@ -4,7 +4,7 @@
  */
 import { render } from 'preact';
 import { Charts } from './draw/charts.js';
-import { freshness } from './model/freshness.js';
+import { freshness, noteAwake } from './model/freshness.js';
 import { emptyLive, take } from './model/live.js';
 import { STOP_RETRY_MS, stopAsked, stopConfirmed, stopFailed, stopIdle } from './model/stop.js';
 import { type Answer, api } from './stream/api.js';
@@ -38,6 +38,7 @@ function touch(): void {
 function paint(): void {
   frame = 0;
   const nowMs = performance.now();
+  noteAwake(live, nowMs);
   if (changed) {
     changed = false;
     render(<Page {...{ live, nowMs, theme, keys, escapeHeld, actions, charts }} />, root);
@@ -138,7 +139,9 @@ const connection = new Connection(stream, {
 
 // While nothing arrives, the age of what is shown must still grow.
 setInterval(() => {
-  if (live.stop.is === 'asking' || !freshness(live, performance.now()).fresh) touch();
+  const nowMs = performance.now();
+  noteAwake(live, nowMs);
+  if (live.stop.is === 'asking' || !freshness(live, nowMs).fresh) touch();
 }, 200);
 
 function recall(name: string): string | null {

@@ -3,6 +3,21 @@ import type { Live } from './live.js';
 /** A board that runs sends something every 5 ms; states come every 50: this is well past both. */
 export const STALE_MS = 900;
 
+/** The page's own timer runs every 200 ms: more than this between two looks is the page's fault. */
+const HELD_UP_MS = 500;
+const GRACE_MS = 300;
+/** Beyond this age there is no grace: it may be the page's fault, and what it shows is old. */
+const GRACE_AGE_MS = 3000;
+
+/**
+ * Called at every look. When the page itself was held up, what waited for it in the meantime gets a
+ * moment to come in before the board is said to stand still.
+ */
+export function noteAwake(live: Live, nowMs: number): void {
+  if (nowMs - live.awakeMs > HELD_UP_MS) live.graceUntilMs = nowMs + GRACE_MS;
+  live.awakeMs = nowMs;
+}
+
 export interface Freshness {
   readonly fresh: boolean;
   /** Since board time last moved, ms; NaN when it was never seen. */
@@ -32,7 +47,8 @@ export function freshness(live: Live, nowMs: number): Freshness {
     const what = live.state.link.state === 'down' ? 'The board is lost' : 'Connecting to the board';
     return stale(`${what}: ${live.state.link.reason}`, live.state.link.remedy);
   }
-  if (ageMs > STALE_MS) return stale('Board time stands still', 'Look at the board and its cable.');
+  if (ageMs > STALE_MS && !(nowMs < live.graceUntilMs && ageMs < GRACE_AGE_MS))
+    return stale('Board time stands still', 'Look at the board and its cable.');
   return FRESH;
 }
 

@@ -15,6 +15,9 @@ export interface Live {
   state: Snapshot | undefined;
   /** Page time at which board time was last seen to move; NaN before any state. */
   movedAtMs: number;
+  /** Page time of the last look, and until when a page that was held up is given grace. */
+  awakeMs: number;
+  graceUntilMs: number;
   readonly laps: LapStore;
   readonly trace: SpeedTrace;
   readonly profile: Profile;
@@ -37,6 +40,8 @@ export function emptyLive(): Live {
     setup: undefined,
     state: undefined,
     movedAtMs: Number.NaN,
+    awakeMs: 0,
+    graceUntilMs: 0,
     laps: new LapStore(),
     trace: new SpeedTrace(),
     profile: new Profile(),

@@ -12,11 +12,11 @@ export function Banners(props: {
   actions: Actions;
 }) {
   return (
-    <div class="banners">
+    <section class="banners" aria-label="Notices">
       <StopBanner {...props} />
       <StaleBanner {...props} />
       <Notice {...props} />
-    </div>
+    </section>
   );
 }
 

@@ -46,9 +46,9 @@ export function Page(props: PageProps) {
             <RulesPanel live={live} />
           </div>
           <HealthPanel live={live} />
-          <div class={`shown events ${stale}`}>
-            <EventsPanel live={live} />
-          </div>
+        </div>
+        <div class={`shown events ${stale}`}>
+          <EventsPanel live={live} />
         </div>
       </main>
       <footer>

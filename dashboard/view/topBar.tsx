@@ -39,7 +39,7 @@ export function TopBar(props: {
           {freshness.fresh ? (state?.session ?? 'idle') : 'stale'}
         </span>
       </p>
-      <p class="session-clock" aria-hidden="true">
+      <p class={`session-clock ${freshness.fresh ? '' : 'stale'}`} aria-hidden="true">
         {state && state.session !== 'idle' ? clock(state.sessionS) : '0:00'}
       </p>
       <div class="options">
