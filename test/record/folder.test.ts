@@ -71,7 +71,7 @@ describe('a session folder', () => {
         expect(path.basename(folder).length).toBeLessThan(120);
         expect(fs.readdirSync(folder)).toEqual([]);
       }),
-      { seed: 41, numRuns: 200 },
+      { seed: 41, numRuns: 100 },
     );
   });
 
@@ -180,7 +180,7 @@ describe('copies of what a session was run from', () => {
           fs.rmSync(folder, { recursive: true });
         },
       ),
-      { seed: 44, numRuns: 100 },
+      { seed: 44, numRuns: 40 },
     );
   });
 });

@@ -1,3 +1,4 @@
+import fs from 'node:fs';
 import path from 'node:path';
 import type { McapTypes } from '@mcap/core';
 import { Ajv2020 } from 'ajv/dist/2020.js';
@@ -5,6 +6,7 @@ import fc from 'fast-check';
 import protobuf from 'protobufjs';
 import { FileDescriptorSet, type IFileDescriptorSet } from 'protobufjs/ext/descriptor.js';
 import { beforeAll, describe, expect, it } from 'vitest';
+import { packageRoot } from '../../server/packageRoot.js';
 import type { Decision } from '../../server/session/decisions.js';
 import type { RareInput } from '../../server/session/inputs.js';
 import { CHANNELS } from '../../server/session/record/channels.js';
@@ -131,6 +133,18 @@ describe('what a stranger finds in a record', () => {
     const topics = [...channels.values()].map(({ topic }) => topic);
     for (const kind of Object.keys(DECISIONS))
       expect(topics).toContain('/decisions/' + kind.replaceAll(' ', '_'));
+  });
+
+  it('has a page that names every channel, and none that is not there', () => {
+    const page = fs.readFileSync(path.join(packageRoot, 'server/session/record/RECORD.md'), 'utf8');
+    const named = [...page.matchAll(/^\| `(\/\S+)` +\|/gm)].map(([, topic]) => topic!);
+    const kinds = CHANNELS.map(({ topic }) => topic.replace(/^\/decisions\/.*/, '/decisions/KIND'));
+    expect(named).toEqual([...new Set(kinds)]);
+    const topics = CHANNELS.map(({ topic }) => topic);
+    for (const [, topic] of page.matchAll(/`(\/decisions\/[a-z_]+)`/g))
+      expect(topics).toContain(topic);
+    for (const [name] of page.matchAll(/\b(beat|board|count)_[a-z_]+/g))
+      expect(sampleProtoText()).toContain(name);
   });
 
   it('shows the schema of samples as text too, which a protobuf compiler reads as the same', () => {

@@ -1,5 +1,6 @@
 import fs from 'node:fs';
 import { crc32 } from 'node:zlib';
+import { LapwingError } from '../../errors/codes.js';
 import { readMicroseconds } from './chunkBuffer.js';
 
 /** Decompresses the records of a chunk; throws where they are not what their compression says. */
@@ -214,7 +215,8 @@ export class ChunkScanner {
       const wanted = Math.min(this.#window.length, this.#size - at);
       while (filled < wanted) {
         const n = fs.readSync(this.#fd, this.#window, filled, wanted - filled, at + filled);
-        if (n === 0) throw new Error('the file became shorter while it was read');
+        if (n === 0)
+          throw new LapwingError('recordUnreadable', 'the file became shorter while it was read');
         filled += n;
       }
       this.#windowAt = at;

@@ -1,6 +1,9 @@
 import { spawn } from 'node:child_process';
+import { existsSync } from 'node:fs';
+import path from 'node:path';
 import { fileURLToPath } from 'node:url';
 import { ERRORS, type ErrorName, LapwingError } from '../../errors/codes.js';
+import { packageRoot } from '../../packageRoot.js';
 import type { Finished } from './finishRecord.js';
 
 type Line = { finished: Finished } | { error: { code: string; message: string } };
@@ -8,12 +11,9 @@ type Line = { finished: Finished } | { error: { code: string; message: string } 
 /**
  * Finishes the record of an ended session in a process of its own (`finishRecord`, `mend`), at low
  * priority. Throws as they do, and `RECORD_UNFINISHED` where the process died: the live record is
- * then as it was. `script` is the compiled `finishProcess.js`.
+ * then as it was.
  */
-export async function finish(
-  folder: string,
-  script = fileURLToPath(new URL('./finishProcess.js', import.meta.url)),
-): Promise<Finished> {
+export async function finish(folder: string, script = compiledScript()): Promise<Finished> {
   const child = spawn(process.execPath, [script, folder], { stdio: ['ignore', 'pipe', 'pipe'] });
   let out = '';
   let complaint = '';
@@ -37,4 +37,11 @@ export async function finish(
   const { code, message } = line.error;
   const name = (Object.keys(ERRORS) as ErrorName[]).find((key) => ERRORS[key].code === code);
   throw new LapwingError(name ?? 'recordUnfinished', message);
+}
+
+/** Beside this file when it is compiled itself; else (run from source) where the build puts it. */
+function compiledScript(): string {
+  const beside = fileURLToPath(new URL('./finishProcess.js', import.meta.url));
+  if (existsSync(beside)) return beside;
+  return path.join(packageRoot, 'dist', 'server', 'session', 'record', 'finishProcess.js');
 }

@@ -10,7 +10,7 @@ import { IndexedWriter } from './indexedWriter.js';
 import { LIBRARY } from './prelude.js';
 import { type RecordReader, readRecord } from './readRecord.js';
 import { segmentsIn } from './recorder.js';
-import { refuseWhileRecording } from './recordLock.js';
+import { refuseWhileRecording, unlockRecord } from './recordLock.js';
 import type { RecordState } from './recordState.js';
 import { segmentName } from './segmentLog.js';
 
@@ -150,6 +150,8 @@ function settle(folder: string, state: RecordState, temporary?: string): Finishe
     if (bad.has(name)) originals.push(keep(folder, segment));
     fs.rmSync(path.join(folder, name));
   }
+  // Of a process that died: a living one was refused above.
+  unlockRecord(folder);
   syncFolder(folder);
   return { state: { ...state, finished: true }, bytes: fs.statSync(record).size, originals };
 }
