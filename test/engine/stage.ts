@@ -298,8 +298,8 @@ export class Stage implements Actuator, Journal {
         this.give(request);
       } else this.engine.settle(rule, request.serial, 'not fired', i);
     }
-    if (this.outcome === 'later') return;
-    for (const request of this.toSettle.splice(0)) this.settle(request, this.outcome);
+    if (this.outcome === 'later') this.toSettle.length = 0;
+    for (const request of this.toSettle.splice(0)) this.settle(request, this.outcome as 'fired');
   }
 
   settle(request: FiringRequest, how: 'fired' | 'not fired' | 'uncertain'): void {
