@@ -5,7 +5,13 @@
  * mean speed and not a jump; that the belt stood still is an entry too, so it is never smeared.
  */
 export class SpeedWindow {
+  /**
+   * What goes into `take` and comes out. As arguments and result the three would be put on the heap
+   * at every sample, 32 bytes of it.
+   */
+  readonly io = new Float64Array(3);
   readonly #windowUs: number;
+  readonly #perWindow: number;
   readonly #mask: number;
   readonly #timeUs: Float64Array;
   readonly #moved: Float64Array;
@@ -18,6 +24,7 @@ export class SpeedWindow {
   /** @param windowUs at least 1 ms; two entries are kept for each millisecond of it */
   constructor(windowUs: number) {
     this.#windowUs = windowUs;
+    this.#perWindow = 1 / windowUs;
     let size = 64;
     while (size < windowUs / 500 + 16) size *= 2;
     this.#mask = size - 1;
@@ -35,11 +42,13 @@ export class SpeedWindow {
   }
 
   /**
-   * @param nowUs not before the last call's
-   * @param moved counts moved so far, forwards less backwards
-   * @returns counts per microsecond, mean over the window that ends now
+   * Reckons speed anew: from `io[0]`, now in microseconds and never less than before, and `io[1]`,
+   * counts moved so far, forwards less backwards; into `io[2]`, counts per microsecond, the mean
+   * over the window that ends now.
    */
-  take(nowUs: number, moved: number): number {
+  take(): void {
+    const nowUs = this.io[0]!;
+    const moved = this.io[1]!;
     if (moved !== this.#lastMoved) {
       if (this.#timeUs[(this.#next - 1) & this.#mask]! < this.#lastUs) {
         this.#push(this.#lastUs, this.#lastMoved);
@@ -61,7 +70,7 @@ export class SpeedWindow {
       before +=
         ((this.#moved[after]! - before) * (beganUs - timeUs[at]!)) / (timeUs[after]! - timeUs[at]!);
     }
-    return (moved - before) / this.#windowUs;
+    this.io[2] = (moved - before) * this.#perWindow;
   }
 
   #push(timeUs: number, moved: number): void {

@@ -472,7 +472,11 @@ export class Tracker {
     into.progressFrom = this.#progressFrom;
     into.progressTo = this.#progress;
     into.positionCm = this.#placed ? this.#inTurn(travel) * this.#cmPerCount : Number.NaN;
-    into.speedCmPerS = this.#speed.take(nowUs, this.#moved) * this.#cmPerCount * 1_000_000;
+    const { io } = this.#speed;
+    io[0] = nowUs;
+    io[1] = this.#moved;
+    this.#speed.take();
+    into.speedCmPerS = io[2]! * this.#cmPerCount * 1_000_000;
     into.lick = this.#licked;
     into.inputs = this.#inputs;
     into.rose = this.#rose;

@@ -4,7 +4,7 @@ import { dice } from '../track/beltModel.js';
 import { HostileRig } from './hostileRig.js';
 
 describe('a million random sequences of commands, on a board that cuts, refuses and forgets', () => {
-  it('never pass a limit, and the books agree with what ran', { timeout: 120_000 }, () => {
+  it('never pass a limit, and the books agree with what ran', { timeout: 300_000 }, () => {
     let sequences = 0;
     let agreed = 0;
     let withheld = 0;
