@@ -7,6 +7,13 @@ import { packageRoot } from '../../server/packageRoot.js';
 const START_MS = 20_000;
 const ANSWER_MS = 20_000;
 
+/** The simulated rig's program; LAPWING_DIST names another build than `dist/`. */
+export const RIG_SCRIPT = join(
+  process.env.LAPWING_DIST ?? join(packageRoot, 'dist'),
+  'hardware-sim',
+  'simulatedRigProcess.js',
+);
+
 type Answer = Record<string, unknown>;
 
 /** A simulated rig in its own process, from `dist/`, on a pseudo-terminal or over TCP. */
@@ -28,10 +35,8 @@ export class PtyRig {
   }
 
   private constructor(options: readonly string[]) {
-    const dist = process.env.LAPWING_DIST ?? join(packageRoot, 'dist');
-    const script = join(dist, 'hardware-sim', 'simulatedRigProcess.js');
-    if (!existsSync(script)) throw new Error(`${script} is missing: run \`npm run build\` first`);
-    this.#child = spawn(process.execPath, [script, ...options], {
+    if (!existsSync(RIG_SCRIPT)) throw new Error(`${RIG_SCRIPT} is missing: run \`npm run build\``);
+    this.#child = spawn(process.execPath, [RIG_SCRIPT, ...options], {
       stdio: ['pipe', 'pipe', 'pipe'],
     });
     this.#child.stderr!.on('data', (text) => {
