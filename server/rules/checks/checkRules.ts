@@ -17,6 +17,28 @@ import { units } from './errors/units.js';
 import { visits } from './errors/visits.js';
 import { words } from './errors/words.js';
 import { resolve } from './symbols.js';
+import { blockUnfinished } from './warnings/blockUnfinished.js';
+import { dutyBeyondRig } from './warnings/dutyBeyondRig.js';
+import { endsEarly } from './warnings/endsEarly.js';
+import { endsMidLap } from './warnings/endsMidLap.js';
+import { fewChoices } from './warnings/fewChoices.js';
+import { isOnMeasured } from './warnings/isOnMeasured.js';
+import { limitBeyondRig } from './warnings/limitBeyondRig.js';
+import { limitIdle } from './warnings/limitIdle.js';
+import { nearSeam } from './warnings/nearSeam.js';
+import { neverTrue } from './warnings/neverTrue.js';
+import { noEnd } from './warnings/noEnd.js';
+import { noLimit } from './warnings/noLimit.js';
+import { noWayOut } from './warnings/noWayOut.js';
+import { oneChoice } from './warnings/oneChoice.js';
+import { outlastsStay } from './warnings/outlastsStay.js';
+import { phaseUnreached } from './warnings/phaseUnreached.js';
+import { sameOutput } from './warnings/sameOutput.js';
+import { staleDraw } from './warnings/staleDraw.js';
+import { trueAtStart } from './warnings/trueAtStart.js';
+import { unusedName } from './warnings/unusedName.js';
+import { windowTooLong } from './warnings/windowTooLong.js';
+import { withinTooTight } from './warnings/withinTooTight.js';
 
 /** What must be right before anything may run. */
 const ERRORS: readonly Check[] = [
@@ -37,7 +59,30 @@ const ERRORS: readonly Check[] = [
 ];
 
 /** What is legal and suspicious; looked for only in a file without errors. */
-const WARNINGS: readonly Check[] = [];
+const WARNINGS: readonly Check[] = [
+  neverTrue,
+  phaseUnreached,
+  windowTooLong,
+  limitIdle,
+  unusedName,
+  noLimit,
+  sameOutput,
+  endsMidLap,
+  endsEarly,
+  trueAtStart,
+  staleDraw,
+  blockUnfinished,
+  oneChoice,
+  isOnMeasured,
+  limitBeyondRig,
+  dutyBeyondRig,
+  outlastsStay,
+  withinTooTight,
+  nearSeam,
+  fewChoices,
+  noEnd,
+  noWayOut,
+];
 
 /**
  * Checks a parsed file: every error at once, and the warnings when there is no error.
