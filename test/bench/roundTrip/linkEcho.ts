@@ -5,7 +5,8 @@ import { portOpener } from '../../../server/link/resolvePort.js';
 import { blank } from '../../../server/wire/codec.js';
 
 const WINDOW_US = 20_000;
-const pulse = { ...blank('pulse'), widthUs: 1_000, repeats: 1 };
+const REPLY_OUTPUT = 4;
+const pulse = { ...blank('pulse'), output: REPLY_OUTPUT, widthUs: 1_000, repeats: 1 };
 const beat = blank('beat');
 const handler: LinkHandler = {
   sample({ boardUs }) {

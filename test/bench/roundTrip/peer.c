@@ -1,7 +1,7 @@
 /*
  * The board's end of a pseudo-terminal, for measuring round trips. Open loop: frames go out on a
  * schedule, whatever comes back and when. A sample every millisecond; half-way between two samples,
- * every 5 ms, an input rises (the cause of a reply), and falls 2 ms later.
+ * every 10 ms, an input rises (the cause of a reply), and falls 2 ms later.
  *
  * usage: peer bare|board INPUT
  *   bare   every frame that comes back is the reply to the oldest cause not yet answered
@@ -28,8 +28,10 @@
 enum { IDENTITY = 0x01, SAMPLE = 0x02, EDGE = 0x03, OUTCOME = 0x04, CLOCK = 0x06 };
 enum { IDENTIFY = 0x41, PULSE = 0x43, ARM = 0x44 };
 enum { FIRED = 1, DONE = 2, REFUSED = 6, BAD_SLOT = 8 };
-/* Ticks of 500 us: samples on the even ones, edges on odd ones of a cycle of 5 ms. */
-enum { TICK_NS = 500000, CYCLE = 10, RISE_AT = 1, FALL_AT = 5, IDLE_EVERY = 10 };
+/* Ticks of 500 us: samples on the even ones, edges on odd ones of a cycle of 10 ms. */
+enum { TICK_NS = 500000, CYCLE = 20, RISE_AT = 1, FALL_AT = 5, IDLE_EVERY = 10 };
+/* Only pulses on this output are replies. */
+enum { REPLY_OUTPUT = 4 };
 enum { SEAM_INPUT = 1, LAP = 4500, MARK = 10 };
 enum { MOST_CAUSES = 1 << 20, PENDING = 64, GRACE_TICKS = 400 };
 
@@ -40,7 +42,9 @@ static int master, bare, input;
 static uint16_t tag;
 static uint8_t sequence;
 static int64_t zero;
-static int32_t count;
+/* The mark comes a second after the first handshake: causes wait for it, for a known position. */
+static int32_t count = LAP - 1000;
+static int marked;
 static int level, seam;
 static uint32_t window;
 static struct { uint32_t id, at, width; uint8_t output; int on; } pending[PENDING];
@@ -127,7 +131,7 @@ static void identify(const uint8_t *payload) {
 
 static void pulse(const uint8_t *payload, int64_t at_ns) {
   uint32_t id = get(payload, 4), width = get(payload + 6, 4), expiry = get(payload + 20, 4);
-  if (sent > 0) {
+  if (sent > 0 && payload[4] == REPLY_OUTPUT) {
     /* The window is a constant; a late reply makes it look smaller, never greater. */
     uint32_t seen = expiry - causes[sent - 1].stamp;
     if (seen < 0x80000000u && seen > window) window = seen;
@@ -212,6 +216,15 @@ static void say_seam(int to) {
   finish();
 }
 
+static void run_belt(int counts) {
+  while (counts-- > 0) {
+    count++;
+    if (bare) continue;
+    if (count % LAP == 0) say_seam(1), marked = 1;
+    if (count % LAP == MARK) say_seam(0);
+  }
+}
+
 static void say_edge(int to) {
   level = to;
   struct cause *cause = &causes[sent];
@@ -239,15 +252,13 @@ static int tick(int64_t n) {
   }
   if (asked == 0) {
     /* Between blocks a board must not fall silent; a bare echo may. */
-    if (!bare && n % IDLE_EVERY == 0) say_sample();
+    if (!bare && n % IDLE_EVERY == 0) run_belt(IDLE_EVERY / 2), say_sample();
     return 0;
   }
   if (n % 2 == 0) {
-    count++;
-    if (!bare && count % LAP == 0) say_seam(1);
-    if (!bare && count % LAP == MARK) say_seam(0);
+    run_belt(1);
     say_sample();
-  } else if (place == RISE_AT && sent < asked && level == 0) {
+  } else if (place == RISE_AT && sent < asked && level == 0 && (bare || marked)) {
     say_edge(1);
   } else if (place == FALL_AT && level == 1) {
     say_edge(0);

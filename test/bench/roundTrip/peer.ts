@@ -35,7 +35,7 @@ export class Peer {
     createInterface({ input: child.stdout }).on('line', (line) => this.#line(line));
   }
 
-  /** Sends so many causes, 5 ms apart, and gives what came back. */
+  /** Sends so many causes, 10 ms apart, and gives what came back. */
   block(causes: number): Promise<Block> {
     return new Promise((resolve) => {
       this.#trips = [];
