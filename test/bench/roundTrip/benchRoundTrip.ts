@@ -16,8 +16,6 @@ export interface RoundTripOptions {
   readonly rounds?: number;
   /** Causes in a turn, 10 ms apart. */
   readonly causes?: number;
-  /** The input that rises; a rule of the contestant must answer it with one pulse. */
-  readonly input?: number;
 }
 
 export interface ContestantResult {
@@ -52,12 +50,12 @@ const WARM_UP_UNANSWERED = 0.05 * WARM_UP_CAUSES;
  * drifts for all. The first result is the bare C echo.
  */
 export async function benchRoundTrip(options: RoundTripOptions = {}): Promise<ContestantResult[]> {
-  const { contestants = [], rounds = 10, causes = 300, input = 2 } = options;
+  const { contestants = [], rounds = 10, causes = 300 } = options;
   const programs = compilePrograms();
   const entrants: Entrant[] = [];
   try {
     for (const contestant of [bareC(programs.echo), bareNode, linkAlone, ...contestants]) {
-      const peer = await Peer.start(programs.peer, contestant.kind, input);
+      const peer = await Peer.start(programs.peer, contestant.kind);
       const host = await contestant.start(peer.pty);
       const entrant = { contestant, peer, host, blocks: [] };
       entrants.push(entrant);

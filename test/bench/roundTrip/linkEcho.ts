@@ -3,6 +3,7 @@ import { BoardLink } from '../../../server/link/boardLink.js';
 import type { LinkHandler } from '../../../server/link/linkHandler.js';
 import { portOpener } from '../../../server/link/resolvePort.js';
 import { blank } from '../../../server/wire/codec.js';
+import { PROBE_INPUT } from './peer.js';
 
 const WINDOW_US = 20_000;
 const REPLY_OUTPUT = 4;
@@ -13,7 +14,7 @@ const handler: LinkHandler = {
     beat.finishedUs = boardUs;
   },
   edge(edge) {
-    if (edge.level !== 1) return;
+    if (edge.input !== PROBE_INPUT || edge.level !== 1) return;
     pulse.id++;
     pulse.expiryUs = edge.boardUs + WINDOW_US;
     link.send('pulse', pulse);

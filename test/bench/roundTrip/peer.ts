@@ -1,6 +1,9 @@
 import { type ChildProcess, spawn } from 'node:child_process';
 import { createInterface } from 'node:readline';
 
+/** The board's input that rises as the cause of a reply. */
+export const PROBE_INPUT = 2;
+
 export interface Block {
   /** Round trips in microseconds, of the causes that were answered. */
   readonly tripsUs: readonly number[];
@@ -20,17 +23,17 @@ export class Peer {
   #onBlock: ((block: Block) => void) | undefined;
   #onPty: (() => void) | undefined;
 
-  static async start(program: string, kind: 'bare' | 'board', input: number): Promise<Peer> {
-    const peer = new Peer(program, kind, input);
+  static async start(program: string, kind: 'bare' | 'board'): Promise<Peer> {
+    const peer = new Peer(program, kind);
     await new Promise<void>((resolve) => {
       peer.#onPty = resolve;
     });
     return peer;
   }
 
-  private constructor(program: string, kind: 'bare' | 'board', input: number) {
+  private constructor(program: string, kind: 'bare' | 'board') {
     const options = { stdio: ['pipe', 'pipe', 'inherit'] as ['pipe', 'pipe', 'inherit'] };
-    const child = spawn(program, [kind, String(input)], options);
+    const child = spawn(program, [kind, String(PROBE_INPUT)], options);
     this.#child = child;
     createInterface({ input: child.stdout }).on('line', (line) => this.#line(line));
   }

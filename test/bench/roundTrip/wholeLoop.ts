@@ -5,10 +5,11 @@ import os from 'node:os';
 import path from 'node:path';
 import { fileURLToPath } from 'node:url';
 import { type Contestant, forked, type RunningContestant, running } from './contestants.js';
+import { PROBE_INPUT } from './peer.js';
 
 const MAIN = fileURLToPath(new URL('../../../server/main/main.js', import.meta.url));
 
-/** Input 2 rises and a mark is asked for; the other rules are there to be evaluated. */
+/** The probe rises and a mark is asked for; the other rules are there to be evaluated. */
 const RULES = `title: Round trip
 belt: 180 cm
 
@@ -51,7 +52,7 @@ inputs:
   seam:
     line: 1
   probe:
-    line: 2
+    line: ${PROBE_INPUT}
 outputs:
   valve:
     line: 0
