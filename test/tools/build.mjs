@@ -71,10 +71,6 @@ function dashboardInputs() {
 
 function buildDashboard() {
   const config = 'dashboard/vite.config.ts';
-  if (!exists(config)) {
-    console.log(`build: ${config} does not exist yet; going on without a dashboard`);
-    return;
-  }
   const stamp = path.join(dist, '.dashboard-inputs');
   const inputs = dashboardInputs();
   const made = exists('dist/dashboard/index.html') && fs.existsSync(stamp);
