@@ -71,6 +71,9 @@ export class LimitObserver {
     if (one === undefined) return;
     one.limits = message;
     one.longestEverUs = Math.max(one.longestEverUs, message.longestOnUs);
+    // New limits hold at once: what is on already may not be on for longer than they say.
+    const soFarUs = this.#host.nowUs - one.riseUs;
+    one.riseLongestUs = Math.min(one.riseLongestUs, Math.max(soFarUs, message.longestOnUs));
     one.rises = 0;
     one.onUs = 0;
     one.countsFromConfigure = false;

@@ -282,6 +282,16 @@ describe('an output', () => {
     expect(host.told(host.pulse({ widthUs: 400_000 }))).toEqual(['fired']);
   });
 
+  test('gets nothing back once it was configured anew: the new allowance is all there is', () => {
+    const host = TestHost.connected();
+    host.pulse({ widthUs: 500_000 });
+    host.live(100_000);
+    host.configure({ allowanceUs: 1000 });
+    host.send('quiet', { outputs: 1 });
+    expect(host.told(host.pulse({ widthUs: 1001 }))).toEqual(['refused allowance']);
+    expect(host.told(host.pulse({ widthUs: 1000 }))).toEqual(['fired']);
+  });
+
   test('does not overflow in width times repeats', () => {
     const host = TestHost.connected();
     host.configure({ longestOnUs: 0xffff_ffff, allowanceUs: 1_000_000, allowanceRises: 65_535 });
@@ -297,6 +307,26 @@ describe('an output', () => {
     host.live(60_000);
     expect(host.pulses()).toHaveLength(4);
     expect(host.told(id)).toEqual(['fired', 'done allowance']);
+  });
+
+  test('ends a train between two pulses when they have become too wide', () => {
+    const host = TestHost.connected();
+    const id = host.pulse({ widthUs: 5000, periodUs: 20_000, repeats: 9 });
+    host.live(10_000);
+    host.configure({ longestOnUs: 4999 });
+    host.live(60_000);
+    expect(host.pulses()).toEqual([[0, 5000]]);
+    expect(host.told(id)).toEqual(['fired', 'done longestOn']);
+  });
+
+  test('ends a train between two pulses when their gaps have become too short', () => {
+    const host = TestHost.connected();
+    const id = host.pulse({ widthUs: 5000, periodUs: 20_000, repeats: 9 });
+    host.live(10_000);
+    host.configure({ leastGapUs: 15_001 });
+    host.live(60_000);
+    expect(host.pulses()).toEqual([[0, 5000]]);
+    expect(host.told(id)).toEqual(['fired', 'done leastGap']);
   });
 
   test('is quiet when its limits are taken away or its idle level changes', () => {

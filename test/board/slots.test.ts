@@ -65,6 +65,21 @@ describe('an armed slot', () => {
     expect(host.changes).toEqual([]);
   });
 
+  test('still fires at once while another, left behind, waits to be swept', () => {
+    const host = TestHost.connected();
+    const behind = host.arm({ slot: 0, count: 10 });
+    const below = host.arm({ slot: 2, rising: 0, count: -10 });
+    const ahead = host.arm({ slot: 1, output: 1, count: 20 });
+    host.board.skipCounts(15);
+    host.board.move(5);
+    expect([host.told(behind), host.told(ahead)]).toEqual([[], ['fired']]);
+    host.live(20_000);
+    host.board.skipCounts(-35);
+    const lower = host.arm({ slot: 1, output: 1, rising: 0, count: -20 });
+    host.board.move(-5);
+    expect([host.told(below), host.told(lower)]).toEqual([[], ['fired']]);
+  });
+
   test('is refused when there is no such slot, or it is taken', () => {
     const host = TestHost.connected({ slots: 4 });
     expect(host.told(host.arm({ slot: 4, count: 5 }))).toEqual(['refused badSlot']);

@@ -6,6 +6,7 @@ import { FrameDecoder } from '../../server/wire/frameDecoder.js';
 import type { HostMessageName, MessageName, MessageOf } from '../../server/wire/messages.js';
 
 const PATIENCE_MS = 20_000;
+const ASK_AGAIN_MS = 300;
 
 export interface HeardFrame {
   readonly name: MessageName;
@@ -68,16 +69,27 @@ export class RawHost {
     return this.#wait(() => this.closed, 'the port to close');
   }
 
-  /** Asks who is there until an answer comes. @returns the identity's fields */
+  /**
+   * Asks who is there until an answer comes: the first may be lost in a buffer that is full of what
+   * was said before this host came. @returns the identity's fields
+   */
   async handshake(tag: number): Promise<Record<string, number | string>> {
     const nonce = tag + 1000;
-    this.#write(Uint8Array.of(0));
-    this.send('identify', { nonce, protocol: 1, newTag: tag }, tag);
-    const frame = await this.until(
-      ({ name, message }) => name === 'identity' && message.nonce === nonce,
-      'identity',
-    );
-    return frame.message;
+    const ask = () => {
+      this.#write(Uint8Array.of(0));
+      this.send('identify', { nonce, protocol: 1, newTag: tag }, tag);
+    };
+    const again = setInterval(ask, ASK_AGAIN_MS);
+    ask();
+    try {
+      const frame = await this.until(
+        ({ name, message }) => name === 'identity' && message.nonce === nonce,
+        'identity',
+      );
+      return frame.message;
+    } finally {
+      clearInterval(again);
+    }
   }
 
   close(): void {
