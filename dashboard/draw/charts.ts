@@ -79,9 +79,8 @@ export class Charts {
     this.paint('raster', `${live.laps.version} ${placesKey}`, (surface) =>
       drawRaster(surface, this.palette, lengthCm, live.laps, places),
     );
-    const runningKey = live.laps.newest < 0 ? 'none' : where;
-    this.paint('running', runningKey, (surface) =>
-      drawRunning(surface, this.palette, lengthCm, live.laps.newest < 0 ? null : positionCm),
+    this.paint('running', `${live.laps.newest} ${where}`, (surface) =>
+      drawRunning(surface, this.palette, lengthCm, positionCm, live.laps.newest),
     );
     if (nowMs - this.profileMs >= PROFILE_MS) {
       this.profileMs = nowMs;

@@ -18,7 +18,7 @@ export function drawMark(
   switch (kind) {
     case MARK.lick:
     case MARK.artefact: {
-      const half = kind === MARK.lick ? row * 0.4 : row * 0.16;
+      const half = Math.min(9, kind === MARK.lick ? row * 0.4 : row * 0.16);
       ctx.fillStyle = palette.lick;
       ctx.fillRect(x - 0.6, y - half, 1.2, half * 2);
       return;

@@ -6,9 +6,13 @@ import { drawMark } from './marks.js';
 import type { Palette } from './palette.js';
 import type { Surface } from './surface.js';
 
+/** Rows laid out for so many laps: a young session fills the space with fewer, higher ones. */
+const LAYOUTS = [10, 20, 30, LAPS_KEPT];
+
 /** Height of one lap's row; the running lap, on top, is twice as high. */
-export function rowHeight(height: number): number {
-  return Math.max(5, (height - 6) / (LAPS_KEPT + 1));
+export function rowHeight(height: number, newestLap: number): number {
+  const rows = LAYOUTS.find((most) => newestLap < most) ?? LAPS_KEPT;
+  return Math.max(5, (height - 6) / (rows + 1));
 }
 
 /** Middle of the row of a lap that is `back` laps before the running one. */
@@ -26,17 +30,17 @@ export function drawRaster(
 ): void {
   const ctx = surface.begin();
   const { width, height } = surface;
-  const row = rowHeight(height);
+  const row = rowHeight(height, laps.newest);
   drawPlaces(ctx, palette, lengthCm, places, width, height);
   ctx.font = `11px ${palette.font}`;
   ctx.textAlign = 'right';
   ctx.textBaseline = 'middle';
   const rows = Math.min(LAPS_KEPT, Math.max(0, laps.newest + 1));
-  const every = row >= 12 ? 2 : 5;
+  const every = row >= 22 ? 1 : row >= 12 ? 2 : 5;
   for (let back = 0; back < rows; back++) {
     const lap = laps.newest - back;
     const y = rowMiddle(back, row);
-    if (back === 0 || (lap % every === 0 && back > 1)) {
+    if (back === 0 || (lap % every === 0 && (back > 1 || every === 1))) {
       ctx.fillStyle = back === 0 ? palette.ink : palette.soft;
       ctx.fillText(String(lap), LEFT_PX - 9, y);
     }
@@ -103,11 +107,12 @@ export function drawRunning(
   palette: Palette,
   lengthCm: number,
   positionCm: number | null,
+  newestLap: number,
 ): void {
   const ctx = surface.begin();
-  if (positionCm === null) return;
+  if (positionCm === null || newestLap < 0) return;
   const { width, height } = surface;
-  const row = rowHeight(height);
+  const row = rowHeight(height, newestLap);
   const x = xOf(positionCm, lengthCm, width);
   ctx.fillStyle = palette.accent;
   ctx.globalAlpha = 0.13;

@@ -1,5 +1,5 @@
 import type { Snapshot } from '../../server/loop/protocol.js';
-import { bytesWords, plural } from './format.js';
+import { bytesWords, fixed, plural } from './format.js';
 import type { Live } from './live.js';
 
 export type Level = 'good' | 'warn' | 'bad' | 'off';
@@ -64,9 +64,11 @@ function trustHealth(state: Snapshot): Health {
 const LOW_DISK_GB = 5;
 
 function recordHealth({ record }: Snapshot): Health {
-  const disk = `${record.diskFreeGb.toFixed(0)} GB free`;
+  // Not yet known (null in JSON) is not "none".
+  const free = record.diskFreeGb as number | null;
+  const disk = free === null ? 'free space not known yet' : `${fixed(free, 0)} GB free`;
   if (record.state === 'failed') return line('Record', 'bad', 'failed', record.reason);
-  const low = record.diskFreeGb < LOW_DISK_GB;
+  const low = free !== null && free < LOW_DISK_GB;
   if (record.state === 'off') return line('Record', low ? 'warn' : 'off', 'not recording', disk);
   return line('Record', low ? 'warn' : 'good', 'writing', `${bytesWords(record.bytes)}; ${disk}`);
 }

@@ -20,14 +20,14 @@ export function eventWords(
     case 'session began':
       return say(`Session began: ${event.title} (seed ${event.seed})`, 'good');
     case 'session ended':
-      return say(`Session ended: ${event.reason}`, 'warn');
+      return say(`Session ended${because(event.reason)}`, 'warn');
     case 'lap began':
       return say(`Lap ${event.lap} began`, 'faint');
     case 'seam':
       return seamWords(event.event, event.slipMm);
     case 'trust':
       return say(
-        `Position ${event.trust}: ${event.reason}`,
+        `Position ${event.trust}${because(event.reason)}`,
         event.trust === 'trusted' ? 'good' : 'warn',
       );
     case 'lick':
@@ -58,7 +58,7 @@ export function eventWords(
     case 'drawn':
       return say(`Drawn: ${event.draw} is ${event.value} (${event.scope} ${event.index})`, 'faint');
     case 'phase began':
-      return say(`Phase ${event.phase} began: ${event.reason}`, 'good');
+      return say(`Phase ${event.phase} began${because(event.reason)}`, 'good');
     case 'cell began':
       return say(`Cell ${event.index} began`, 'good');
     case 'note':
@@ -67,7 +67,7 @@ export function eventWords(
       return say(`${event.who || event.from}: ${actWords(event.act)}`);
     case 'link':
       return say(
-        `Board link ${event.state}: ${event.reason}`,
+        `Board link ${event.state}${because(event.reason)}`,
         event.state === 'down' ? 'bad' : 'good',
       );
     case 'board fault':
@@ -106,8 +106,12 @@ function firedWords(
 
 function pulseWords(event: Extract<StampedDecision, { kind: 'pulse done' }>): string {
   const volume = event.volumeNl > 0 ? `, ${fixed(event.volumeNl / 1000, 1)} µL` : '';
-  const why = event.reason === '' ? '' : ` (${event.reason})`;
+  const why = ['', 'none'].includes(event.reason) ? '' : ` (${event.reason})`;
   return `${event.output} off after ${fixed(event.onUs / 1000, 1)} ms${volume}${why}`;
+}
+
+function because(reason: string): string {
+  return reason === '' ? '' : `: ${reason}`;
 }
 
 function atPlace(cm: number | null): string {

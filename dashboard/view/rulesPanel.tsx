@@ -25,7 +25,9 @@ export function RulesPanel({ live }: { live: Live }) {
                 <span class={`armed ${rule.armed ? 'yes' : ''}`}>
                   <LevelShape level={rule.armed ? 'good' : 'off'} />
                   {rule.name}
-                  <span class="armed-word">{rule.armed ? 'armed' : 'not armed'}</span>
+                  <span class={rule.armed ? 'armed-word' : 'unseen'}>
+                    {rule.armed ? 'armed' : 'not armed'}
+                  </span>
                 </span>
               </th>
               <td>{rule.firings}</td>

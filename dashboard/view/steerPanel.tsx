@@ -84,15 +84,21 @@ function Hold(props: {
         shortcut={shortcut}
         pressed={held}
         class={held ? 'is-held' : ''}
-        onFire={() => {
-          void actions.act({ act: 'hold', what, on: !held });
-        }}
+        onFire={() =>
+          void (held ? letGo(what, actions) : actions.act({ act: 'hold', what, on: true }))
+        }
       >
         {held ? `Release ${what}` : `Hold ${what}`}
       </HoldButton>
       <p class="reason">{held ? `Held: ${reason}` : ''}</p>
     </div>
   );
+}
+
+/** Stimuli may also be held because the board restarted; whoever lets go has read the reason. */
+async function letGo(what: 'stimulus' | 'water', actions: Actions): Promise<void> {
+  const answer = await actions.act({ act: 'hold', what, on: false });
+  if (answer.done && what === 'stimulus') await actions.act({ act: 'allow stimulation' });
 }
 
 function ChoiceRow(props: { choice: Choice; chosen: Chosen | undefined; actions: Actions }) {

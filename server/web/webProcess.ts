@@ -42,6 +42,8 @@ export async function runWeb(argv: readonly string[]): Promise<void> {
   };
   process.on('SIGTERM', stop);
   process.on('SIGINT', stop);
+  // Started by the launcher, it goes with the launcher.
+  process.on('disconnect', stop);
   try {
     const listening = await app.listen({ host: values.host, port: Number(values.port) });
     process.stdout.write(JSON.stringify({ listening }) + '\n');
@@ -57,6 +59,7 @@ export async function runWeb(argv: readonly string[]): Promise<void> {
 if (process.argv[1] === fileURLToPath(import.meta.url)) {
   runWeb(process.argv.slice(2)).catch((error: Error & { code?: string; remedy?: string }) => {
     process.stderr.write(`${error.code ?? 'ERROR'}: ${error.message}\n${error.remedy ?? ''}\n`);
-    process.exit(1);
+    // 2: starting it again would not help.
+    process.exit(error.remedy === undefined ? 1 : 2);
   });
 }

@@ -148,22 +148,25 @@ describe('the page, in a real browser', () => {
     await page.waitForTimeout(600);
     expect(loop.acts()).toHaveLength(1);
     await page.keyboard.down('s');
-    await until(() => loop.acts().length === 2);
+    await until(() => loop.acts().length === 3);
     await page.keyboard.up('s');
-    expect(loop.acts()[1]).toEqual({ act: 'hold', what: 'stimulus', on: false });
+    expect(loop.acts().slice(1)).toEqual([
+      { act: 'hold', what: 'stimulus', on: false },
+      { act: 'allow stimulation' },
+    ]);
     await page.keyboard.press('1');
     await page.waitForTimeout(600);
-    expect(loop.acts()).toHaveLength(2);
+    expect(loop.acts()).toHaveLength(3);
     await page.keyboard.down('1');
-    await until(() => loop.acts().length === 3);
+    await until(() => loop.acts().length === 4);
     await page.keyboard.up('1');
-    expect(loop.acts()[2]).toEqual({ act: 'press', button: 'induce_now' });
+    expect(loop.acts()[3]).toEqual({ act: 'press', button: 'induce_now' });
 
     await page.keyboard.press('n');
     await page.keyboard.type('swims s1');
     await page.keyboard.press('Enter');
-    await until(() => loop.acts().length === 4);
-    expect(loop.acts()[3]).toEqual({ act: 'note', text: 'swims s1' });
+    await until(() => loop.acts().length === 5);
+    expect(loop.acts()[4]).toEqual({ act: 'note', text: 'swims s1' });
 
     await tabTo(/^End session/);
     await page.keyboard.press('Enter');

@@ -47,7 +47,7 @@ export async function takePictures(wanted: Pictures): Promise<string[]> {
         await page.waitForTimeout(1200);
         await wanted.prepare?.(page);
         const file = join(out, `run-${theme}-${name}.png`);
-        await page.screenshot({ path: file, fullPage: phone });
+        await page.screenshot({ path: file });
         files.push(file);
         await page.close();
       }
