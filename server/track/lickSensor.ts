@@ -22,8 +22,8 @@ export class LickSensor {
   #brokeUs = LONG_AGO;
   #outputChangedUs = LONG_AGO;
   #contactUs = LONG_AGO;
-  /** The present contact began as a lick, so its breaking may bounce. */
-  #counted = false;
+  /** The present contact is the tongue's and no echo, so its breaking may bounce. */
+  #mayBounce = false;
   #contact = false;
   #stuck = false;
   #tooFast = false;
@@ -59,14 +59,14 @@ export class LickSensor {
     const echo = Math.abs(stampUs - this.#outputChangedUs) <= this.#artefactUs;
     const artefact = echo || this.#fasterThanAny(stampUs);
     if (!echo) this.#lastLickUs = stampUs;
-    this.#counted = !artefact;
+    this.#mayBounce = !artefact;
     this.#events.push({ kind: 'lick', artefact, stampUs });
     return !artefact;
   }
 
   fall(stampUs: number): void {
     this.#contact = false;
-    if (this.#counted) this.#brokeUs = stampUs;
+    if (this.#mayBounce) this.#brokeUs = stampUs;
     if (!this.#stuck) return;
     this.#stuck = false;
     this.#events.push({ kind: 'lick sensor', state: 'released' });
@@ -77,7 +77,7 @@ export class LickSensor {
     if (level === this.#contact) return;
     if (level) {
       this.#contact = true;
-      this.#counted = false;
+      this.#mayBounce = true;
       this.#contactUs = nowUs;
     } else {
       this.fall(nowUs);

@@ -214,7 +214,6 @@ export class Tracker {
     this.#homed = false;
     this.#placed = false;
     this.#levelsKnown = false;
-    this.#outputs = 0;
     this.#seam?.lost('the board restarted; waiting for the seam mark');
     if (this.#seam === null && this.#declaredTrust !== 'unknown') {
       this.#declare('unknown', 'the board restarted; the start must be declared again');

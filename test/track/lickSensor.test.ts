@@ -57,8 +57,14 @@ describe('a lick', () => {
     rig.belt.inputs = 1;
     rig.belt.sample();
     expect(rig.tracker.contact).toBe(true);
-    expect(rig.licks).toBe(0);
     expect(rig.instant.rose).toBe(0);
+    rig.belt.rest(60_000);
+    rig.belt.edge(LICK, 0);
+    for (let i = 0; i < 4; i++) {
+      rig.belt.rest(1000);
+      touch(rig, 1000, 0);
+    }
+    expect(rig.licks).toBe(0);
   });
 
   it('counts although its edge was lost, once two samples show the contact', () => {
@@ -112,6 +118,23 @@ describe('an onset near a change of an output', () => {
     rig.belt.outputs = 1;
     rig.belt.sample();
     rig.belt.nowUs += 2000;
+    rig.belt.edge(LICK, 1);
+    expect(rig.touches).toEqual(['lick']);
+  });
+
+  it('is not judged by an outcome that is told again', () => {
+    const rig = resting();
+    const { nowUs } = rig.belt;
+    const fired = {
+      id: 1,
+      kind: OUTCOME.fired,
+      reason: 0,
+      output: 0,
+      repeated: 1,
+      count: 0,
+      onUs: 0,
+    };
+    expect(rig.tracker.outcome({ ...fired, boardUs: nowUs - 1000 })).toBe(nowUs - 1000);
     rig.belt.edge(LICK, 1);
     expect(rig.touches).toEqual(['lick']);
   });

@@ -260,6 +260,41 @@ describe('a bouncing sensor', () => {
   });
 });
 
+describe('dirt near the mark', () => {
+  it('just behind it is no second mark', () => {
+    const rig = new TrackedBelt().begin(2);
+    rig.belt.edge(1, 1);
+    rig.belt.run(10, 2);
+    rig.belt.edge(1, 0);
+    expect(rig.seams).toEqual(['first']);
+    expect(rig.instant.positionCm).toBe(2.5);
+    expect(rig.instant.trust).toBe('trusted');
+  });
+
+  it('in several spots of one place is told once', () => {
+    const rig = new TrackedBelt().begin(60);
+    for (let spot = 0; spot < 3; spot++) {
+      rig.belt.edge(1, 1);
+      rig.belt.run(8, 2);
+      rig.belt.edge(1, 0);
+      rig.belt.run(8, 2);
+    }
+    expect(rig.seams).toEqual(['first', 'ignored 600']);
+  });
+
+  it('is not taken for the mark when the frame before was lost', () => {
+    const rig = new TrackedBelt({}, { bounces: 1, markWidth: 50 }).begin(-1);
+    // Of the trailing edge's fall, rise and fall the first never comes.
+    let falls = 0;
+    rig.lose = (kind, message) =>
+      kind === 'edge' && 'level' in message && message.level === 0 && ++falls === 2;
+    rig.belt.run(200, 4);
+    expect(falls).toBeGreaterThan(2);
+    expect(rig.seams).toEqual(['first']);
+    expect(rig.instant.positionCm).toBe(9);
+  });
+});
+
 describe('a rig without a seam mark', () => {
   it('begins lap 1 at once, is trusted from the start and counts laps by counts', () => {
     const rig = new TrackedBelt({ seam: null }, { startBelt: 0, startCount: 12_345 });
