@@ -54,6 +54,8 @@ export class SimulatedRig {
   /** The belt is driven at this speed, whatever the animal wants; undefined: the animal runs. */
   forcedCmPerS: number | undefined;
   nowUs = 0;
+  /** How often each output has risen, whatever any host believes. */
+  readonly rises: number[] = new Array(16).fill(0);
   readonly #mark: SeamMark;
   readonly #pending = new PendingInputs();
   readonly #dice: Dice;
@@ -245,6 +247,7 @@ export class SimulatedRig {
   }
 
   #outputChanged(output: number, on: boolean, worldUs: number): void {
+    if (on) this.rises[output]!++;
     if (output !== this.wiring.valveOutput) return;
     if (on) {
       this.#valveOpenedUs = worldUs;

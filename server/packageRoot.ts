@@ -16,6 +16,7 @@ export const packageVersion: string = (
 function find(folder: string): string {
   if (existsSync(join(folder, 'package.json'))) return folder;
   const parent = dirname(folder);
-  if (parent === folder) throw new Error('no package.json above the program: a broken installation');
+  if (parent === folder)
+    throw new Error('no package.json above the program: a broken installation');
   return find(parent);
 }

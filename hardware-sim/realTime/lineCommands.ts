@@ -49,6 +49,7 @@ function stateOf({ rig }: PacedRig): CommandAnswer {
     boardUs: board.boardUs,
     tag: board.tag,
     outputs: board.outputs,
+    rises: rig.rises,
     lap: belt.lap,
     positionCm: belt.positionCm,
     travelCm: belt.travelCm,

@@ -228,6 +228,11 @@ export const ERRORS = {
     'Another Lapwing runs this rig.',
     'Use its dashboard, or end it first; `lapwing quiet --rig RIG` sets its outputs idle at once.',
   ),
+  loopUnfinished: entry(
+    'LOOP_UNFINISHED',
+    'A session on this rig was left unfinished, by a crash or a power cut.',
+    'Go on with it: `lapwing resume --rig RIG`. Or close it first: `lapwing mend SESSION`.',
+  ),
   loopKeepsFailing: entry(
     'LOOP_KEEPS_FAILING',
     'The loop process died again and again, and is not started any more.',

@@ -34,8 +34,6 @@ export interface LinkOptions {
   readonly random?: () => number;
   /** The one board that may answer; any if absent. */
   readonly boardId?: number;
-  /** The board as the record knows it, when a session is resumed. */
-  readonly previous?: Identity;
 }
 
 /**
@@ -81,7 +79,6 @@ export class BoardLink {
     this.#timers = options.timers ?? hostTimers;
     this.#random = options.random ?? (() => randomBytes(4).readUInt32LE());
     this.#boardId = options.boardId;
-    this.#identity = options.previous;
     this.#owner = {
       handler: this.handler,
       counters: this.counters,
@@ -112,6 +109,11 @@ export class BoardLink {
   }
   get transport(): Transport | undefined {
     return this.#connection?.port.transport;
+  }
+
+  /** The board as the record of a resumed session knows it; before `start`. */
+  remember(identity: Identity): void {
+    this.#identity = identity;
   }
 
   start(): void {

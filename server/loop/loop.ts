@@ -9,6 +9,7 @@ import { portOpener } from '../link/resolvePort.js';
 import { packageVersion } from '../packageRoot.js';
 import type { SessionSetup } from '../session/core/sessionCore.js';
 import type { StampedDecision } from '../session/decisions.js';
+import { readDescription } from '../session/description.js';
 import type { Actor, OperatorAct, RareInput } from '../session/inputs.js';
 import { idleRules, newSeed, prepareRules } from '../session/prepare.js';
 import { finish } from '../session/record/finish.js';
@@ -106,8 +107,10 @@ export class Loop implements LinkHandler, LoopService {
   /** @throws LapwingError LOOP_RIG_TAKEN, or what is wrong with the rules file to begin with */
   async start(): Promise<void> {
     await this.#server.open();
-    if (existsSync(this.#address.currentFile)) await this.#resume();
-    else this.#toBegin = this.#options.begin;
+    const left = this.#leftOver();
+    if (left === undefined) this.#toBegin = this.#options.begin;
+    else if (this.#options.resume) await this.#resume(left);
+    else throw new LapwingError('loopUnfinished', `${left.folder} was left unfinished.`);
     this.#link.start();
     this.#tick = setInterval(() => this.#everyTick(), TICK_MS);
     this.#report({ report: 'ready' });
@@ -281,10 +284,19 @@ export class Loop implements LinkHandler, LoopService {
     this.#server.announceSetup();
   }
 
+  /** The session that a loop which died was running; one that was mended since is over. */
+  #leftOver(): CurrentSession | undefined {
+    const { currentFile } = this.#address;
+    if (!existsSync(currentFile)) return undefined;
+    const current = JSON.parse(readFileSync(currentFile, 'utf8')) as CurrentSession;
+    if (existsSync(current.folder) && readDescription(current.folder).ended === null)
+      return current;
+    rmSync(currentFile, { force: true });
+    return undefined;
+  }
+
   /** Takes up the session that a loop which died was running, from its record. */
-  async #resume(): Promise<void> {
-    const text = readFileSync(this.#address.currentFile, 'utf8');
-    const current = JSON.parse(text) as CurrentSession;
+  async #resume(current: CurrentSession): Promise<void> {
     const { folder } = current;
     const rules = prepareRules(join(folder, 'rules.yaml'), this.#rigFile);
     const session = { ...current, rules, startedAt: new Date(current.startedAt) };
@@ -295,7 +307,11 @@ export class Loop implements LinkHandler, LoopService {
     runner.replay(() =>
       reader.visit({
         sample: (_, sample) => runner.sample(sample),
-        input: (_, input) => runner.take(input),
+        input: (_, input) => {
+          // So that the link can tell whether the board has been on all the while.
+          if (input.kind === 'link up') this.#link.remember(input.identity);
+          runner.take(input);
+        },
       }),
     );
     this.#runner = runner;

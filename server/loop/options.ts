@@ -8,6 +8,8 @@ export interface LoopOptions {
   readonly rulesFolder?: string;
   /** A session to begin as soon as the board answers. */
   readonly begin?: BeginOptions;
+  /** Go on with the session that a loop left when it died; without it, one left over is refused. */
+  readonly resume?: boolean;
   /** Leave when that session has ended and its record is closed. */
   readonly exitWhenEnded: boolean;
 }

@@ -147,11 +147,9 @@ export class Launcher {
     this.#restarts.push(now);
     this.#events.restarted('loop', why);
     // What was begun goes on by itself: the loop finds the session that it left.
-    const { begin: _, ...rest } = this.#plan.loop;
-    setTimeout(
-      () => !this.#stopping && this.#startLoop(this.#begun ? rest : this.#plan.loop),
-      RESTART_DELAY_MS,
-    );
+    const { begin, ...rest } = this.#plan.loop;
+    const again = { ...rest, resume: true, ...(this.#begun || !begin ? {} : { begin }) };
+    setTimeout(() => !this.#stopping && this.#startLoop(again), RESTART_DELAY_MS);
   }
 
   #startWeb(): void {

@@ -10,6 +10,7 @@ export interface LiveOptions {
   readonly rig: Rig;
   readonly rigPath: string;
   readonly begin?: BeginOptions;
+  readonly resume?: boolean;
   readonly web?: { readonly host: string; readonly port: number };
   readonly recordFolder?: string;
   readonly rulesFolder?: string;
@@ -33,6 +34,7 @@ export async function runLive(options: LiveOptions): Promise<void> {
         rigPath: resolve(options.rigPath),
         exitWhenEnded: options.exitWhenEnded,
         ...(options.begin === undefined ? {} : { begin: options.begin }),
+        ...(options.resume === undefined ? {} : { resume: options.resume }),
         ...(options.recordFolder === undefined ? {} : { recordFolder: options.recordFolder }),
         ...(options.rulesFolder === undefined ? {} : { rulesFolder: options.rulesFolder }),
       },

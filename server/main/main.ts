@@ -10,6 +10,7 @@ import { portsCommand } from './ports.js';
 import { quietCommand } from './quiet.js';
 import { rehearseCommand } from './rehearse.js';
 import { replayCommand } from './replay.js';
+import { resumeCommand } from './resume.js';
 import { runCommand } from './run.js';
 import { serveCommand } from './serve.js';
 import { tellError } from './tellError.js';
@@ -20,6 +21,7 @@ const program = new Command('lapwing')
   .addCommand(demoCommand())
   .addCommand(serveCommand())
   .addCommand(runCommand())
+  .addCommand(resumeCommand())
   .addCommand(rehearseCommand())
   .addCommand(checkCommand())
   .addCommand(explainCommand())

@@ -2,6 +2,7 @@ import type { HostMessageName, MessageOf } from '../wire/messages.js';
 import type { SessionSetup } from './core/sessionCore.js';
 import { SessionCore } from './core/sessionCore.js';
 import type { StampedDecision } from './decisions.js';
+import { onTheWire } from './record/onTheWire.js';
 import { readRecord } from './record/readRecord.js';
 import type { RecordState } from './record/recordState.js';
 
@@ -75,6 +76,6 @@ export async function replaySession(folder: string, setup: SessionSetup): Promis
   return { inputs, decisions, commands, difference, state };
 }
 
-function commandText(name: string, message: object): string {
-  return `${name} ${JSON.stringify(message)}`;
+function commandText(name: HostMessageName, message: object): string {
+  return `${name} ${JSON.stringify(onTheWire(name, message))}`;
 }

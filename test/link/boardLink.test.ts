@@ -360,7 +360,8 @@ describe('losing the link', () => {
   it('knows the board of a resumed session', async () => {
     const before = new VirtualLink();
     const previous = { ...before.board.identity };
-    const rig = new VirtualLink({ previous });
+    const rig = new VirtualLink();
+    rig.link.remember(previous);
     await rig.up();
     expect(rig.handler.of('up')[0]!.event).toMatchObject({ sameBoot: true, previous });
   });

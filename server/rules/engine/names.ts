@@ -26,16 +26,19 @@ export type Meaning =
 
 export class Names {
   private readonly meanings = new Map<string, Meaning>();
+  /** The rig's own names: a rule may be called as the output that it drives. */
+  private readonly rig = new Map<string, Meaning>();
 
   constructor(
     readonly file: RulesFile,
     facts: RigFacts,
   ) {
     // The file's own names last: they win over the rig's, as the checker lets them.
-    for (const output of facts.outputs) this.meanings.set(output.name, { kind: 'output', output });
+    for (const output of facts.outputs) this.rig.set(output.name, { kind: 'output', output });
     for (const input of facts.inputs) {
-      this.meanings.set(input.name, { kind: 'input', index: input.index });
+      this.rig.set(input.name, { kind: 'input', index: input.index });
     }
+    for (const [name, meaning] of this.rig) this.meanings.set(name, meaning);
     for (const decl of file.values) this.meanings.set(decl.name.name, { kind: 'value', decl });
     for (const decl of file.places) this.meanings.set(decl.name.name, { kind: 'place', decl });
     for (const decl of file.tables) this.meanings.set(decl.name.name, { kind: 'table', decl });
@@ -59,9 +62,11 @@ export class Names {
 
   /** The meaning, of the kind that the checker has proved it to be. */
   need<K extends Meaning['kind']>(name: string, ...kinds: K[]): Meaning & { kind: K } {
-    const meaning = this.meanings.get(name);
-    if (meaning && (kinds as string[]).includes(meaning.kind))
-      return meaning as Meaning & { kind: K };
+    for (const meaning of [this.meanings.get(name), this.rig.get(name)]) {
+      if (meaning && (kinds as string[]).includes(meaning.kind)) {
+        return meaning as Meaning & { kind: K };
+      }
+    }
     throw new Error(`not a checked rules file: ${name} is no ${kinds.join(' or ')}`);
   }
 

@@ -10,9 +10,7 @@ export function pulseOf(
   tracker: Tracker,
 ): Pulse {
   const placed = !Number.isNaN(request.placeTravel) && order.delayUs === 0;
-  const one = tracker.boardCountAt(request.placeTravel - request.withinCounts);
-  const other = tracker.boardCountAt(request.placeTravel + request.withinCounts);
-  const startUs = request.causeUs + order.delayUs;
+  const { from, to } = placed ? window(request, tracker) : { from: 0, to: 0 };
   return {
     id,
     output: order.output,
@@ -20,12 +18,19 @@ export function pulseOf(
     widthUs: order.widthUs,
     periodUs: order.periodUs,
     repeats: order.repeats,
-    startUs,
-    expiryUs: request.expiryUs + order.delayUs,
-    // On a reversed encoder the place behind has the greater count.
-    countFrom: placed ? Math.min(one, other) : 0,
-    countTo: placed ? Math.max(one, other) : 0,
+    startUs: tracker.toBoardUs(request.causeUs + order.delayUs),
+    expiryUs: tracker.toBoardUs(request.expiryUs + order.delayUs),
+    countFrom: from,
+    countTo: to,
   };
+}
+
+/** The counts between which a rise is near enough to its place. */
+function window({ placeTravel, withinCounts }: FiringRequest, tracker: Tracker) {
+  const behind = tracker.boardCountAt(placeTravel - withinCounts);
+  const ahead = tracker.boardCountAt(placeTravel + withinCounts);
+  // The window runs upwards in counts, and a reversed encoder counts down.
+  return tracker.countRises(true) ? { from: behind, to: ahead } : { from: ahead, to: behind };
 }
 
 /** The wire message that lets the board start an order by itself at a count. */

@@ -1,4 +1,7 @@
 import { LapwingError } from '../../errors/codes.js';
+import type { HostMessageName, MessageOf } from '../../wire/messages.js';
+import type { StampedDecision } from '../decisions.js';
+import type { RareInput } from '../inputs.js';
 import { CHANNELS, RECORD_FORMAT } from './channels.js';
 import { readMicroseconds } from './chunkBuffer.js';
 import type { ChunkSink } from './chunkScanner.js';
@@ -152,18 +155,18 @@ export class MessageReader implements ChunkSink {
       this.#clock.raw(this.#samples.lastBoardUs);
       return;
     }
-    const { decision, command } = this.#visitor;
+    const visitor = this.#visitor;
     if (what === 'input') {
       const { input, ...rest } = this.#parse(records, from, end) as { input: number };
       this.lastInput = input;
-      this.#clock.input(rest as RareInputObject);
-      this.#visitor.input?.(input, rest as RareInputObject);
+      this.#clock.input(rest as RareInput);
+      visitor.input?.(input, rest as RareInput);
     } else if (what === 'command') {
-      if (command === undefined) return;
+      if (visitor.command === undefined) return;
       const { input, name, message } = this.#parse(records, from, end) as CommandObject;
-      this.#visitor.command!(input, name, message);
-    } else if (what === 'decision' && decision !== undefined)
-      this.#visitor.decision!(this.#parse(records, from, end) as DecisionObject);
+      visitor.command(input, name, message);
+    } else if (what === 'decision' && visitor.decision !== undefined)
+      visitor.decision(this.#parse(records, from, end) as StampedDecision);
   }
 
   #parse(records: Uint8Array, from: number, end: number): unknown {
@@ -249,12 +252,10 @@ export class MessageReader implements ChunkSink {
   }
 }
 
-type RareInputObject = Parameters<NonNullable<RecordVisitor['input']>>[1];
-type DecisionObject = Parameters<NonNullable<RecordVisitor['decision']>>[0];
 interface CommandObject {
   readonly input: number;
-  readonly name: 'pulse';
-  readonly message: Parameters<NonNullable<RecordVisitor['command']>>[2] & never;
+  readonly name: HostMessageName;
+  readonly message: MessageOf[HostMessageName];
 }
 interface SegmentMessage {
   readonly event: 'open' | 'close';

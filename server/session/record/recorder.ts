@@ -13,6 +13,7 @@ import {
   SEGMENT_CHANNEL,
 } from './channels.js';
 import { ChunkBuffer } from './chunkBuffer.js';
+import { onTheWire } from './onTheWire.js';
 import { closingBytes, openingBytes, schemaRecords } from './prelude.js';
 import { type ClockPoint, RecordClock } from './recordClock.js';
 import { diskFiles, type RecordFiles } from './recordFile.js';
@@ -166,7 +167,7 @@ export class Recorder {
   command<N extends HostMessageName>(input: number, name: N, message: MessageOf[N]): void {
     if (name === 'beat' && this.#block.addBeat(input, message as Beat)) return;
     this.#closeBlock();
-    const body = JSON.stringify(message);
+    const body = JSON.stringify(onTheWire(name, message));
     this.#json(COMMAND_CHANNEL, `{"input":${input},"name":"${name}","message":${body}}`);
   }
 
