@@ -144,13 +144,10 @@ function endWithParent(leave: () => never): void {
     if (process.ppid !== parent) leave();
   }, PARENT_CHECK_MS);
   const input = fs.fstatSync(0);
-  if (input.isFIFO() || input.isSocket()) {
-    process.stdin.on('end', leave);
-    // Ctrl-C reaches the whole group: the board must stay until the loop has made it quiet.
-    process.on('SIGINT', () => {});
-  } else {
-    process.on('SIGINT', leave);
-  }
+  if (input.isFIFO() || input.isSocket()) process.stdin.on('end', leave);
+  // Ctrl-C reaches the whole group: a board must stay until the loop has made it quiet. Started by
+  // hand it is the only one that hears it.
+  process.on('SIGINT', process.stdin.isTTY ? leave : () => {});
   process.on('SIGTERM', leave);
   process.stdout.on('error', leave);
 }

@@ -140,6 +140,8 @@ export class Board {
   move(counts: number): void {
     const { slots } = this.#bank;
     const voice = this.#voice;
+    // A slot that was left behind may lie ahead again after a move the other way.
+    if (slots.leftBehind > 0) slots.refresh(voice.count);
     let left = counts;
     while (left > 0) {
       const gap = slots.upFrom(voice.count);

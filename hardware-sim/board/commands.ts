@@ -58,7 +58,7 @@ export class Commands {
   /** A thousand times a second: silence, and slots that were left behind. */
   tick(): void {
     if (this.#voice.tag !== 0) this.#silence.watch();
-    if (this.#bank.slots.armed > 0) this.#bank.sweep();
+    if (this.#bank.slots.leftBehind > 0) this.#bank.sweep();
     if (this.#wrongTags > 0) this.#tellWrongTags();
   }
 

@@ -61,14 +61,12 @@ export class OutputBank {
   /** Ends the slots that the count has left behind. */
   sweep(): void {
     const { count } = this.#voice;
-    let cleared = false;
     for (const slot of this.slots.slots) {
       if (!slot.armed || slotAhead(slot, count) > 0) continue;
       slot.armed = false;
-      cleared = true;
       this.#voice.outcome(slot.id, OUTCOME.passed, REASON.none, slot.output, 0);
     }
-    if (cleared) this.slots.refresh(count);
+    this.slots.refresh(count);
   }
 
   /** The first rise of a command, or the reason why not. */

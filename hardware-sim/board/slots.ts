@@ -20,7 +20,7 @@ export class SlotTable {
   #hasUp = false;
   #down = 0;
   #hasDown = false;
-  #armed = 0;
+  #leftBehind = 0;
 
   constructor(size: number) {
     this.slots = Array.from({ length: size }, () => ({
@@ -35,8 +35,9 @@ export class SlotTable {
     }));
   }
 
-  get armed(): number {
-    return this.#armed;
+  /** Armed slots whose target is not ahead any more; only counts that were skipped leave any. */
+  get leftBehind(): number {
+    return this.#leftBehind;
   }
 
   /** Counts from `count` up to the nearest rising target, at least 1; `NO_SLOT` without one. */
@@ -63,12 +64,14 @@ export class SlotTable {
   refresh(count: number): void {
     this.#hasUp = false;
     this.#hasDown = false;
-    this.#armed = 0;
+    this.#leftBehind = 0;
     for (const slot of this.slots) {
       if (!slot.armed) continue;
-      this.#armed++;
       const ahead = slotAhead(slot, count);
-      if (ahead <= 0) continue;
+      if (ahead <= 0) {
+        this.#leftBehind++;
+        continue;
+      }
       if (slot.rising) {
         if (!this.#hasUp || ahead < ((this.#up - count) | 0)) this.#up = slot.target;
         this.#hasUp = true;

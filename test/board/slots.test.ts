@@ -80,6 +80,17 @@ describe('an armed slot', () => {
     expect([host.told(below), host.told(lower)]).toEqual([[], ['fired']]);
   });
 
+  test('left behind and come ahead of again before the sweep, fires', () => {
+    const host = TestHost.connected();
+    const id = host.arm({ count: 10 });
+    host.board.skipCounts(20);
+    host.board.move(-15);
+    host.board.move(4);
+    expect(host.told(id)).toEqual([]);
+    host.board.move(1);
+    expect(host.told(id)).toEqual(['fired']);
+  });
+
   test('is refused when there is no such slot, or it is taken', () => {
     const host = TestHost.connected({ slots: 4 });
     expect(host.told(host.arm({ slot: 4, count: 5 }))).toEqual(['refused badSlot']);
