@@ -12,7 +12,7 @@ import { extend32 } from '../wire/time.js';
 import { type BeltConfig, SPEED_WINDOW_US, UNSEEN_US } from './beltConfig.js';
 import { BoardClock } from './boardClock.js';
 import type { TrackEvent, TrackListener } from './events.js';
-import { LickSensor } from './lickSensor.js';
+import { InputLevels } from './inputLevels.js';
 import { SeamFollower } from './seamFollower.js';
 import { SpeedWindow } from './speedWindow.js';
 
@@ -55,9 +55,7 @@ export class Tracker {
   readonly #speed: SpeedWindow;
   readonly #seam: SeamFollower | null;
   readonly #seamInput: number;
-  readonly #lick: LickSensor | null;
-  readonly #lickBit: number;
-  readonly #artefactOutputs: number;
+  readonly #levels: InputLevels;
   readonly #direction: 1 | -1;
   readonly #cmPerCount: number;
   readonly #events: TrackEvent[] = [];
@@ -80,11 +78,6 @@ export class Tracker {
   /** The same before the newest frame's movement, for edges which that frame overtook. */
   #movedBefore = 0;
   #forwardsBefore = true;
-  #inputs = 0;
-  #outputs = 0;
-  #levelsKnown = false;
-  /** Inputs at which the last sample disagreed with what edges told. */
-  #differed = 0;
   /** The next frame's movement happened unseen. */
   #unseen = false;
   #newestUs = 0;
@@ -92,12 +85,9 @@ export class Tracker {
   #declaredTrust: Trust = 'unknown';
   #declaredReason = 'waiting for the board';
 
-  // This instant's movement and edges.
+  // Where this instant's movement began.
   #travelFrom = 0;
   #progressFrom = 0;
-  #rose = 0;
-  #fell = 0;
-  #licked = false;
 
   constructor(config: BeltConfig, listener?: TrackListener) {
     this.lapCounts = Math.round(config.lengthCm * config.countsPerCm);
@@ -112,9 +102,7 @@ export class Tracker {
     this.#seam =
       seam === null ? null : new SeamFollower(seam, this.lapCounts, this.#cmPerCount, this.#events);
     this.#seamInput = seam === null ? -1 : seam.input;
-    this.#lick = lick === null ? null : new LickSensor(lick, this.#events);
-    this.#lickBit = lick === null ? 0 : 1 << lick.input;
-    this.#artefactOutputs = lick?.artefactOutputs ?? 0xffff;
+    this.#levels = new InputLevels(lick, this.#events);
   }
 
   /** Extended board time of the newest instant, microseconds. */
@@ -143,12 +131,12 @@ export class Tracker {
 
   /** Output states as the board last told them, bit n for output n. */
   get outputs(): number {
-    return this.#outputs;
+    return this.#levels.outputs;
   }
 
   /** The lick sensor is touched now. */
   get contact(): boolean {
-    return this.#lick?.contact ?? false;
+    return this.#levels.lick?.contact ?? false;
   }
 
   /** A sample: the instant at its stamp. */
@@ -156,10 +144,7 @@ export class Tracker {
     const newest = this.#clock.take(m.boardUs);
     this.#begin();
     if (newest) this.#move(m.count);
-    if (m.outputs !== this.#outputs) this.#outputsAre(m.outputs);
-    if (m.inputs !== this.#inputs || this.#differed !== 0 || !this.#levelsKnown) {
-      this.#levels(m.inputs);
-    }
+    this.#levels.sample(m.inputs, m.outputs, this.#clock.stampUs);
     this.#end(into);
   }
 
@@ -169,10 +154,15 @@ export class Tracker {
     this.#begin();
     if (newest || !this.#counted) this.#move(m.count);
     else this.#headAt(extend32(this.#count, m.count) * this.#direction);
-    if (m.input < INPUTS) {
-      this.#inputEdge(m, newest ? this.#forwards : this.#forwardsBefore);
-    } else if ((m.input & SYNC_EDGE) !== 0) {
-      this.#outputIs(1 << (m.input & ~SYNC_EDGE), m.level === 1, this.#clock.stampUs);
+    const rose = m.level === 1;
+    const { stampUs } = this.#clock;
+    if (m.input < INPUTS) this.#levels.edge(m, stampUs);
+    else if ((m.input & SYNC_EDGE) !== 0) {
+      this.#levels.outputIs(m.input & ~SYNC_EDGE, rose, stampUs);
+    }
+    if (m.input === this.#seamInput) {
+      const moved = extend32(this.#count, m.count) * this.#direction;
+      this.#seamEdge(rose, newest ? this.#forwards : this.#forwardsBefore, moved);
     }
     // An overtaken edge may tell that the belt has been further than any sample showed.
     if (!newest && this.#homed) this.#wasAt(this.travelAtCount(m.count));
@@ -187,7 +177,7 @@ export class Tracker {
     const stampUs = this.#clock.extend(m.boardUs);
     if (m.repeated !== 0) return stampUs;
     const fired = m.kind === OUTCOME.fired;
-    if (fired || m.kind === OUTCOME.done) this.#outputIs(1 << m.output, fired, stampUs);
+    if (fired || m.kind === OUTCOME.done) this.#levels.outputIs(m.output, fired, stampUs);
     return stampUs;
   }
 
@@ -213,7 +203,7 @@ export class Tracker {
     this.#counted = false;
     this.#homed = false;
     this.#placed = false;
-    this.#levelsKnown = false;
+    this.#levels.forget();
     this.#seam?.lost('the board restarted; waiting for the seam mark');
     if (this.#seam === null && this.#declaredTrust !== 'unknown') {
       this.#declare('unknown', 'the board restarted; the start must be declared again');
@@ -231,7 +221,7 @@ export class Tracker {
       return;
     }
     this.#unseen = true;
-    this.#levelsKnown = false;
+    this.#levels.forget();
   }
 
   /**
@@ -291,9 +281,7 @@ export class Tracker {
   #begin(): void {
     this.#travelFrom = this.#travel;
     this.#progressFrom = this.#progress;
-    this.#rose = 0;
-    this.#fell = 0;
-    this.#licked = false;
+    this.#levels.begin();
   }
 
   #move(raw: number): void {
@@ -391,64 +379,6 @@ export class Tracker {
     this.#wasAt(this.#travel);
   }
 
-  #inputEdge(m: Edge, forwards: boolean): void {
-    const rose = m.level === 1;
-    const bit = 1 << m.input;
-    if (rose) {
-      this.#inputs |= bit;
-      this.#rose |= bit;
-    } else {
-      this.#inputs &= ~bit;
-      this.#fell |= bit;
-    }
-    this.#differed &= ~bit;
-    if (bit === this.#lickBit) this.#lickEdge(rose, this.#clock.stampUs);
-    if (m.input === this.#seamInput) {
-      this.#seamEdge(rose, forwards, extend32(this.#count, m.count) * this.#direction);
-    }
-  }
-
-  #outputIs(bit: number, on: boolean, stampUs: number): void {
-    this.#outputs = on ? this.#outputs | bit : this.#outputs & ~bit;
-    if ((bit & this.#artefactOutputs) !== 0) this.#lick?.outputChanged(stampUs);
-  }
-
-  #outputsAre(outputs: number): void {
-    const changed = (outputs ^ this.#outputs) & this.#artefactOutputs;
-    this.#outputs = outputs;
-    if (changed !== 0 && this.#levelsKnown) this.#lick?.outputChanged(this.#clock.stampUs);
-  }
-
-  /**
-   * Input levels of a sample. Edges come first on the wire, so a difference that two samples show
-   * is an edge whose frame was lost.
-   */
-  #levels(inputs: number): void {
-    if (!this.#levelsKnown) {
-      this.#levelsKnown = true;
-      this.#inputs = inputs;
-      this.#differed = 0;
-      this.#lick?.adopt((inputs & this.#lickBit) !== 0, this.#clock.nowUs);
-      return;
-    }
-    const differs = inputs ^ this.#inputs;
-    const lost = differs & this.#differed;
-    this.#differed = differs & ~lost;
-    if (lost === 0) return;
-    this.#inputs ^= lost;
-    this.#rose = lost & inputs;
-    this.#fell = lost & ~inputs;
-    if ((lost & this.#lickBit) !== 0) {
-      this.#lickEdge((inputs & this.#lickBit) !== 0, this.#clock.stampUs);
-    }
-  }
-
-  #lickEdge(rose: boolean, stampUs: number): void {
-    if (this.#lick === null) return;
-    if (!rose) this.#lick.fall(stampUs);
-    else if (this.#lick.rise(stampUs)) this.#licked = true;
-  }
-
   #end(into: Instant): void {
     const nowUs = this.#clock.nowUs;
     const travel = this.#travel;
@@ -456,7 +386,8 @@ export class Tracker {
     if (seam !== null && (travel > seam.missedAbove || travel < seam.missedBelow)) {
       seam.missed(travel);
     }
-    if (this.#lick?.contact) this.#lick.checkStuck(nowUs);
+    const levels = this.#levels;
+    if (levels.lick?.contact) levels.lick.checkStuck(nowUs);
 
     into.nowUs = nowUs;
     into.lapCounts = this.lapCounts;
@@ -476,10 +407,10 @@ export class Tracker {
     io[1] = this.#moved;
     this.#speed.take();
     into.speedCmPerS = io[2]! * this.#cmPerCount * 1_000_000;
-    into.lick = this.#licked;
-    into.inputs = this.#inputs;
-    into.rose = this.#rose;
-    into.fell = this.#fell;
+    into.lick = levels.licked;
+    into.inputs = levels.inputs;
+    into.rose = levels.rose;
+    into.fell = levels.fell;
     if (this.#events.length > 0) this.#flush();
   }
 
