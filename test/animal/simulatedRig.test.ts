@@ -106,7 +106,7 @@ describe('the simulated belt', () => {
           if (clear) expect(edges.length % 2 === 1).toBe(positionCm < 1);
         },
       ),
-      { seed: 91, numRuns: 60 },
+      { seed: 91, numRuns: 40 },
     );
   });
 
