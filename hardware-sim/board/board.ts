@@ -6,7 +6,6 @@
 import { blank } from '../../server/wire/codec.js';
 import { type Frame, FrameDecoder } from '../../server/wire/frameDecoder.js';
 import {
-  type FAULT,
   type HostMessageName,
   MESSAGES,
   type MessageOf,
@@ -279,10 +278,5 @@ export class Board {
     }
     frame.read(message);
     this.receive(host, message as never, frame.tag);
-  }
-
-  /** A fault that the board's own chip found, told as it would be. */
-  faultSeen(fault: (typeof FAULT)[keyof typeof FAULT], detail: number): void {
-    this.#voice.fault(fault, detail);
   }
 }

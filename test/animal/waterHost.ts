@@ -45,8 +45,8 @@ export class WaterHost {
           const { positionCm } = this.rig.belt;
           this.licks.push({ us: message.boardUs, positionCm, contactUs: 0 });
         } else {
-          const lick = this.licks.at(-1)!;
-          lick.contactUs = message.boardUs - lick.us;
+          const lick = this.licks.at(-1);
+          if (lick !== undefined) lick.contactUs = message.boardUs - lick.us;
         }
       },
       outcome: none,
