@@ -2,7 +2,6 @@ import type { Instant, Trust } from '../rules/instant.js';
 import {
   type Clock,
   type Edge,
-  type Identity,
   OUTCOME,
   type Outcome,
   type Sample,
@@ -10,7 +9,9 @@ import {
 } from '../wire/messages.js';
 import { extend32 } from '../wire/time.js';
 import { type BeltConfig, SPEED_WINDOW_US, UNSEEN_US } from './beltConfig.js';
+import { BeltScale } from './beltScale.js';
 import { BoardClock } from './boardClock.js';
+import { DeclaredStart } from './declaredStart.js';
 import type { TrackEvent, TrackListener } from './events.js';
 import { InputLevels } from './inputLevels.js';
 import { SeamFollower } from './seamFollower.js';
@@ -19,38 +20,16 @@ import { SpeedWindow } from './speedWindow.js';
 /** Inputs have a bit each in a sample. */
 const INPUTS = 16;
 
-/** An instant to be filled again and again. */
-export function blankInstant(): Instant {
-  return {
-    nowUs: 0,
-    trust: 'unknown',
-    placed: false,
-    lapCounts: 0,
-    travelFrom: 0,
-    travelTo: 0,
-    progressFrom: 0,
-    progressTo: 0,
-    positionCm: Number.NaN,
-    speedCmPerS: 0,
-    lap: 0,
-    lapBegan: false,
-    lick: false,
-    inputs: 0,
-    rose: 0,
-    fell: 0,
-  };
-}
+export { blankInstant } from './blankInstant.js';
 
 /**
  * Decoded board frames in, the motion part of an `Instant` out: one frame, one instant.
  *
- * Travel is the belt unrolled in whole counts, lap n beginning at `n * lapCounts`. `lapCounts` is
- * the belt's length rounded to a whole count, so that every comparison downstream is exact; what
- * rounding takes (half a count a lap at most) is less than any calibration knows, and a seam mark
- * takes it back each lap. Cm and counts are related by `lengthCm / lapCounts` throughout.
+ * Travel is the belt unrolled in whole counts, lap n beginning at `n * lapCounts`.
  */
 export class Tracker {
   readonly lapCounts: number;
+  readonly #scale: BeltScale;
   readonly #clock = new BoardClock();
   readonly #speed: SpeedWindow;
   readonly #seam: SeamFollower | null;
@@ -60,6 +39,8 @@ export class Tracker {
   readonly #cmPerCount: number;
   readonly #events: TrackEvent[] = [];
   readonly #listener: TrackListener | undefined;
+  /** In force without a seam mark. */
+  readonly #start = new DeclaredStart(this.#events);
 
   /** The belt's count, extended, and whether it is known at all. */
   #count = 0;
@@ -72,8 +53,6 @@ export class Tracker {
   #progress = 0;
   #lap = 0;
   #placed = false;
-  /** Travel at the start of the lap that the belt is in now, which reversing may move back. */
-  #turn = 0;
   #forwards = true;
   /** The same before the newest frame's movement, for edges which that frame overtook. */
   #movedBefore = 0;
@@ -81,20 +60,14 @@ export class Tracker {
   /** The next frame's movement happened unseen. */
   #unseen = false;
   #newestUs = 0;
-  // Declared places (no seam mark) are trusted until the board restarts.
-  #declaredTrust: Trust = 'unknown';
-  #declaredReason = 'waiting for the board';
-
   // Where this instant's movement began.
   #travelFrom = 0;
   #progressFrom = 0;
 
   constructor(config: BeltConfig, listener?: TrackListener) {
-    this.lapCounts = Math.round(config.lengthCm * config.countsPerCm);
-    if (!(this.lapCounts >= 16)) {
-      throw new RangeError(`a belt of ${this.lapCounts} counts a lap cannot be followed`);
-    }
-    this.#cmPerCount = config.lengthCm / this.lapCounts;
+    this.#scale = new BeltScale(config.lengthCm, config.countsPerCm);
+    this.lapCounts = this.#scale.lapCounts;
+    this.#cmPerCount = this.#scale.cmPerCount;
     this.#direction = config.direction;
     this.#listener = listener;
     this.#speed = new SpeedWindow(config.speedWindowUs ?? SPEED_WINDOW_US);
@@ -116,12 +89,12 @@ export class Tracker {
   }
 
   get trust(): Trust {
-    return this.#seam === null ? this.#declaredTrust : this.#seam.trust;
+    return (this.#seam ?? this.#start).trust;
   }
 
   /** Why trust is what it is, in words for the screen. */
   get trustReason(): string {
-    return this.#seam === null ? this.#declaredReason : this.#seam.reason;
+    return (this.#seam ?? this.#start).reason;
   }
 
   /** Slip at the newest accepted mark, mm: positive when the mark came late. */
@@ -193,7 +166,7 @@ export class Tracker {
   }
 
   /** As `clock`, at a handshake. After a restart call `linkResumed(false)` first. */
-  identity(m: Identity): void {
+  identity(m: Clock): void {
     this.#clock.takeWraps(m.wraps, m.boardUs);
   }
 
@@ -205,9 +178,7 @@ export class Tracker {
     this.#placed = false;
     this.#levels.forget();
     this.#seam?.lost('the board restarted; waiting for the seam mark');
-    if (this.#seam === null && this.#declaredTrust !== 'unknown') {
-      this.#declare('unknown', 'the board restarted; the start must be declared again');
-    }
+    this.#start.lost();
     this.#flush();
   }
 
@@ -216,11 +187,8 @@ export class Tracker {
    * another: `boardRestarted`.
    */
   linkResumed(sameBoot: boolean): void {
-    if (!sameBoot) {
-      this.boardRestarted();
-      return;
-    }
-    this.#unseen = true;
+    if (sameBoot) this.#unseen = true;
+    else this.boardRestarted();
     this.#levels.forget();
   }
 
@@ -231,7 +199,7 @@ export class Tracker {
   declareStart(): void {
     if (this.#seam !== null || !this.#counted) return;
     this.#home((this.#lap + 1) * this.lapCounts);
-    this.#declare('trusted', 'start declared; there is no seam mark to check it');
+    this.#start.declared();
   }
 
   /**
@@ -258,17 +226,12 @@ export class Tracker {
 
   /** Place along the belt, [0, length) cm. */
   positionCmOf(travelCounts: number): number {
-    return this.#inTurn(travelCounts) * this.#cmPerCount;
+    return this.#scale.positionCmOf(travelCounts);
   }
 
   /** Travel at `placeCm` of lap `lap`, counts; not a whole number as a rule. */
   travelOf(lap: number, placeCm: number): number {
-    return lap * this.lapCounts + placeCm / this.#cmPerCount;
-  }
-
-  /** Extended time of a 32-bit stamp near now. */
-  extendUs(raw: number): number {
-    return this.#clock.extend(raw);
+    return this.#scale.travelOf(lap, placeCm);
   }
 
   /** What the board's clock says at extended time `us`: what commands to it must carry. */
@@ -394,14 +357,15 @@ export class Tracker {
     into.lapBegan = false;
     if (this.#homed && this.#progress >= (this.#lap + 1) * this.lapCounts) this.#newLap(into);
     if (this.#homed && !this.#placed && this.#lap > 0) this.#place();
-    into.trust = seam === null ? this.#declaredTrust : seam.trust;
+    into.trust = seam === null ? this.#start.trust : seam.trust;
     into.placed = this.#placed;
     into.lap = this.#lap;
     into.travelFrom = this.#travelFrom;
     into.travelTo = travel;
     into.progressFrom = this.#progressFrom;
     into.progressTo = this.#progress;
-    into.positionCm = this.#placed ? this.#inTurn(travel) * this.#cmPerCount : Number.NaN;
+    if (this.#placed) this.#scale.locate(travel, into);
+    else into.positionCm = Number.NaN;
     const { io } = this.#speed;
     io[0] = nowUs;
     io[1] = this.#moved;
@@ -426,21 +390,6 @@ export class Tracker {
     const least = this.#lap * this.lapCounts - 1;
     if (this.#travelFrom < least) this.#travelFrom = least;
     if (this.#progressFrom < least) this.#progressFrom = least;
-  }
-
-  #inTurn(travel: number): number {
-    let counts = travel - this.#turn;
-    if (counts < 0 || counts >= this.lapCounts) {
-      this.#turn = Math.floor(travel / this.lapCounts) * this.lapCounts;
-      counts = travel - this.#turn;
-    }
-    return counts;
-  }
-
-  #declare(trust: Trust, reason: string): void {
-    this.#declaredTrust = trust;
-    this.#declaredReason = reason;
-    this.#events.push({ kind: 'trust', trust, reason });
   }
 
   #flush(): void {
