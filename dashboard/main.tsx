@@ -113,6 +113,10 @@ const actions: Actions = {
     keep('lapwing.keys', on ? 'on' : 'off');
     touch();
   },
+  acknowledge: (alarm) => {
+    live.alarms.acknowledged.add(alarm);
+    touch();
+  },
   dismissNotice: () => {
     live.notice = undefined;
     touch();

@@ -1,6 +1,7 @@
 /** Everything the page knows, and how each message changes it. Nothing here touches the screen. */
 import type { NumberedEvent, Setup, Snapshot } from '../../server/loop/protocol.js';
 import type { StreamMessage } from '../../server/web/streamMessages.js';
+import { type AlarmWatch, forgetAlarms, newAlarmWatch, watchEvent, watchState } from './alarms.js';
 import { LapStore, MARK, type Mark } from './laps.js';
 import { Profile } from './profile.js';
 import { type Stop, stopIdle } from './stop.js';
@@ -26,6 +27,7 @@ export interface Live {
   lastEvent: number;
   /** Events that were never sent to this page. */
   unseen: number;
+  readonly alarms: AlarmWatch;
   stop: Stop;
   /** The answer to the last thing asked. */
   notice:
@@ -48,6 +50,7 @@ export function emptyLive(): Live {
     events: [],
     lastEvent: 0,
     unseen: 0,
+    alarms: newAlarmWatch(),
     stop: stopIdle,
     notice: undefined,
   };
@@ -90,6 +93,7 @@ function takeState(live: Live, state: Snapshot, nowMs: number): void {
   if (state.boardUs !== live.state?.boardUs) live.movedAtMs = nowMs;
   live.state = state;
   live.trace.add(state.boardUs, state.speedCmPerS);
+  watchState(live.alarms, state);
   if (state.session !== 'running' || state.positionCm === null) return;
   live.laps.reach(state.lap);
   const lengthCm = live.setup?.beltLengthCm ?? 0;
@@ -109,6 +113,8 @@ function takeEvent(live: Live, numbered: NumberedEvent): void {
   live.lastEvent = number;
   if (event.kind === 'session began') forgetSession(live);
   if (event.kind === 'lap began') live.laps.reach(event.lap);
+  const water = event.kind === 'fired' && outputKind(live, event.output) === 'valve';
+  watchEvent(live.alarms, event, water);
   // A page that joined late learns the speeds of the laps before from the events' own stamps.
   const lengthCm = live.setup?.beltLengthCm ?? 0;
   if (lengthCm > 0 && event.positionCm !== null) {
@@ -154,5 +160,6 @@ export function outputKind(live: Live, name: string | null): string | undefined 
 function forgetSession(live: Live): void {
   live.laps.clear();
   live.profile.clear();
+  forgetAlarms(live.alarms);
   live.events.length = 0;
 }

@@ -13,4 +13,6 @@ export interface Actions {
   setTheme(theme: Theme): void;
   setKeys(on: boolean): void;
   dismissNotice(): void;
+  /** An alarm was seen. */
+  acknowledge(alarm: string): void;
 }

@@ -2,6 +2,7 @@ import type { Charts } from '../draw/charts.js';
 import { freshness } from '../model/freshness.js';
 import type { Live } from '../model/live.js';
 import type { Actions, Theme } from './actions.js';
+import { AlarmsPanel } from './alarmsPanel.js';
 import { Banners } from './banners.js';
 import { BeltPanel, SpeedPanel } from './beltPanel.js';
 import { EventsPanel } from './eventsPanel.js';
@@ -40,6 +41,7 @@ export function Page(props: PageProps) {
           <SpeedPanel charts={charts} />
         </div>
         <div class="side">
+          <AlarmsPanel live={live} actions={actions} />
           <SessionPanel live={live} actions={actions} />
           <SteerPanel live={live} actions={actions} />
           <div class={`shown ${stale}`}>

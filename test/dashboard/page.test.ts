@@ -84,7 +84,7 @@ describe('the page, in a real browser', () => {
     await page.getByText('Stopped: the loop confirmed').waitFor();
     expect(quiets()).toBeGreaterThan(0);
     await page.getByText('Outputs are idle').waitFor();
-    await page.getByText('Held: everything was stopped').first().waitFor();
+    await page.getByText('Held: everything was stopped', { exact: true }).first().waitFor();
 
     await page.getByRole('button', { name: 'Understood' }).click();
     const before = quiets();
@@ -143,7 +143,7 @@ describe('the page, in a real browser', () => {
     await page.keyboard.press('s');
     await until(() => loop.acts().some((act) => act.act === 'hold'));
     expect(loop.acts()).toEqual([{ act: 'hold', what: 'stimulus', on: true }]);
-    await page.getByText('Held: held by the operator').waitFor();
+    await page.getByText('Held: held by the operator', { exact: true }).waitFor();
     await page.keyboard.press('s');
     await page.waitForTimeout(600);
     expect(loop.acts()).toHaveLength(1);
