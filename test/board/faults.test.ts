@@ -249,6 +249,22 @@ test('whatever bits are flipped, no command is made up: a frame is whole or drop
   );
 });
 
+test('a frame written short is dropped, and the one after a new delimiter acts', () => {
+  const host = TestHost.connected();
+  const encoder = new FrameEncoder();
+  const whole = host.pulseMessage({ widthUs: 1000 });
+  const bytes = encoder.encode('pulse', host.pulseMessage({ widthUs: 2000 }), TAG).slice();
+  // Short by at least one byte of the frame itself; what lacks the delimiter alone is whole.
+  for (let length = 1; length < bytes.length - 1; length++) {
+    host.board.receiveBytes(bytes.subarray(0, length));
+    host.board.receiveBytes(Uint8Array.of(0));
+  }
+  host.board.receiveBytes(encoder.encode('pulse', whole, TAG));
+  host.live(5000);
+  expect(host.pulses()).toEqual([[0, 1000]]);
+  expect(host.told(whole.id)).toEqual(['fired', 'done']);
+});
+
 test('an identify with any protocol but ours changes nothing', () => {
   fc.assert(
     fc.property(

@@ -54,6 +54,16 @@ describe('a silent host', () => {
     expect(host.faultNames()).toEqual(['watchdogSlots']);
   });
 
+  test('loses its slots again when it falls silent again', () => {
+    const host = TestHost.connected();
+    host.silent(200_000);
+    host.beat();
+    const id = host.arm({ count: 10 });
+    host.silent(150_000);
+    expect(host.told(id)).toEqual(['disarmed silence']);
+    expect(host.faultNames()).toEqual(['watchdogSlots', 'watchdogSlots']);
+  });
+
   test('loses pulses that were still waiting', () => {
     const host = TestHost.connected();
     const id = host.pulse({
