@@ -181,11 +181,13 @@ export class Firings {
   /** The board's word on an id. */
   outcome(m: Outcome): void {
     const atUs = this.#context.tracker.outcome(m);
-    if (m.repeated !== 0 && this.#keptToCome > 0) this.#keptToCome--;
     const live = this.#ledger.find(m.id);
     if (live !== undefined) this.#known(live, m, atUs);
     else this.#stray(m, atUs);
-    if (m.repeated !== 0 && this.#keptToCome === 0) this.#nothingMoreKept();
+    // Outcomes repeated later than after a handshake answer a question of ours.
+    if (m.repeated === 0 || this.#keptToCome === 0) return;
+    this.#keptToCome--;
+    if (this.#keptToCome === 0) this.#nothingMoreKept();
   }
 
   linkUp(identity: Identity, sameBoot: boolean, overNetwork: boolean): void {
@@ -332,7 +334,7 @@ export class Firings {
     const before = guard.waterGivenNl;
     guard.settle(live.id, 'done', m.onUs, atUs);
     const volumeNl = guard.waterGivenNl - before;
-    this.#close(live);
+    this.#close(live, true);
     this.#context.tell({
       kind: 'pulse done',
       rule: this.#context.ruleName(live.firing.request.rule),
@@ -349,7 +351,7 @@ export class Firings {
   #unfired(live: LiveId, m: Outcome): void {
     const { guard, outputs } = this.#context;
     guard.release(live.id);
-    this.#close(live);
+    this.#close(live, false);
     const { request, armed } = live.firing;
     const why = `${nameOf(OUTCOME, m.kind)}: ${nameOf(REASON, m.reason)}`;
     const wentBy = m.kind === OUTCOME.expired || m.kind === OUTCOME.passed;
@@ -368,7 +370,7 @@ export class Firings {
   #uncertain(live: LiveId, reason: string): void {
     const { guard, instant } = this.#context;
     guard.settle(live.id, 'uncertain', 0, instant.nowUs);
-    this.#close(live);
+    this.#close(live, true);
     const { request } = live.firing;
     this.#context.tell({
       kind: 'uncertain',
@@ -392,18 +394,21 @@ export class Firings {
     for (const live of [...this.#ledger.all()]) {
       if (live.risen) continue;
       this.#context.guard.release(live.id);
-      this.#close(live);
+      this.#close(live, false);
       this.#context.outputIdle(live.order.output);
       this.#settleIfOver(live.firing, 'not fired');
     }
   }
 
-  /** An id that this session does not know: sent and not recorded by a loop that was killed. */
+  /**
+   * On-time under an id that stands for nothing here: sent and not recorded by a loop that was
+   * killed, or given back too soon. It was driven, so it is charged.
+   */
   #stray(m: Outcome, atUs: number): void {
     const { guard, outputs } = this.#context;
     const output = outputs[m.output];
-    if (m.kind !== OUTCOME.done || output === undefined || this.#ledger.isClosed(m.id)) return;
-    this.#ledger.markClosed(m.id);
+    if (m.kind !== OUTCOME.done || output === undefined || this.#ledger.isCharged(m.id)) return;
+    this.#ledger.closed(m.id, true);
     const before = guard.waterGivenNl;
     guard.charge(m.output, m.onUs, atUs);
     const volumeNl = guard.waterGivenNl - before;
@@ -414,13 +419,13 @@ export class Firings {
       output: output.name,
       onUs: m.onUs,
       volumeNl,
-      reason: 'sent before the loop was restarted',
+      reason: 'nothing here was waiting for it',
     });
   }
 
-  #close(live: LiveId): void {
+  #close(live: LiveId, charged: boolean): void {
     this.#armory.release(live);
-    this.#ledger.close(live);
+    this.#ledger.close(live, charged);
   }
 
   #settleIfOver(firing: LiveFiring, how: Settlement): void {

@@ -37,8 +37,11 @@ const CLOSED_KEPT = 512;
  */
 export class Ledger {
   readonly #live = new Map<number, LiveId>();
-  /** Ids that have ended lately, since the board tells its outcomes again at each handshake. */
-  readonly #closed = new Set<number>();
+  /**
+   * Ids that have ended lately and whether they stay charged, since the board tells its outcomes
+   * again at each handshake.
+   */
+  readonly #closed = new Map<number, boolean>();
   #nextId = 1;
 
   get size(): number {
@@ -63,24 +66,24 @@ export class Ledger {
     return this.#live.get(id);
   }
 
-  /** The id has ended. */
-  close(live: LiveId): void {
+  /** The id has ended: charged to the limits, or given back. */
+  close(live: LiveId, charged: boolean): void {
     this.#live.delete(live.id);
-    this.markClosed(live.id);
+    this.closed(live.id, charged);
     const { ids } = live.firing;
     ids.splice(ids.indexOf(live), 1);
   }
 
-  /** The id has ended, and is charged or given back already. */
-  isClosed(id: number): boolean {
-    return this.#closed.has(id);
+  /** The id has ended and is charged already. */
+  isCharged(id: number): boolean {
+    return this.#closed.get(id) === true;
   }
 
-  markClosed(id: number): void {
-    this.#closed.add(id);
+  closed(id: number, charged: boolean): void {
+    this.#closed.set(id, charged);
     if (this.#closed.size <= CLOSED_KEPT) return;
-    // A set keeps the order of insertion, so its first is its oldest.
-    for (const oldest of this.#closed) {
+    // A map keeps the order of insertion, so its first is its oldest.
+    for (const oldest of this.#closed.keys()) {
       this.#closed.delete(oldest);
       break;
     }
