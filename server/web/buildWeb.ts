@@ -10,10 +10,12 @@ import fastifyStatic from '@fastify/static';
 import Fastify, { type FastifyInstance, type FastifyRequest, LogController } from 'fastify';
 import { LapwingError } from '../errors/codes.js';
 import { type Beginning, LocalClient, quietOnce } from '../loop/localClient.js';
+import { packageVersion } from '../packageRoot.js';
 import type { OperatorAct } from '../session/inputs.js';
 import { checkAct } from './acts.js';
 import { checkSender, RateLimit, SECURITY_HEADERS } from './gates.js';
 import { Mirror } from './mirror.js';
+import { openapi } from './openapi.js';
 import { PROBLEM_TYPE, problem, problemFrom, sendProblem } from './problems.js';
 import { bodies } from './schemas.js';
 import { STREAM_LIMITS, Stream, type StreamLimits } from './stream.js';
@@ -67,7 +69,7 @@ export function buildWeb(options: WebOptions): FastifyInstance {
     stopEverything,
     app.log,
     { ...STREAM_LIMITS, ...options.limits },
-    options.version ?? '',
+    options.version ?? packageVersion,
   );
   const allowedHosts = new Set((options.allowedHosts ?? []).map((host) => host.toLowerCase()));
   const perS = options.requestsPerS ?? 40;
@@ -153,6 +155,8 @@ export function buildWeb(options: WebOptions): FastifyInstance {
     uptimeS: Math.floor(process.uptime()),
     memoryMb: Math.round(process.memoryUsage.rss() / 1e6),
   }));
+  const description = openapi(options.version ?? packageVersion);
+  app.get('/api/openapi.json', async () => description);
   app.get('/api/setup', async () => mirror.setup ?? raise(loop));
   app.get('/api/state', async () => mirror.state ?? raise(loop));
 

@@ -1,0 +1,92 @@
+/** The HTTP interface in OpenAPI 3.1, served at `/api/openapi.json`; made of the same schemas that check. */
+import { ERRORS } from '../errors/codes.js';
+import { bodies } from './schemas.js';
+
+const json = (schema: unknown) => ({ 'application/json': { schema } });
+const ref = (name: string) => ({ $ref: `#/components/schemas/${name}` });
+
+const problems = {
+  description: 'Problem details (RFC 9457), with a stable `code` and a `remedy`.',
+  content: { 'application/problem+json': { schema: ref('Problem') } },
+};
+const done = { description: 'The loop did it.', content: json(ref('Done')) };
+
+function asks(summary: string, body: string) {
+  return {
+    post: {
+      summary,
+      requestBody: { required: true, content: json(ref(body)) },
+      responses: { '200': done, default: problems },
+    },
+  };
+}
+
+function shows(summary: string, schema: unknown) {
+  return {
+    get: {
+      summary,
+      responses: {
+        '200': { description: 'As it is now.', content: json(schema) },
+        default: problems,
+      },
+    },
+  };
+}
+
+/** The description, with the program's version. */
+export function openapi(version: string): Record<string, unknown> {
+  return {
+    openapi: '3.1.0',
+    info: {
+      title: 'Lapwing',
+      version,
+      description:
+        'Watch and steer the session of one rig. Bound to this machine; there is no sign-in. ' +
+        'Requests that change something are JSON, and from a browser only of the same origin. ' +
+        'The live stream is a websocket at /api/stream (server/web/HTTP.md).',
+    },
+    paths: {
+      '/api/state': shows('The newest state of belt, session, link and record.', ref('Object')),
+      '/api/setup': shows('Rig, rules files, and what the running session offers.', ref('Object')),
+      '/api/session': asks('Begin a session.', 'Begin'),
+      '/api/acts': asks("An operator's act: an ordered, recorded input of the session.", 'Act'),
+      '/api/end': asks('End the session and its record.', 'End'),
+      '/api/quiet': asks('Stop everything: all outputs idle, stimuli and water held.', 'Quiet'),
+      '/api/openapi.json': shows('This description.', ref('Object')),
+      '/healthz': shows('Whether this process lives and has the loop.', ref('Object')),
+    },
+    components: {
+      schemas: {
+        Begin: bodies.begin,
+        Act: bodies.act,
+        End: bodies.end,
+        Quiet: bodies.quiet,
+        Object: { type: 'object' },
+        Done: { type: 'object', required: ['done'], properties: { done: { const: true } } },
+        Problem: {
+          type: 'object',
+          required: ['type', 'title', 'status', 'detail', 'code', 'remedy'],
+          properties: {
+            type: { type: 'string', format: 'uri' },
+            title: { type: 'string' },
+            status: { type: 'integer' },
+            detail: { type: 'string' },
+            code: {
+              type: 'string',
+              description: 'One of the codes in server/errors/ERRORS.md.',
+              examples: [ERRORS.loopAway.code, ERRORS.webBodyInvalid.code],
+            },
+            remedy: { type: 'string' },
+            errors: {
+              type: 'array',
+              items: {
+                type: 'object',
+                properties: { pointer: { type: 'string' }, message: { type: 'string' } },
+              },
+            },
+          },
+        },
+      },
+    },
+  };
+}
