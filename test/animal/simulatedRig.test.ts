@@ -121,6 +121,13 @@ describe('the simulated belt', () => {
     });
   });
 
+  test('leaves no bounce behind of a mark that it missed', () => {
+    const belt = { ...NO_SLIP, markMissChance: 1, markBounces: 2 };
+    const { rig, heard } = rigWith({ startCm: 100, belt });
+    drive(rig, [{ cmPerS: 100, ms: 20_000 }]);
+    expect(seamEdges(heard)).toEqual([]);
+  });
+
   test('bounces at the mark when told to, and comes to rest at the right level', () => {
     const { rig, heard } = rigWith({ startCm: 170, belt: { ...NO_SLIP, markBounces: 3 } });
     drive(rig, [{ cmPerS: 20, ms: 2000 }]);
