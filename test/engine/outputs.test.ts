@@ -180,10 +180,10 @@ rules:
     const stage = new Stage(ARMED);
     stage.slots = true;
     stage.to(1, 10).lick().to(1, 59);
-    const [[rule, request]] = [...stage.armed] as [[number, { serial: number }]];
+    const [[rule, request] = [-1, undefined]] = stage.armed;
     stage.armed.clear();
     stage.to(1, 60).to(1, 62, 20);
-    stage.engine.settle(rule, request.serial, 'not fired', stage.instant);
+    stage.engine.settle(rule, request!.serial, 'not fired', stage.instant);
     expect(stage.firings('light')).toEqual([]);
     expect(stage.of('missed').length).toBe(1);
   });
@@ -192,9 +192,9 @@ rules:
     const stage = new Stage(ARMED);
     stage.slots = true;
     stage.to(1, 10).lick().to(1, 59.9);
-    const [[rule, request]] = [...stage.armed] as [[number, { serial: number }]];
+    const [[rule, request] = [-1, undefined]] = stage.armed;
     stage.armed.clear();
-    stage.engine.settle(rule, request.serial, 'fired', stage.instant);
+    stage.engine.settle(rule, request!.serial, 'fired', stage.instant);
     stage.to(1, 70);
     expect(stage.engine.view().rules[0]!.firings).toBe(1);
     expect(stage.requests).toEqual([]);

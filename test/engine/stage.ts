@@ -233,12 +233,20 @@ export class Stage implements Actuator, Journal {
   }
 
   input(index: number, high: boolean): this {
+    this.inputAtNextFrame(index, high);
+    this.frame(0);
+    return this;
+  }
+
+  lickAtNextFrame(): void {
+    this.lickNext = true;
+  }
+
+  inputAtNextFrame(index: number, high: boolean): void {
     const bit = 1 << index;
     if (high) this.rose |= bit;
     else this.fell |= bit;
     this.levels = high ? this.levels | bit : this.levels & ~bit;
-    this.frame(0);
-    return this;
   }
 
   press(button: string): this {
@@ -261,6 +269,10 @@ export class Stage implements Actuator, Journal {
       (d) => (d.what === 'fired' || d.what === 'sham') && (name === undefined || d.name === name),
     );
   }
+  /** The unrolled place of a deed, to within the lap that was being run, counts. */
+  travelAt(deed: Deed): number {
+    return deed.lap * LAP + (Number.isNaN(deed.cm) ? 0 : deed.cm * COUNTS_PER_CM);
+  }
   /** Laps on which a rule fired. */
   laps(name: string): number[] {
     return this.firings(name).map((d) => d.lap);
@@ -282,7 +294,7 @@ export class Stage implements Actuator, Journal {
     const rest = value === undefined ? {} : { value };
     this.deeds.push({ what, name, ms: this.ms, lap, cm, ...rest });
   }
-  private rule(index: number): string {
+  rule(index: number): string {
     return this.file.rules[index]!.name.name;
   }
 

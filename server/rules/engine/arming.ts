@@ -10,7 +10,11 @@ import { TRUE } from './truth.js';
 const HORIZON_CM = 30;
 const HORIZON_S = 1.5;
 /** After a slot was not to be had. */
-const RETRY_US = 5_000;
+const RETRY_US = 10_000;
+
+function byTarget(a: RuleState, b: RuleState): number {
+  return a.targetTravel - b.targetTravel;
+}
 
 /**
  * Rules that the board may start by itself: armed while their place lies ahead on this lap, going
@@ -18,9 +22,8 @@ const RETRY_US = 5_000;
  * not fired here; the board's word counts.
  */
 export class ArmingPass {
+  /** Nearest target first. */
   private readonly rules: RuleState[];
-  private nearest = Number.POSITIVE_INFINITY;
-  private anyWanted = false;
 
   constructor(
     private readonly run: Run,
@@ -35,24 +38,24 @@ export class ArmingPass {
     const { run } = this;
     const { s } = run;
     if (!s.placed) {
-      if (this.anyWanted) this.disarmAll();
+      if (run.targetsChanged) this.disarmAll();
+      run.targetsChanged = false;
       return;
     }
-    if (run.targetsChanged) this.findNearest();
     const speed = s.instant.speedCmPerS;
     const horizonCm = Math.max(speed * HORIZON_S, HORIZON_CM);
     const furthest = s.travel + horizonCm * s.countsPerCm;
-    if (this.nearest > furthest && !this.anyWanted) return;
-    this.anyWanted = false;
-    for (let n = 0; n < this.rules.length; n++) this.look(this.rules[n]!, furthest);
-  }
-
-  private findNearest(): void {
-    this.run.targetsChanged = false;
-    this.nearest = Number.POSITIVE_INFINITY;
-    for (const r of this.rules) {
-      const target = this.target(r);
-      if (target < this.nearest) this.nearest = target;
+    if (run.targetsChanged) {
+      run.targetsChanged = false;
+      for (const r of this.rules) r.targetTravel = this.target(r);
+      this.rules.sort(byTarget);
+      for (const r of this.rules) this.look(r, furthest);
+      return;
+    }
+    for (let n = 0; n < this.rules.length; n++) {
+      const r = this.rules[n]!;
+      if (!(r.targetTravel <= furthest)) break;
+      this.look(r, furthest);
     }
   }
 
@@ -60,14 +63,15 @@ export class ArmingPass {
     const { s } = this.run;
     const arming = r.spec.arming!;
     if (arming.kind === 'reaches') return s.points[arming.point]!.targetTravel;
-    return s.spans[arming.span]!.aheadTravel(arming.kind === 'enters');
+    const ahead = s.spans[arming.span]!.aheadTravel(arming.kind === 'enters');
+    return Number.isNaN(ahead) ? Number.POSITIVE_INFINITY : ahead;
   }
 
   private look(r: RuleState, furthest: number): void {
     const { run } = this;
     const { s } = run;
     const { spec } = r;
-    const target = this.target(r);
+    const target = r.targetTravel;
     // Not across the seam, where the mark may yet correct the position.
     const ahead =
       target > s.travel &&
@@ -88,7 +92,6 @@ export class ArmingPass {
       if (r.wantedSerial > 0) this.disarm(r);
       return;
     }
-    this.anyWanted = true;
     if (r.wantedSerial > 0 && r.wantedTravel === target && stillSo(s, spec, r.wantedOrders)) return;
     if (s.nowUs < r.retryUs) return;
     this.arm(r, target);

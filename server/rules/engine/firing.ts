@@ -177,7 +177,11 @@ export class Firing {
   chanceComesUp(r: RuleState): boolean {
     const { chance, name } = r.spec;
     if (chance === undefined) return true;
-    return uniform(this.run.s.seed, name, 'chance', r.chanceIndex, 0) < chance;
+    if (r.chanceKnown !== r.chanceIndex) {
+      r.chanceKnown = r.chanceIndex;
+      r.chanceUp = uniform(this.run.s.seed, name, 'chance', r.chanceIndex, 0) < chance;
+    }
+    return r.chanceUp;
   }
 
   windowUs(r: RuleState): number {

@@ -54,10 +54,15 @@ export class RuleState {
   lastUs = Number.NEGATIVE_INFINITY;
   lastLap = Number.NEGATIVE_INFINITY;
   chanceIndex = 0;
+  /** The chance at `chanceKnown`, kept since a rule that is armed asks it every frame. */
+  chanceKnown = -1;
+  chanceUp = false;
   readonly pending: PendingFiring[] = [];
 
   /** Arming: the slot now wanted, and every slot not yet accounted for. */
   wantedSerial = 0;
+  /** Where its place lies ahead, as last looked up. */
+  targetTravel = Number.POSITIVE_INFINITY;
   wantedTravel = Number.NaN;
   wantedOrders: readonly OutputOrder[] = [];
   retryUs = Number.NEGATIVE_INFINITY;
