@@ -68,7 +68,8 @@ export class OutputLine {
     this.#allowanceUs = message.allowanceUs;
     this.#allowanceRises = message.allowanceRises;
     this.#takenUs = 0;
-    if (this.on) this.#cutAtUs = this.#riseUs + this.longestOnUs;
+    // Only ever sooner: what a pulse was allowed when it rose is the most that it gets.
+    if (this.on) this.#cutAtUs = Math.min(this.#cutAtUs, this.#riseUs + this.longestOnUs);
   }
 
   /** Back to "never", but for the idle level; a pulse on its way keeps its own cut-off. */

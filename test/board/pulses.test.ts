@@ -194,6 +194,16 @@ describe('an output', () => {
     expect(host.told(id)).toEqual(['fired', 'done longestOn']);
   });
 
+  test('is not left on for longer because its longest time on was raised again', () => {
+    const host = TestHost.connected();
+    host.pulse({ widthUs: 500_000 });
+    host.live(30_000);
+    host.configure({ longestOnUs: 60_000 });
+    host.configure({ longestOnUs: 900_000 });
+    host.live(600_000);
+    expect(host.pulses()).toEqual([[0, 60_000]]);
+  });
+
   test('falls at once when its longest time on becomes shorter than it has been on', () => {
     const host = TestHost.connected();
     const id = host.pulse({ widthUs: 500_000 });
