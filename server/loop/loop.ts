@@ -32,6 +32,8 @@ import { type RunningSession, setupOf, snapshotOf } from './view.js';
 
 const EVENTS_KEPT = 20_000;
 const TICK_MS = 20;
+/** Ids of a loop that was killed, which the board may know and has not told. */
+const ID_MARGIN = 1_000;
 /** What was cut short at the end is reported within a few frames. */
 const LAST_WORDS_MS = 600;
 
@@ -71,6 +73,8 @@ export class Loop implements LinkHandler, LoopService {
   #lastUp: LinkUp | undefined;
   #toBegin: BeginOptions | undefined;
   #beginning = false;
+  /** The highest id that the board has been seen to know, over all sessions. */
+  #highestId = 0;
   #tick: NodeJS.Timeout | undefined;
   #framesBefore = 0;
   #framesAtMs = performance.now();
@@ -139,6 +143,7 @@ export class Loop implements LinkHandler, LoopService {
     this.#take({ kind: 'edge', message });
   }
   outcome(message: Extract<RareInput, { kind: 'outcome' }>['message']): void {
+    this.#highestId = Math.max(this.#highestId, message.id);
     this.#take({ kind: 'outcome', message });
   }
   fault(message: Extract<RareInput, { kind: 'fault' }>['message']): void {
@@ -277,7 +282,7 @@ export class Loop implements LinkHandler, LoopService {
       this.#onDecision,
     );
     this.#take(linkUpInput({ ...up, sameBoot: false }));
-    this.#take({ kind: 'begin' });
+    this.#take({ kind: 'begin', firstId: this.#highestId + ID_MARGIN });
     this.batchEnd();
     this.#log.info({ folder }, 'session begun');
     this.#report({ report: 'session began', folder });
@@ -370,6 +375,7 @@ export class Loop implements LinkHandler, LoopService {
 
   readonly #send: ConstructorParameters<typeof SessionRunner>[1] = (name, message) => {
     this.#link.send(name, message);
+    if ('id' in message) this.#highestId = Math.max(this.#highestId, message.id);
   };
 
   readonly #onDecision = (decision: StampedDecision): void => this.events.push(decision);

@@ -26,7 +26,8 @@ export type EngineInput =
   | { readonly kind: 'operator'; readonly act: OperatorAct; readonly by: Actor }
   /** The loop came back: what was recorded has been replayed, and this follows it. */
   | { readonly kind: 'resume'; readonly note: string }
-  | { readonly kind: 'begin' };
+  /** The session begins; its ids go on from those that the board knows already. */
+  | { readonly kind: 'begin'; readonly firstId: number };
 
 /** Inputs that come a few times a second at most: all but the sample. */
 export type RareInput = Exclude<EngineInput, { kind: 'sample' }>;

@@ -85,7 +85,7 @@ function shakeHands(rig: VirtualRig, runner: SessionRunner): void {
   if (answered === undefined) throw new Error('the simulated board did not answer');
   const identity = answered;
   runner.take({ kind: 'link up', identity, tag: TAG, sameBoot: false, overNetwork: false });
-  runner.take({ kind: 'begin' });
+  runner.take({ kind: 'begin', firstId: 1 });
 }
 
 function endIt(runner: SessionRunner, over: boolean, mostUs: number): void {

@@ -11,7 +11,7 @@ function linkUp(bootId: number, wraps: number, boardUs: number): RareInput {
 describe("the record's clock", () => {
   it('counts from the first stamp, whatever that is', () => {
     const clock = new RecordClock(undefined);
-    clock.input({ kind: 'begin' });
+    clock.input({ kind: 'begin', firstId: 1 });
     expect(clock.sessionUs).toBe(0);
     clock.raw(4_000_000_000);
     clock.raw(4_000_000_500);

@@ -2,6 +2,8 @@ import path from 'node:path';
 import fc from 'fast-check';
 import { describe, expect, it } from 'vitest';
 import { CHANNELS } from '../../server/session/record/channels.js';
+import { Recorder } from '../../server/session/record/recorder.js';
+import { blank } from '../../server/wire/codec.js';
 import { publicRead } from './publicRead.js';
 import { asStored, HEADER, readBack, record, session, temporaryFolder } from './sessions.js';
 
@@ -40,6 +42,24 @@ describe('a record read back', () => {
     const folder = temporaryFolder();
     record(folder, events, { mode: 'bulk' });
     expect((await readBack(folder)).events).toEqual(events);
+  });
+});
+
+describe('a command', () => {
+  it('is recorded as the wire carries it, though the host reckons in extended time', async () => {
+    const folder = temporaryFolder();
+    const recorder = Recorder.create(folder, HEADER);
+    const late = 3 * 2 ** 32 + 77;
+    recorder.input(0, { kind: 'begin', firstId: 1 });
+    recorder.command(0, 'pulse', { ...blank('pulse'), expiryUs: late, countFrom: -3 });
+    recorder.command(0, 'beat', { finishedUs: late, wanted: 1 });
+    recorder.sample(1, { ...blank('sample'), boardUs: 100 });
+    recorder.command(1, 'beat', { finishedUs: late, wanted: 1 });
+    recorder.close('done');
+    const { events } = await readBack(folder);
+    const sent = events.flatMap((event) => (event.type === 'command' ? [event.message] : []));
+    const beat = { finishedUs: 77, wanted: 1 };
+    expect(sent).toEqual([{ ...blank('pulse'), expiryUs: 77, countFrom: -3 }, beat, beat]);
   });
 });
 

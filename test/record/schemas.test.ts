@@ -65,7 +65,7 @@ const DECISIONS: { readonly [K in Decision['kind']]: Extract<Decision, { kind: K
 };
 
 const INPUTS: readonly RareInput[] = [
-  { kind: 'begin' },
+  { kind: 'begin', firstId: 1 },
   { kind: 'link up', identity, tag: 99, sameBoot: false, overNetwork: false },
   { kind: 'edge', message: { boardUs: 1, count: -2, input: 3, level: 1 } },
   { kind: 'outcome', message: blank('outcome') },

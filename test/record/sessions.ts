@@ -107,7 +107,7 @@ export const rareInput: fc.Arbitrary<RareInput> = fc.oneof(
   fc.nat(300).map((frames): RareInput => ({ kind: 'gap', frames })),
   fc.constant<RareInput>({ kind: 'bad frame', why: 'crc' }),
   fc.string().map((note): RareInput => ({ kind: 'resume', note })),
-  fc.constant<RareInput>({ kind: 'begin' }),
+  fc.constant<RareInput>({ kind: 'begin', firstId: 1 }),
   fc.record({ text: fc.string({ unit: 'binary' }), who: fc.string() }).map(
     ({ text, who }): RareInput => ({
       kind: 'operator',
@@ -156,7 +156,7 @@ export function session(most: number): fc.Arbitrary<Event[]> {
   return fc
     .record({ start: u32, count: i32, steps: fc.array(one, { maxLength: most, size: 'max' }) })
     .map(({ start, count, steps }) => {
-      const events: Event[] = [{ type: 'input', input: 0, what: { kind: 'begin' } }];
+      const events: Event[] = [{ type: 'input', input: 0, what: { kind: 'begin', firstId: 1 } }];
       let input = 0;
       let sample: Sample = {
         boardUs: start,

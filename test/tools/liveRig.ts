@@ -137,6 +137,19 @@ ${more}`;
     this.status = await left;
   }
 
+  /** Takes a command that was started otherwise for the one that runs this rig. */
+  adopt(child: ChildProcess): void {
+    this.#run = child;
+  }
+
+  /** Kills the launcher and the loop, as a machine that dies would. */
+  async killAll(): Promise<void> {
+    // Stopped first: it must not start the loop again, nor the loop end its session in order.
+    this.#run!.kill('SIGSTOP');
+    this.signalLoop('SIGKILL');
+    await this.end('SIGKILL');
+  }
+
   /** Sends this rig's loop process a signal. */
   signalLoop(signal: NodeJS.Signals): void {
     process.kill(processOf('loopProcess.js', this.rigPath), signal);

@@ -30,6 +30,8 @@ export interface FiringContext {
   settle(rule: number, serial: number, how: Settlement): void;
   drop(volumeNl: number): void;
   outputIdle(output: number): void;
+  /** Every id of the last connection is accounted for: the board's allowances can be told. */
+  accounted(): void;
 }
 
 /** An unanswered id is asked about again this long after its answer was due, and so many times. */
@@ -195,8 +197,12 @@ export class Firings {
     this.#overNetwork = overNetwork;
     this.#armory.reset(identity.slots);
     this.#keptToCome = identity.outcomesKept;
-    if (!sameBoot) this.#allUncertain('the board restarted before it said what became of it');
-    else if (this.#keptToCome === 0) this.#nothingMoreKept();
+    if (!sameBoot) {
+      // Outcomes that a board kept from before are of ids that this session never sent.
+      this.#keptToCome = 0;
+      this.#allUncertain('the board restarted before it said what became of it');
+    }
+    if (this.#keptToCome === 0) this.#nothingMoreKept();
   }
 
   linkDown(): void {
@@ -229,6 +235,12 @@ export class Firings {
     this.#allUncertain('the session ended before the board said what became of it');
   }
 
+  /** The first id to send; above every one that the board may remember. */
+  idsFrom(id: number): void {
+    this.#ledger.idsFrom(id);
+  }
+
+  /** Leaves room for ids that a loop sent and could not record before it was killed. */
   skipIds(count: number): void {
     this.#ledger.skipIds(count);
   }
@@ -398,6 +410,7 @@ export class Firings {
       this.#context.outputIdle(live.order.output);
       this.#settleIfOver(live.firing, 'not fired');
     }
+    this.#context.accounted();
   }
 
   /**

@@ -52,6 +52,10 @@ export class Ledger {
     return this.#nextId++;
   }
 
+  idsFrom(id: number): void {
+    this.#nextId = id;
+  }
+
   /** Leaves room for ids that a loop sent and could not record before it was killed. */
   skipIds(count: number): void {
     this.#nextId += count;

@@ -148,6 +148,7 @@ export class SessionCore {
         this.#tell({ kind: 'link', state: 'resumed', reason: input.note });
         break;
       case 'begin':
+        this.firings.idsFrom(input.firstId);
         this.#begin();
         break;
     }
@@ -202,7 +203,6 @@ export class SessionCore {
     }
     this.#tell({ kind: 'link', state: 'up', reason: sameBoot ? '' : 'the board restarted' });
     this.firings.linkUp(identity, sameBoot, overNetwork);
-    if (this.#state === 'running') this.#configure();
   }
 
   #linkDown(reason: string): void {
@@ -359,6 +359,9 @@ export class SessionCore {
       settle: (rule, serial, how) => this.engine.settle(rule, serial, how, this.instant),
       drop: (volumeNl) => this.engine.drop(volumeNl),
       outputIdle: (output) => this.engine.outputIdle(output),
+      accounted: () => {
+        if (this.#state === 'running') this.#configure();
+      },
     };
   }
 

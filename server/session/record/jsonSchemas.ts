@@ -197,6 +197,7 @@ export const INPUT_SCHEMAS = {
       frames: whole('Gap: how many frames the sequence numbers say were lost.'),
       why: text('Bad frame: what was wrong with it.'),
       note: text('Resume: what was known and what was not.'),
+      firstId: whole('Begin: the first id that this session sends to the board.'),
     },
     ['input', 'kind'],
   ),
