@@ -125,7 +125,7 @@ const actions: Actions = {
 
 const stream = `${location.protocol === 'https:' ? 'wss' : 'ws'}://${location.host}/api/stream`;
 const connection = new Connection(stream, {
-  after: () => live.lastEvent,
+  after: () => ({ number: live.lastEvent, life: live.life }),
   status: (status) => {
     live.stream = status;
     touch();

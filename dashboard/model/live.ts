@@ -12,6 +12,8 @@ export const EVENTS_KEPT = 200;
 export interface Live {
   stream: 'opening' | 'open' | 'lost';
   loop: { state: 'up' | 'away'; reason: string; remedy: string } | undefined;
+  /** Which life of the loop the events shown are of; empty before any. */
+  life: string;
   setup: Setup | undefined;
   state: Snapshot | undefined;
   /** Page time at which board time was last seen to move; NaN before any state. */
@@ -39,6 +41,7 @@ export function emptyLive(): Live {
   return {
     stream: 'opening',
     loop: undefined,
+    life: '',
     setup: undefined,
     state: undefined,
     movedAtMs: Number.NaN,
@@ -61,6 +64,8 @@ export function take(live: Live, message: StreamMessage, nowMs: number): void {
   switch (message.tell) {
     case 'loop':
       live.loop = { state: message.state, reason: message.reason, remedy: message.remedy };
+      // Empty: a web process that has not met the loop yet; what is shown stays, as stale.
+      if (message.life !== '' && message.life !== live.life) forgetLife(live, message.life);
       return;
     case 'setup':
       takeSetup(live, message.setup);
@@ -103,11 +108,9 @@ function takeState(live: Live, state: Snapshot, nowMs: number): void {
 
 function takeEvent(live: Live, numbered: NumberedEvent): void {
   const { number, event } = numbered;
-  if (number <= live.lastEvent) {
-    // Numbers that go back are another life of the loop, told from its beginning.
-    forgetSession(live);
-    live.unseen = 0;
-  } else if (live.lastEvent > 0 && number > live.lastEvent + 1) {
+  // Told already: each is counted once.
+  if (number <= live.lastEvent) return;
+  if (live.lastEvent > 0 && number > live.lastEvent + 1) {
     live.unseen += number - live.lastEvent - 1;
   }
   live.lastEvent = number;
@@ -155,6 +158,14 @@ function markOf(live: Live, event: NumberedEvent['event']): Mark | undefined {
 /** What an output is for; undefined when it is not known. */
 export function outputKind(live: Live, name: string | null): string | undefined {
   return live.setup?.outputs.find((output) => output.name === name)?.kind;
+}
+
+/** The loop's events are told anew from the oldest kept. */
+function forgetLife(live: Live, life: string): void {
+  live.life = life;
+  live.lastEvent = 0;
+  live.unseen = 0;
+  forgetSession(live);
 }
 
 function forgetSession(live: Live): void {

@@ -8,8 +8,8 @@ const OPEN_TIMEOUT_MS = 5000;
 export interface ConnectionHandlers {
   message(message: StreamMessage): void;
   status(status: 'opening' | 'open' | 'lost'): void;
-  /** The newest event number that the page has. */
-  after(): number;
+  /** The newest event number that the page has, and of which life of the loop. */
+  after(): { number: number; life: string };
 }
 
 /** Keeps one stream open for the page's whole life; after a loss it asks only for what is missing. */
@@ -24,7 +24,8 @@ export class Connection {
 
   open(): void {
     const after = this.handlers.after();
-    const socket = new WebSocket(after > 0 ? `${this.url}?after=${after}` : this.url);
+    const query = `?after=${after.number}&life=${encodeURIComponent(after.life)}`;
+    const socket = new WebSocket(after.number > 0 ? this.url + query : this.url);
     this.socket = socket;
     const patience = setTimeout(() => socket.close(), OPEN_TIMEOUT_MS);
     socket.onopen = () => {

@@ -20,6 +20,11 @@ export interface LocalClientOptions {
   readonly client: string;
   /** False: one attempt; the first failure or loss is final. */
   readonly reconnect?: boolean;
+  /**
+   * True: after a reconnection events are asked for from the oldest kept, since a loop that was
+   * restarted numbers them anew. Else only those after the last that was told.
+   */
+  readonly fromOldest?: boolean;
   readonly firstBackoffMs?: number;
   readonly mostBackoffMs?: number;
   readonly requestTimeoutMs?: number;
@@ -223,6 +228,7 @@ export class LocalClient {
     this.toldDown = false;
     this.backoffMs = this.options.firstBackoffMs ?? 100;
     this.options.callbacks?.up?.(hello);
+    if (this.watching && this.options.fromOldest) this.watching.after = 0;
     if (this.watching) this.send({ say: 'watch', ...this.watching });
     for (const waiter of this.waiting.splice(0)) waiter.resolve(hello);
   }

@@ -80,24 +80,23 @@ export function buildWeb(options: WebOptions): FastifyInstance {
     into: Mirror,
     announce: Stream['announce'],
   ): LocalClient {
-    const setLoop = (state: 'up' | 'away', reason: string, remedy: string) => {
-      into.loop = { tell: 'loop', state, reason, remedy };
-      announce(into.loop);
-    };
     return new LocalClient({
       socketPath,
       ...(token === undefined ? {} : { token }),
       ...(tokenFile === undefined ? {} : { tokenFile }),
       ...(loopTimeoutMs === undefined ? {} : { requestTimeoutMs: loopTimeoutMs }),
       client: 'web',
+      fromOldest: true,
       callbacks: {
         up: (hello) => {
           app.log.info({ rig: hello.rig }, 'connected to the loop');
-          setLoop('up', '', '');
+          into.beginLife();
+          stream.startOver();
         },
         down: (why) => {
           app.log.warn({ code: why.code }, `the loop is away: ${why.message}`);
-          setLoop('away', why.message, why.remedy);
+          into.loseLoop(why.message, why.remedy);
+          announce(into.loop);
         },
         setup: (setup) => {
           into.setup = setup;

@@ -1,3 +1,4 @@
+import { randomUUID } from 'node:crypto';
 import type { NumberedEvent, Setup, Snapshot } from '../loop/protocol.js';
 import type { StreamMessage } from './streamMessages.js';
 
@@ -12,6 +13,7 @@ export class Mirror {
   loop: Extract<StreamMessage, { tell: 'loop' }> = {
     tell: 'loop',
     state: 'away',
+    life: '',
     reason: 'Not connected yet.',
     remedy: '',
   };
@@ -41,8 +43,6 @@ export class Mirror {
 
   takeEvents(events: readonly NumberedEvent[]): void {
     for (const event of events) {
-      // Numbers that go back mean another life of the loop: its events replace the ones kept.
-      if (event.number <= this.lastNumber) this.forget();
       const slot = this.newest % this.keepEvents;
       this.texts[slot] = JSON.stringify(event);
       this.numbers[slot] = event.number;
@@ -51,8 +51,17 @@ export class Mirror {
     }
   }
 
-  forget(): void {
+  /**
+   * The loop is there (again): a restarted one numbers its events anew, so those kept are forgotten,
+   * and every client is told all over.
+   */
+  beginLife(): void {
     this.oldest = this.newest;
+    this.loop = { tell: 'loop', state: 'up', life: randomUUID(), reason: '', remedy: '' };
+  }
+
+  loseLoop(reason: string, remedy: string): void {
+    this.loop = { ...this.loop, state: 'away', reason, remedy };
   }
 
   /** The newest state as a message; made once, whoever asks. */
@@ -71,7 +80,7 @@ export class Mirror {
    * time, and where it then is. A gap comes first when what follows `after` is no longer kept.
    */
   eventsAfter(after: number, most: number): { messages: string[]; upTo: number } {
-    // A client ahead of us watched another life of the loop.
+    // A client ahead of us cannot be of this life of the loop.
     const from = after > this.lastNumber ? 0 : after;
     let index = this.oldest;
     let low = this.oldest;

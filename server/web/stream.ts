@@ -80,9 +80,12 @@ export class Stream {
 
   /** Takes over a checked upgrade request. */
   accept(request: IncomingMessage, socket: Duplex, head: Buffer): void {
-    const asked = Number(new URL(request.url ?? '/', 'http://any').searchParams.get('after'));
+    const query = new URL(request.url ?? '/', 'http://any').searchParams;
+    const asked = Number(query.get('after'));
+    const life = query.get('life') ?? this.mirror.loop.life;
     this.server.handleUpgrade(request, socket, head, (ws) => {
-      const after = Number.isSafeInteger(asked) && asked > 0 ? asked : 0;
+      const known = life === this.mirror.loop.life && Number.isSafeInteger(asked) && asked > 0;
+      const after = known ? asked : 0;
       this.add({
         socket: ws,
         after,
@@ -100,6 +103,12 @@ export class Stream {
     const waitMs = this.lastPumpMs + this.limits.stateMs - performance.now();
     if (waitMs <= 0) this.pump();
     else this.pumpTimer = setTimeout(() => this.pump(), waitMs);
+  }
+
+  /** The loop came (back): everybody is told its events from the oldest kept. */
+  startOver(): void {
+    this.announce(this.mirror.loop);
+    for (const viewer of this.viewers) viewer.after = 0;
   }
 
   /** A message for every client, outside the latest-only order: setup, loop up or away. */

@@ -2,7 +2,8 @@
  * What the web process says over `/api/stream`, one JSON object a websocket message. The page can
  * answer `{"ask":"quiet"}`, a second way to stop everything beside `POST /api/quiet`.
  *
- * `?after=N` in the address asks for events after number N; without it the newest that are kept.
+ * `?after=N&life=L` in the address asks for events after number N of that life of the loop; without it
+ * the newest that are kept.
  */
 import type { NumberedEvent, Setup, Snapshot } from '../loop/protocol.js';
 
@@ -14,6 +15,8 @@ export type StreamMessage =
   | {
       readonly tell: 'loop';
       readonly state: 'up' | 'away';
+      /** Changes when events are told anew from the oldest kept: forget the ones told before. */
+      readonly life: string;
       readonly reason: string;
       readonly remedy: string;
     }

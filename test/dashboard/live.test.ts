@@ -15,7 +15,7 @@ function watch(seconds: number): { live: Live; animal: ScriptedAnimal; nowMs: nu
   live.stream = 'open';
   animal.begin('induction.yaml', 'M12');
   let nowMs = 0;
-  take(live, { tell: 'loop', state: 'up', reason: '', remedy: '' }, nowMs);
+  take(live, { tell: 'loop', state: 'up', life: 'a', reason: '', remedy: '' }, nowMs);
   take(live, { tell: 'setup', setup: structuredClone(animal.setup) }, nowMs);
   for (let at = 0; at < seconds; at += 0.05) {
     animal.advance(0.05);
@@ -89,8 +89,19 @@ describe('what the page knows', () => {
     expect(bySetup.live.laps.newest).toBe(-1);
   });
 
-  test('a loop that begins anew replaces what was shown', () => {
+  test('a loop that begins anew replaces what was shown; one that was only away does not', () => {
     const { live } = watch(60);
+    const { newest } = live.laps;
+    const last = live.lastEvent;
+    const lost = { tell: 'loop', state: 'away', life: 'a', reason: '', remedy: '' } as const;
+    take(live, lost, 0);
+    take(live, { ...lost, state: 'up' }, 0);
+    take(live, { ...lost, life: '' }, 0);
+    expect(live.laps.newest).toBe(newest);
+    // Told twice, counted once.
+    take(live, { tell: 'events', events: [event(last, { kind: 'lick', artefact: false }, 90)] }, 0);
+    expect(live.laps.newest).toBe(newest);
+    take(live, { ...lost, state: 'up', life: 'b' }, 0);
     take(live, { tell: 'events', events: [event(1, { kind: 'lap began', lap: 1 })] }, 0);
     expect(live.laps.newest).toBe(1);
     expect(live.lastEvent).toBe(1);
@@ -138,7 +149,7 @@ describe('staleness', () => {
       remedy: 'Plug.',
       ageMs: 5000,
     });
-    take(live, { tell: 'loop', state: 'away', reason: 'x', remedy: 'y' }, nowMs + 6000);
+    take(live, { tell: 'loop', state: 'away', life: 'a', reason: 'x', remedy: 'y' }, nowMs + 6000);
     expect(freshness(live, nowMs + 6000).why).toBe('The loop is away');
     live.stream = 'lost';
     expect(freshness(live, nowMs + 6000).why).toBe('No connection to the service');
@@ -201,7 +212,7 @@ describe('health', () => {
     take(live, { tell: 'state', state: bad }, 0);
     expect(levels(live).slice(2)).toEqual(['Board warn', 'Position warn', 'Record bad']);
     expect(healthOf(live).at(-1)!.detail).toBe('disk full');
-    take(live, { tell: 'loop', state: 'away', reason: 'killed', remedy: 'wait' }, 0);
+    take(live, { tell: 'loop', state: 'away', life: 'a', reason: 'killed', remedy: 'wait' }, 0);
     expect(healthOf(live)[1]).toMatchObject({ level: 'bad', word: 'away', remedy: 'wait' });
     const low = { ...state.record, diskFreeGb: 2 };
     take(live, { tell: 'state', state: { ...state, record: low } }, 0);
