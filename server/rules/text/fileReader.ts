@@ -139,7 +139,7 @@ export class FileReader {
         },
       );
     }
-    return node.text;
+    return node.text.trim().replace(/\s+/g, ' ');
   }
 
   private belt(entry: Entry | undefined): Quantity {
