@@ -200,6 +200,16 @@ rules:
     expect(stage.requests).toEqual([]);
   });
 
+  test('what was armed at a higher speed is still disarmed when its condition ends', () => {
+    const stage = new Stage(ARMED.replace('licks this lap >= 1', 'speed >= 10 cm/s'));
+    stage.slots = true;
+    // At 40 cm/s the horizon is 60 cm; at rest only 30.
+    stage.to(1, 8, 40);
+    expect(stage.armed.size).toBe(1);
+    stage.wait(20);
+    expect(stage.armed.size).toBe(0);
+  });
+
   test('never across the seam, nor for a place behind', () => {
     const stage = new Stage(
       'rules:\n  light:\n    when: reaches 5 cm\n    do: pulse laser for 100 ms\n',

@@ -24,6 +24,8 @@ function byTarget(a: RuleState, b: RuleState): number {
 export class ArmingPass {
   /** Nearest target first. */
   private readonly rules: RuleState[];
+  /** The furthest target that is armed. */
+  private furthestWanted = Number.NEGATIVE_INFINITY;
 
   constructor(
     private readonly run: Run,
@@ -49,13 +51,18 @@ export class ArmingPass {
       run.targetsChanged = false;
       for (const r of this.rules) r.targetTravel = this.target(r);
       this.rules.sort(byTarget);
-      for (const r of this.rules) this.look(r, furthest);
-      return;
+      this.furthestWanted = Number.POSITIVE_INFINITY;
     }
+    // What was armed when the animal was faster is looked at further ahead than what was not.
+    const limit = Math.max(furthest, this.furthestWanted);
+    this.furthestWanted = Number.NEGATIVE_INFINITY;
     for (let n = 0; n < this.rules.length; n++) {
       const r = this.rules[n]!;
-      if (!(r.targetTravel <= furthest)) break;
+      if (r.targetTravel > limit) break;
       this.look(r, furthest);
+      if (r.wantedSerial > 0 && r.targetTravel > this.furthestWanted) {
+        this.furthestWanted = r.targetTravel;
+      }
     }
   }
 
@@ -75,7 +82,7 @@ export class ArmingPass {
     // Not across the seam, where the mark may yet correct the position.
     const ahead =
       target > s.travel &&
-      target <= furthest &&
+      (target <= furthest || r.wantedSerial > 0) &&
       Math.floor(target / s.lapCounts) === Math.floor(s.travel / s.lapCounts);
     if (ahead) {
       r.held = spec.if === undefined || spec.if(s) === TRUE;
@@ -92,9 +99,18 @@ export class ArmingPass {
       if (r.wantedSerial > 0) this.disarm(r);
       return;
     }
-    if (r.wantedSerial > 0 && r.wantedTravel === target && stillSo(s, spec, r.wantedOrders)) return;
+    if (r.wantedSerial > 0 && r.wantedTravel === target && this.shapeStands(r)) return;
     if (s.nowUs < r.retryUs) return;
     this.arm(r, target);
+  }
+
+  /** Whether what was armed is still what the rule would do. */
+  private shapeStands(r: RuleState): boolean {
+    const { version, s } = this.run;
+    if (r.wantedVersion === version && !r.spec.amountsVary) return true;
+    if (!stillSo(s, r.spec, r.wantedOrders)) return false;
+    r.wantedVersion = version;
+    return true;
   }
 
   private arm(r: RuleState, target: number): void {
@@ -116,6 +132,7 @@ export class ArmingPass {
     r.wantedSerial = serial;
     r.wantedTravel = target;
     r.wantedOrders = orders;
+    r.wantedVersion = run.version;
     const crossedUs = Number.NaN;
     r.slots.push({ serial, placeTravel: target, crossedUs, heldAtCrossing: false });
   }

@@ -8,7 +8,7 @@ import { compileCondition } from './compileCondition.js';
 import { compileChoice, compileDraw, namesOfPlaces, visit } from './compileDraw.js';
 import { compileSum, edgesOfName } from './compileSum.js';
 import { armingOf, compileWhen, type Waiters } from './compileWhen.js';
-import type { PhaseSpec, Program, RuleSpec, Test } from './program.js';
+import type { PhaseSpec, PlaceView, Program, RuleSpec, Test } from './program.js';
 import { TRUE, truth } from './truth.js';
 
 /**
@@ -34,10 +34,7 @@ export function compile(file: RulesFile, facts: RigFacts): Program {
   const rules = file.rules.map((decl, index) => compileRule(b, decl, index, waiters));
   const phases = file.phases.map((decl) => compilePhase(b, decl));
   const end = file.end ? compileCondition(b, file.end) : undefined;
-  const places = file.places.map((decl) => ({
-    name: decl.name.name,
-    ...edgesOfName(b, decl.name.name),
-  }));
+  const places = placesShown(b, placeNames);
   for (const waiter of waiters.licks) {
     if (waiter.nth?.stretch === 'visit') b.spans[waiter.span]!.tracked = true;
   }
@@ -87,6 +84,7 @@ function compileRule(b: Builder, decl: RuleDecl, index: number, waiters: Waiters
     chance: decl.chance?.value,
     sham: decl.sham ? compileCondition(b, decl.sham) : undefined,
     actions: decl.do.map((action) => compileAction(b, action)),
+    amountsVary: readsAnyMeasure(decl.do),
     caps,
     realTally: b.tally('real firings', index, { windowUs }),
     shamTally: b.tally('sham firings', index, { windowUs }),
@@ -100,6 +98,43 @@ function compileRule(b: Builder, decl: RuleDecl, index: number, waiters: Waiters
     ),
   };
 }
+
+/**
+ * What a dashboard draws on the belt: the file's places, draws and choices that are places, and,
+ * under the rule's name, places that a rule gives by their amount alone.
+ */
+function placesShown(b: Builder, placeNames: ReadonlySet<string>): PlaceView[] {
+  const named = [...b.file.places, ...b.file.draws, ...b.file.operator].flatMap(({ name }) => {
+    const meaning = b.names.need(name.name, 'place', 'draw', 'choice');
+    const isPlace =
+      meaning.kind === 'place' ||
+      (placeNames.has(name.name) && b.names.dimensionOfChoices(meaning.decl.choices) === 'length');
+    return isPlace ? [{ name: name.name, ...edgesOfName(b, name.name) }] : [];
+  });
+  const unnamed = b.file.rules.flatMap(({ name, when }) => {
+    const moment = when.kind === 'after' ? when.moment : when;
+    if (moment.kind === 'reaches' && moment.place.kind !== 'name') {
+      const at = compileSum(b, moment.place);
+      return [{ name: name.name, from: at, to: at }];
+    }
+    if ((moment.kind === 'enters' || moment.kind === 'leaves') && moment.span.kind === 'range') {
+      const { from, to } = moment.span;
+      return [{ name: name.name, from: compileSum(b, from), to: compileSum(b, to) }];
+    }
+    return [];
+  });
+  return [...named, ...unnamed];
+}
+
+function readsAnyMeasure(node: unknown): boolean {
+  let reads = false;
+  visit(node, (inner) => {
+    const { kind } = inner as { kind?: string };
+    if (kind !== undefined && MEASURES.has(kind)) reads = true;
+  });
+  return reads;
+}
+const MEASURES = new Set(['measure', 'scoped', 'firings', 'since']);
 
 /**
  * Whether a rule names or reads a place. Laps, speed and time alone do not tie it to one; `lap

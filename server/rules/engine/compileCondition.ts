@@ -1,6 +1,6 @@
 import type { Condition, Option, Sum } from '../ast.js';
 import type { Builder } from './builder.js';
-import { compileOption, compileSum, spanOf } from './compileSum.js';
+import { compileOption, compileSum, constantOf, spanOf } from './compileSum.js';
 import type { Amount, Test } from './program.js';
 import { FALSE, not, TRUE, type Truth, truth, UNKNOWN } from './truth.js';
 
@@ -103,6 +103,8 @@ function anyOf(terms: readonly Test[]): Test {
 }
 
 function compare(operator: '<' | '<=' | '>' | '>=', left: Amount, right: Amount): Test {
+  const bound = constantOf(right);
+  if (bound !== undefined) return compareConstant(operator, left, bound);
   switch (operator) {
     case '<':
       return (s) => below(left(s), right(s));
@@ -112,6 +114,20 @@ function compare(operator: '<' | '<=' | '>' | '>=', left: Amount, right: Amount)
       return (s) => below(right(s), left(s));
     case '>=':
       return (s) => notAbove(right(s), left(s));
+  }
+}
+
+/** Most comparisons are with a number from the file: one call less a frame. */
+function compareConstant(operator: '<' | '<=' | '>' | '>=', left: Amount, bound: number): Test {
+  switch (operator) {
+    case '<':
+      return (s) => below(left(s), bound);
+    case '<=':
+      return (s) => notAbove(left(s), bound);
+    case '>':
+      return (s) => below(bound, left(s));
+    case '>=':
+      return (s) => notAbove(bound, left(s));
   }
 }
 

@@ -134,6 +134,8 @@ export interface RuleSpec {
   readonly chance: number | undefined;
   readonly sham: Test | undefined;
   readonly actions: readonly ActionSpec[];
+  /** Some amount of its actions reads a measure, so that it may differ at any instant. */
+  readonly amountsVary: boolean;
   readonly caps: readonly CapSpec[];
   /** Tallies of its real and of its sham firings. */
   readonly realTally: number;

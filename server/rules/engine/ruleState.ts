@@ -65,6 +65,8 @@ export class RuleState {
   targetTravel = Number.POSITIVE_INFINITY;
   wantedTravel = Number.NaN;
   wantedOrders: readonly OutputOrder[] = [];
+  /** The version of phases, draws and choices under which those orders were last right. */
+  wantedVersion = -1;
   retryUs = Number.NEGATIVE_INFINITY;
   readonly slots: OutstandingSlot[] = [];
   /** What `if` was at the end of the last frame, and which frame that was. */

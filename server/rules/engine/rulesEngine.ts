@@ -138,6 +138,7 @@ class Parts {
     course.draw(lapBegan, first, this.movement.visitDraws);
     if (run.valuesChanged) {
       run.valuesChanged = false;
+      run.version++;
       this.movement.resolve();
       this.turns.resetTimers();
     }

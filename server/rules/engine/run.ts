@@ -15,6 +15,8 @@ export class Run {
   anyDue = false;
   /** A phase, a draw or a choice changed: places and intervals are to be reckoned again. */
   valuesChanged = true;
+  /** Grows whenever phases, draws or choices have changed. */
+  version = 0;
   /** Some place ahead changed: what to arm is to be looked at again. */
   targetsChanged = true;
   /** Some draw is to be renewed because of a firing. */

@@ -67,7 +67,6 @@ export function viewOf(program: Program, s: State | undefined): EngineView {
   };
 }
 
-/** The file's places where they are now, and draws and choices that are themselves places. */
 function placesOf(program: Program, s: State): EngineView['places'] {
   return program.places.flatMap(({ name, from, to }) => {
     const fromCm = from(s);
