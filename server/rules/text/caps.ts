@@ -18,6 +18,8 @@ export const WIDEST_INDENT = 200;
 export const LONGEST_NAME = 64;
 /** Declarations in all sections together. */
 export const MOST_NAMES = 1_000;
+/** Rules in one file: some checks look at every pair. */
+export const MOST_RULES = 256;
 /** Actions under one `do`. */
 export const MOST_ACTIONS = 16;
 /** Problems reported at once. */

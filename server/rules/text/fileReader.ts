@@ -13,7 +13,7 @@ import type {
   ValueDecl,
 } from '../ast.js';
 import type { ProblemList } from '../problems.js';
-import { LONGEST_TABLE } from './caps.js';
+import { LONGEST_TABLE, MOST_RULES } from './caps.js';
 import { condition } from './conditions.js';
 import { belt, draw, operator, phase, place, value } from './declarations.js';
 import { NameList } from './names.js';
@@ -87,6 +87,11 @@ export class FileReader {
       const read = this.phrase(entry.value, phase, 'a phase such as `for 20 laps`');
       return read && { name, ...read, at: spanOf(entry) };
     });
+    const written = keys.get('rules')?.value;
+    if (written?.kind === 'lines' && written.entries.length > MOST_RULES) {
+      const at = keys.get('rules')!.keyAt;
+      this.problems.report('tooMany', at, `more than ${MOST_RULES} rules`);
+    }
     const rules = this.section(keys.get('rules'), (name, entry): RuleDecl | undefined =>
       readRule(name, entry, this.sources, this.problems),
     );
