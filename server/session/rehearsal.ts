@@ -54,11 +54,10 @@ export function rehearse(
   let untilUs = beganUs;
   const { core } = runner;
   while (core.state !== 'ended') {
-    for (let i = 0; i < outbox.length; i++) {
-      const { name, message } = outbox[i]!;
-      rig.receive(name, message, TAG);
+    if (outbox.length > 0) {
+      for (const { name, message } of outbox) rig.receive(name, message, TAG);
+      outbox.length = 0;
     }
-    outbox.length = 0;
     untilUs += STEP_US;
     rig.advanceTo(untilUs);
     if (untilUs < minuteUs) continue;

@@ -1,4 +1,4 @@
-import type { HostMessageName, MessageOf } from '../wire/messages.js';
+import type { Beat, HostMessageName, MessageOf } from '../wire/messages.js';
 import type { SessionSetup } from './core/sessionCore.js';
 import { SessionCore } from './core/sessionCore.js';
 import type { StampedDecision } from './decisions.js';
@@ -28,54 +28,75 @@ export interface ReplayResult {
 export async function replaySession(folder: string, setup: SessionSetup): Promise<ReplayResult> {
   const reader = await readRecord(folder);
   // What the replay has said and the record has not yet confirmed, in order.
-  const said: { input: number; text: string }[] = [];
+  const said: Said[] = [];
   let next = 0;
   let difference: Difference | null = null;
   let decisions = 0;
   let commands = 0;
   let inputs = 0;
   const core: SessionCore = new SessionCore(setup, {
-    command: (name, message) => said.push({ input: core.input, text: commandText(name, message) }),
+    command: (name, message) => said.push(saidCommand(core.input, name, message)),
     decision: (decision) => said.push({ input: core.input, text: JSON.stringify(decision) }),
   });
-  const compare = (input: number, text: string) => {
+  const compare = (theirs: Said) => {
     if (difference !== null) return;
     const mine = said[next++];
-    if (mine?.input === input && mine.text === text) return;
-    difference = { input, recorded: text, replayed: mine?.text ?? null };
+    if (mine !== undefined && same(mine, theirs)) return;
+    const replayed = mine === undefined ? null : textOf(mine);
+    difference = { input: theirs.input, recorded: textOf(theirs), replayed };
   };
   const before = () => {
     // What was said about the last input must all have been found in the record by now.
     if (difference === null && next < said.length) {
-      const { input, text } = said[next]!;
-      difference = { input, recorded: null, replayed: text };
+      const mine = said[next]!;
+      difference = { input: mine.input, recorded: null, replayed: textOf(mine) };
     }
     said.length = 0;
     next = 0;
-    inputs++;
   };
   const state = reader.visit({
     sample: (_, sample) => {
+      inputs++;
       if (said.length > 0 || next > 0) before();
-      else inputs++;
       core.sample(sample);
     },
     input: (_, input) => {
+      inputs++;
       before();
       core.take(input);
     },
     command: <N extends HostMessageName>(input: number, name: N, message: MessageOf[N]) => {
       commands++;
-      compare(input, commandText(name, message));
+      compare(saidCommand(input, name, message));
     },
     decision: (decision: StampedDecision) => {
       decisions++;
-      compare(decision.input, JSON.stringify(decision));
+      compare({ input: decision.input, text: JSON.stringify(decision) });
     },
   });
   return { inputs, decisions, commands, difference, state };
 }
 
-function commandText(name: HostMessageName, message: object): string {
-  return `${name} ${JSON.stringify(onTheWire(name, message))}`;
+/** One command or decision. A beat comes forty times a second and is kept as its numbers. */
+interface Said {
+  readonly input: number;
+  readonly text: string;
+  readonly finishedUs?: number;
+  readonly wanted?: number;
+}
+
+function saidCommand(input: number, name: HostMessageName, message: object): Said {
+  if (name !== 'beat')
+    return { input, text: `${name} ${JSON.stringify(onTheWire(name, message))}` };
+  const { finishedUs, wanted } = message as Beat;
+  return { input, text: 'beat', finishedUs: finishedUs >>> 0, wanted: wanted >>> 0 };
+}
+
+function same(a: Said, b: Said): boolean {
+  const { input, text, finishedUs, wanted } = b;
+  return a.input === input && a.text === text && a.finishedUs === finishedUs && a.wanted === wanted;
+}
+
+function textOf({ text, finishedUs, wanted }: Said): string {
+  return finishedUs === undefined ? text : `${text} ${JSON.stringify({ finishedUs, wanted })}`;
 }

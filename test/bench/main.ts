@@ -1,0 +1,115 @@
+/**
+ * `npm run bench [-- PART ...]`: what Lapwing costs, beside what it is compared with, in one run.
+ * Machines differ and drift: read ratios and differences, and the figures for this machine alone.
+ */
+import { arch, cpus, loadavg, release } from 'node:os';
+import { benchEngine } from './engine.js';
+import { benchMemory } from './memory.js';
+import { benchRecord } from './record.js';
+import { benchRehearsal } from './rehearsal.js';
+import { benchRoundTrip, roundTripTable } from './roundTrip/benchRoundTrip.js';
+import { wholeLoop } from './roundTrip/wholeLoop.js';
+import { benchWire } from './wire.js';
+
+/** A bar of the design, and whether this run met it. */
+function bar(name: string, figure: string, met: boolean): void {
+  console.log(`${met ? 'met   ' : 'MISSED'}  ${name}: ${figure}`);
+}
+
+async function roundTrip(): Promise<void> {
+  const results = await benchRoundTrip({ contestants: [wholeLoop(0), wholeLoop(20)] });
+  console.log(roundTripTable(results));
+  const guests = results.at(-1)!;
+  const difference = guests.medianDifferenceUs!;
+  bar(
+    'round trip, 20 dashboards, over C (median difference <= 100 us)',
+    `${difference.toFixed(0)} us`,
+    difference <= 100,
+  );
+  const ratio = guests.p999Ratio!;
+  bar("round trip, 20 dashboards, p99.9 <= twice C's", `${ratio.toFixed(2)} times`, ratio <= 2);
+}
+
+async function rehearsal(): Promise<void> {
+  const first = await benchRehearsal();
+  // Once warm, as in a long run of rehearsals.
+  const second = await benchRehearsal();
+  const { seconds, inputs, replaySeconds, replayedPerSecond, identical } = second;
+  console.log(
+    `an hour with ten rules, recorded, processor time: ${first.seconds.toFixed(2)} s cold, ${seconds.toFixed(2)} s warm, ${inputs} inputs`,
+  );
+  console.log(`  ${(second.sessionHours / seconds).toFixed(2)} session-hours a second`);
+  bar('rehearsing an hour (<= 2 s)', `${seconds.toFixed(2)} s`, seconds <= 2);
+  console.log(`replaying it: ${replaySeconds.toFixed(2)} s, identical: ${identical}`);
+  bar(
+    'replaying (>= 1.5 million frames a second)',
+    `${(replayedPerSecond / 1e6).toFixed(2)} million`,
+    replayedPerSecond >= 1.5e6,
+  );
+}
+
+async function engine(): Promise<void> {
+  for (const { what, rules, nsPerFrame, bytesPerFrame } of await benchEngine()) {
+    console.log(
+      `${what}, ${rules} rules: ${nsPerFrame.toFixed(0)} ns and ${bytesPerFrame.toFixed(2)} bytes a frame`,
+    );
+  }
+}
+
+function wire(): void {
+  const { decodedMBPerS, framesPerS, allocatedBytesPerFrame, encodedFramesPerS } = benchWire();
+  console.log(
+    `decoder: ${decodedMBPerS.toFixed(1)} MB/s, ${(framesPerS / 1e6).toFixed(2)} million frames/s, ${allocatedBytesPerFrame.toFixed(2)} bytes allocated a frame`,
+  );
+  console.log(`encoder: ${(encodedFramesPerS / 1e6).toFixed(2)} million frames/s`);
+}
+
+async function record(): Promise<void> {
+  const r = await benchRecord();
+  console.log(
+    `recording: ${r.liveNsPerSample.toFixed(0)} ns a sample live, ${r.bulkNsPerSample.toFixed(0)} ns in a rehearsal, ${r.liveHeapBytesPerSample.toFixed(2)} bytes allocated`,
+  );
+  bar(
+    'recording live (< 2 % of a core)',
+    `${(r.liveShareOfCore * 100).toFixed(2)} %`,
+    r.liveShareOfCore < 0.02,
+  );
+  bar(
+    'a finished record (< 30 MB an hour)',
+    `${r.finishedMBPerHour.toFixed(1)} MB (${r.liveMBPerHour.toFixed(1)} while live), finished in ${r.finishS.toFixed(1)} s`,
+    r.finishedMBPerHour < 30,
+  );
+  console.log(
+    `decoding: ${(r.decodedLiveSamplesPerS / 1e6).toFixed(1)} million samples a second live, ${(r.decodedFinishedSamplesPerS / 1e6).toFixed(1)} finished`,
+  );
+}
+
+function memory(): void {
+  const { heapMB } = benchMemory();
+  console.log(
+    `heap after each of eight hours of session, MB: ${heapMB.map((mb) => mb.toFixed(1)).join(' ')}`,
+  );
+  const grown = heapMB.at(-1)! - heapMB[0]!;
+  bar(
+    'loop memory over eight hours (flat)',
+    `${grown.toFixed(2)} MB more in the eighth than in the first`,
+    grown < 1,
+  );
+}
+
+const PARTS = { wire, engine, record, rehearsal, memory, 'round-trip': roundTrip } as const;
+
+const asked = process.argv.slice(2);
+const unknown = asked.filter((name) => !(name in PARTS));
+if (unknown.length > 0) {
+  console.error(`no such part: ${unknown.join(', ')}; there are ${Object.keys(PARTS).join(', ')}`);
+  process.exit(2);
+}
+console.log(
+  `Node ${process.version}, ${process.platform} ${release()} ${arch()}, ${cpus().length} x ${cpus()[0]?.model}, load ${loadavg()[0]!.toFixed(1)}`,
+);
+for (const [name, run] of Object.entries(PARTS)) {
+  if (asked.length > 0 && !asked.includes(name)) continue;
+  console.log(`\n== ${name}`);
+  await run();
+}
