@@ -257,6 +257,39 @@ describe('a correction of the position is not movement', () => {
     expect(entered.firings('out').length).toBe(0);
   });
 
+  test('a lap that begins by a correction begins at its 0 cm', () => {
+    const stage = new Stage(`
+rules:
+  seam:
+    when: reaches 0 cm
+    do: note
+  begun:
+    when: lap begins
+    do: note
+  into:
+    when: enters 0 to 10 cm
+    do: note
+  late:
+    when: reaches 179.8 cm
+    do: note
+`);
+    stage.to(1, 179.6).correct(0.4).frame(0);
+    expect(stage.instant.lap).toBe(2);
+    for (const name of ['seam', 'begun', 'into'])
+      expect([name, stage.laps(name)]).toEqual([name, [1, 2]]);
+    expect(stage.firings('late')).toEqual([]);
+    expect(stage.of('missed').map((d) => d.name)).toEqual(['late']);
+  });
+
+  test('a backward correction while the furthest stays where it was fires nothing twice', () => {
+    const stage = new Stage(CROSSINGS).to(1, 96);
+    // As a tracker tells it that keeps the furthest: only the place goes back.
+    stage.instant.travelTo -= 50;
+    stage.travel -= 50;
+    stage.to(1, 94.2).to(1, 120);
+    expect(stage.firings().map((d) => d.name)).toEqual(['into', 'spot', 'out']);
+  });
+
   test('an edge jumped over is missed too', () => {
     const stage = new Stage(CROSSINGS).to(1, 84).correct(2).to(1, 120);
     expect(stage.firings('into')).toEqual([]);

@@ -99,6 +99,19 @@ rules:
     expect(stage.engine.view().rules[0]!.firings).toBe(1);
   });
 
+  test('a delayed hold that the board refused is held no more: nothing of another is stopped', () => {
+    const stage = new Stage(`
+rules:
+  glow:
+    when: lick
+    do: after 500 ms, hold lamp while licks this session < 2, up to 3 s
+`);
+    stage.outcome = 'not fired';
+    stage.lick().wait(1000).lick().wait(100);
+    expect(stage.requests.length).toBe(1);
+    expect(stage.of('stop')).toEqual([]);
+  });
+
   test('a firing that the board refused takes its delayed actions along', () => {
     const stage = new Stage(`
 rules:

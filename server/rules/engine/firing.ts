@@ -242,6 +242,14 @@ export class Firing {
     run.firedSerials.push(serial);
   }
 
+  /** Nothing of that serial is held any more. */
+  release(r: RuleState, serial: number): void {
+    const { held } = this.run;
+    for (let n = held.length - 1; n >= 0; n--) {
+      if (held[n]!.rule === r.spec.index && held[n]!.serial === serial) held.splice(n, 1);
+    }
+  }
+
   /** The board did none of it: as if it had not been asked. */
   withdraw(r: RuleState, pending: PendingFiring): void {
     const { run } = this;
@@ -269,10 +277,7 @@ export class Firing {
       const { rule, serial } = run.delayed[n]!;
       if (rule === r.spec.index && serial === pending.serial) run.delayed.splice(n, 1);
     }
-    for (let n = run.held.length - 1; n >= 0; n--) {
-      const { rule, serial } = run.held[n]!;
-      if (rule === r.spec.index && serial === pending.serial) run.held.splice(n, 1);
-    }
+    this.release(r, pending.serial);
     for (const waiting of r.spec.firesRules) {
       const { timers, timerSerials } = s.rules[waiting]!;
       const at = timerSerials.indexOf(pending.serial);

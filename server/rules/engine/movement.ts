@@ -35,13 +35,17 @@ export class Movement {
       return;
     }
     if (i.lapCounts !== s.lapCounts) this.setScale(i.lapCounts);
+    // A lap begins at its 0 cm, even where a correction has put the animal straight onto it.
+    const least = lapBegan ? i.lap * i.lapCounts - 1 : Number.POSITIVE_INFINITY;
+    const from = Math.min(i.travelFrom, least);
+    const furthest = Math.min(i.progressFrom, least);
     if (!s.placed) {
       s.placed = true;
-      s.travel = i.travelFrom;
-      s.progress = i.progressFrom;
+      s.travel = from;
+      s.progress = furthest;
       this.resolve();
-    } else if (i.travelFrom !== s.travel || i.progressFrom !== s.progress) {
-      this.corrected(i);
+    } else if (from !== s.travel || furthest !== s.progress) {
+      this.corrected(from, furthest);
     }
     if (lapBegan) this.lapBegan(i);
     s.lap = i.lap;
@@ -119,21 +123,22 @@ export class Movement {
     this.run.moments(s.program.lapRules, s.nowUs, i.lap * s.lapCounts);
   }
 
-  private corrected(i: Instant): void {
+  /** The animal is elsewhere without having moved there. */
+  private corrected(travel: number, progress: number): void {
     const { run } = this;
     const { s } = run;
     for (let n = 0; n < this.tracked.length; n++) {
-      s.spans[this.tracked[n]!]!.corrected(s.travel, i.travelFrom);
+      s.spans[this.tracked[n]!]!.corrected(s.travel, travel);
     }
     for (let n = 0; n < s.points.length; n++) {
       const point = s.points[n]!;
-      if (point.targetTravel > i.progressFrom) continue;
+      if (point.targetTravel > progress) continue;
       for (const rule of s.program.points[n]!.rules) run.jumpedOver(rule);
-      point.aim(i.progressFrom);
+      point.aim(progress);
     }
-    this.skipRows(i.progressFrom);
-    s.travel = i.travelFrom;
-    s.progress = i.progressFrom;
+    this.skipRows(progress);
+    s.travel = travel;
+    s.progress = progress;
     this.setBounds();
   }
 
@@ -160,7 +165,7 @@ export class Movement {
       const spec = s.program.points[n]!;
       while (point.targetTravel <= i.progressTo) {
         const place = point.targetTravel;
-        run.moments(spec.rules, this.causeUs(place, i.progressFrom, i.progressTo), place);
+        run.moments(spec.rules, this.causeUs(place, s.progress, i.progressTo), place);
         for (let m = 0; m < spec.marks.length; m++) run.touch(spec.marks[m]!);
         point.take();
         point.aim(place);
@@ -171,7 +176,7 @@ export class Movement {
       const rows = s.rules[rule]!.rows!;
       while (rows.targetTravel <= i.progressTo) {
         const place = rows.targetTravel;
-        run.moment(rule, this.causeUs(place, i.progressFrom, i.progressTo), place);
+        run.moment(rule, this.causeUs(place, s.progress, i.progressTo), place);
         rows.row++;
         rows.aim(s.lapCounts, s.countsPerCm);
       }
@@ -188,7 +193,7 @@ export class Movement {
       const spec = s.program.spans[index]!;
       for (let event = tracker.next(i.travelTo); event !== 0; event = tracker.next(i.travelTo)) {
         const place = tracker.crossedTravel;
-        const causeUs = this.causeUs(place, i.travelFrom, i.travelTo);
+        const causeUs = this.causeUs(place, s.travel, i.travelTo);
         const marks = event > 0 ? spec.enterMarks : spec.leaveMarks;
         for (let m = 0; m < marks.length; m++) run.touch(marks[m]!);
         run.moments(event > 0 ? spec.enterRules : spec.leaveRules, causeUs, place);

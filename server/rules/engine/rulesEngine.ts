@@ -192,7 +192,11 @@ class Parts {
     const r = this.run.s.rules[rule];
     if (r === undefined || this.arming.settle(r, serial, how)) return;
     const at = r.pending.findIndex((pending) => pending.serial === serial);
-    if (at < 0) return;
+    if (at < 0) {
+      // A delayed action is no firing of its own, but what it holds is over.
+      if (how === 'not fired') this.firing.release(r, serial);
+      return;
+    }
     const pending = r.pending[at]!;
     r.pending.splice(at, 1);
     if (how === 'not fired') this.firing.withdraw(r, pending);
