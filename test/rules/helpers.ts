@@ -55,12 +55,12 @@ export function around(key: string, phrase: string): string {
   return `title: t\nbelt: 180 cm\n${lines.join('')}rules:\n  ${water}:\n${keys.join('')}${extra}end: time >= 60 min\n`;
 }
 
-export function check(text: string, rig: RigFacts | undefined = RIG): Checked {
-  return checkText('test.yaml', text, rig);
+export function check(text: string, rig: RigFacts | null = RIG): Checked {
+  return checkText('test.yaml', text, rig ?? undefined);
 }
 
 /** `code: underlined words` of each problem. */
-export function found(text: string, rig: RigFacts | undefined = RIG): string[] {
+export function found(text: string, rig: RigFacts | null = RIG): string[] {
   const { problems, sources } = check(text, rig);
   return problems.map(
     ({ code, at }) => `${code}: ${sources[at.file]!.text.slice(at.start, at.end)}`,
@@ -68,7 +68,7 @@ export function found(text: string, rig: RigFacts | undefined = RIG): string[] {
 }
 
 /** The file, or a failure that shows every problem. */
-export function right(text: string, rig: RigFacts | undefined = RIG): RulesFile {
+export function right(text: string, rig: RigFacts | null = RIG): RulesFile {
   const { file, problems, sources } = check(text, rig);
   if (!file) throw new Error(formatProblems(problems, sources));
   return file;

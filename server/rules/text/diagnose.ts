@@ -39,6 +39,26 @@ const RIGHT_FORMS: Readonly<Record<string, string>> = {
   '÷': 'write `/`',
 };
 
+/** Words that a phrase may begin with. */
+const FIRST_WORDS = [
+  'reaches',
+  'enters',
+  'leaves',
+  'every',
+  'operator',
+  'lick',
+  'give',
+  'pulse',
+  'hold',
+  'stop',
+  'until',
+  'after',
+  'still',
+  'position',
+  'speed',
+  'phase',
+];
+
 /** Words that people write for a unit. */
 const UNIT_WORDS: Readonly<Record<string, string>> = Object.assign(Object.create(null), {
   sec: 's',
@@ -99,13 +119,22 @@ export function diagnose(
   if (before?.kind === 'quantity' && before.unit === '%' && token.kind === 'number') {
     return wrong(RIGHT_FORMS['%']!, index - 1, index);
   }
-  const rank = token.kind === 'word' ? SPELLED_ORDINALS.get(token.text) : undefined;
-  if (rank && after?.kind === 'word' && after.text === 'lick') return wrong(`\`${rank} lick\``);
+  // `third` alone reads as a name, so that only the word after it is out of place.
+  const rank = token.text === 'lick' && before ? SPELLED_ORDINALS.get(before.text) : undefined;
+  if (rank) return wrong(`\`${rank} lick\``, index - 1, index);
   if (token.kind === 'word' && ['AND', 'OR', 'NOT', 'And', 'Or', 'Not'].includes(token.text)) {
     return wrong(`\`${token.text.toLowerCase()}\`: capitals count`);
   }
   if (before?.kind === 'number' && token.kind === 'word' && !known(token.text)) {
     return unknownUnit(token, index);
+  }
+  if (index === 1 && before?.kind === 'word' && !known(before.text)) {
+    // A first word that was taken for a name may be a misspelt word of the language.
+    const nearest = nearestName(before.text, FIRST_WORDS);
+    if (nearest) {
+      const message = `\`${before.text}\` is out of place`;
+      return { code: 'unexpectedWord', message, nearest, token: 0 };
+    }
   }
   return outOfPlace(token, index, tried, candidates);
 }

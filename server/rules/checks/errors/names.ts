@@ -8,6 +8,9 @@ export const names: Check = (context) => {
   for (const { ref, as } of usesOf(context.file)) checkUse(context, ref, as);
 };
 
+/** Measures of one word, for a name that is a misspelt one. */
+const MEASURES = ['position', 'speed', 'lap', 'time'];
+
 const NEEDED: Readonly<
   Record<Exclude<Role, 'input' | 'output' | 'valve' | 'button' | 'option'>, string>
 > = {
@@ -42,6 +45,7 @@ function checkUse(context: CheckContext, ref: NameRef, role: Role): void {
       ...symbols.namesOf(...KINDS[role]),
       ...(role === 'subject' ? inputsOf(context) : []),
     ];
+    const words = role === 'amount' || role === 'subject' ? MEASURES : [];
     const expected =
       known.length === 0 ? NEEDED[role] : `${NEEDED[role]}; known: ${known.slice(0, 8).join(', ')}`;
     problems.unknown(
@@ -49,7 +53,7 @@ function checkUse(context: CheckContext, ref: NameRef, role: Role): void {
       ref.at,
       `nothing is called \`${ref.name}\``,
       ref.name,
-      known,
+      [...known, ...words],
       expected,
     );
     return;
