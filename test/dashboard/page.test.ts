@@ -27,6 +27,16 @@ async function inkOf(page: Page, selector: string): Promise<number> {
     });
 }
 
+/** A key pressed and let go within one task: never long, however slow the machine. */
+async function tapKey(page: Page, key: string): Promise<void> {
+  await page.evaluate((name) => {
+    const target = document.activeElement ?? document.body;
+    for (const type of ['keydown', 'keyup']) {
+      target.dispatchEvent(new KeyboardEvent(type, { key: name, bubbles: true, cancelable: true }));
+    }
+  }, key);
+}
+
 describe('the page, in a real browser', () => {
   test('laps, licks and water grow on the screen while the animal runs', async () => {
     const { page, loop, troubles } = await openPage({}, (loop) => {
@@ -88,7 +98,7 @@ describe('the page, in a real browser', () => {
 
     await page.getByRole('button', { name: 'Understood' }).click();
     const before = quiets();
-    await page.keyboard.press('Escape');
+    await tapKey(page, 'Escape');
     await page.waitForTimeout(500);
     expect(quiets()).toBe(before);
     await page.keyboard.down('Escape');
@@ -140,11 +150,11 @@ describe('the page, in a real browser', () => {
 
     // Out of the field, single keys act from anywhere; what drives an output wants a long press.
     await page.evaluate(() => (document.activeElement as HTMLElement | null)?.blur());
-    await page.keyboard.press('s');
+    await tapKey(page, 's');
     await until(() => loop.acts().some((act) => act.act === 'hold'));
     expect(loop.acts()).toEqual([{ act: 'hold', what: 'stimulus', on: true }]);
     await page.getByText('Held: held by the operator', { exact: true }).waitFor();
-    await page.keyboard.press('s');
+    await tapKey(page, 's');
     await page.waitForTimeout(600);
     expect(loop.acts()).toHaveLength(1);
     await page.keyboard.down('s');
@@ -154,7 +164,7 @@ describe('the page, in a real browser', () => {
       { act: 'hold', what: 'stimulus', on: false },
       { act: 'allow stimulation' },
     ]);
-    await page.keyboard.press('1');
+    await tapKey(page, '1');
     await page.waitForTimeout(600);
     expect(loop.acts()).toHaveLength(3);
     await page.keyboard.down('1');
@@ -245,10 +255,16 @@ describe('for everybody', () => {
       for (const theme of ['Dark', 'Red', 'Light']) {
         await page.getByText(theme, { exact: true }).click();
         // The structure is the same in every theme; the colours are not.
-        const found = await violations(page, theme === 'Dark' ? RULES : ['color-contrast']);
-        // What is stale is meant to look faded (WCAG 2.2, 1.4.3, inactive parts).
-        const faded = (one: string) => what === 'stale' && one.startsWith('color-contrast');
-        expect(found.filter((one) => !faded(one))).toEqual([]);
+        // What is stale is meant to look faded (WCAG 2.2, 1.4.3, inactive parts); on a slow machine a
+        // page that axe holds up may be so for a moment, and is looked at again.
+        await until(async () => {
+          const found = await violations(page, theme === 'Dark' ? RULES : ['color-contrast']);
+          const stale = (await page.locator('.shown.stale').count()) > 0;
+          if (stale && what !== 'stale') return false;
+          const faded = (one: string) => stale && one.startsWith('color-contrast');
+          expect(found.filter((one) => !faded(one))).toEqual([]);
+          return true;
+        });
       }
     },
   );

@@ -2,8 +2,9 @@
  * The whole service as `npm start` runs it, in processes of its own: simulated board on a
  * pseudo-terminal, loop, web, and a real browser at the page. Runs what is in `dist/`.
  */
-import { type ChildProcess, spawn } from 'node:child_process';
+import { type ChildProcess, execFileSync, spawn } from 'node:child_process';
 import { mkdtempSync, readdirSync, rmSync } from 'node:fs';
+import { type AddressInfo, createServer } from 'node:net';
 import { tmpdir } from 'node:os';
 import { join } from 'node:path';
 import type { Browser } from 'playwright-core';
@@ -21,10 +22,14 @@ let url = '';
 
 beforeAll(async () => {
   const main = new URL('../../dist/server/main/main.js', import.meta.url).pathname;
-  service = spawn(process.execPath, [main, 'demo', '--port', '0', '--records', records], {
-    env: { ...process.env, LAPWING_RUNTIME: folder },
-    stdio: ['ignore', 'pipe', 'pipe'],
-  });
+  service = spawn(
+    process.execPath,
+    [main, 'demo', '--port', await freePort(), '--records', records],
+    {
+      env: { ...process.env, LAPWING_RUNTIME: folder },
+      stdio: ['ignore', 'pipe', 'pipe'],
+    },
+  );
   const hear = (bytes: Buffer) => {
     said += bytes.toString();
   };
@@ -50,7 +55,25 @@ async function untilSaid(words: RegExp): Promise<string> {
   throw new Error(`the service never said ${words}; it said:\n${said}`);
 }
 
-test('laps grow on the page, stop everything leaves the outputs idle, the session ends in order', {
+/** One that stays the same when the web process is started again. */
+function freePort(): Promise<string> {
+  return new Promise((resolve) => {
+    const server = createServer().listen(0, '127.0.0.1', () => {
+      const { port } = server.address() as AddressInfo;
+      server.close(() => resolve(String(port)));
+    });
+  });
+}
+
+/** The number of the service's own child that runs this script. */
+function childOf(pid: number, script: string): number {
+  const list = execFileSync('ps', ['--ppid', String(pid), '-o', 'pid=,args=']).toString();
+  const line = list.split('\n').find((one) => one.includes(script));
+  if (line === undefined) throw new Error(`no ${script} among:\n${list}`);
+  return Number.parseInt(line, 10);
+}
+
+test('laps grow, killed processes come back, stop leaves the outputs idle, the session ends in order', {
   timeout: 240_000,
 }, async () => {
   const page = await browser.newPage({ viewport: { width: 1440, height: 1000 } });
@@ -74,6 +97,21 @@ test('laps grow on the page, stop everything leaves the outputs idle, the sessio
     .first()
     .waitFor();
   expect(await shownNumber(page, 'water')).toBeGreaterThan(0);
+
+  // Each is started again by the launcher; the page follows by itself, with the laps that it had.
+  for (const script of ['webProcess.js', 'loopProcess.js']) {
+    const lap = await shownNumber(page, 'lap');
+    process.kill(childOf(service.pid!, script), 'SIGKILL');
+    await page.locator('.shown.stale').first().waitFor();
+    await page.locator('.session-running').waitFor();
+    expect(await shownNumber(page, 'lap')).toBeGreaterThanOrEqual(lap);
+    await page
+      .getByText(/water fired \(valve\)/)
+      .first()
+      .waitFor();
+  }
+  // That the network broke off is no fault of the page.
+  troubles.length = 0;
 
   await page.getByRole('button', { name: 'Stop everything' }).click();
   await page.getByText('Stopped: the loop confirmed').waitFor();
