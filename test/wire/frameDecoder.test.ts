@@ -218,6 +218,14 @@ describe('the frame decoder', () => {
     expect(bad).toEqual([]);
   });
 
+  test.each(Object.keys(MESSAGES) as MessageName[])('begins %s with its fields at zero', (name) => {
+    const zeros = SHAPES[name].fields.map(({ name: field, type }) => [
+      field,
+      type === 'text16' ? '' : 0,
+    ]);
+    expect(Object.entries(blank(name))).toEqual(zeros);
+  });
+
   test('counts sequence numbers on over 255', () => {
     const { decoder, frames } = listen();
     const encoder = new FrameEncoder();
