@@ -83,7 +83,8 @@ function excerpt(
   if (!source || source.text === '') return [];
   const { text } = source;
   const { line } = lineColumn(text, at.start);
-  const start = text.lastIndexOf('\n', at.start - 1) + 1;
+  // A start of -1 would be taken for 0.
+  const start = at.start === 0 ? 0 : text.lastIndexOf('\n', at.start - 1) + 1;
   const newline = text.indexOf('\n', start);
   const end = newline < 0 ? text.length : newline;
   const full = text

@@ -7,6 +7,7 @@ import { circles } from './errors/circles.js';
 import { constants } from './errors/constants.js';
 import { drawChoices } from './errors/drawChoices.js';
 import { drawHabits } from './errors/drawHabits.js';
+import { expansion } from './errors/expansion.js';
 import { firingCircles } from './errors/firingCircles.js';
 import { names } from './errors/names.js';
 import { onBelt } from './errors/onBelt.js';
@@ -40,18 +41,18 @@ import { unusedName } from './warnings/unusedName.js';
 import { windowTooLong } from './warnings/windowTooLong.js';
 import { withinTooTight } from './warnings/withinTooTight.js';
 
-/** What must be right before anything may run. */
+/** Whether amounts can be reckoned at all. */
+const RECKONABLE: readonly Check[] = [circles, expansion];
+
+/** What can be told of any file. */
+const PLAIN_ERRORS: readonly Check[] = [constants, visits, firingCircles, belt, rigNames];
+
+/** What must be right before anything may run; these reckon amounts. */
 const ERRORS: readonly Check[] = [
   names,
   words,
   units,
-  constants,
-  visits,
-  circles,
-  firingCircles,
   ranges,
-  belt,
-  rigNames,
   onTimes,
   drawChoices,
   drawHabits,
@@ -96,6 +97,13 @@ export function checkRules(
 ): Problem[] {
   const problems = new ProblemList();
   const context = { file, rig, symbols: resolve(file, rig, broken), problems };
+  for (const check of PLAIN_ERRORS) check(context);
+  for (const check of RECKONABLE) {
+    check(context);
+    // Nothing may be reckoned from names that need each other.
+    const stuck = ({ code }: Problem): boolean => code === 'circle' || code === 'tooLarge';
+    if (problems.problems.some(stuck)) return inOrder(problems.problems);
+  }
   for (const check of ERRORS) check(context);
   if (!problems.failed) for (const check of WARNINGS) check(context);
   return inOrder(problems.problems);
