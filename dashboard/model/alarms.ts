@@ -4,6 +4,7 @@
  */
 import type { NumberedEvent, Snapshot } from '../../server/loop/protocol.js';
 import { fixed } from './format.js';
+import { LOW_DISK_GB } from './health.js';
 
 export interface Alarm {
   /** Names the condition: an alarm that was acknowledged comes back only after it had gone. */
@@ -46,7 +47,6 @@ const STILL_MIN = 5;
 const UNTOUCHED_DROPS = 3;
 const LAPS_WITHOUT_LICK = 3;
 const NEAR_LIMIT = 0.9;
-const LOW_DISK_GB = 5;
 
 export function watchEvent(watch: AlarmWatch, event: NumberedEvent['event'], water: boolean): void {
   if (event.kind === 'lick' && !event.artefact) watch.dropsUntouched = 0;

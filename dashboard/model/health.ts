@@ -61,7 +61,7 @@ function trustHealth(state: Snapshot): Health {
 }
 
 /** Below this much disk the record is in danger within the day. */
-const LOW_DISK_GB = 5;
+export const LOW_DISK_GB = 5;
 
 function recordHealth({ record }: Snapshot): Health {
   // Not yet known (null in JSON) is not "none".

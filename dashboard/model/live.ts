@@ -146,6 +146,8 @@ function markOf(live: Live, event: NumberedEvent['event']): Mark | undefined {
       return MARK.withheld;
     case 'fired': {
       if (event.sham) return MARK.sham;
+      // A rule that only notes something, or moves to another phase, drives nothing.
+      if (event.output === null) return undefined;
       const kind = outputKind(live, event.output);
       if (kind === 'valve') return MARK.water;
       return kind === 'mark' ? undefined : MARK.stimulus;

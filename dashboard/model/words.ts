@@ -99,7 +99,8 @@ function firedWords(
   const how = event.armed ? 'by the board' : 'by the host';
   const error = event.errorMm === null ? '' : `, ${fixed(event.errorMm, 1)} mm off`;
   const place = atPlace(event.riseCm ?? event.placeCm);
-  const tone = outputKind === 'valve' ? 'water' : 'stim';
+  const driven = outputKind === 'valve' ? 'water' : 'stim';
+  const tone = event.output === null ? 'plain' : driven;
   const output = event.output === null ? '' : ` (${event.output})`;
   return say(`${event.rule} fired${output}${place}${error}, ${how}`, tone);
 }

@@ -108,7 +108,7 @@ describe('what the page knows', () => {
     expect(live.unseen).toBe(0);
   });
 
-  test('a firing is marked where the output rose, and a sync line is not marked', () => {
+  test('a firing is marked where the output rose; a sync line, or a rule that drives nothing, is not', () => {
     const { live } = watch(1);
     const fired = { kind: 'fired', rule: 'r', serial: 1, sham: false, armed: true } as const;
     const at = { riseUs: 1, placeCm: 45, riseCm: 45.5, errorMm: 5 };
@@ -123,6 +123,7 @@ describe('what the page knows', () => {
     tellFired(2, 'sync');
     tellFired(3, 'valve');
     tellFired(4, null, true);
+    tellFired(5, null);
     const marks = live.laps.get(9)!;
     expect([...marks.kind.slice(0, marks.count)]).toEqual([MARK.stimulus, MARK.water, MARK.sham]);
     expect(marks.positionCm[0]).toBeCloseTo(45.5, 4);
