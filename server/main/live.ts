@@ -5,6 +5,7 @@ import { rigAddress } from '../loop/rigLock.js';
 import type { Rig } from '../session/rig/rig.js';
 import { Launcher } from './launcher.js';
 import { StatusLine } from './statusLine.js';
+import { tellPortWarnings } from './tellWarnings.js';
 
 export interface LiveOptions {
   readonly rig: Rig;
@@ -26,6 +27,7 @@ export interface LiveOptions {
  */
 export async function runLive(options: LiveOptions): Promise<void> {
   const { rig } = options;
+  tellPortWarnings(rig.port);
   const status = new StatusLine(process.stdout);
   const launcher = new Launcher(
     {
