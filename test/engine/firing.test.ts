@@ -122,6 +122,18 @@ rules:
     expect(stage.laps('sum')).toEqual([3]);
   });
 
+  test('nor does what the board refused use up a chance: it comes up again until it fires', () => {
+    const stage = new Stage(
+      'rules:\n  maybe:\n    when: lick\n    chance: 50 %\n    do: give 4 uL\n',
+    );
+    stage.outcome = 'not fired';
+    stage.begin();
+    while (stage.requests.length === 0) stage.lick().wait(100);
+    for (let n = 0; n < 10; n++) stage.lick().wait(100);
+    expect(stage.requests.length).toBe(11);
+    expect(stage.engine.view().rules[0]!.firings).toBe(0);
+  });
+
   test('what was never accounted for stays charged', () => {
     const stage = new Stage(`
 rules:
