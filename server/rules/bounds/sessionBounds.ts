@@ -222,9 +222,21 @@ class Bounder {
       const byDuty = duty
         ? (Math.floor(this.timeUs / duty.windowUs) + 1) * duty.share * duty.windowUs
         : Infinity;
-      const byPulses = facts ? times(most, facts.longestOnUs) : Infinity;
+      const byPulses = times(most, this.widest(output));
       return { output, pulses: most, onUs: Math.min(onUs, byDuty, byPulses) };
     });
+  }
+
+  /** The longest that one pulse of an output may be on. */
+  private widest(output: string): number {
+    const costs = this.file.rules
+      .flatMap((rule) => rule.do)
+      .flatMap((action) => costOf(action, this.symbols) ?? [])
+      .filter(({ name }) => name === output);
+    return Math.max(
+      0,
+      ...costs.map(({ onUs, pulses }) => (Number.isFinite(pulses) ? onUs / pulses : Infinity)),
+    );
   }
 
   /** What `end` allows and the drops already asked for when it comes true, or what the rules can. */
