@@ -259,6 +259,11 @@ export const ERRORS = {
     'The loop process did not answer in time.',
     'Use the manual switch at the rig if an output must go off now; then look at the terminal that runs Lapwing.',
   ),
+  loopStale: entry(
+    'LOOP_STALE',
+    'The loop was held up and read a request too late to act on it.',
+    'Ask again. The rig was idle meanwhile: the board sets its outputs idle when the loop is silent.',
+  ),
   loopTokenRefused: entry(
     'LOOP_TOKEN_REFUSED',
     'The loop process did not accept the token.',

@@ -251,7 +251,7 @@ export class LocalClient {
         reject(new LapwingError('loopSilent', `The loop did not answer \`${message.say}\`.`));
       }, this.options.requestTimeoutMs ?? 3000);
       this.pending.set(request, { resolve, reject, timer });
-      this.send({ ...message, request } as ClientMessage);
+      this.send({ ...message, request, saidMs: Date.now() } as ClientMessage);
     });
   }
 

@@ -32,6 +32,7 @@ const LONGEST_LINE_BYTES = 64 * 1024;
 const SLOW_BYTES = 256 * 1024;
 const LOST_BYTES = 8 * 1024 * 1024;
 const STATE_MS = 20;
+const STALE_MS = 2_500;
 const EVENTS_AT_ONCE = 200;
 
 /**
@@ -136,8 +137,10 @@ export class LocalServer {
         this.#service.end(textOf(message.reason) || 'asked to end');
         return;
       case 'begin':
+        refuseStale(message);
         return this.#service.begin(message);
       case 'act':
+        refuseStale(message);
         this.#service.act(message);
         return;
       case 'watch':
@@ -218,6 +221,13 @@ class Client {
   sentEvent = 0;
 
   constructor(readonly socket: Socket) {}
+}
+
+/** Whoever asked has given up long ago, and must not be surprised now. */
+function refuseStale({ say, saidMs }: ClientMessage): void {
+  const ageMs = typeof saidMs === 'number' ? Date.now() - saidMs : 0;
+  if (ageMs <= STALE_MS) return;
+  throw new LapwingError('loopStale', `\`${say}\` was said ${Math.round(ageMs)} ms ago.`);
 }
 
 function parse(line: string): ClientMessage {

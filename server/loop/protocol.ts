@@ -11,8 +11,12 @@ import type { OperatorAct } from '../session/inputs.js';
 
 export const LOCAL_PROTOCOL = 1;
 
-/** Client to loop. Every request may carry a number that the answer repeats. */
-export type ClientMessage = { readonly request?: number } & (
+/**
+ * Client to loop. Every request may carry a number that the answer repeats, and when it was said
+ * (milliseconds since 1970, the same machine): a loop that was stopped refuses what it reads too
+ * late, but for `quiet` and `end`.
+ */
+export type ClientMessage = { readonly request?: number; readonly saidMs?: number } & (
   | { readonly say: 'hello'; readonly token: string; readonly client: string }
   | { readonly say: 'quiet' }
   | { readonly say: 'end'; readonly reason: string }

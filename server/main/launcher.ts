@@ -40,6 +40,7 @@ export class Launcher {
   #loop: ChildProcess | undefined;
   #web: ChildProcess | undefined;
   #port: string | undefined;
+  #webPort: number | undefined;
   #stopping = false;
   #begun = false;
   #failure: LapwingError | Error | undefined;
@@ -153,7 +154,8 @@ export class Launcher {
   }
 
   #startWeb(): void {
-    const { host, port } = this.#plan.web!;
+    const { host } = this.#plan.web!;
+    const port = this.#webPort ?? this.#plan.web!.port;
     const { socketPath, tokenFile } = rigAddress(this.#plan.rig.name);
     const log = process.env.LAPWING_LOG ?? 'warn';
     const child = this.#fork('../web/webProcess.js', [
@@ -162,7 +164,12 @@ export class Launcher {
     ]);
     this.#web = child;
     firstLine(child).then(
-      (line) => this.#events.webReady?.((JSON.parse(line) as { listening: string }).listening),
+      (line) => {
+        const { listening } = JSON.parse(line) as { listening: string };
+        // Open pages look for it where it was.
+        this.#webPort = Number(new URL(listening).port);
+        this.#events.webReady?.(listening);
+      },
       () => {},
     );
     child.once('exit', (code, signal) => {

@@ -44,6 +44,20 @@ export interface SessionDescription {
     readonly bytes: number;
     readonly missing: readonly string[];
   };
+  /** The record fed through the engine again after the end, every decision compared. */
+  readonly replay?: {
+    readonly identical: boolean;
+    readonly inputs: number;
+    readonly decisions: number;
+    readonly commands: number;
+    readonly difference?: {
+      readonly input: number;
+      readonly recorded: string | null;
+      readonly replayed: string | null;
+    };
+    /** Why the check could not be made. */
+    readonly failed?: string;
+  };
 }
 
 export interface SessionEnd {

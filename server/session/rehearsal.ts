@@ -23,6 +23,8 @@ export interface RehearsalOptions {
   readonly mostUs: number;
   readonly recorder?: SessionRecorder;
   readonly onDecision?: (decision: StampedDecision) => void;
+  /** Given the runner before the first instant, for whoever would act as the operator. */
+  readonly began?: (runner: SessionRunner) => void;
   /** Called about every virtual minute; true ends the session as the operator would. */
   readonly progress?: (sessionUs: number) => boolean;
 }
@@ -49,6 +51,7 @@ export function rehearse(
     options.onDecision,
   );
   shakeHands(rig, runner);
+  options.began?.(runner);
   const beganUs = rig.nowUs;
   let minuteUs = beganUs + MINUTE_US;
   let untilUs = beganUs;

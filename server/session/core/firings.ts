@@ -294,7 +294,9 @@ export class Firings {
         this.#fell(live, m, atUs);
         return;
       default:
-        this.#unfired(live, m);
+        // The board no longer knows whether an earlier copy of this id acted.
+        if (m.reason === REASON.oldId) this.#uncertain(live, 'the board had forgotten the id');
+        else this.#unfired(live, m);
     }
   }
 

@@ -62,6 +62,9 @@ export class SessionCore {
   #overNetwork = false;
   #beatUs = Number.NEGATIVE_INFINITY;
   #beganUs = 0;
+  /** Frames that the board says it dropped, and whether it must be configured again. */
+  #boardBadFrames = 0;
+  #configureDue = false;
   #drainedUs = 0;
   #licks = 0;
 
@@ -107,6 +110,11 @@ export class SessionCore {
   /** A sample: one instant. `m` may be reused by the caller. */
   sample(m: Sample): void {
     this.#input++;
+    // A frame that the board dropped may have been a `configure`, which has no answer.
+    if (m.badFrames !== this.#boardBadFrames) {
+      this.#boardBadFrames = m.badFrames;
+      this.#configureDue = true;
+    }
     this.tracker.sample(m, this.instant);
     this.#advance();
   }
@@ -159,6 +167,8 @@ export class SessionCore {
     if (this.#state === 'running') {
       this.engine.step(instant);
       this.firings.check(instant.nowUs);
+      // Allowances are right only while nothing is under way.
+      if (this.#configureDue && this.firings.settled) this.#configure();
     } else if (this.#state === 'ending') {
       this.#drain(instant.nowUs);
     }
@@ -197,7 +207,9 @@ export class SessionCore {
     if (this.#input > 0) this.tracker.linkResumed(sameBoot);
     this.tracker.identity(identity);
     this.tracker.unmoved(this.instant);
+    // A board acts on nothing before the first beat under its tag.
     this.#beatUs = Number.NEGATIVE_INFINITY;
+    this.#beat(this.instant.nowUs);
     if (!sameBoot && this.#state === 'running') {
       this.holds.set('stimulus', 'restart', 'the board restarted; stimulation waits for you');
     }
@@ -214,6 +226,7 @@ export class SessionCore {
 
   /** Tells the board its own limits: what is not configured there never fires. */
   #configure(): void {
+    this.#configureDue = false;
     for (const message of configureOutputs(this.rig, this.guard, this.#overNetwork)) {
       this.#out.command('configure', message);
     }
@@ -286,7 +299,8 @@ export class SessionCore {
         this.#tell({ kind: 'note', text: act.text });
         break;
       case 'stop everything':
-        this.#out.command('quiet', { outputs: EVERYTHING });
+        // The sync train goes on: it harms nobody, and without it the record cannot be aligned.
+        this.#out.command('quiet', { outputs: EVERYTHING & ~this.#syncBit });
         this.#hold('stimulus', true, `everything stopped by ${by.who}`);
         this.#hold('water', true, `everything stopped by ${by.who}`);
         break;
@@ -298,6 +312,10 @@ export class SessionCore {
         break;
     }
     this.#beat(this.instant.nowUs);
+  }
+
+  get #syncBit(): number {
+    return this.rig.sync === undefined ? 0 : 1 << this.rig.sync.line;
   }
 
   #hold(what: 'stimulus' | 'water', on: boolean, reason: string): void {

@@ -1,9 +1,10 @@
 /**
- * The child process that finishes a record: `node finishProcess.js FOLDER`. It prints one line of
+ * The child process that finishes a record and replays it: `node finishProcess.js FOLDER`. It prints one line of
  * JSON, the result or the error, so that the loop's own process has neither the work nor the memory.
  */
 import os from 'node:os';
 import { LapwingError } from '../../errors/codes.js';
+import { noteReplay } from '../selfCheck.js';
 import { mend } from './mend.js';
 
 try {
@@ -13,7 +14,9 @@ try {
   // It finishes at the usual priority then.
 }
 try {
-  const finished = await mend(process.argv[2] ?? '');
+  const folder = process.argv[2] ?? '';
+  const finished = await mend(folder);
+  await noteReplay(folder);
   process.stdout.write(JSON.stringify({ finished }) + '\n');
 } catch (error) {
   const { message } = error as Error;
