@@ -86,6 +86,7 @@ export class Firings {
     if (refusal !== undefined) return refusal;
     const leftOut = guard.leftOut.slice();
     const orders = request.orders.filter((_, index) => !leftOut.includes(index));
+    if (orders.length === 0 && request.orders.length > 0) return 'its mark is busy';
     if (request.sham) {
       for (const order of orders) this.#sham(order);
       return undefined;
