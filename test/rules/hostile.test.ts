@@ -2,6 +2,8 @@ import { readdirSync, readFileSync } from 'node:fs';
 import { join } from 'node:path';
 import fc from 'fast-check';
 import { describe, expect, it } from 'vitest';
+import { compile } from '../../server/rules/engine/compile.js';
+import { explain } from '../../server/rules/explain.js';
 import { formatProblems } from '../../server/rules/problems.js';
 import { checkText } from '../../server/rules/readRules.js';
 import {
@@ -14,9 +16,11 @@ import {
   MOST_TOKENS,
 } from '../../server/rules/text/caps.js';
 import { parseRules } from '../../server/rules/text/parseRules.js';
-import { check, found, RIG, SESSIONS, sections } from './helpers.js';
+import { around, check, found, RIG, SESSIONS, sections } from './helpers.js';
+import { PHRASES } from './phrases.js';
 
 const SEED = 20260302;
+const RUNS = 150;
 const codes = (text: string): string[] => check(text).problems.map(({ code }) => code);
 
 /** Never a throw; a file or an error; every problem inside its text and printable. */
@@ -32,6 +36,10 @@ function survives(text: string): void {
     expect(at.end).toBeGreaterThanOrEqual(at.start);
   }
   expect(typeof formatProblems(problems, sources)).toBe('string');
+  if (!file) return;
+  // Whatever passes can be told and compiled.
+  expect(explain(file, RIG)).not.toMatch(/undefined|NaN/);
+  compile(file, RIG);
 }
 
 describe('a hostile file', () => {
@@ -384,5 +392,12 @@ describe('any text at all', () => {
       ),
       { seed: SEED, numRuns: 150 },
     );
+  });
+  it('that is one phrase of the grammar, whatever it means, is told or passes whole', () => {
+    const keys = Object.keys(PHRASES) as (keyof typeof PHRASES)[];
+    const phrase = fc
+      .constantFrom(...keys)
+      .chain((key) => PHRASES[key].map((text) => around(key, text)));
+    fc.assert(fc.property(phrase, survives), { seed: SEED, numRuns: RUNS });
   });
 });
