@@ -33,7 +33,8 @@ export type Decision =
       readonly serial: number;
       readonly ids: readonly number[];
       readonly placeCm: number | null;
-      readonly expiryUs: number;
+      /** null while it waits in a slot, for which there is no last moment. */
+      readonly expiryUs: number | null;
     }
   | {
       readonly kind: 'disarmed';

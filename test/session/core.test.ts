@@ -27,7 +27,9 @@ rules:
     do: pulse laser for 20 ms
   induce:
     when: reaches gate_at
-    do: pulse gate for 300 ms
+    do:
+      - pulse gate for 300 ms
+      - pulse sync for 10 ms
     within: 1 cm
 end: time >= 60 min
 `;
@@ -157,6 +159,21 @@ describe('a session core', () => {
     expect(stage.sent('pulse')).toHaveLength(0);
     stage.outcome(arm!.id, 'fired', 2);
     expect(stage.told('fired')).toMatchObject([{ rule: 'induce', armed: true, placeCm: 45 }]);
+  });
+
+  it('sends the marks of an armed firing as soon as the board says that it fired', () => {
+    const stage = new Stage();
+    stage.home();
+    stage.run(230, 5);
+    const [arm] = stage.sent<Arm>('arm');
+    stage.outcome(arm!.id, 'fired', 2);
+    expect(stage.sent<Pulse>('pulse')).toMatchObject([
+      { output: 5, widthUs: 10_000, expiryUs: stage.us + 50_000 },
+    ]);
+    // The mark's own outcome is no second firing.
+    stage.outcome(arm!.id + 1, 'fired', 5);
+    stage.outcome(arm!.id + 1, 'done', 5, 10_000);
+    expect(stage.core.engine.view().rules[2]).toMatchObject({ name: 'induce', firings: 1 });
   });
 
   it('asks again under the same id when no answer comes, and calls it uncertain in the end', () => {

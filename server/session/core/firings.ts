@@ -38,6 +38,8 @@ export interface FiringContext {
 const ANSWER_US = 100_000;
 const MOST_ASKED = 4;
 const CHECK_EVERY_US = 50_000;
+/** A mark that follows an armed firing is still right this long after its rise. */
+const MARK_US = 50_000;
 
 /**
  * From a rule's wish to the board's word on it: guards, sends, arms, and keeps every id until the
@@ -281,7 +283,7 @@ export class Firings {
       serial: request.serial,
       ids: ids.map((live) => live.id),
       placeCm: Number.isNaN(request.placeTravel) ? null : tracker.positionCmOf(request.placeTravel),
-      expiryUs: request.expiryUs,
+      expiryUs: kind === 'armed' ? null : request.expiryUs,
     });
   }
 
@@ -338,7 +340,7 @@ export class Firings {
     const { outputs } = this.#context;
     const marks = request.orders.filter((order) => outputs[order.output]?.kind === 'mark');
     if (marks.length === 0) return;
-    const expiryUs = riseUs + (request.expiryUs - request.causeUs);
+    const expiryUs = riseUs + MARK_US;
     const placeTravel = Number.NaN;
     this.#start({ ...request, causeUs: riseUs, expiryUs, placeTravel, orders: marks }, true);
   }

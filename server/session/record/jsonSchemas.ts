@@ -56,7 +56,9 @@ const asked: Fields = {
   serial: SERIAL,
   ids: list(whole('A command id on the wire.'), 'The commands it was sent as.'),
   placeCm: orNull(number('The place intended, cm; null without one.')),
-  expiryUs: number('Board time after which the board refuses it, microseconds.'),
+  expiryUs: orNull(
+    number('Board time after which the board refuses it, microseconds; null in a slot.'),
+  ),
 };
 const notFired: Fields = { rule: RULE, serial: SERIAL, reason: REASON };
 
