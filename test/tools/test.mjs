@@ -13,6 +13,7 @@ import { fileURLToPath } from 'node:url';
 
 const root = fileURLToPath(new URL('../..', import.meta.url));
 const BROWSERS = ['chromium', 'chromium-browser', 'google-chrome-stable', 'google-chrome'];
+const COMPILER = ['gcc-avr', 'avr-libc', 'binutils-avr'];
 const windows = process.platform === 'win32';
 
 function run(command, args, env = {}) {
@@ -45,6 +46,22 @@ function ensureBrowser() {
       '`sudo apt-get install chromium` (Debian, Ubuntu), or set LAPWING_CHROMIUM to the program.',
   );
   return '';
+}
+
+/** The compiler with which the firmware's test builds it again; Debian's packages when root. */
+function ensureCompiler() {
+  if (onPath('avr-gcc') !== undefined && onPath('avr-objcopy') !== undefined) return;
+  if (process.getuid?.() === 0 && onPath('apt-get') !== undefined) {
+    console.log('test: no avr-gcc here; installing the Debian packages');
+    const env = { DEBIAN_FRONTEND: 'noninteractive' };
+    run('apt-get', ['update', '-q'], env);
+    run('apt-get', ['install', '-q', '-y', '--no-install-recommends', ...COMPILER], env);
+    if (onPath('avr-gcc') !== undefined) return;
+  }
+  console.log(
+    'test: no avr-gcc found, so the test that builds the firmware again will fail. Install it ' +
+      `with \`sudo apt-get install ${COMPILER.join(' ')}\` (Debian, Ubuntu).`,
+  );
 }
 
 function ensurePackages() {
@@ -97,6 +114,7 @@ function main() {
     return { passed: 0, failed: 1 };
   }
   const browser = ensureBrowser();
+  ensureCompiler();
   step('lint (biome check)', tool('@biomejs/biome/bin/biome', ['check', '.']));
   step('the type check (tsc)', tool('typescript/bin/tsc', ['--noEmit']));
   step('the build', run(process.execPath, ['test/tools/build.mjs']));

@@ -36,14 +36,18 @@ extern slot_t *volatile slot_heads[2];     /* falling, rising: the next target i
 extern volatile uint8_t slot_head_lows[2]; /* the low byte of its target */
 extern volatile uint8_t slot_hits;         /* counts hits: changes whenever a list's head was taken */
 
-void slots_take_hits(void);
-bool slots_hit_waiting(void);
+extern uint8_t slot_hits_seen;
+void slots_book_hits(void);
+static inline bool slots_hit_waiting(void) { return slot_hits_seen != slot_hits; }
+static inline void slots_take_hits(void) {
+  if (slots_hit_waiting()) slots_book_hits();
+}
 bool slot_arm(slot_t *slot);
 void slot_disarm(slot_t *slot, uint8_t kind, uint8_t reason);
 void slots_end(uint32_t keep, uint16_t outputs, uint8_t reason);
 void slots_sweep(void);
 bool slots_share_low_byte(int32_t target);
-bool slots_armed_on(uint8_t output);
+mask_t slots_armed_outputs(void);
 void slots_refresh_fast(uint8_t output);
 bool slots_have(uint32_t id);
 
@@ -73,6 +77,7 @@ extern volatile uint8_t bank_held, bank_wanted; /* by whom it may be run is in o
 void bank_service(void);
 void bank_hold(void);
 void bank_release(void);
+void bank_release_unchanged(void);
 uint8_t output_shape_reason(const output_t *line, const shape_t *shape);
 bool output_slot_fast(const slot_t *slot);
 void output_begin(uint8_t n, uint32_t id, const shape_t *shape, uint32_t us, int32_t count);
@@ -98,7 +103,7 @@ extern uint16_t tag, previous_tag;
 void command_obey(uint8_t type, uint16_t frame_tag, const void *payload);
 uint8_t command_payload_bytes(uint8_t type);
 void command_tick(void);
-bool host_is_fresh(void);
+extern volatile uint8_t host_fresh; /* a beat of less than 150 ms age has come: outputs may be fed */
 
 /* ---- voice.c: what the board says. */
 void voice_outcome(uint32_t id, uint8_t kind, uint8_t reason, uint8_t output, uint32_t us,
@@ -134,4 +139,5 @@ extern uint8_t reset_cause;
 void board_begin(void);
 bool board_round(void);
 void board_tick(void);
+void board_inputs(uint16_t levels, uint32_t us, int32_t count);
 #endif

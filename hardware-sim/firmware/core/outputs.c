@@ -13,8 +13,14 @@
 
 #define NEVER UINT32_MAX
 #define LOOK_AGAIN_US 16000 /* half of what the 16-bit timer reaches */
+/* The service comes this long before a rise and waits for it, so that it is not late by its own work; */
+#define EARLY_US 200
+/* and then begins with this much to go, which the checks before it take at least. */
+#define FIRST_RISE_TAKES_US 50
+#define NEXT_RISE_TAKES_US 12
 
 output_t outputs[N_OUTPUTS];
+static mask_t active; /* outputs that are owned: the others have nothing due */
 volatile uint8_t bank_held, bank_wanted;
 
 static inline bool owned(const output_t *line) { return line->flags & (COMMAND | SYNC); }
@@ -44,8 +50,11 @@ static bool far_enough(const output_t *line, int32_t count) {
 }
 
 static bool allowed(const output_t *line, const shape_t *shape) {
-  return shape->repeats <= line->allowance_rises &&
-         (uint64_t)shape->width_us * shape->repeats <= line->allowance_us;
+  if (shape->repeats > line->allowance_rises) return false;
+  /* width * repeats in 48 bits, from two products of 32. */
+  uint32_t low = (uint32_t)(uint16_t)shape->width_us * shape->repeats;
+  uint32_t high = (uint32_t)(uint16_t)(shape->width_us >> 16) * shape->repeats + (low >> 16);
+  return high <= 0xffff && (high << 16 | (uint16_t)low) <= line->allowance_us;
 }
 
 static uint8_t rise_reason(const output_t *line, const shape_t *shape, uint32_t us, int32_t count) {
@@ -91,7 +100,7 @@ static bool raise_pin(uint8_t n, uint32_t *us) {
 
 /* The 1 kHz tick cuts the output by itself when this runs out; a little over, so that it comes last. */
 static void set_cut(uint8_t n, uint32_t longest_us) {
-  uint32_t ms = (longest_us >> 10) + (longest_us >> 15) + 3;
+  cut_ms_t ms = (longest_us >> 10) + (longest_us >> 15) + 3;
   hal_irq_off();
   hal_cut_ms[n] = ms;
   hal_irq_on();
@@ -120,6 +129,7 @@ static void book_rise(uint8_t n, uint32_t us) {
 void output_begin(uint8_t n, uint32_t id, const shape_t *shape, uint32_t us, int32_t count) {
   output_t *line = &outputs[n];
   line->flags |= COMMAND | ROSE;
+  active |= BIT(n);
   line->ending = R_NONE;
   line->own.command.id = id;
   line->own.command.on_us = 0;
@@ -133,8 +143,8 @@ void output_begin(uint8_t n, uint32_t id, const shape_t *shape, uint32_t us, int
 }
 
 /*
- * A command's first rise, or the reason why not. `window` (0: none) is the pulse that may have a
- * count window.
+ * A command's first rise, or the reason why not. `window` (0: none) is the pulse whose start has
+ * come, or will within a few microseconds, and that may have a count window.
  */
 void bank_rise(uint32_t id, uint8_t n, const shape_t *shape, const pulse_t *window, int32_t count) {
   uint32_t us;
@@ -146,6 +156,8 @@ void bank_rise(uint32_t id, uint8_t n, const shape_t *shape, const pulse_t *wind
       hal_irq_off();
       count = hal_count();
       hal_irq_on();
+      uint32_t early_us = window->start_us - us;
+      if ((window->flags & START_AT) && early_us <= FIRST_RISE_TAKES_US) us = window->start_us;
     }
     bool outside = window && (window->flags & COUNT_WINDOW) &&
                    ((int32_t)((uint32_t)count - (uint32_t)window->count_from) < 0 ||
@@ -174,6 +186,7 @@ void bank_rise_hit(slot_t *slot, uint32_t us) {
 static void done(uint8_t n, uint8_t reason, uint32_t us, int32_t count) {
   output_t *line = &outputs[n];
   line->flags &= (uint8_t)~COMMAND;
+  active &= (mask_t)~BIT(n);
   line->left = 0;
   voice_outcome(line->own.command.id, DONE, reason, n, us, count, line->own.command.on_us);
 }
@@ -186,7 +199,7 @@ static int32_t count_now(void) {
 }
 
 /* The next rise of a train that is due, or its end. */
-static void rise_again(uint8_t n, uint32_t now_us) {
+static void rise_again(uint8_t n) {
   output_t *line = &outputs[n];
   uint32_t us;
   if (line->flags & SYNC) {
@@ -195,19 +208,18 @@ static void rise_again(uint8_t n, uint32_t now_us) {
     voice_edge(SYNC_EDGE | n, 1, us, count_now());
     return;
   }
+  uint32_t due_us = line->rise_us + line->own.command.period_us - line->late_us;
   uint8_t reason = R_NONE;
   if (line->longest_on_us == 0) reason = R_NOT_CONFIGURED;
   else if (line->width_us > line->longest_on_us) reason = R_LONGEST_ON;
-  /* The last fall may have been a little late; the gap is kept, the period gives way. */
-  else if (!gap_over(line, now_us + line->late_us)) reason = R_LEAST_GAP;
+  else if (!gap_over(line, due_us + line->late_us)) reason = R_LEAST_GAP;
   else if (line->allowance_rises < 1 || line->width_us > line->allowance_us) reason = R_ALLOWANCE;
   if (reason) {
-    done(n, reason, now_us, count_now());
+    done(n, reason, hal_now_us(), count_now());
     return;
   }
-  uint32_t due_us = line->rise_us + line->own.command.period_us - line->late_us;
   while (!raise_pin(n, &us)) slots_take_hits();
-  line->late_us = (uint16_t)(us - due_us);
+  line->late_us = (int32_t)(us - due_us) > 0 ? (uint16_t)(us - due_us) : 0;
   book_rise(n, us);
 }
 
@@ -281,6 +293,7 @@ void bank_stop(uint8_t n, uint8_t reason) {
   if (line->flags & ON) fall(n);
   else if (command) done(n, reason, hal_now_us(), count_now());
   line->flags &= (uint8_t)~SYNC;
+  active &= (mask_t)~BIT(n);
 }
 
 static void end_unrisen(uint16_t mask, uint8_t reason) {
@@ -367,6 +380,7 @@ void output_sync(const sync_t *message) {
     return;
   }
   line->flags |= SYNC;
+  active |= BIT(n);
   line->width_us = message->width_us;
   line->own.sync.random = message->seed ? message->seed : 1;
   line->own.sync.least_wait_us = least;
@@ -386,9 +400,8 @@ void bank_forget_old_falls(void) {
 
 /* ---- The service */
 
-/* Microseconds until the output changes by itself; 0: it is due; all ones: never. */
+/* Microseconds until an active output changes by itself; 0: it is due. */
 static uint32_t due_in(const output_t *line, uint32_t now_us) {
-  if (!(line->flags & (ON | COMMAND | SYNC))) return NEVER;
   uint32_t limit_us = line->span_us;
   if (line->flags & ON) {
     if (line->width_us < limit_us) limit_us = line->width_us;
@@ -402,11 +415,10 @@ static uint32_t due_in(const output_t *line, uint32_t now_us) {
 /* @returns microseconds until a least gap is over that an armed slot may wait for */
 static uint32_t give_permits(uint32_t now_us) {
   uint32_t next_us = NEVER;
-  for (uint8_t n = 0; n < N_OUTPUTS; n++) {
+  mask_t armed = slots_armed_outputs() & (mask_t)~hal_permits;
+  for (uint8_t n = 0; armed; n++, armed >>= 1) {
     output_t *line = &outputs[n];
-    if ((hal_permits & BIT(n)) || line->longest_on_us == 0 || owned(line) || !slots_armed_on(n)) {
-      continue;
-    }
+    if (!(armed & 1) || line->longest_on_us == 0 || owned(line)) continue;
     if (!gap_over(line, now_us)) {
       uint32_t left_us = line->least_gap_us - (now_us - line->fall_us);
       if (left_us < next_us) next_us = left_us;
@@ -423,18 +435,19 @@ static uint32_t give_permits(uint32_t now_us) {
 /* Falls before rises, trains before waiting pulses: WIRE.md, rule 23. */
 static void run_due(void) {
   uint32_t now_us = hal_now_us();
-  for (uint8_t n = 0; n < N_OUTPUTS; n++) {
-    output_t *line = &outputs[n];
-    if ((line->flags & ON) && due_in(line, now_us) == 0) fall(n);
+  mask_t left = active;
+  for (uint8_t n = 0; left; n++, left >>= 1) {
+    if ((left & 1) && (outputs[n].flags & ON) && due_in(&outputs[n], now_us) == 0) fall(n);
   }
-  now_us = hal_now_us();
-  for (uint8_t n = 0; n < N_OUTPUTS; n++) {
-    output_t *line = &outputs[n];
-    if (!(line->flags & ON) && due_in(line, now_us) == 0) rise_again(n, now_us);
+  left = active;
+  for (uint8_t n = 0; left; n++, left >>= 1) {
+    if (!(left & 1) || (outputs[n].flags & ON)) continue;
+    if (due_in(&outputs[n], now_us) <= NEXT_RISE_TAKES_US) rise_again(n);
   }
-  while (waiting_rise_due(now_us)) continue;
+  while (waiting_rise_due(now_us + FIRST_RISE_TAKES_US)) continue;
 }
 
+/* Returns with interrupts off, so that the interrupt that runs it cannot come again before it left. */
 void bank_service(void) {
   for (;;) {
     slots_take_hits();
@@ -442,26 +455,38 @@ void bank_service(void) {
     book_falls();
     run_due();
     uint32_t now_us = hal_now_us();
-    uint32_t next_us = give_permits(now_us);
-    uint32_t waiting_us = waiting_next_us(now_us);
-    if (waiting_us < next_us) next_us = waiting_us;
-    if (next_us > LOOK_AGAIN_US) next_us = LOOK_AGAIN_US;
-    mask_t falls = 0;
-    for (uint8_t n = 0; n < N_OUTPUTS; n++) {
+    uint32_t rise_us = waiting_next_us(now_us), fall_us = give_permits(now_us);
+    rise_us = rise_us > FIRST_RISE_TAKES_US ? rise_us - FIRST_RISE_TAKES_US : 0;
+    if (fall_us > LOOK_AGAIN_US) fall_us = LOOK_AGAIN_US;
+    mask_t falls = 0, left = active;
+    for (uint8_t n = 0; left; n++, left >>= 1) {
+      if (!(left & 1)) continue;
       uint32_t due_us = due_in(&outputs[n], now_us);
-      if (due_us > next_us) continue;
-      if (due_us < next_us) falls = 0;
-      next_us = due_us;
-      if (outputs[n].flags & ON) falls |= BIT(n);
+      if (!(outputs[n].flags & ON)) {
+        due_us = due_us > NEXT_RISE_TAKES_US ? due_us - NEXT_RISE_TAKES_US : 0;
+        if (due_us < rise_us) rise_us = due_us;
+      } else if (due_us <= fall_us) {
+        if (due_us < fall_us) falls = 0;
+        fall_us = due_us;
+        falls |= BIT(n);
+      }
+    }
+    if (rise_us <= EARLY_US && rise_us < fall_us) {
+      uint32_t until_us = now_us + rise_us;
+      while ((int32_t)(until_us - hal_now_us()) > 0 && !bank_wanted && !slots_hit_waiting()) continue;
+      continue;
+    }
+    if (rise_us < fall_us) {
+      fall_us = rise_us - EARLY_US;
+      falls = 0;
     }
     hal_irq_off();
-    bool again = bank_wanted || slots_hit_waiting();
-    if (!again) {
-      hal_schedule(now_us + next_us, falls);
+    if (!bank_wanted && !slots_hit_waiting()) {
+      hal_schedule(now_us + fall_us, falls);
       bank_held = 0;
+      return;
     }
     hal_irq_on();
-    if (!again) return;
   }
 }
 
@@ -471,4 +496,18 @@ void bank_hold(void) {
   hal_barrier();
 }
 
-void bank_release(void) { bank_service(); }
+void bank_release(void) {
+  bank_service();
+  hal_irq_on();
+}
+
+/* The same where nothing was changed that the service would have to look at. */
+void bank_release_unchanged(void) {
+  hal_irq_off();
+  if (bank_wanted || slots_hit_waiting()) {
+    hal_irq_on();
+    bank_service();
+  }
+  bank_held = 0;
+  hal_irq_on();
+}

@@ -10,7 +10,7 @@ slot_t slots[N_SLOTS] __attribute__((used));
 slot_t *volatile slot_heads[2] __attribute__((used));
 volatile uint8_t slot_head_lows[2] __attribute__((used));
 volatile uint8_t slot_hits __attribute__((used));
-static uint8_t hits_seen;
+uint8_t slot_hits_seen;
 
 /* Counts still to go in the slot's own direction; 0 or less: not ahead any more. */
 static int32_t ahead(const slot_t *slot, int32_t count) {
@@ -30,12 +30,10 @@ static void set_head(uint8_t rising, slot_t *slot) {
   if (slot) slot_head_lows[rising] = (uint8_t)slot->target;
 }
 
-bool slots_hit_waiting(void) { return hits_seen != slot_hits; }
-
 /* Keeps the books of what the interrupt has fired. Those that rose come first: they own. */
-void slots_take_hits(void) {
+void slots_book_hits(void) {
   while (slots_hit_waiting()) {
-    hits_seen = slot_hits;
+    slot_hits_seen = slot_hits;
     for (uint8_t rose = 2; rose-- > 0;) {
       for (slot_t *slot = slots; slot < slots + N_SLOTS; slot++) {
         if (slot->state != SLOT_HIT || (slot->rose != 0) != rose) continue;
@@ -124,11 +122,13 @@ bool slots_share_low_byte(int32_t target) {
   return false;
 }
 
-bool slots_armed_on(uint8_t output) {
+/* Bit n: a slot is armed to raise output n. */
+mask_t slots_armed_outputs(void) {
+  mask_t mask = 0;
   for (slot_t *slot = slots; slot < slots + N_SLOTS; slot++) {
-    if (slot->state == SLOT_ARMED && slot->output == output) return true;
+    if (slot->state == SLOT_ARMED) mask |= BIT(slot->output);
   }
-  return false;
+  return mask;
 }
 
 /* Which slots on this output the interrupt may fire by itself, as limits are now. */
