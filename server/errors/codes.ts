@@ -203,6 +203,31 @@ export const ERRORS = {
     "The session's description, `session.json`, is missing or not as its schema says.",
     'Compare it with `server/session/session.schema.json`, and mend it by hand; the record does not depend on it.',
   ),
+  recordNoSession: entry(
+    'RECORD_NO_SESSION',
+    'The record holds no beginning of a session.',
+    'Its first part is lost or it was never begun: look at what `lapwing mend SESSION` says is missing.',
+  ),
+  exportFolderBad: entry(
+    'EXPORT_FOLDER_BAD',
+    'What was to be exported could not be written there.',
+    'Choose another place with `--into`, one with room on the disk; nothing half written is left behind.',
+  ),
+  exportFormatUnknown: entry(
+    'EXPORT_FORMAT_UNKNOWN',
+    'There is no export of that name.',
+    'Say `--to tables` for CSV, or `--to nwb` for one NWB file.',
+  ),
+  alignEdgesBad: entry(
+    'ALIGN_EDGES_BAD',
+    'The file of edge times cannot be read.',
+    'Give one time a line, or a CSV with a header and `--column`; seconds, or samples with `--rate`.',
+  ),
+  alignRefused: entry(
+    'ALIGN_REFUSED',
+    "The edges could not be matched with the session's own beyond doubt, so nothing was written.",
+    'Check that the file is of this session and line (`--line`), that times are in seconds or `--rate` is right, and that both edges were not exported.',
+  ),
   rulesInvalid: entry(
     'RULES_INVALID',
     'The rules file has mistakes.',

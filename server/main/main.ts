@@ -5,6 +5,7 @@ import { packageVersion } from '../packageRoot.js';
 import { checkCommand } from './check.js';
 import { demoCommand } from './demo.js';
 import { explainCommand } from './explain.js';
+import { exportCommand } from './export.js';
 import { mendCommand } from './mend.js';
 import { portsCommand } from './ports.js';
 import { quietCommand } from './quiet.js';
@@ -27,6 +28,7 @@ const program = new Command('lapwing')
   .addCommand(explainCommand())
   .addCommand(replayCommand())
   .addCommand(mendCommand())
+  .addCommand(exportCommand())
   .addCommand(portsCommand())
   .addCommand(quietCommand());
 

@@ -1,0 +1,104 @@
+import type { StampedDecision } from '../session/decisions.js';
+import type { SessionData } from './readSession.js';
+
+type Of<K extends StampedDecision['kind']> = Extract<StampedDecision, { kind: K }>;
+
+/** One output's part in a firing, or a sham: where it was meant to be, and where it was. */
+export interface Firing {
+  readonly input: number;
+  readonly rule: string;
+  readonly serial: number;
+  readonly sham: boolean;
+  /** Started by the board's own slot, or decided in the host. */
+  readonly armed: boolean;
+  readonly output: string | null;
+  readonly lap: number;
+  /** When the rules decided (or the slot was armed), and the first rise. */
+  readonly decidedUs: number;
+  readonly boardUs: number;
+  /** Microseconds on, all pulses of it; null where the board never said. */
+  readonly onUs: number | null;
+  /** Rise after the decision; null for an armed one, which the board starts at the place. */
+  readonly latencyUs: number | null;
+  readonly speedCmPerS: number;
+  /** The place intended; where the rise was by the counts of that moment; the distance. */
+  readonly placeCm: number | null;
+  readonly riseCm: number | null;
+  readonly errorMm: number | null;
+  /** `riseCm` after the lap's slip, found at the next mark, is shared out evenly over the lap. */
+  readonly correctedCm: number | null;
+  /** Half widths. As decided: by this session's slips so far unseen. Corrected: by this lap's own. */
+  readonly decidedUncertaintyMm: number | null;
+  readonly correctedUncertaintyMm: number | null;
+}
+
+/** Every firing and sham of the session, in order of its decision. */
+export function firingsOf(session: SessionData): Firing[] {
+  const { decisions, rig } = session;
+  const slips = slipsByLap(decisions, rig.belt.lengthCm);
+  const typicalMm = rms([...slips.values()]);
+  const halfCountMm = 5 / rig.belt.countsPerCm;
+  const asked = new Map<string, number>();
+  const doneByOutput = falls(decisions);
+  const firings: Firing[] = [];
+  for (const d of decisions) {
+    if (d.kind === 'asked' || d.kind === 'armed') asked.set(`${d.rule} ${d.serial}`, d.boardUs);
+    if (d.kind !== 'fired') continue;
+    const boardUs = d.riseUs ?? d.boardUs;
+    const decidedUs = asked.get(`${d.rule} ${d.serial}`) ?? d.boardUs;
+    const riseCm = d.riseCm ?? (d.sham ? d.positionCm : null);
+    const share = riseCm === null ? null : riseCm / rig.belt.lengthCm;
+    const slipMm = slips.get(d.lap);
+    const real = share === null || slipMm === undefined ? null : riseCm! - (slipMm / 10) * share;
+    firings.push({
+      ...{ input: d.input, rule: d.rule, serial: d.serial, sham: d.sham, armed: d.armed },
+      ...{ output: d.output, lap: d.lap, decidedUs, boardUs },
+      onUs: d.output === null ? null : (doneByOutput(d)?.onUs ?? null),
+      latencyUs: d.armed || d.riseUs === null ? null : d.riseUs - decidedUs,
+      speedCmPerS: d.speedCmPerS,
+      ...{ placeCm: d.placeCm, riseCm, errorMm: d.errorMm, correctedCm: real },
+      decidedUncertaintyMm:
+        share === null || typicalMm === null ? null : halfCountMm + typicalMm * share,
+      correctedUncertaintyMm:
+        share === null || slipMm === undefined
+          ? null
+          : halfCountMm + Math.abs(slipMm) * Math.max(share, 1 - share),
+    });
+  }
+  return firings;
+}
+
+/**
+ * Slip that each lap's end showed, mm. Slip is taken as gathered since the mark before; a lap whose
+ * mark was ignored, missed or followed a re-homing has none.
+ */
+export function slipsByLap(
+  decisions: readonly StampedDecision[],
+  beltLengthCm: number,
+): Map<number, number> {
+  const slips = new Map<number, number>();
+  for (const d of decisions) {
+    if (d.kind !== 'seam' || d.slipMm === null || d.event !== 'accepted') continue;
+    const afterSeam = d.positionCm !== null && d.positionCm < beltLengthCm / 2;
+    slips.set(afterSeam ? d.lap - 1 : d.lap, d.slipMm);
+  }
+  return slips;
+}
+
+/** The fall that belongs to a rise: the next on its output. */
+function falls(decisions: readonly StampedDecision[]) {
+  const done = new Map<string, Of<'pulse done'>[]>();
+  for (const d of decisions) {
+    if (d.kind !== 'pulse done') continue;
+    const list = done.get(d.output) ?? [];
+    list.push(d);
+    done.set(d.output, list);
+  }
+  return (fired: Of<'fired'>) =>
+    done.get(fired.output!)?.find((d) => d.input >= fired.input && d.rule === fired.rule);
+}
+
+function rms(values: readonly number[]): number | null {
+  if (values.length === 0) return null;
+  return Math.sqrt(values.reduce((sum, value) => sum + value * value, 0) / values.length);
+}
