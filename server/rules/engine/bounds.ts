@@ -27,8 +27,9 @@ export function boundsOf(sum: Sum, names: Names): Bounds {
       if (sum.operator === '-') {
         return { least: left.least - right.most, most: left.most - right.least };
       }
+      const factor = names.factorOf(sum);
       const pairs = [left.least, left.most].flatMap((a) =>
-        [right.least, right.most].map((b) => (sum.operator === '*' ? a * b : a / b)),
+        [right.least, right.most].map((b) => (sum.operator === '*' ? a * b : a / b) * factor),
       );
       if (sum.operator === '/' && right.least <= 0 && right.most >= 0) return ANY;
       return pairs.some(Number.isNaN)

@@ -38,7 +38,12 @@ export function compileSum(b: Builder, sum: Sum): Amount {
       return known === undefined ? (s) => -of(s) : constant(-known);
     }
     case 'binary':
-      return compileBinary(sum.operator, compileSum(b, sum.left), compileSum(b, sum.right));
+      return compileBinary(
+        sum.operator,
+        compileSum(b, sum.left),
+        compileSum(b, sum.right),
+        b.names.factorOf(sum),
+      );
     case 'measure':
       return compileMeasure(sum.measure);
     case 'scoped':
@@ -56,14 +61,19 @@ export function compileSum(b: Builder, sum: Sum): Amount {
   }
 }
 
-function compileBinary(operator: '+' | '-' | '*' | '/', left: Amount, right: Amount): Amount {
+function compileBinary(
+  operator: '+' | '-' | '*' | '/',
+  left: Amount,
+  right: Amount,
+  factor: number,
+): Amount {
   const make = (): Amount => {
     if (operator === '+') return (s) => left(s) + right(s);
     if (operator === '-') return (s) => left(s) - right(s);
-    if (operator === '*') return (s) => left(s) * right(s);
+    if (operator === '*') return (s) => left(s) * right(s) * factor;
     return (s) => {
       const divisor = right(s);
-      return divisor === 0 ? Number.NaN : left(s) / divisor;
+      return divisor === 0 ? Number.NaN : (left(s) / divisor) * factor;
     };
   };
   const amount = make();

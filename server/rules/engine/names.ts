@@ -10,6 +10,7 @@ import type {
   TableDecl,
   ValueDecl,
 } from '../ast.js';
+import { baseFactor, dimensionOf, multiply, type Powers, powersOf } from '../checks/dimensions.js';
 import type { OutputFacts, RigFacts } from '../facts.js';
 
 /** What each name of a checked file stands for. */
@@ -70,6 +71,22 @@ export class Names {
     throw new Error(`not a checked rules file: ${name} is no ${kinds.join(' or ')}`);
   }
 
+  /** What the units of an amount come to; a sum's are those of its left side. */
+  powersOf(sum: Sum): Powers {
+    if (sum.kind === 'negate') return this.powersOf(sum.of);
+    if (sum.kind !== 'binary') return powersOf(this.dimensionOf(sum));
+    const left = this.powersOf(sum.left);
+    if (sum.operator === '+' || sum.operator === '-') return left;
+    return multiply(left, this.powersOf(sum.right), sum.operator === '*' ? 1 : -1);
+  }
+
+  /** What the base numbers' product or quotient must be multiplied by; 1 for a sum. */
+  factorOf(sum: Sum & { kind: 'binary' }): number {
+    if (sum.operator === '+' || sum.operator === '-') return 1;
+    const sign = sum.operator === '*' ? 1 : -1;
+    return baseFactor(this.powersOf(sum.left), this.powersOf(sum.right), sign);
+  }
+
   dimensionOf(sum: Sum): Dimension {
     switch (sum.kind) {
       case 'quantity':
@@ -78,19 +95,8 @@ export class Names {
         return 'length';
       case 'negate':
         return this.dimensionOf(sum.of);
-      case 'binary': {
-        const left = this.dimensionOf(sum.left);
-        const right = this.dimensionOf(sum.right);
-        if (sum.operator === '+' || sum.operator === '-') return left;
-        if (sum.operator === '*') {
-          if (left === 'number') return right;
-          if (right === 'number') return left;
-          return productDimension(left, right);
-        }
-        if (left === right) return 'number';
-        if (right === 'number') return left;
-        return quotientDimension(left, right);
-      }
+      case 'binary':
+        return dimensionOf(this.powersOf(sum)) ?? 'number';
       case 'name': {
         const meaning = this.meanings.get(sum.name);
         if (meaning?.kind === 'value') return this.dimensionOf(meaning.decl.value.base);
@@ -120,15 +126,6 @@ export class Names {
     if (first.kind === 'quantity') return first.dimension;
     return this.meanings.get(first.name)?.kind === 'place' ? 'length' : 'number';
   }
-}
-
-function quotientDimension(left: Dimension, right: Dimension): Dimension {
-  if (left === 'length') return right === 'time' ? 'speed' : 'time';
-  return left === 'number' && right === 'time' ? 'rate' : 'number';
-}
-function productDimension(left: Dimension, right: Dimension): Dimension {
-  const pair = `${left} ${right}`;
-  return pair === 'speed time' || pair === 'time speed' ? 'length' : 'number';
 }
 
 /** The names that a piece of the tree mentions, directly or through what they stand for. */
