@@ -40,6 +40,8 @@ export interface WebOptions {
 }
 
 const BODY_BYTES = 16 << 10;
+/** For files whose name carries a hash of what is in them. */
+const FOR_GOOD = 'public, max-age=31536000, immutable';
 
 /** Builds the server and begins to look for the loop; `listen` and `close` are Fastify's. */
 export function buildWeb(options: WebOptions): FastifyInstance {
@@ -217,9 +219,9 @@ export function buildWeb(options: WebOptions): FastifyInstance {
       root: options.dashboard,
       index: 'index.html',
       // Names under assets/ carry a hash of their content.
-      setHeaders: (reply, path) => {
+      setHeaders: (response, path) => {
         const lasting = /[/\\]assets[/\\]/.test(path);
-        reply.header('cache-control', lasting ? 'public, max-age=31536000, immutable' : 'no-cache');
+        response.setHeader('cache-control', lasting ? FOR_GOOD : 'no-cache');
       },
     });
   }
