@@ -218,6 +218,7 @@ export function buildWeb(options: WebOptions): FastifyInstance {
     app.register(fastifyStatic, {
       root: options.dashboard,
       index: 'index.html',
+      cacheControl: false,
       // Names under assets/ carry a hash of their content.
       setHeaders: (response, path) => {
         const lasting = /[/\\]assets[/\\]/.test(path);
