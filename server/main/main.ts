@@ -2,6 +2,7 @@
 /** The command line: the one place that names every command. */
 import { Command } from 'commander';
 import { packageVersion } from '../packageRoot.js';
+import { alignCommand } from './align.js';
 import { checkCommand } from './check.js';
 import { demoCommand } from './demo.js';
 import { explainCommand } from './explain.js';
@@ -29,6 +30,7 @@ const program = new Command('lapwing')
   .addCommand(replayCommand())
   .addCommand(mendCommand())
   .addCommand(exportCommand())
+  .addCommand(alignCommand())
   .addCommand(portsCommand())
   .addCommand(quietCommand());
 
