@@ -1,5 +1,6 @@
 import { randomBytes } from 'node:crypto';
-import { readFileSync } from 'node:fs';
+import { readFileSync, realpathSync, statSync } from 'node:fs';
+import { dirname, sep } from 'node:path';
 import { LapwingError } from '../errors/codes.js';
 import type { RulesFile } from '../rules/ast.js';
 import { compile } from '../rules/engine/compile.js';
@@ -23,7 +24,19 @@ export interface PreparedRules {
 
 /** Reads a rules file and everything that it brings in; every problem at once, with its place. */
 export function readRules(path: string, rig: Rig | undefined): Checked {
-  return checkText(path, (name) => readFileSync(name), rig && factsOf(rig));
+  return checkText(path, (name) => readInside(path, name), rig && factsOf(rig));
+}
+
+/** Larger than any file that the reader accepts; what it refuses for its size need not be read. */
+const MOST_BYTES = 4 << 20;
+
+/** Reads the rules file or what it brings in; a link that leads out of its folder is refused. */
+function readInside(rulesPath: string, name: string): Buffer {
+  const folder = dirname(realpathSync(rulesPath));
+  const real = realpathSync(name);
+  if (!real.startsWith(folder + sep)) throw new Error('it is a link that leads out of the folder');
+  if (statSync(real).size > MOST_BYTES) throw new Error('it is larger than 4 MiB');
+  return readFileSync(real);
 }
 
 /**

@@ -1,4 +1,4 @@
-import { readdirSync, readFileSync } from 'node:fs';
+import { readdirSync } from 'node:fs';
 import { basename, dirname, join, relative } from 'node:path';
 import { packageVersion } from '../packageRoot.js';
 import type { Identity } from '../wire/messages.js';
@@ -126,13 +126,6 @@ function inputFiles(rig: Rig, rules: PreparedRules): InputFile[] {
         role: 'included',
         source: relative(base, file.path),
         content: bytes(file.text),
-      }),
-    ),
-    ...rules.file.tables.map(
-      (table): InputFile => ({
-        role: 'included',
-        source: table.file.name,
-        content: readFileSync(join(base, table.file.name)),
       }),
     ),
   ];
