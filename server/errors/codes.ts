@@ -148,6 +148,31 @@ export const ERRORS = {
     'The running session has no such button, choice, phase or rules file, or the value is out of bounds.',
     'Load the page again: it shows what this session offers and between which bounds.',
   ),
+  webRulesPath: entry(
+    'WEB_RULES_PATH',
+    'This is no rules file that the page may read or write.',
+    'Name a .yaml file in the rules folder of the rig file or below it; links and `..` are refused.',
+  ),
+  webRulesChanged: entry(
+    'WEB_RULES_CHANGED',
+    'The rules file is not as it was when it was opened, so it was not overwritten.',
+    'Open it again to see what is there now, or save under another name.',
+  ),
+  webRulesUnwritable: entry(
+    'WEB_RULES_UNWRITABLE',
+    'The rules file could not be read or written.',
+    'Check the permissions of the rules folder and the room on the disk.',
+  ),
+  webNoRig: entry(
+    'WEB_NO_RIG',
+    'The web process was not told which rig file it serves.',
+    'Start Lapwing with `lapwing serve --rig RIG`, or give the web process `--rig-file`.',
+  ),
+  webRehearsalBusy: entry(
+    'WEB_REHEARSAL_BUSY',
+    'A rehearsal is running already, and there is one at a time.',
+    'Wait for it to end, or cancel it: `DELETE /api/rehearse`.',
+  ),
   webInternal: entry(
     'WEB_INTERNAL',
     'The web process met a fault of its own; the session is not touched by it.',

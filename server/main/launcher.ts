@@ -10,7 +10,7 @@ export interface LaunchPlan {
   readonly rig: Rig;
   readonly loop: LoopOptions;
   readonly web?: { readonly host: string; readonly port: number };
-  /** Arguments for the simulated rig, when the rig file's port is `simulated`. */
+  /** Arguments for the simulated rig, when the rig file's port is `simulated` or `emulated`. */
   readonly simulatedRig?: readonly string[];
 }
 
@@ -60,8 +60,9 @@ export class Launcher {
 
   async start(): Promise<void> {
     this.#port = this.#plan.loop.port;
-    if (this.#plan.rig.port === 'simulated' && this.#port === undefined) {
-      this.#port = await this.#startSimulatedRig();
+    const { port } = this.#plan.rig;
+    if ((port === 'simulated' || port === 'emulated') && this.#port === undefined) {
+      this.#port = await this.#startSimulatedRig(port === 'emulated' ? ['--emulated'] : []);
     }
     this.#startLoop(this.#plan.loop);
   }
@@ -89,10 +90,11 @@ export class Launcher {
     this.#loop?.kill('SIGKILL');
   }
 
-  async #startSimulatedRig(): Promise<string> {
+  async #startSimulatedRig(board: readonly string[]): Promise<string> {
     const tcp = process.platform === 'win32' ? ['--tcp', '0'] : [];
     const child = this.#fork('../../hardware-sim/simulatedRigProcess.js', [
       ...tcp,
+      ...board,
       ...simulatedRigArguments(this.#plan.rig),
       ...(this.#plan.simulatedRig ?? []),
     ]);
@@ -158,8 +160,10 @@ export class Launcher {
     const port = this.#webPort ?? this.#plan.web!.port;
     const { socketPath, tokenFile } = rigAddress(this.#plan.rig.name);
     const log = process.env.LAPWING_LOG ?? 'warn';
+    const { rigPath, rulesFolder } = this.#plan.loop;
     const child = this.#fork('../web/webProcess.js', [
-      ...['--socket', socketPath, '--token-file', tokenFile],
+      ...['--socket', socketPath, '--token-file', tokenFile, '--rig-file', rigPath],
+      ...(rulesFolder === undefined ? [] : ['--rules-folder', rulesFolder]),
       ...['--host', host, '--port', String(port), '--log', log],
     ]);
     this.#web = child;

@@ -7,6 +7,10 @@ import { parseRules, type ReadFile } from './text/parseRules.js';
 export interface Checked {
   /** The rules; absent when there is an error. */
   readonly file?: RulesFile;
+  /** What could be read, mistakes and all: to show an outline while someone types, never to run. */
+  readonly draft?: RulesFile;
+  /** Names that are declared, though their phrase could not be read. */
+  readonly broken: ReadonlySet<string>;
   readonly problems: readonly Problem[];
   readonly sources: readonly Source[];
 }
@@ -24,5 +28,9 @@ export function checkText(path: string, content: string | ReadFile, rig?: RigFac
   const meant = failed ? checked.filter(({ severity }) => severity === 'error') : checked;
   const problems = inOrder([...parsed.problems, ...meant]);
   const right = parsed.file && !problems.some(({ severity }) => severity === 'error');
-  return { ...(right ? { file: parsed.file } : {}), problems, sources };
+  return {
+    ...(right ? { file: parsed.file } : {}),
+    ...(draft ? { draft } : {}),
+    ...{ broken, problems, sources },
+  };
 }

@@ -12,11 +12,14 @@ import { LapwingError } from '../errors/codes.js';
 import { type Beginning, LocalClient, quietOnce } from '../loop/localClient.js';
 import { packageVersion } from '../packageRoot.js';
 import type { OperatorAct } from '../session/inputs.js';
+import type { Rig } from '../session/rig/rig.js';
 import { checkAct } from './acts.js';
 import { checkSender, RateLimit, SECURITY_HEADERS } from './gates.js';
 import { Mirror } from './mirror.js';
 import { openapi } from './openapi.js';
 import { PROBLEM_TYPE, problem, problemFrom, sendProblem } from './problems.js';
+import type { Rehearsals } from './rehearsal/rehearsals.js';
+import { addRulesRoutes } from './rules/routes.js';
 import { bodies } from './schemas.js';
 import { STREAM_LIMITS, Stream, type StreamLimits } from './stream.js';
 
@@ -28,6 +31,10 @@ export interface WebOptions {
   /** The built dashboard; without it only the HTTP interface is served. */
   readonly dashboard?: string;
   readonly version?: string;
+  /** For editing and rehearsing rules: the rig that the loop runs, and its rules folder if another. */
+  readonly rig?: Rig | undefined;
+  readonly rulesFolder?: string;
+  readonly rehearsals?: Rehearsals;
   /** Further host names that this service answers to, without port. */
   readonly allowedHosts?: readonly string[];
   /** `false` is silent; else pino's level, to stderr. */
@@ -166,8 +173,9 @@ export function buildWeb(options: WebOptions): FastifyInstance {
     { schema: { body: bodies.begin } },
     async (request) => {
       const { rules } = request.body;
-      // Only a file that the loop itself offered: no path from a request reaches the file system.
-      if (mirror.setup && !mirror.setup.rulesFiles.includes(rules)) {
+      // Only a file that the loop offered, or that lies in its folder by now: no path from a request reaches the file system.
+      const offered = [...(mirror.setup?.rulesFiles ?? []), ...(rulesFolder?.list() ?? [])];
+      if (mirror.setup && !offered.includes(rules)) {
         throw new LapwingError('webActUnknown', `There is no rules file ${JSON.stringify(rules)}.`);
       }
       await loop.begin(request.body);
@@ -195,6 +203,17 @@ export function buildWeb(options: WebOptions): FastifyInstance {
   app.post('/api/quiet', { schema: { body: bodies.quiet } }, async () => {
     await stopEverything();
     return { done: true };
+  });
+
+  const rulesFolder = addRulesRoutes(app, {
+    rig: options.rig,
+    rulesFolder: options.rulesFolder,
+    ...(options.rehearsals === undefined ? {} : { rehearsals: options.rehearsals }),
+    saved: (rulesFiles) => {
+      if (!mirror.setup) return;
+      mirror.setup = { ...mirror.setup, rulesFiles };
+      stream.announce({ tell: 'setup', setup: mirror.setup });
+    },
   });
 
   app.server.on('upgrade', (request, socket: Socket, head) => {

@@ -1,5 +1,6 @@
 /** The HTTP interface in OpenAPI 3.1, served at `/api/openapi.json`; made of the same schemas that check. */
 import { ERRORS } from '../errors/codes.js';
+import { rulesSchemas } from './rules/answerSchemas.js';
 import { bodies } from './schemas.js';
 
 const json = (schema: unknown) => ({ 'application/json': { schema } });
@@ -52,6 +53,54 @@ export function openapi(version: string): Record<string, unknown> {
       '/api/acts': asks("An operator's act: an ordered, recorded input of the session.", 'Act'),
       '/api/end': asks('End the session and its record.', 'End'),
       '/api/quiet': asks('Stop everything: all outputs idle, stimuli and water held.', 'Quiet'),
+      '/api/rules': shows('The rules files there are, and the names of the rig.', ref('RulesList')),
+      '/api/rules/file': {
+        get: {
+          summary: 'A rules file, as it is on disk.',
+          parameters: [{ name: 'path', in: 'query', required: true, schema: { type: 'string' } }],
+          responses: {
+            '200': { description: 'The file.', content: json(ref('RulesFile')) },
+            default: problems,
+          },
+        },
+        put: {
+          summary: 'Save a rules file whole; what it replaces stays beside it as NAME.bak.',
+          requestBody: { required: true, content: json(ref('SaveRules')) },
+          responses: {
+            '200': { description: 'Saved.', content: json(ref('Saved')) },
+            default: problems,
+          },
+        },
+      },
+      '/api/rules/check': {
+        post: {
+          ...asks('Check a text as a rules file for this rig.', 'CheckRules').post,
+          responses: {
+            '200': {
+              description: 'Every problem, an outline with places on the belt, and plain words.',
+              content: json(ref('RulesChecked')),
+            },
+            default: problems,
+          },
+        },
+      },
+      '/api/rehearse': {
+        ...shows('The newest rehearsal: how far it is, or its result.', ref('Rehearsal')),
+        post: {
+          ...asks('Rehearse a text on the simulated rig, one at a time.', 'Rehearse').post,
+          responses: {
+            '200': { description: 'It has begun.', content: json(ref('Begun')) },
+            default: problems,
+          },
+        },
+        delete: {
+          summary: 'Cancel the rehearsal that runs, if one does.',
+          responses: {
+            '200': { description: 'None runs.', content: json(ref('Done')) },
+            default: problems,
+          },
+        },
+      },
       '/api/openapi.json': shows('This description.', ref('Object')),
       '/healthz': shows('Whether this process lives and has the loop.', ref('Object')),
     },
@@ -61,6 +110,10 @@ export function openapi(version: string): Record<string, unknown> {
         Act: bodies.act,
         End: bodies.end,
         Quiet: bodies.quiet,
+        CheckRules: bodies.checkRules,
+        SaveRules: bodies.saveRules,
+        Rehearse: bodies.rehearse,
+        ...rulesSchemas,
         Object: { type: 'object' },
         Done: { type: 'object', required: ['done'], properties: { done: { const: true } } },
         Problem: {

@@ -15,6 +15,11 @@ const STATUS = new Map<string, number>([
   [ERRORS.webTooManyViewers.code, 503],
   [ERRORS.webNotFound.code, 404],
   [ERRORS.webActUnknown.code, 422],
+  [ERRORS.webRulesPath.code, 422],
+  [ERRORS.webRulesChanged.code, 409],
+  [ERRORS.webRulesUnwritable.code, 500],
+  [ERRORS.webNoRig.code, 503],
+  [ERRORS.webRehearsalBusy.code, 409],
   [ERRORS.webInternal.code, 500],
   [ERRORS.loopAway.code, 503],
   [ERRORS.loopTokenRefused.code, 503],
@@ -62,7 +67,7 @@ export function problemFrom(error: unknown): Problem {
     return problemOf(new LapwingError('webBodyInvalid', detail), errors);
   }
   if (failed.code === 'FST_ERR_CTP_BODY_TOO_LARGE') {
-    return problem('webBodyTooLarge', 'The body is over 16 KiB.');
+    return problem('webBodyTooLarge', 'The body is longer than this request may have.');
   }
   if (failed.code === 'FST_ERR_CTP_INVALID_MEDIA_TYPE') {
     const found = problem('webBodyInvalid', 'The content type must be application/json.');

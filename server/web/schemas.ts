@@ -49,4 +49,22 @@ export const bodies = {
   act: closed(['act'], { act: operatorAct, who }),
   end: closed([], { reason: text(200) }),
   quiet: closed([], {}),
+  checkRules: closed(['text'], { text: text(256 << 10), path: text(200, 1) }),
+  saveRules: closed(['path', 'text'], {
+    path: text(200, 1),
+    text: text(256 << 10),
+    version: text(64),
+  }),
+  rehearse: closed(['text'], {
+    text: text(256 << 10),
+    path: text(200, 1),
+    seed: text(64),
+    animalSeed: { type: 'integer', minimum: 0, maximum: 2 ** 31 - 1 },
+    trained: { type: 'boolean' },
+    minutes: { type: 'integer', minimum: 1, maximum: 240 },
+  }),
+} as const;
+
+export const queries = {
+  rulesFile: closed(['path'], { path: text(200, 1) }),
 } as const;

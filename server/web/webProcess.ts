@@ -1,7 +1,11 @@
-/** The web process's entry: `webProcess --socket PATH --token-file FILE [--host H] [--port N]`. */
+/**
+ * The web process's entry: `webProcess --socket PATH --token-file FILE [--rig-file FILE]
+ * [--rules-folder FOLDER] [--host H] [--port N]`.
+ */
 import { fileURLToPath } from 'node:url';
 import { parseArgs } from 'node:util';
 import { LapwingError } from '../errors/codes.js';
+import { readRig } from '../session/rig/readRig.js';
 import { buildWeb } from './buildWeb.js';
 import { isLoopback } from './gates.js';
 
@@ -17,6 +21,8 @@ export async function runWeb(argv: readonly string[]): Promise<void> {
     options: {
       socket: { type: 'string' },
       'token-file': { type: 'string' },
+      'rig-file': { type: 'string' },
+      'rules-folder': { type: 'string' },
       host: { type: 'string', default: '127.0.0.1' },
       port: { type: 'string', default: String(DEFAULT_PORT) },
       dashboard: { type: 'string' },
@@ -31,6 +37,8 @@ export async function runWeb(argv: readonly string[]): Promise<void> {
   const app = buildWeb({
     socketPath: values.socket,
     ...(values['token-file'] === undefined ? {} : { tokenFile: values['token-file'] }),
+    ...(values['rig-file'] === undefined ? {} : { rig: readRig(values['rig-file']) }),
+    ...(values['rules-folder'] === undefined ? {} : { rulesFolder: values['rules-folder'] }),
     dashboard: values.dashboard ?? built,
     log: values.log === 'silent' ? false : values.log,
   });

@@ -1,6 +1,9 @@
+import { join } from 'node:path';
 import type { FastifyInstance } from 'fastify';
 import { afterEach } from 'vitest';
 import WebSocket from 'ws';
+import { packageRoot } from '../../server/packageRoot.js';
+import { readRig } from '../../server/session/rig/readRig.js';
 import { buildWeb, type WebOptions } from '../../server/web/buildWeb.js';
 import type { StreamMessage } from '../../server/web/streamMessages.js';
 import { FakeLoop } from '../tools/fakeLoop.js';
@@ -24,12 +27,13 @@ afterEach(async () => {
 export async function startWeb(options: Partial<WebOptions> = {}): Promise<WebRig> {
   const loop = await new FakeLoop().start();
   const { socketPath, tokenFile } = loop;
-  const app = buildWeb({ socketPath, tokenFile, log: false, requestsPerS: 1000, ...options });
+  const rig = readRig(join(packageRoot, 'hardware-sim/demo/rig.yaml'));
+  const app = buildWeb({ socketPath, tokenFile, rig, log: false, requestsPerS: 1000, ...options });
   const url = await app.listen({ host: '127.0.0.1', port: 0 });
-  const rig = { loop, app, url };
-  running.push(rig);
+  const web = { loop, app, url };
+  running.push(web);
   await until(async () => (await app.inject('/api/setup')).statusCode === 200);
-  return rig;
+  return web;
 }
 
 /** Waits for something to become true, however slow the machine; fails after 20 s. */

@@ -1,0 +1,96 @@
+import { type ChildProcess, fork } from 'node:child_process';
+import { join } from 'node:path';
+import { ERRORS, LapwingError } from '../../errors/codes.js';
+import { packageRoot } from '../../packageRoot.js';
+import type { RehearsalState } from '../rules/rulesMessages.js';
+import type { RehearsalReport, RehearsalTask } from './rehearsalMessages.js';
+
+const PROCESS = join(packageRoot, 'dist/server/main/rehearsalProcess.js');
+const MOST_REAL_MS = 120_000;
+/** A rehearsal needs some tens of megabytes; a file that makes it need more is stopped. */
+const MOST_MEMORY_MB = 512;
+
+/** At most one rehearsal at a time, in a process of its own; the newest result is kept. */
+export class Rehearsals {
+  #state: RehearsalState = { state: 'none' };
+  #child: ChildProcess | undefined;
+  #number = 0;
+
+  constructor(
+    private readonly script = PROCESS,
+    private readonly mostRealMs = MOST_REAL_MS,
+  ) {}
+
+  get state(): RehearsalState {
+    return this.#state;
+  }
+
+  /**
+   * Begins one; its number tells its state from another's.
+   * @throws LapwingError WEB_REHEARSAL_BUSY
+   */
+  begin(task: RehearsalTask): number {
+    if (this.#state.state === 'running') {
+      const { sessionS } = this.#state;
+      const done = `${Math.round(sessionS / 60)} minutes of its session are done`;
+      throw new LapwingError('webRehearsalBusy', `${done}.`);
+    }
+    const number = ++this.#number;
+    const mostS = task.minutes * 60;
+    this.#state = { state: 'running', number, sessionS: 0, mostS };
+    const child = fork(this.script, [], {
+      // Nothing of this process's own: no debugger port, no loader.
+      execArgv: [`--max-old-space-size=${MOST_MEMORY_MB}`],
+      stdio: ['ignore', 'ignore', 'ignore', 'ipc'],
+    });
+    this.#child = child;
+    const late = setTimeout(() => {
+      this.#fail(number, `It had not ended after ${this.mostRealMs / 1000} s of real time.`);
+      child.kill('SIGKILL');
+    }, this.mostRealMs);
+    child.on('message', (report: RehearsalReport) => {
+      if (this.#runs(number)) this.#state = stateAfter(report, number, mostS);
+    });
+    child.once('error', (error) => this.#fail(number, error.message));
+    child.once('exit', (code, signal) => {
+      clearTimeout(late);
+      if (this.#child === child) this.#child = undefined;
+      this.#fail(number, `Its process left early: ${signal ?? `status ${code}`}.`);
+    });
+    child.send(task, () => {});
+    return number;
+  }
+
+  /** Ends the one that runs; true when there was one. */
+  cancel(): boolean {
+    if (this.#state.state !== 'running') return false;
+    this.#state = { state: 'cancelled', number: this.#state.number };
+    this.#child?.kill('SIGKILL');
+    return true;
+  }
+
+  #runs(number: number): boolean {
+    return this.#state.state === 'running' && this.#state.number === number;
+  }
+
+  #fail(number: number, detail: string): void {
+    if (!this.#runs(number)) return;
+    const { code, remedy } = ERRORS.webInternal;
+    this.#state = { state: 'failed', number, code, detail, remedy };
+  }
+}
+
+function stateAfter(report: RehearsalReport, number: number, mostS: number): RehearsalState {
+  switch (report.report) {
+    case 'progress':
+      return { state: 'running', number, sessionS: report.sessionS, mostS };
+    case 'done':
+      return { state: 'done', number, result: report.result };
+    case 'failed':
+      return { state: 'failed', number, ...failure(report) };
+  }
+}
+
+function failure({ code, detail, remedy }: Extract<RehearsalReport, { report: 'failed' }>) {
+  return { code, detail, remedy };
+}
