@@ -1,4 +1,4 @@
-import { readFileSync } from 'node:fs';
+import { readdirSync, readFileSync } from 'node:fs';
 import { join } from 'node:path';
 import { afterEach, describe, expect, it } from 'vitest';
 import type { StampedDecision } from '../../server/session/decisions.js';
@@ -82,6 +82,49 @@ describe('a session on a real pseudo-terminal', { timeout: 120_000 }, () => {
     expect(description.record?.state).toBe('whole');
     expect(readFileSync(join(rig.session, 'rules.yaml'), 'utf8')).toContain('Each lap');
     await replayed(rig.session);
+  });
+
+  it('is followed by another on the same board, whose commands are taken for its own', async () => {
+    rig = await LiveRig.start({ rules: EACH_LAP });
+    const client = rig.watch();
+    const folders = ['--rules', rig.folder, '--records', rig.recordFolder];
+    rig.adopt(rig.lapwing('serve', '--rig', 'RIG', '--port', '0', ...folders));
+    await until(
+      'the board',
+      () => rig!.state?.link.state === 'up',
+      60_000,
+      () => rig!.output,
+    );
+    for (const seed of ['one', 'two']) {
+      rig.events.length = 0;
+      await client.begin({ rules: 'rules.yaml', subject: 'm1', seed });
+      const firings = () => fired(rig!.events, 'water').length + fired(rig!.events, 'gate').length;
+      await until(
+        'four firings',
+        () => firings() >= 4,
+        60_000,
+        () => rig!.output,
+      );
+      expect(rig.events.some(({ kind }) => kind === 'refused' || kind === 'uncertain')).toBe(false);
+      await client.end('enough');
+      await until(
+        'the end',
+        () => rig!.state?.session === 'ended',
+        30_000,
+        () => rig!.output,
+      );
+    }
+    const day = readdirSync(rig.recordFolder).map((name) =>
+      readDescription(join(rig!.recordFolder, name)),
+    );
+    expect(day.map(({ seed }) => seed).sort()).toEqual(['one', 'two']);
+    // What the first gave counts against the day's limit of the second.
+    const second = day.find(({ seed }) => seed === 'two')!;
+    expect(second.waterEarlierUl).toBeCloseTo(
+      day.find(({ seed }) => seed === 'one')!.water!.givenUl,
+    );
+    await rig.end('SIGINT');
+    expect(rig.status, rig.output).toBe(0);
   });
 
   it('ends in order on Ctrl-C: outputs idle, the record closed, status 0', async () => {
