@@ -2,25 +2,33 @@ import { join, resolve } from 'node:path';
 import { Command } from 'commander';
 import { readSession } from '../analysis/readSession.js';
 import { LapwingError } from '../errors/codes.js';
+import { exportNwb } from '../export/nwb/exportNwb.js';
 import { derivedFolder, writeTables } from '../export/writeTables.js';
 import { progressBar } from './progressBar.js';
 
-/** `lapwing export SESSION --to tables`: what the record holds, for other programs to read. */
+/** `lapwing export SESSION --to tables|nwb`: what the record holds, for other programs to read. */
 export function exportCommand(): Command {
   return new Command('export')
     .description("write a session's data for other programs")
     .argument('<session>', 'the session folder')
-    .requiredOption('--to <format>', '`tables` (CSV)')
+    .requiredOption('--to <format>', '`tables` (a folder of CSV) or `nwb` (one NWB 2.10 file)')
     .option('--into <path>', "where to write it; else below the session's own `derived`")
     .option('--json', 'print what was written as JSON')
     .action(async (folder: string, flags: { to: string; into?: string; json?: boolean }) => {
-      if (flags.to !== 'tables') throw new LapwingError('exportFormatUnknown', `--to ${flags.to}`);
-      const bar = progressBar('writing');
-      const session = await readSession(folder);
-      const into = resolve(flags.into ?? join(derivedFolder(folder), 'tables'));
-      writeTables(session, into, (done) => bar.show(done));
-      bar.clear();
-      const result = { format: flags.to, path: into };
-      process.stdout.write(flags.json ? `${JSON.stringify(result)}\n` : `${into}\n`);
+      const written = await write(folder, flags.to, flags.into && resolve(flags.into));
+      const result = { format: flags.to, path: written };
+      process.stdout.write(flags.json ? `${JSON.stringify(result)}\n` : `${written}\n`);
     });
+}
+
+async function write(folder: string, format: string, into: string | undefined): Promise<string> {
+  if (format === 'nwb')
+    return exportNwb(folder, into ?? join(derivedFolder(resolve(folder)), 'session.nwb'));
+  if (format !== 'tables') throw new LapwingError('exportFormatUnknown', `--to ${format}.`);
+  const bar = progressBar('writing');
+  const session = await readSession(folder);
+  const path = into ?? join(derivedFolder(resolve(folder)), 'tables');
+  writeTables(session, path, (done) => bar.show(done));
+  bar.clear();
+  return path;
 }

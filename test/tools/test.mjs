@@ -64,6 +64,26 @@ function ensureCompiler() {
   );
 }
 
+/** What reads an NWB file back and checks it: Debian's packages are installed when root. */
+function ensureNwbReaders() {
+  const python = fs.existsSync('/usr/bin/python3') ? '/usr/bin/python3' : 'python3';
+  const present = () =>
+    spawnSync(python, ['-c', 'import hdmf, h5py'], { stdio: 'ignore' }).status === 0;
+  if (present()) return;
+  if (process.getuid?.() === 0 && onPath('apt-get') !== undefined) {
+    console.log('test: no hdmf and h5py here; installing the Debian packages');
+    const env = { DEBIAN_FRONTEND: 'noninteractive' };
+    const packages = ['python3-hdmf', 'python3-h5py'];
+    run('apt-get', ['update', '-q'], env);
+    run('apt-get', ['install', '-q', '-y', '--no-install-recommends', ...packages], env);
+    if (present()) return;
+  }
+  console.log(
+    'test: hdmf and h5py are not to be had, so NWB files are written and not read back. Install ' +
+      'them with `sudo apt-get install python3-hdmf python3-h5py` (Debian, Ubuntu).',
+  );
+}
+
 function ensurePackages() {
   if (fs.existsSync(path.join(root, 'node_modules', 'vitest', 'package.json'))) return true;
   console.log('test: node_modules is missing; running `npm ci`');
@@ -114,6 +134,7 @@ function main() {
     return { passed: 0, failed: 1 };
   }
   const browser = ensureBrowser();
+  ensureNwbReaders();
   ensureCompiler();
   step('lint (biome check)', tool('@biomejs/biome/bin/biome', ['check', '.']));
   step('the type check (tsc)', tool('typescript/bin/tsc', ['--noEmit']));

@@ -1,0 +1,160 @@
+import fs from 'node:fs';
+import path from 'node:path';
+import { File, type Group } from 'h5wasm/node';
+import type { SessionData } from '../../analysis/readSession.js';
+import { LapwingError } from '../../errors/codes.js';
+import { packageVersion } from '../../packageRoot.js';
+import { syncFolder } from '../../session/writeFileWhole.js';
+import { loadHdf5, NwbBuilder, text } from './hdf5.js';
+import { putIntervals, putLicksAndWater, putRest, putStimuli } from './nwbEvents.js';
+
+/**
+ * Writes a session as one NWB 2.10 file (HDF5), under a temporary name that is synced and renamed.
+ * Times are seconds since the session began by the board's clock. The same record and the same
+ * `createdAt` give the same bytes, so `file_create_date` is the one field that may differ.
+ * @throws LapwingError EXPORT_FOLDER_BAD
+ */
+export async function writeNwb(session: SessionData, file: string, createdAt: string) {
+  await loadHdf5();
+  const temporary = `${file}.${process.pid}.new`;
+  const now = Date.now;
+  // The library stamps each object with the time; the record's own start takes its place.
+  Date.now = () => Date.parse(session.description.startedAt);
+  try {
+    fs.rmSync(temporary, { force: true });
+    const nwb = new File(temporary, 'w');
+    try {
+      fill(nwb, session, createdAt);
+      nwb.flush();
+    } finally {
+      nwb.close();
+    }
+    const fd = fs.openSync(temporary, 'r+');
+    fs.fsyncSync(fd);
+    fs.closeSync(fd);
+    fs.renameSync(temporary, file);
+    syncFolder(path.dirname(file));
+  } catch (error) {
+    fs.rmSync(temporary, { force: true });
+    throw new LapwingError('exportFolderBad', `${file}: ${(error as Error).message ?? error}`, {
+      cause: error,
+    });
+  } finally {
+    Date.now = now;
+  }
+}
+
+function fill(nwb: File, session: SessionData, createdAt: string): void {
+  const { description, rig } = session;
+  const nb = new NwbBuilder(description.name);
+  nb.typed(nwb, '/', 'NWBFile');
+  text(nwb, 'nwb_version', '2.10.0');
+  nb.texts(nwb, 'file_create_date', [createdAt]);
+  nb.text(nwb, 'identifier', nb.uuid('file'));
+  nb.text(
+    nwb,
+    'session_description',
+    `${description.title}: running on a ${rig.belt.lengthCm} cm belt`,
+  );
+  nb.text(nwb, 'session_start_time', description.startedAt);
+  nb.text(nwb, 'timestamps_reference_time', description.startedAt);
+  const names = [
+    'acquisition',
+    'analysis',
+    'processing',
+    'stimulus',
+    'general',
+    'events',
+    'scratch',
+  ];
+  const [acquisition, , processing, stimulus, general, events, scratch] = [
+    ...[...names, 'intervals'].map((name) => nb.group(nwb, name)),
+  ] as [Group, Group, Group, Group, Group, Group, Group];
+  const presentation = nb.group(stimulus, 'presentation');
+  nb.group(stimulus, 'templates');
+  putGeneral(nb, general, session);
+  putBelt(nb, acquisition, processing, session);
+  putLicksAndWater(nb, events, session);
+  putStimuli(nb, presentation, events, session);
+  putIntervals(nb, nwb.get('intervals') as Group, session);
+  putRest(nb, events, session);
+  for (const [name, file, notes] of [
+    ['rig_file', 'rig.yaml', 'The rig file that the session ran on, as it was'],
+    ['rules_file', 'rules.yaml', 'The rules file that the session ran, as it was'],
+    ['session_description', 'session.json', 'The description of the session: see its schema'],
+  ] as const) {
+    const content = fs.readFileSync(path.join(session.folder, file), 'utf8');
+    const set = nb.text(scratch, name, content === '' ? ' ' : content);
+    nb.typed(set, `/scratch/${name}`, 'ScratchData');
+    text(set, 'notes', notes);
+  }
+}
+
+function putGeneral(nb: NwbBuilder, general: Group, { description, rig }: SessionData): void {
+  const { subject, experimenter, protocolNumber, board, software } = description;
+  if (experimenter) nb.texts(general, 'experimenter', [experimenter]);
+  nb.text(general, 'session_id', description.name);
+  if (protocolNumber) nb.text(general, 'protocol', protocolNumber);
+  nb.text(general, 'experiment_description', description.title);
+  nb.texts(general, 'was_generated_by', ['lapwing', packageVersion], [1, 2]);
+  nb.text(
+    general,
+    'notes',
+    'Time zero is the beginning of the session by the clock of the board; session_start_time is ' +
+      `as good as the computer clock. Recorded by lapwing ${software.version}. Lap 0 is the partial ` +
+      'stretch before the first mark, where position is not known (NaN). file_create_date alone ' +
+      'differs when the same record is exported again.',
+  );
+  const devices = nb.group(general, 'devices');
+  const models = nb.group(devices, 'models');
+  const boardName = board?.model ?? 'board';
+  const model = nb.group(models, 'belt_rig', 'DeviceModel');
+  text(model, 'manufacturer', 'unknown');
+  text(model, 'description', `Belt treadmill with ${rig.belt.countsPerCm} encoder counts a cm`);
+  const treadmill = nb.group(devices, 'treadmill', 'Device');
+  text(
+    treadmill,
+    'description',
+    `Rig ${rig.name}, ${rig.belt.lengthCm} cm belt, board ${boardName}`,
+  );
+  treadmill.create_soft_link('/general/devices/models/belt_rig', 'model');
+  const animal = nb.group(general, 'subject', 'Subject');
+  nb.text(animal, 'subject_id', subject);
+}
+
+function putBelt(nb: NwbBuilder, acquisition: Group, processing: Group, session: SessionData) {
+  const { samples: s, beganUs } = session;
+  const n = s.length;
+  const timestamps = Float64Array.from({ length: n }, (_, i) => (s.boardUs[i]! - beganUs) / 1e6);
+  nb.series(acquisition, 'belt_encoder', {
+    ...{ data: s.count.slice(0, n), timestamps, unit: 'counts', resolution: 1 },
+    description: "The encoder's own count at each sample, signed 32 bits",
+    continuity: 'continuous',
+  });
+  const behavior = nb.group(processing, 'behavior', 'ProcessingModule');
+  text(
+    behavior,
+    'description',
+    'Place on the belt and running speed, from the encoder and the mark',
+  );
+  const timestampsOf = '/acquisition/belt_encoder';
+  const position = nb.group(behavior, 'Position', 'Position');
+  const place = nb.series(position, 'belt_position', {
+    ...{ type: 'SpatialSeries', timestampsOf, unit: 'meters', continuity: 'continuous' },
+    data: s.positionCm.slice(0, n).map((cm) => cm / 100),
+    description: 'Place along the belt, [0, length); NaN while it is not known',
+    resolution: 0.01 / session.rig.belt.countsPerCm,
+  });
+  nb.text(place, 'reference_frame', "Metres from the belt's 0 cm, along the running direction");
+  const behavioral = nb.group(behavior, 'BehavioralTimeSeries', 'BehavioralTimeSeries');
+  nb.series(behavioral, 'speed', {
+    ...{ timestampsOf, unit: 'm/s', continuity: 'continuous' },
+    data: s.speedCmPerS.slice(0, n).map((cm) => cm / 100),
+    description: `Signed speed over the last ${session.rig.belt.speedWindowUs / 1000} ms`,
+  });
+  nb.series(behavioral, 'lap', {
+    ...{ timestampsOf, unit: 'laps', continuity: 'step', resolution: 1 },
+    data: s.lap.slice(0, n),
+    description: 'Lap number; 0 before the first mark',
+  });
+}

@@ -1,0 +1,158 @@
+import { execFileSync, spawnSync } from 'node:child_process';
+import { createHash } from 'node:crypto';
+import { existsSync, readdirSync, readFileSync } from 'node:fs';
+import { join } from 'node:path';
+import { afterAll, beforeAll, describe, expect, it } from 'vitest';
+import { firingsOf } from '../../server/analysis/firings.js';
+import { dropsOf, lapsOf, licksOf } from '../../server/analysis/happenings.js';
+import { readSession, type SessionData } from '../../server/analysis/readSession.js';
+import { exportNwb } from '../../server/export/nwb/exportNwb.js';
+import { writeNwb } from '../../server/export/nwb/writeNwb.js';
+import { packageRoot } from '../../server/packageRoot.js';
+import { recordedSession } from '../analysis/recorded.js';
+
+// Debian's Python has the readers; another python3 on the path may not.
+const PYTHON = existsSync('/usr/bin/python3') ? '/usr/bin/python3' : 'python3';
+const readers = spawnSync(PYTHON, ['-c', 'import hdmf, h5py']).status === 0;
+const NOTICE =
+  'notice: python3-hdmf and python3-h5py are not installed, so this file is not read back';
+
+const recorded = recordedSession({ minutes: 6, acts: [{ act: 'note', text: 'a µm, "so"' }] });
+afterAll(() => recorded.remove());
+const file = join(recorded.root, 'session.nwb');
+const CREATED = '2026-03-05T10:00:00.000+00:00';
+let session: SessionData;
+beforeAll(async () => {
+  session = await readSession(recorded.folder);
+  await writeNwb(session, file, CREATED);
+});
+
+/** What h5py finds: microseconds as whole numbers, and digests of the long columns. */
+const CODE = `
+import sys, json, hashlib, h5py, numpy as np
+f = h5py.File(sys.argv[1], "r")
+us = lambda a: np.rint(a[()] * 1e6).astype("<i8")
+sha = lambda a: hashlib.sha256(a.tobytes()).hexdigest()
+text = lambda d: [v.decode() for v in d[()]]
+e, beh = f["events"], f["processing/behavior"]
+out = {
+  "samples": len(f["acquisition/belt_encoder/data"]),
+  "sampleUs": sha(us(f["acquisition/belt_encoder/timestamps"])),
+  "counts": sha(f["acquisition/belt_encoder/data"][()].astype("<i4")),
+  "position": sha(beh["Position/belt_position/data"][()].astype("<f8")),
+  "sharedTimes": f["acquisition/belt_encoder/timestamps"] == beh["BehavioralTimeSeries/speed/timestamps"],
+  "lickUs": us(e["licks/timestamp"]).tolist(),
+  "dropUs": us(e["water/timestamp"]).tolist(), "openUs": us(e["water/duration"]).tolist(),
+  "volumeNl": np.rint(e["water/volume"][()] * 1e3).astype(int).tolist(),
+  "firingUs": us(e["firings/timestamp"]).tolist(), "firingRule": text(e["firings/rule"]),
+  "sham": e["firings/sham"][()].tolist(),
+  "gateUs": us(f["stimulus/presentation/gate/timestamps"]).tolist(),
+  "lapUs": us(f["intervals/laps/start_time"]).tolist(), "lap": f["intervals/laps/lap"][()].tolist(),
+  "rules": f["scratch/rules_file"][()].decode(), "subject": f["general/subject/subject_id"][()].decode(),
+  "seamUs": us(e["line_seam/timestamp"]).tolist(),
+  "notes": [d for d, w in zip(text(e["decisions/detail"]), text(e["decisions/what"])) if w == "note"],
+  "start": f["session_start_time"][()].decode(),
+}
+print(json.dumps(out, default=bool))`;
+
+const since = (us: number) => us - session.beganUs;
+const sha = (bytes: ArrayBufferView) =>
+  createHash('sha256')
+    .update(new Uint8Array(bytes.buffer, bytes.byteOffset, bytes.byteLength))
+    .digest('hex');
+
+describe('an NWB file', () => {
+  it("has no error by the standard's own schema", () => {
+    if (!readers) {
+      console.log(NOTICE);
+      return;
+    }
+    const script = join(packageRoot, 'test', 'export', 'nwb', 'validate_nwb.py');
+    const { stdout, stderr } = spawnSync(PYTHON, ['-B', script, file], { encoding: 'utf8' });
+    expect(stdout, stderr).toMatch(/\n0 errors\n$/);
+    expect(stdout).toContain('nwb_version 2.10.0');
+  });
+
+  it('equals the record to the microsecond and the count when h5py reads it', () => {
+    if (!readers) {
+      console.log(NOTICE);
+      return;
+    }
+    const found = JSON.parse(
+      execFileSync(PYTHON, ['-B', '-c', CODE, file], { encoding: 'utf8', maxBuffer: 1 << 26 }),
+    );
+    const { samples, description } = session;
+    const n = samples.length;
+    const sampleUs = BigInt64Array.from({ length: n }, (_, i) =>
+      BigInt(since(samples.boardUs[i]!)),
+    );
+    const firings = firingsOf(session);
+    const drops = dropsOf(session);
+    const laps = lapsOf(session);
+    expect(found).toEqual({
+      samples: n,
+      sampleUs: sha(sampleUs),
+      counts: sha(samples.count.slice(0, n)),
+      position: sha(samples.positionCm.slice(0, n).map((cm) => cm / 100)),
+      sharedTimes: true,
+      lickUs: licksOf(session).map((lick) => since(lick.boardUs)),
+      dropUs: drops.map((drop) => since(drop.boardUs)),
+      openUs: drops.map((drop) => drop.openUs),
+      volumeNl: drops.map((drop) => Math.round(drop.volumeUl * 1_000)),
+      firingUs: firings.map((firing) => since(firing.boardUs)),
+      firingRule: firings.map((firing) => firing.rule),
+      sham: firings.map((firing) => Number(firing.sham)),
+      gateUs: firings.flatMap(({ output, boardUs, onUs }) =>
+        output === 'gate' ? [since(boardUs), since(boardUs + onUs!)] : [],
+      ),
+      lapUs: laps.map((lap) => since(lap.startUs)),
+      lap: laps.map((lap) => lap.lap),
+      rules: readFileSync(join(recorded.folder, 'rules.yaml'), 'utf8'),
+      subject: 'm07',
+      seamUs: session.edges.filter((e) => e.name === 'seam').map((e) => since(e.boardUs)),
+      notes: session.decisions.flatMap((d) => (d.kind === 'note' ? [d.text] : [])),
+      start: description.startedAt,
+    });
+    expect(found.notes).toContain('a µm, "so"');
+    expect(found.gateUs.length).toBeGreaterThan(2);
+  });
+
+  it('is the same bytes again, but for the date of its making', async () => {
+    const again = join(recorded.root, 'again.nwb');
+    await writeNwb(session, again, CREATED);
+    expect(readFileSync(again).equals(readFileSync(file))).toBe(true);
+    expect(readdirSync(recorded.root).filter((name) => name.endsWith('.new'))).toEqual([]);
+  });
+
+  it('that cannot be written leaves nothing behind and says so', async () => {
+    const nowhere = join(recorded.root, 'no', 'such', 'folder.nwb');
+    await expect(writeNwb(session, nowhere, CREATED)).rejects.toMatchObject({
+      code: 'EXPORT_FOLDER_BAD',
+    });
+  });
+
+  it('is written by a process of its own', async () => {
+    const path = join(recorded.root, 'child.nwb');
+    expect(await exportNwb(recorded.folder, path)).toBe(path);
+    // HDF5's own signature (HDF5 file format specification, superblock).
+    expect(readFileSync(path).subarray(0, 8)).toEqual(Buffer.from('\x89HDF\r\n\x1a\n', 'latin1'));
+    await expect(exportNwb(join(recorded.root, 'none'), path)).rejects.toMatchObject({
+      code: 'RECORD_DESCRIPTION_BAD',
+    });
+  });
+
+  it('of a session in which nothing happened is valid too', async () => {
+    const rules =
+      'title: Nothing\nbelt: 180 cm\nrules:\n  none:\n    when: session begins\n    do: note\nend: time >= 2 s\n';
+    const empty = recordedSession({ rules, minutes: 1, simulated: { startCm: 20 } });
+    const path = join(empty.root, 'empty.nwb');
+    await writeNwb(await readSession(empty.folder), path, CREATED);
+    const script = join(packageRoot, 'test', 'export', 'nwb', 'validate_nwb.py');
+    if (readers)
+      expect(spawnSync(PYTHON, ['-B', script, path], { encoding: 'utf8' }).stdout).toMatch(
+        /\n0 errors\n$/,
+      );
+    else console.log(NOTICE);
+    empty.remove();
+  });
+});
