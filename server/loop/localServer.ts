@@ -1,7 +1,7 @@
 import { timingSafeEqual } from 'node:crypto';
 import { readFileSync } from 'node:fs';
 import { createServer, type Server, type Socket } from 'node:net';
-import { LapwingError } from '../errors/codes.js';
+import { asKnown, LapwingError } from '../errors/codes.js';
 import type { EventRing } from './eventRing.js';
 import { LineReader } from './lines.js';
 import {
@@ -156,16 +156,9 @@ export class LocalServer {
   }
 
   #refuse(client: Client, request: number | undefined, error: unknown): void {
-    const known = error instanceof LapwingError ? error : undefined;
-    client.socket.write(
-      lineOf({
-        tell: 'error',
-        ...(request === undefined ? {} : { request }),
-        code: known?.code ?? 'LOOP_FAILED',
-        message: (error as Error).message,
-        remedy: known?.remedy ?? 'Look at the log of the loop.',
-      }),
-    );
+    const { code, message, remedy } = asKnown(error);
+    const which = request === undefined ? {} : { request };
+    client.socket.write(lineOf({ tell: 'error', ...which, code, message, remedy }));
   }
 
   #tickOnlyWhileWatched(): void {

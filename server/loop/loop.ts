@@ -2,7 +2,7 @@ import { existsSync, readFileSync, rmSync } from 'node:fs';
 import { join, resolve, sep } from 'node:path';
 import { setTimeout as delay } from 'node:timers/promises';
 import type { Logger } from 'pino';
-import { LapwingError } from '../errors/codes.js';
+import { asKnown, LapwingError } from '../errors/codes.js';
 import { BoardLink } from '../link/boardLink.js';
 import type { LinkHandler, LinkUp } from '../link/linkHandler.js';
 import { portOpener } from '../link/resolvePort.js';
@@ -423,13 +423,8 @@ export class Loop implements LinkHandler, LoopService {
   }
 
   #fail(error: unknown): void {
-    const known = error instanceof LapwingError ? error : undefined;
-    this.#report({
-      report: 'failed',
-      code: known?.code ?? 'LOOP_FAILED',
-      message: (error as Error).message,
-      remedy: known?.remedy ?? '',
-    });
+    const { code, message, remedy } = asKnown(error);
+    this.#report({ report: 'failed', code, message, remedy });
     process.exitCode = 2;
     this.#leave();
   }

@@ -3,7 +3,7 @@
  * over IPC, and ends its session cleanly when the launcher goes away.
  */
 import { pino } from 'pino';
-import { LapwingError } from '../errors/codes.js';
+import { asKnown } from '../errors/codes.js';
 import { readRig } from '../session/rig/readRig.js';
 import { Loop } from './loop.js';
 import type { LoopOptions, LoopReport } from './options.js';
@@ -24,14 +24,8 @@ function report(what: LoopReport): void {
 }
 
 function fail(error: unknown): never {
-  const known = error instanceof LapwingError ? error : undefined;
-  const { message, stack } = error as Error;
-  report({
-    report: 'failed',
-    code: known?.code ?? 'LOOP_FAILED',
-    message: known ? message : (stack ?? message),
-    remedy: known?.remedy ?? '',
-  });
+  const { code, message, remedy } = asKnown(error);
+  report({ report: 'failed', code, message, remedy });
   process.exit(CANNOT_RUN);
 }
 
