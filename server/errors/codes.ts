@@ -340,10 +340,3 @@ export class LapwingError extends Error {
     this.remedy = ERRORS[name].remedy;
   }
 }
-
-/** The error itself when it is a known one; else a fault of Lapwing's own, with all that it says. */
-export function asKnown(error: unknown): LapwingError {
-  if (error instanceof LapwingError) return error;
-  const { message, stack } = error as Error;
-  return new LapwingError('loopFailed', stack ?? message, { cause: error });
-}

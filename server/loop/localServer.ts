@@ -1,7 +1,8 @@
 import { timingSafeEqual } from 'node:crypto';
 import { readFileSync } from 'node:fs';
 import { createServer, type Server, type Socket } from 'node:net';
-import { asKnown, LapwingError } from '../errors/codes.js';
+import { asKnown } from '../errors/asKnown.js';
+import { LapwingError } from '../errors/codes.js';
 import type { EventRing } from './eventRing.js';
 import { LineReader } from './lines.js';
 import {

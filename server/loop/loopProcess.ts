@@ -3,7 +3,7 @@
  * over IPC, and ends its session cleanly when the launcher goes away.
  */
 import { pino } from 'pino';
-import { asKnown } from '../errors/codes.js';
+import { asKnown } from '../errors/asKnown.js';
 import { readRig } from '../session/rig/readRig.js';
 import { Loop } from './loop.js';
 import type { LoopOptions, LoopReport } from './options.js';
