@@ -12,6 +12,7 @@ import { SeamMark } from './animal/seamMark.js';
 import { Board } from './board/board.js';
 import type { BoardOutput } from './board/boardOutput.js';
 import type { BoardOptions } from './board/boardSetting.js';
+import type { RigBoard } from './board/rigBoard.js';
 
 /** Which number on the board goes where. */
 export interface Wiring {
@@ -45,8 +46,8 @@ export interface SimulatedRigOptions {
 const SEGMENT_US = 1000;
 const EVENT = { none: 0, input: 1, lick: 2, output: 3, mark: 4, slot: 5 } as const;
 
-export class SimulatedRig {
-  readonly board: Board;
+export class SimulatedRig<B extends RigBoard = Board> {
+  readonly board: B;
   readonly animal: Animal;
   readonly belt: Belt;
   readonly wiring: Wiring;
@@ -66,7 +67,8 @@ export class SimulatedRig {
   #count: number;
   #valveOpenedUs = 0;
 
-  constructor(options: SimulatedRigOptions = {}, output?: BoardOutput) {
+  /** @param board another board than the simulated one, which `output` hears */
+  constructor(options: SimulatedRigOptions = {}, output?: BoardOutput, board?: B) {
     const seed = options.seed ?? 1;
     const beltParameters = { ...BELT, ...options.belt };
     const animalParameters = { ...ANIMAL, ...options.animal };
@@ -79,7 +81,9 @@ export class SimulatedRig {
     this.belt = new Belt(beltParameters, startCm, this.#count, seed + 2);
     this.#mark = new SeamMark(beltParameters, startCm, seed + 3);
     const startInputs = this.#mark.level << this.wiring.seamInput;
-    this.board = new Board({ seed: seed + 1, startInputs, ...options.board }, output);
+    const ready = board ?? new Board({ seed: seed + 1, startInputs, ...options.board }, output);
+    this.board = ready as B;
+    if (board !== undefined) board.setInput(this.wiring.seamInput, this.#mark.level);
     this.animal = new Animal(
       animalParameters,
       beltParameters.lengthCm,

@@ -33,6 +33,7 @@ const HELP = `Options:
   --valve-dead-us X --valve-us-per-ul X   the valve's line
   --board-id N        the board's own number
   --start-us X        what the board's clock shows at first
+  --emulated          the board is the firmware's own program, run by an emulator
   --link PATH         keep a symbolic link to the port at PATH
   --tcp PORT          serve TCP on this machine instead of a pseudo-terminal (0: any free port)
 Commands on standard input, a line each:
@@ -57,6 +58,7 @@ const { values } = parseArgs({
     'valve-us-per-ul': { type: 'string' },
     'board-id': { type: 'string' },
     'start-us': { type: 'string' },
+    emulated: { type: 'boolean' },
     link: { type: 'string' },
     tcp: { type: 'string' },
     help: { type: 'boolean' },
@@ -109,7 +111,7 @@ async function main(): Promise<void> {
     process.stdout.write(HELP);
     return;
   }
-  const paced = new PacedRig(rigOptions());
+  const paced = new PacedRig(rigOptions(), values.emulated === true);
   const heard = (bytes: Uint8Array) => paced.heard(bytes);
   let line: ByteLine;
   try {

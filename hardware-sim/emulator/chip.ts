@@ -117,7 +117,10 @@ export class Chip {
         if (opcode === OPCODE.sleep && (data[SMCR]! & SLEEP_ENABLE) !== 0) this.sleeping = true;
       }
       if (cpu.cycles >= this.#due) this.#act();
-      if ((data[SREG]! & I_FLAG) === 0) continue;
+      if ((data[SREG]! & I_FLAG) === 0) {
+        if (this.#offSince < 0) this.#offSince = cpu.cycles;
+        continue;
+      }
       if (this.#offSince >= 0) {
         const off = cpu.cycles - this.#offSince;
         if (off > this.longestOffCycles) this.longestOffCycles = off;

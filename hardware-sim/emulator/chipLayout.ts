@@ -21,6 +21,7 @@ export interface ChipLayout {
   readonly pinChange: { port: string; group: number; mask: number; vector: number };
   readonly timer1: { compareA: number; compareB: number; overflow: number };
   readonly usart: { received: number; empty: number; sent: number };
+  readonly eepromReady: number;
 }
 
 /** Words of flash to the next interrupt vector. */
@@ -40,6 +41,7 @@ export const ATMEGA328P: ChipLayout = {
   pinChange: { port: 'B', group: 0, mask: 0x6b, vector: vector(4) },
   timer1: { compareA: vector(12), compareB: vector(13), overflow: vector(14) },
   usart: { received: vector(19), empty: vector(20), sent: vector(21) },
+  eepromReady: vector(23),
 };
 
 export const ATMEGA2560: ChipLayout = {
@@ -60,4 +62,5 @@ export const ATMEGA2560: ChipLayout = {
   pinChange: { port: 'K', group: 2, mask: 0x6d, vector: vector(12) },
   timer1: { compareA: vector(18), compareB: vector(19), overflow: vector(21) },
   usart: { received: vector(26), empty: vector(27), sent: vector(28) },
+  eepromReady: vector(31),
 };

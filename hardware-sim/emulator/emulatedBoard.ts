@@ -178,8 +178,8 @@ export class EmulatedBoard {
   }
 }
 
-/** Xorshift noise, as memory holds when the power comes. */
-function fillMemory(data: Uint8Array, from: number, seed: number): void {
+/** Xorshift noise from `from` up, as memory holds when the power comes. */
+export function fillMemory(data: Uint8Array, from: number, seed: number): void {
   let x = seed | 0 || 1;
   for (let at = from; at < data.length; at++) {
     x ^= x << 13;

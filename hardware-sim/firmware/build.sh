@@ -14,7 +14,7 @@ for chip in atmega328p atmega2560; do
   avr-gcc -mmcu=$chip -DF_CPU=16000000UL -std=gnu11 -O2 -flto -fshort-enums -fno-tree-switch-conversion \
     -Wall -Wextra -Werror -fdebug-prefix-map="$here"=. -Icore -Iavr \
     avr/main.c core/board.c core/commands.c core/frames.c core/outputs.c core/random.c \
-    core/slots.c core/voice.c core/waiting.c avr/encoder.S -o "$elf"
+    core/slots.c core/voice.c core/waiting.c avr/encoder.S avr/service.S -o "$elf"
   avr-objcopy -O ihex -R .eeprom "$elf" "$out/$chip.hex"
   [ -z "$LAPWING_KEEP_ELF" ] || cp "$elf" "$LAPWING_KEEP_ELF/$chip.elf"
   avr-size "$elf" | tail -1 | awk -v chip=$chip '{ print chip ": " $1 + $2 " bytes of flash, " $2 + $3 " of RAM" }'

@@ -1,5 +1,7 @@
 import { Dice } from '../animal/dice.js';
 import { FramedOutput } from '../board/boardOutput.js';
+import type { RigBoard } from '../board/rigBoard.js';
+import { EmulatedRigBoard } from '../emulator/emulatedRigBoard.js';
 import { SimulatedRig, type SimulatedRigOptions } from '../simulatedRig.js';
 import type { ByteLine } from './byteLine.js';
 
@@ -9,7 +11,7 @@ const BUFFER_BYTES = 65_536;
 
 /** A simulated rig that keeps up with the wall clock, a step a millisecond, on a line of bytes. */
 export class PacedRig {
-  readonly rig: SimulatedRig;
+  readonly rig: SimulatedRig<RigBoard>;
   line: ByteLine | undefined;
   /** Chance that a bit is flipped, either way. */
   noise = 0;
@@ -21,9 +23,16 @@ export class PacedRig {
   #stalledUntilUs = 0;
   #timer: NodeJS.Timeout | undefined;
 
-  constructor(options: SimulatedRigOptions) {
-    const output = new FramedOutput((bytes) => this.#keep(bytes));
-    this.rig = new SimulatedRig(options, output);
+  /** @param emulated the board is the firmware, run by the emulator */
+  constructor(options: SimulatedRigOptions, emulated = false) {
+    if (emulated) {
+      const board = new EmulatedRigBoard({ seed: options.seed ?? 1 });
+      board.bytes = (bytes) => this.#keep(bytes);
+      this.rig = new SimulatedRig<RigBoard>(options, undefined, board);
+    } else {
+      const output = new FramedOutput((bytes) => this.#keep(bytes));
+      this.rig = new SimulatedRig(options, output);
+    }
     this.#dice = new Dice((options.seed ?? 1) + 77);
   }
 

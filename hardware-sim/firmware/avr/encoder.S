@@ -10,7 +10,56 @@
 #define SLOT_NEXT 8
 #define SLOT_STATE 10
 #define HIT 2
-#define SERVICE_IN 16 /* half microseconds from a hit to its book-keeping */
+
+; Compares the whole count with the target of the head of list `dir`, whose low byte it has already
+; matched. A hit raises the slot's output if it has the permit, takes that, and takes the slot out.
+; Written out for each direction: calls would cost ten cycles between the edge and the output.
+.macro fire_head dir
+  push r25
+  lds r30, slot_heads + 2 * \dir
+  lds r31, slot_heads + 2 * \dir + 1
+  tst r31                       ; no slot: memory begins above that
+  breq 3f
+  ldd r24, Z + SLOT_TARGET + 1
+  lds r25, count_high
+  cp r24, r25
+  brne 3f
+  ldd r24, Z + SLOT_TARGET + 2
+  lds r25, count_high + 1
+  cp r24, r25
+  brne 3f
+  ldd r24, Z + SLOT_TARGET + 3
+  lds r25, count_high + 2
+  cp r24, r25
+  brne 3f
+  ldd r24, Z + SLOT_FAST
+  in r25, IO(hal_permits)
+  and r24, r25
+  out IO(OUT_PIN), r24          ; the output rises here: a one in PINx toggles the pin
+  eor r25, r24
+  out IO(hal_permits), r25
+  std Z + SLOT_ROSE, r24
+  lds r24, TCNT1L
+  lds r25, TCNT1H
+  std Z + SLOT_HIT_TICKS, r24
+  std Z + SLOT_HIT_TICKS + 1, r25
+  sbi IO(EECR), EERIE           ; the service comes as soon as this is over
+  ldi r24, HIT
+  std Z + SLOT_STATE, r24
+  lds r24, slot_hits
+  inc r24
+  sts slot_hits, r24
+  ldd r24, Z + SLOT_NEXT
+  ldd r25, Z + SLOT_NEXT + 1
+  sts slot_heads + 2 * \dir + 1, r25
+  sts slot_heads + 2 * \dir, r24
+  mov r30, r24
+  mov r31, r25
+  ld r24, Z                     ; with an empty list this reads a register: no head, no match
+  sts slot_head_lows + \dir, r24
+3:
+  pop r25
+.endm
 
 .data
 .balign 16
@@ -45,28 +94,19 @@ ENCODER_VECTOR_B:
   in r30, IO(COUNT_LOW)
   tst r24
   breq leave
-  brmi down
+  brpl 5f
+  rjmp down
+5:
   sbrc r24, 1                   ; 2: no direction
   rjmp illegal
   inc r30
   out IO(COUNT_LOW), r30
-  breq carry
+  brne up
+  rjmp carry
 up:
   lds r31, slot_head_lows + 1
   cp r30, r31
-  brne leave
-  push r25
-  lds r30, slot_heads + 2
-  lds r31, slot_heads + 3
-  rcall compare
-  brne missed
-  rcall hit
-  sts slot_heads + 3, r31
-  sts slot_heads + 2, r30
-  ld r24, Z                     ; with an empty list this reads a register: no head, no match
-  sts slot_head_lows + 1, r24
-missed:
-  pop r25
+  breq 4f
 leave:
   pop r31
   pop r30
@@ -74,53 +114,52 @@ leave:
   out IO(SREG), r24
   pop r24
   reti
+4:
+  fire_head 1
+  rjmp leave
 
 down:
   subi r30, 1
   out IO(COUNT_LOW), r30
-  brcs borrow
+  brcc 1f
+  rjmp borrow
 1:
   lds r31, slot_head_lows
   cp r30, r31
-  brne leave
-  push r25
-  lds r30, slot_heads
-  lds r31, slot_heads + 1
-  rcall compare
-  brne missed
-  rcall hit
-  sts slot_heads + 1, r31
-  sts slot_heads, r30
-  ld r24, Z
-  sts slot_head_lows, r24
-  rjmp missed
+  breq 2f
+  rjmp leave
+2:
+  fire_head 0
+  rjmp leave
 
 carry:
   lds r31, count_high
   inc r31
   sts count_high, r31
-  brne up
+  brne 6f
   lds r31, count_high + 1
   inc r31
   sts count_high + 1, r31
-  brne up
+  brne 6f
   lds r31, count_high + 2
   inc r31
   sts count_high + 2, r31
+6:
   rjmp up
 
 borrow:
   lds r31, count_high
   subi r31, 1
   sts count_high, r31
-  brcc 1b
+  brcc 7f
   lds r31, count_high + 1
   subi r31, 1
   sts count_high + 1, r31
-  brcc 1b
+  brcc 7f
   lds r31, count_high + 2
   subi r31, 1
   sts count_high + 2, r31
+7:
   rjmp 1b
 
 illegal:
@@ -130,51 +169,3 @@ illegal:
   sts illegal_steps + 1, r31
   sts illegal_steps, r30
   rjmp leave
-
-; Z: the slot whose low byte has matched, or 0. Equal when the whole count has.
-compare:
-  cpi r31, 1                    ; no slot: an address below the RAM
-  brlo 2f
-  ldd r24, Z + SLOT_TARGET + 1
-  lds r25, count_high
-  cp r24, r25
-  brne 1f
-  ldd r24, Z + SLOT_TARGET + 2
-  lds r25, count_high + 1
-  cp r24, r25
-  brne 1f
-  ldd r24, Z + SLOT_TARGET + 3
-  lds r25, count_high + 2
-  cp r24, r25
-1:
-  ret
-2:
-  clz
-  ret
-
-; Z: the slot that is hit. Raises its output if it has the permit, and takes that. Z: the next slot.
-hit:
-  ldd r24, Z + SLOT_FAST
-  in r25, IO(hal_permits)
-  and r24, r25
-  out IO(OUT_PIN), r24          ; the output rises here: a one in PINx toggles the pin
-  eor r25, r24
-  out IO(hal_permits), r25
-  std Z + SLOT_ROSE, r24
-  lds r24, TCNT1L
-  lds r25, TCNT1H
-  std Z + SLOT_HIT_TICKS, r24
-  std Z + SLOT_HIT_TICKS + 1, r25
-  adiw r24, SERVICE_IN
-  sts OCR1BH, r25
-  sts OCR1BL, r24
-  ldi r24, HIT
-  std Z + SLOT_STATE, r24
-  lds r24, slot_hits
-  inc r24
-  sts slot_hits, r24
-  ldd r24, Z + SLOT_NEXT
-  ldd r25, Z + SLOT_NEXT + 1
-  mov r30, r24
-  mov r31, r25
-  ret

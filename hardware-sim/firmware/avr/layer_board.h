@@ -9,7 +9,7 @@
 #include <stdint.h>
 #endif
 
-#define N_FAULTS 4
+#define N_FAULTS 3
 
 #if defined(__AVR_ATmega328P__)
 #define N_OUTPUTS 6
@@ -17,7 +17,7 @@
 #define N_SLOTS 8
 #define N_WAITING 8
 #define N_OUTCOMES 32
-#define N_EDGES 10
+#define N_EDGES 8
 #define RX_BYTES 64
 #define TX_BYTES 64 /* an identity fills it */
 #define LINE_RECEIVED USART_RX_vect
@@ -79,6 +79,7 @@
 #define LEVELS_BEFORE GPIOR0 /* the encoder's lines as they were, B then A */
 #define COUNT_LOW GPIOR1     /* the count's low byte */
 #define hal_permits GPIOR2
+#define SERVICE_VECTOR SPM_READY_vect /* jumped to by service.S; the chip never comes to it */
 
 #ifndef __ASSEMBLER__
 typedef __uint24 cut_ms_t; /* 4.6 hours */
@@ -113,12 +114,18 @@ static inline void hal_set_idle(uint8_t mask, bool high) {
   idle_levels ^= mask;
   OUT_PIN = mask; /* writing PINx toggles: idle or on, it stays what it was */
 }
-void hal_schedule(uint32_t us, uint8_t falls);
-static inline void hal_poke(void) {
-  cli();
-  OCR1B = TCNT1 + 8;
-  sei();
+extern volatile uint8_t fall_mask;
+extern volatile uint16_t fall_ticks;
+/* Interrupts off. A time that is past, or nearly, is soon. */
+static inline void hal_schedule(uint16_t ticks, uint8_t falls) {
+  uint16_t soonest = TCNT1 + 8;
+  if ((int16_t)(ticks - soonest) < 0) ticks = soonest;
+  fall_ticks = ticks;
+  fall_mask = falls;
+  OCR1B = ticks;
 }
+static inline void hal_poke(void) { EECR |= _BV(EERIE); }
+#define hal_count_low() COUNT_LOW
 int16_t hal_receive(void);
 void hal_send(void);
 void hal_alive(uint8_t fresh);

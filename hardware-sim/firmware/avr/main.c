@@ -6,12 +6,12 @@
 
 #define BAUD 500000UL
 
-volatile uint8_t count_high[3] __attribute__((used)), idle_levels;
+volatile uint8_t count_high[3] __attribute__((used)), idle_levels __attribute__((used));
 volatile uint16_t illegal_steps __attribute__((used));
-volatile uint8_t hal_dropped;
-volatile uint16_t hal_dropped_ticks;
-static volatile uint8_t fall_mask;
-static volatile uint16_t fall_ticks;
+volatile uint8_t hal_dropped __attribute__((used));
+volatile uint16_t hal_dropped_ticks __attribute__((used));
+volatile uint8_t fall_mask __attribute__((used));
+volatile uint16_t fall_ticks __attribute__((used));
 static volatile uint32_t overflows; /* of the 16-bit clock, each 32.768 ms */
 static volatile uint8_t rx_ring[RX_BYTES], rx_head, rx_tail;
 static volatile uint8_t woken; /* an interrupt has left work to the main loop */
@@ -62,51 +62,21 @@ ISR(TIMER1_COMPA_vect) {
   TIMSK1 &= (uint8_t)~_BV(OCIE1A);
   sei();
   board_tick();
-  uint8_t levels = (uint8_t)~IN_PIN & IN_MASK;
-  if (levels != (uint8_t)hal_input_levels) {
-    /* Changes that found no room when they happened, or are being told at this moment. */
-    cli();
-    uint8_t enabled = PCICR;
-    PCICR = 0;
-    int32_t count = hal_count();
-    sei();
-    if (enabled) board_inputs((uint8_t)~IN_PIN & IN_MASK, hal_now_us(), count);
-    cli();
-    PCICR = enabled;
-  }
   cli();
   TIMSK1 |= _BV(OCIE1A);
 }
 
-/* ---- The service's timer: falls that were set up ahead come first, before anything is saved */
+/* ---- The service, which comes after a hit and after the timer's compare (service.S) */
 
-ISR(TIMER1_COMPB_vect) {
-  uint8_t falls = fall_mask;
-  if (falls) {
-    uint16_t ticks = TCNT1;
-    if ((int16_t)(ticks - fall_ticks) >= 0) {
-      hal_out_idle(falls);
-      hal_dropped |= falls;
-      hal_dropped_ticks = ticks;
-      fall_mask = 0;
-    }
-  }
-  woken = 1;
-  if (bank_held) {
-    bank_wanted = 1;
-    return;
-  }
+ISR(SERVICE_VECTOR) {
   bank_held = 1;
-  sei();
-  bank_service();
-}
-
-void hal_schedule(uint32_t us, uint8_t falls) {
-  uint16_t at = (uint16_t)us << 1, soonest = TCNT1 + 8;
-  if ((int16_t)(at - soonest) < 0) at = soonest;
-  fall_ticks = at;
-  fall_mask = falls;
-  OCR1B = at;
+  woken = 1;
+  do {
+    sei();
+    bank_service();
+    cli();
+  } while (bank_wanted || slots_hit_waiting());
+  bank_held = 0;
 }
 
 /* ---- Inputs: pulled up, active when low, so that a broken wire is an inactive one */
@@ -120,6 +90,18 @@ ISR(IN_VECTOR) {
   sei();
   board_inputs(levels, hal_extend_ticks(ticks), count);
   cli();
+  PCICR = _BV(IN_CHANGE_ENABLE);
+}
+
+/* A thousand times a second: changes that found no room to be told when they happened. */
+static void look_again(void) {
+  uint8_t levels = (uint8_t)~IN_PIN & IN_MASK;
+  if (levels == hal_input_levels) return;
+  cli();
+  PCICR = 0;
+  int32_t count = hal_count();
+  sei();
+  board_inputs((uint8_t)~IN_PIN & IN_MASK, hal_now_us(), count);
   PCICR = _BV(IN_CHANGE_ENABLE);
 }
 
@@ -167,6 +149,7 @@ void hal_send(void) {
 /* The chip's watchdog is fed by the main loop, and only while the tick comes. */
 void hal_alive(uint8_t fresh) {
   wdt_reset();
+  look_again();
   if (fresh) ALIVE_PIN = _BV(ALIVE_BIT);
 }
 

@@ -1,11 +1,11 @@
-/* The main loop's round, the 1 kHz tick, and the inputs. */
+/* The main loop's round, and the 1 kHz tick. */
 #include "board.h"
 
 uint32_t boot_id, board_id;
 uint8_t reset_cause;
 volatile cut_ms_t hal_cut_ms[N_OUTPUTS];
 volatile mask_t hal_cut;
-volatile uint16_t hal_input_levels;
+volatile uint8_t hal_input_levels;
 static volatile uint8_t ticks;
 
 /* On without the service having set its cut-off: this many ticks are borne. */
@@ -30,16 +30,6 @@ void board_tick(void) {
     hal_irq_on();
   }
   if (hal_cut) hal_poke();
-}
-
-/* What the inputs are now; a change that finds no room to be told is seen again at the next tick. */
-void board_inputs(uint16_t levels, uint32_t us, int32_t count) {
-  uint16_t changed = levels ^ hal_input_levels;
-  for (uint8_t n = 0; changed; n++, changed >>= 1, levels >>= 1) {
-    if ((changed & 1) && voice_edge(n, levels & 1, us, count)) {
-      hal_input_levels ^= (uint16_t)(1u << n);
-    }
-  }
 }
 
 /* Call once, interrupts still off or on, after the layer's own beginning. */

@@ -80,8 +80,9 @@ void bank_release(void);
 void bank_release_unchanged(void);
 uint8_t output_shape_reason(const output_t *line, const shape_t *shape);
 bool output_slot_fast(const slot_t *slot);
-void output_begin(uint8_t n, uint32_t id, const shape_t *shape, uint32_t us, int32_t count);
-void bank_rise(uint32_t id, uint8_t n, const shape_t *shape, const pulse_t *window, int32_t count);
+/* When and where a pulse may first rise: the part of it that is looked at again then. */
+typedef struct PACKED { uint8_t flags; uint32_t start_us; int32_t count_from, count_to; } window_t;
+void bank_rise(uint32_t id, uint8_t n, const shape_t *shape, const window_t *window);
 void bank_rise_hit(slot_t *slot, uint32_t us);
 void bank_stop(uint8_t n, uint8_t reason);
 void bank_end_all(uint16_t mask, uint8_t reason);
@@ -92,6 +93,13 @@ void output_sync(const sync_t *message);
 void bank_forget_old_falls(void);
 
 /* ---- waiting.c: pulses whose start is still ahead. */
+typedef struct PACKED {
+  uint32_t id;
+  uint8_t output;
+  shape_t shape;
+  window_t window;
+  uint16_t order;
+} waiting_t;
 bool waiting_add(const pulse_t *pulse, uint32_t start_us);
 bool waiting_rise_due(uint32_t now_us);
 uint32_t waiting_next_us(uint32_t now_us);
@@ -110,7 +118,31 @@ void voice_outcome(uint32_t id, uint8_t kind, uint8_t reason, uint8_t output, ui
                    int32_t count, uint32_t on_us);
 void voice_outcome_now(uint32_t id, uint8_t kind, uint8_t reason, uint8_t output);
 bool voice_repeat(uint32_t id);
-bool voice_edge(uint8_t input, uint8_t level, uint32_t us, int32_t count);
+typedef struct { uint32_t us; int32_t count; uint8_t what; } edge_t; /* SYNC_EDGE, number << 1, level */
+extern edge_t edges[N_EDGES];
+extern volatile uint8_t edges_in, edges_out;
+
+/*
+ * False: there is no room; whoever saw the edge sees it again later. Written into its callers, like
+ * `board_inputs`: they are interrupts, and calls cost them stack.
+ */
+static inline __attribute__((always_inline)) bool voice_edge(uint8_t input, uint8_t level,
+                                                             uint32_t us, int32_t count) {
+  bool room = false;
+  hal_irq_off();
+  uint8_t in = edges_in, next = (uint8_t)(in + 1 == N_EDGES ? 0 : in + 1);
+  if (next != edges_out) {
+    edge_t *edge = &edges[in];
+    edge->us = us;
+    edge->count = count;
+    edge->what = (uint8_t)((input & SYNC_EDGE) | (input & 0x0f) << 1 | level);
+    edges_in = next;
+    room = true;
+  }
+  hal_irq_on();
+  return room;
+}
+
 void voice_fault(uint8_t fault, uint32_t detail);
 void voice_identity(uint32_t nonce);
 void voice_refuse_identify(uint32_t nonce, uint16_t asker, uint8_t protocol);
@@ -139,5 +171,13 @@ extern uint8_t reset_cause;
 void board_begin(void);
 bool board_round(void);
 void board_tick(void);
-void board_inputs(uint16_t levels, uint32_t us, int32_t count);
+
+/* What the inputs are now; a change that finds no room to be told is seen again at the next tick. */
+static inline __attribute__((always_inline)) void board_inputs(uint8_t levels, uint32_t us,
+                                                               int32_t count) {
+  uint8_t changed = levels ^ (uint8_t)hal_input_levels, bit = 1;
+  for (uint8_t n = 0; changed; n++, changed >>= 1, levels >>= 1, bit <<= 1) {
+    if ((changed & 1) && voice_edge(n, levels & 1, us, count)) hal_input_levels ^= bit;
+  }
+}
 #endif

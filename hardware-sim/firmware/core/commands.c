@@ -146,7 +146,8 @@ static void obey_pulse(const pulse_t *message) {
   if (reason != R_NONE) {
     refuse(id, output, reason);
   } else if (delay_us <= 0) {
-    bank_rise(id, output, &message->shape, message, 0);
+    window_t window = {message->flags & COUNT_WINDOW, 0, message->count_from, message->count_to};
+    bank_rise(id, output, &message->shape, &window);
   } else if (!waiting_add(message, message->start_us)) {
     refuse(id, output, R_BUSY);
     voice_fault(F_QUEUE_FULL, id);

@@ -6,12 +6,12 @@
  *   cut_ms_t                          holds 2^32 us in ms
  *   hal_irq_off() hal_irq_on()        nothing may interrupt in between; not nested
  *   hal_ticks()                       a 16-bit clock of 0.5 us (interrupts off)
- *   hal_count() hal_illegal()         the encoder (interrupts off)
+ *   hal_count() hal_illegal()         the encoder (interrupts off); hal_count_low() its low byte
  *   hal_outputs_on()                  bit n: output n is not idle (interrupts off, or one reading)
  *   hal_out_on(m) hal_out_idle(m)     moves pins (interrupts off)
  *   hal_idles_high(m) hal_set_idle(m, high)   idle levels; the pin follows while it is idle
  *   hal_permits                       a byte that the encoder's interrupt clears bits of
- *   hal_schedule(us, falls)           call the service at this time, outputs `falls` idle before
+ *   hal_schedule(ticks, falls)        call the service then, outputs `falls` idle before (interrupts off)
  *   hal_poke()                        call the service soon
  *   hal_dropped hal_dropped_ticks     what the timer has made idle since, and when
  *   hal_receive() hal_send()          a byte or -1; there is something in `tx_ring`
@@ -29,5 +29,5 @@ uint32_t hal_now_wraps(uint16_t *wraps);
 uint32_t hal_extend_ticks(uint16_t ticks); /* board time when the 16-bit clock last showed this */
 extern volatile cut_ms_t hal_cut_ms[N_OUTPUTS];
 extern volatile uint8_t hal_cut;
-extern volatile uint16_t hal_input_levels;
+extern volatile uint8_t hal_input_levels;
 #endif

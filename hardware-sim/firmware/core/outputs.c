@@ -21,7 +21,7 @@
 
 output_t outputs[N_OUTPUTS];
 static mask_t active; /* outputs that are owned: the others have nothing due */
-volatile uint8_t bank_held, bank_wanted;
+volatile uint8_t bank_held __attribute__((used)), bank_wanted __attribute__((used));
 
 static inline bool owned(const output_t *line) { return line->flags & (COMMAND | SYNC); }
 
@@ -83,10 +83,10 @@ static void withdraw_permit(uint8_t n) {
   slots_take_hits();
 }
 
-/* False: a slot was hit meanwhile, and must be booked first. */
+/* False: the interrupt has just raised it for a slot that is not booked yet. */
 static bool raise_pin(uint8_t n, uint32_t *us) {
   hal_irq_off();
-  if (slots_hit_waiting()) {
+  if (hal_outputs_on() & BIT(n)) {
     hal_irq_on();
     return false;
   }
@@ -126,7 +126,8 @@ static void book_rise(uint8_t n, uint32_t us) {
 }
 
 /* The first rise of a command, at `us` and `count`: it owns the output from here on. */
-void output_begin(uint8_t n, uint32_t id, const shape_t *shape, uint32_t us, int32_t count) {
+static inline __attribute__((always_inline)) void output_begin(uint8_t n, uint32_t id,
+    const shape_t *shape, uint32_t us, int32_t count) {
   output_t *line = &outputs[n];
   line->flags |= COMMAND | ROSE;
   active |= BIT(n);
@@ -142,55 +143,6 @@ void output_begin(uint8_t n, uint32_t id, const shape_t *shape, uint32_t us, int
   voice_outcome(id, FIRED, R_NONE, n, us, count, 0);
 }
 
-/*
- * A command's first rise, or the reason why not. `window` (0: none) is the pulse whose start has
- * come, or will within a few microseconds, and that may have a count window.
- */
-void bank_rise(uint32_t id, uint8_t n, const shape_t *shape, const pulse_t *window, int32_t count) {
-  uint32_t us;
-  uint8_t reason;
-  do {
-    slots_take_hits();
-    us = hal_now_us();
-    if (window) {
-      hal_irq_off();
-      count = hal_count();
-      hal_irq_on();
-      uint32_t early_us = window->start_us - us;
-      if ((window->flags & START_AT) && early_us <= FIRST_RISE_TAKES_US) us = window->start_us;
-    }
-    bool outside = window && (window->flags & COUNT_WINDOW) &&
-                   ((int32_t)((uint32_t)count - (uint32_t)window->count_from) < 0 ||
-                    (int32_t)((uint32_t)window->count_to - (uint32_t)count) < 0);
-    reason = outside ? R_COUNT_WINDOW : rise_reason(&outputs[n], shape, us, count);
-    if (reason) {
-      voice_outcome(id, REFUSED, reason, n, us, count, 0);
-      return;
-    }
-  } while (!raise_pin(n, &us));
-  output_begin(n, id, shape, us, count);
-}
-
-/* A slot that the count has come to: the interrupt has raised it, or left the question to us. */
-void bank_rise_hit(slot_t *slot, uint32_t us) {
-  uint8_t n = slot->output;
-  if (slot->rose) {
-    output_begin(n, slot->id, &slot->shape, us, slot->target);
-    return;
-  }
-  uint8_t reason = rise_reason(&outputs[n], &slot->shape, us, slot->target);
-  if (reason) voice_outcome(slot->id, REFUSED, reason, n, us, slot->target, 0);
-  else bank_rise(slot->id, n, &slot->shape, 0, slot->target);
-}
-
-static void done(uint8_t n, uint8_t reason, uint32_t us, int32_t count) {
-  output_t *line = &outputs[n];
-  line->flags &= (uint8_t)~COMMAND;
-  active &= (mask_t)~BIT(n);
-  line->left = 0;
-  voice_outcome(line->own.command.id, DONE, reason, n, us, count, line->own.command.on_us);
-}
-
 static int32_t count_now(void) {
   hal_irq_off();
   int32_t count = hal_count();
@@ -198,12 +150,54 @@ static int32_t count_now(void) {
   return count;
 }
 
+/* Raises what passed every check at `us` and `count`, or refuses it. */
+static inline __attribute__((always_inline)) void rise_or_refuse(uint32_t id, uint8_t n,
+    const shape_t *shape, uint8_t reason, uint32_t us, int32_t count) {
+  if (reason == R_NONE && !raise_pin(n, &us)) reason = R_BUSY;
+  if (reason != R_NONE) voice_outcome(id, REFUSED, reason, n, us, count, 0);
+  else output_begin(n, id, shape, us, count);
+}
+
+/* A command's first rise, whose start has come or will within microseconds, or why not. */
+void bank_rise(uint32_t id, uint8_t n, const shape_t *shape, const window_t *window) {
+  uint32_t us = hal_now_us();
+  int32_t count = count_now();
+  uint32_t early_us = window->start_us - us;
+  if ((window->flags & START_AT) && early_us <= FIRST_RISE_TAKES_US) us = window->start_us;
+  bool outside = (window->flags & COUNT_WINDOW) &&
+                 ((int32_t)((uint32_t)count - (uint32_t)window->count_from) < 0 ||
+                  (int32_t)((uint32_t)window->count_to - (uint32_t)count) < 0);
+  uint8_t reason = outside ? R_COUNT_WINDOW : rise_reason(&outputs[n], shape, us, count);
+  rise_or_refuse(id, n, shape, reason, us, count);
+}
+
+/* A slot that the count has come to: the interrupt has raised it, or left the question to us. */
+void bank_rise_hit(slot_t *slot, uint32_t us) {
+  uint8_t n = slot->output;
+  if (slot->rose) {
+    output_begin(n, slot->id, &slot->shape, us, slot->target);
+  } else {
+    uint8_t reason = rise_reason(&outputs[n], &slot->shape, us, slot->target);
+    rise_or_refuse(slot->id, n, &slot->shape, reason, us, slot->target);
+  }
+}
+
+/* Inlined where it is called from, since the stack is short. */
+static inline __attribute__((always_inline)) void done(uint8_t n, uint8_t reason, uint32_t us,
+                                                       int32_t count) {
+  output_t *line = &outputs[n];
+  line->flags &= (uint8_t)~COMMAND;
+  active &= (mask_t)~BIT(n);
+  line->left = 0;
+  voice_outcome(line->own.command.id, DONE, reason, n, us, count, line->own.command.on_us);
+}
+
 /* The next rise of a train that is due, or its end. */
 static void rise_again(uint8_t n) {
   output_t *line = &outputs[n];
-  uint32_t us;
+  uint32_t us = hal_now_us();
   if (line->flags & SYNC) {
-    while (!raise_pin(n, &us)) slots_take_hits();
+    raise_pin(n, &us); /* it is owned: no slot has raised it */
     turned_on(n, us, line->width_us);
     voice_edge(SYNC_EDGE | n, 1, us, count_now());
     return;
@@ -218,7 +212,7 @@ static void rise_again(uint8_t n) {
     done(n, reason, hal_now_us(), count_now());
     return;
   }
-  while (!raise_pin(n, &us)) slots_take_hits();
+  raise_pin(n, &us);
   line->late_us = (int32_t)(us - due_us) > 0 ? (uint16_t)(us - due_us) : 0;
   book_rise(n, us);
 }
@@ -447,7 +441,7 @@ static void run_due(void) {
   while (waiting_rise_due(now_us + FIRST_RISE_TAKES_US)) continue;
 }
 
-/* Returns with interrupts off, so that the interrupt that runs it cannot come again before it left. */
+/* For whoever holds the bank: he lets go of it after, unless it is wanted again. */
 void bank_service(void) {
   for (;;) {
     slots_take_hits();
@@ -480,13 +474,12 @@ void bank_service(void) {
       fall_us = rise_us - EARLY_US;
       falls = 0;
     }
+    uint16_t ticks = (uint16_t)(now_us + fall_us) << 1;
     hal_irq_off();
-    if (!bank_wanted && !slots_hit_waiting()) {
-      hal_schedule(now_us + fall_us, falls);
-      bank_held = 0;
-      return;
-    }
+    bool again = bank_wanted || slots_hit_waiting();
+    if (!again) hal_schedule(ticks, falls);
     hal_irq_on();
+    if (!again) return;
   }
 }
 
@@ -498,13 +491,14 @@ void bank_hold(void) {
 
 void bank_release(void) {
   bank_service();
-  hal_irq_on();
+  bank_release_unchanged();
 }
 
 /* The same where nothing was changed that the service would have to look at. */
 void bank_release_unchanged(void) {
-  hal_irq_off();
-  if (bank_wanted || slots_hit_waiting()) {
+  for (;;) {
+    hal_irq_off();
+    if (!bank_wanted && !slots_hit_waiting()) break;
     hal_irq_on();
     bank_service();
   }

@@ -55,18 +55,19 @@ bool slot_arm(slot_t *slot) {
     }
     slot->next = after;
     hal_irq_off();
-    if (slots_hit_waiting()) {
-      hal_irq_on();
-      continue;
-    }
-    bool is_ahead = ahead(slot, hal_count()) > 0;
-    if (is_ahead) {
+    int32_t count = hal_count();
+    hal_irq_on();
+    if (ahead(slot, count) <= 0) return false;
+    hal_irq_off();
+    /* All that was found holds as long as the count stands still. */
+    bool still = hal_count_low() == (uint8_t)count && !slots_hit_waiting();
+    if (still) {
       slot->state = SLOT_ARMED;
       if (before) before->next = slot;
       else set_head(slot->rising, slot);
     }
     hal_irq_on();
-    return is_ahead;
+    if (still) return true;
   }
 }
 

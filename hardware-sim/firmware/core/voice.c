@@ -19,9 +19,8 @@ static uint32_t done_on_us[N_DONES];
 static uint8_t dones_next;
 static volatile uint8_t ring_to_tell;
 
-typedef struct { uint32_t us; int32_t count; uint8_t input, level; } edge_t;
-static edge_t edges[N_EDGES];
-static volatile uint8_t edges_in, edges_out;
+edge_t edges[N_EDGES];
+volatile uint8_t edges_in, edges_out;
 
 typedef struct { uint32_t us, detail; uint8_t fault; } fault_t;
 static fault_t faults[N_FAULTS];
@@ -90,24 +89,6 @@ bool voice_repeat(uint32_t id) {
     if (!(one->reason & FRESH)) tell_again(one);
   }
   return found;
-}
-
-/* False: there is no room; whoever saw the edge sees it again later. */
-bool voice_edge(uint8_t input, uint8_t level, uint32_t us, int32_t count) {
-  bool room = false;
-  hal_irq_off();
-  uint8_t in = edges_in, next = (uint8_t)((in + 1) % N_EDGES);
-  if (next != edges_out) {
-    edge_t *edge = &edges[in];
-    edge->us = us;
-    edge->count = count;
-    edge->input = input;
-    edge->level = level;
-    edges_in = next;
-    room = true;
-  }
-  hal_irq_on();
-  return room;
 }
 
 void voice_fault(uint8_t fault, uint32_t detail) {
@@ -209,8 +190,7 @@ static uint32_t on_us_of(const outcome_t *one) {
   return done_on_us[(uint8_t)(dones_next + N_DONES - back) % N_DONES];
 }
 
-static bool say_outcome(outcome_t *one) {
-  if (!frame_open(M_OUTCOME, voice_tag, 20)) return false;
+static void say_outcome(const outcome_t *one, uint32_t on_us) {
   frame_32(one->id);
   frame_8(one->kind_output & 0x0f);
   frame_8(one->reason & REASON_BITS);
@@ -218,11 +198,8 @@ static bool say_outcome(outcome_t *one) {
   frame_8(one->reason & AGAIN ? 1 : 0);
   frame_32(one->us);
   frame_32((uint32_t)one->count);
-  frame_32(on_us_of(one));
+  frame_32(on_us);
   frame_close();
-  one->reason &= REASON_BITS;
-  ring_to_tell--;
-  return true;
 }
 
 static bool say_edge(void) {
@@ -230,12 +207,13 @@ static bool say_edge(void) {
   const edge_t *edge = &edges[edges_out];
   frame_32(edge->us);
   frame_32((uint32_t)edge->count);
-  frame_8(edge->input);
-  frame_8(edge->level);
+  uint8_t level = edge->what & 1, input = (edge->what >> 1) & 0x0f;
+  frame_8((edge->what & SYNC_EDGE) | input);
+  frame_8(level);
   frame_close();
-  if (!(edge->input & SYNC_EDGE)) {
-    uint16_t bit = (uint16_t)(1u << edge->input);
-    if (edge->level) levels_told |= bit;
+  if (!(edge->what & SYNC_EDGE)) {
+    uint16_t bit = (uint16_t)(1u << input);
+    if (level) levels_told |= bit;
     else levels_told &= (uint16_t)~bit;
   }
   edges_out = (uint8_t)((edges_out + 1) % N_EDGES);
@@ -311,9 +289,18 @@ bool voice_speak(void) {
     bool later = !one || (!(one->reason & AGAIN) &&
                           ((edge && (int32_t)(edges[edges_out].us - one->us) < 0) ||
                            (fault && (int32_t)(faults[faults_out].us - one->us) < 0)));
-    bool said = !later && say_outcome(one);
+    outcome_t copy;
+    uint32_t on_us = 0;
+    bool room = !later && frame_open(M_OUTCOME, voice_tag, 20);
+    if (room) {
+      copy = *one;
+      on_us = on_us_of(one);
+      one->reason &= REASON_BITS;
+      ring_to_tell--;
+    }
     bank_release_unchanged();
-    if (!later) return said;
+    if (room) say_outcome(&copy, on_us);
+    if (!later) return room;
   }
   if (edge && !(fault && (int32_t)(faults[faults_out].us - edges[edges_out].us) < 0)) {
     return say_edge();

@@ -1,16 +1,19 @@
 #include "board.h"
 
-/* `id` 0: this place is free. Expiry was looked at on arrival: its field holds the order of coming. */
-#define order expiry_us
-static pulse_t places[N_WAITING];
-static uint32_t next_order;
+static waiting_t places[N_WAITING]; /* `id` 0: this place is free */
+static uint16_t next_order;
 
 /* False when every place is taken. */
 bool waiting_add(const pulse_t *pulse, uint32_t start_us) {
-  for (pulse_t *place = places; place < places + N_WAITING; place++) {
+  for (waiting_t *place = places; place < places + N_WAITING; place++) {
     if (place->id != 0) continue;
-    *place = *pulse;
-    place->start_us = start_us;
+    place->id = pulse->id;
+    place->output = pulse->output;
+    place->window.flags = pulse->flags;
+    place->shape = pulse->shape;
+    place->window.start_us = start_us;
+    place->window.count_from = pulse->count_from;
+    place->window.count_to = pulse->count_to;
     place->order = next_order++;
     return true;
   }
@@ -19,28 +22,28 @@ bool waiting_add(const pulse_t *pulse, uint32_t start_us) {
 
 /* Lets the earliest pulse that is due rise, or be refused. False: none is due. */
 bool waiting_rise_due(uint32_t now_us) {
-  pulse_t *due = 0;
-  for (pulse_t *place = places; place < places + N_WAITING; place++) {
-    if (place->id == 0 || (int32_t)(place->start_us - now_us) > 0) continue;
+  waiting_t *due = 0;
+  for (waiting_t *place = places; place < places + N_WAITING; place++) {
+    if (place->id == 0 || (int32_t)(place->window.start_us - now_us) > 0) continue;
     if (due) {
-      int32_t later = (int32_t)(place->start_us - due->start_us);
-      if (later > 0 || (later == 0 && (int32_t)(place->order - due->order) > 0)) continue;
+      int32_t later = (int32_t)(place->window.start_us - due->window.start_us);
+      if (later > 0 || (later == 0 && (int16_t)(place->order - due->order) > 0)) continue;
     }
     due = place;
   }
   if (!due) return false;
   uint32_t id = due->id;
   due->id = 0;
-  bank_rise(id, due->output, &due->shape, due, 0);
+  bank_rise(id, due->output, &due->shape, &due->window);
   return true;
 }
 
 /* Microseconds to the next start; all ones when none waits. */
 uint32_t waiting_next_us(uint32_t now_us) {
   uint32_t next = UINT32_MAX;
-  for (pulse_t *place = places; place < places + N_WAITING; place++) {
+  for (waiting_t *place = places; place < places + N_WAITING; place++) {
     if (place->id == 0) continue;
-    int32_t left = (int32_t)(place->start_us - now_us);
+    int32_t left = (int32_t)(place->window.start_us - now_us);
     if (left < 0) left = 0;
     if ((uint32_t)left < next) next = (uint32_t)left;
   }
@@ -48,7 +51,7 @@ uint32_t waiting_next_us(uint32_t now_us) {
 }
 
 void waiting_end(uint16_t mask, uint8_t reason) {
-  for (pulse_t *place = places; place < places + N_WAITING; place++) {
+  for (waiting_t *place = places; place < places + N_WAITING; place++) {
     if (place->id == 0 || !(mask & 1u << place->output)) continue;
     voice_outcome_now(place->id, DISARMED, reason, place->output);
     place->id = 0;
@@ -56,7 +59,7 @@ void waiting_end(uint16_t mask, uint8_t reason) {
 }
 
 bool waiting_has(uint32_t id) {
-  for (pulse_t *place = places; place < places + N_WAITING; place++) {
+  for (waiting_t *place = places; place < places + N_WAITING; place++) {
     if (place->id == id) return true;
   }
   return false;
