@@ -88,6 +88,16 @@ export const ERRORS = {
     'The board that answered is not the one that the rig file names.',
     'Connect the board with that number, or put the number of this one into the rig file as `board_id`.',
   ),
+  flashFailed: entry(
+    'FLASH_FAILED',
+    'The firmware could not be put on the board.',
+    "Close everything that has the port open, press the board's reset button just before, and try again; small boards with an old boot loader need `--baud 57600`. `lapwing flash` alone prints the command.",
+  ),
+  selftestOutputs: entry(
+    'SELFTEST_OUTPUTS',
+    'The self test makes outputs pulse, so nothing may be wired to them.',
+    'Unplug valves, lasers and everything else from the outputs, then say so with `--outputs-free`.',
+  ),
   rigUnreadable: entry(
     'RIG_UNREADABLE',
     'The rig file cannot be read.',
