@@ -1,5 +1,6 @@
 import type { StampedDecision } from '../session/decisions.js';
 import type { SessionData } from './readSession.js';
+import { slipSpans } from './slips.js';
 
 type Of<K extends StampedDecision['kind']> = Extract<StampedDecision, { kind: K }>;
 
@@ -35,8 +36,10 @@ export interface Firing {
 /** Every firing and sham of the session, in order of its decision. */
 export function firingsOf(session: SessionData): Firing[] {
   const { decisions, rig } = session;
-  const slips = slipsByLap(decisions, rig.belt.lengthCm);
-  const typicalMm = rms([...slips.values()]);
+  const { lengthCm } = rig.belt;
+  const spans = slipSpans(decisions, lengthCm);
+  const typicalMm = rms(spans.map(({ slipMm }) => slipMm));
+  const markCm = spans[0]?.markCm ?? 0;
   const halfCountMm = 5 / rig.belt.countsPerCm;
   const asked = new Map<string, number>();
   const doneByOutput = falls(decisions);
@@ -47,9 +50,14 @@ export function firingsOf(session: SessionData): Firing[] {
     const boardUs = d.riseUs ?? d.boardUs;
     const decidedUs = asked.get(`${d.rule} ${d.serial}`) ?? d.boardUs;
     const riseCm = d.riseCm ?? (d.sham ? d.positionCm : null);
-    const share = riseCm === null ? null : riseCm / rig.belt.lengthCm;
-    const slipMm = slips.get(d.lap);
-    const real = share === null || slipMm === undefined ? null : riseCm! - (slipMm / 10) * share;
+    const span = spans.find(({ fromUs, toUs }) => boardUs >= fromUs && boardUs < toUs);
+    // How far round the belt since the mark: slip is taken to gather evenly on the way.
+    const share = riseCm === null ? null : ((riseCm - markCm + 2 * lengthCm) % lengthCm) / lengthCm;
+    const slipMm = span?.slipMm;
+    const real =
+      share === null || slipMm === undefined
+        ? null
+        : (riseCm! - (slipMm / 10) * share + lengthCm) % lengthCm;
     firings.push({
       ...{ input: d.input, rule: d.rule, serial: d.serial, sham: d.sham, armed: d.armed },
       ...{ output: d.output, lap: d.lap, decidedUs, boardUs },
@@ -66,23 +74,6 @@ export function firingsOf(session: SessionData): Firing[] {
     });
   }
   return firings;
-}
-
-/**
- * Slip that each lap's end showed, mm. Slip is taken as gathered since the mark before; a lap whose
- * mark was ignored, missed or followed a re-homing has none.
- */
-export function slipsByLap(
-  decisions: readonly StampedDecision[],
-  beltLengthCm: number,
-): Map<number, number> {
-  const slips = new Map<number, number>();
-  for (const d of decisions) {
-    if (d.kind !== 'seam' || d.slipMm === null || d.event !== 'accepted') continue;
-    const afterSeam = d.positionCm !== null && d.positionCm < beltLengthCm / 2;
-    slips.set(afterSeam ? d.lap - 1 : d.lap, d.slipMm);
-  }
-  return slips;
 }
 
 /** The fall that belongs to a rise: the next on its output. */

@@ -1,4 +1,5 @@
 import type { SessionData } from './readSession.js';
+import { slipSpans } from './slips.js';
 
 /** One lap: from its 0 cm to the next lap's, or to the session's end. */
 export interface Lap {
@@ -46,7 +47,7 @@ export interface PhaseSpan {
 }
 
 /** Laps in order, lap 0 included where the session began before the first mark. */
-export function lapsOf({ decisions, beganUs, endedUs }: SessionData): Lap[] {
+export function lapsOf({ decisions, beganUs, endedUs, rig }: SessionData): Lap[] {
   type Open = { -readonly [K in keyof Lap]: Lap[K] };
   const laps: Open[] = [];
   const excluded = new Set<number>();
@@ -67,14 +68,6 @@ export function lapsOf({ decisions, beganUs, endedUs }: SessionData): Lap[] {
         open.complete = open.lap > 0;
         begin(decision.lap, decision.boardUs);
         break;
-      case 'seam': {
-        if (decision.slipMm === null || decision.event === 'ignored') break;
-        // The mark is met within a few mm of the lap's end, on either side of it.
-        const ended = decision.positionCm !== null && decision.positionCm < 20;
-        const lap = ended && laps.length > 1 ? laps.at(-2)! : open;
-        lap.slipMm = decision.slipMm;
-        break;
-      }
       case 'phase began':
         phase = decision.phase;
         if (decision.boardUs === open.startUs) open.phase = phase;
@@ -87,7 +80,12 @@ export function lapsOf({ decisions, beganUs, endedUs }: SessionData): Lap[] {
         break;
     }
   }
-  for (const lap of laps) lap.excluded = excluded.has(lap.lap);
+  const spans = slipSpans(decisions, rig.belt.lengthCm);
+  const slips = new Map(spans.map(({ lap, slipMm }) => [lap, slipMm]));
+  for (const lap of laps) {
+    lap.excluded = excluded.has(lap.lap);
+    lap.slipMm = slips.get(lap.lap) ?? null;
+  }
   // Where position was known at once, lap 0 has no length.
   return laps.filter(({ lap, startUs, stopUs }) => lap > 0 || stopUs > startUs);
 }

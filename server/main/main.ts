@@ -12,6 +12,7 @@ import { portsCommand } from './ports.js';
 import { quietCommand } from './quiet.js';
 import { rehearseCommand } from './rehearse.js';
 import { replayCommand } from './replay.js';
+import { reportCommand } from './report.js';
 import { resumeCommand } from './resume.js';
 import { runCommand } from './run.js';
 import { serveCommand } from './serve.js';
@@ -31,6 +32,7 @@ const program = new Command('lapwing')
   .addCommand(mendCommand())
   .addCommand(exportCommand())
   .addCommand(alignCommand())
+  .addCommand(reportCommand())
   .addCommand(portsCommand())
   .addCommand(quietCommand());
 

@@ -1,0 +1,279 @@
+import { quantile } from '../../analysis/align/robustLine.js';
+import { bootstrap } from '../../analysis/bootstrap.js';
+import { circularSummary } from '../../analysis/circular.js';
+import type { Firing } from '../../analysis/firings.js';
+import { lapsOf } from '../../analysis/happenings.js';
+import type { SessionData } from '../../analysis/readSession.js';
+import { describeTroubles } from '../../session/record/recordState.js';
+import type { Shown } from './figures.js';
+import { escapeHtml } from './plot.js';
+
+/** An output wired back to an input, to measure when it really rose. */
+export interface Loopback {
+  readonly output: string;
+  readonly input: string;
+}
+
+/** A rise is looked for this long after the board says that it drove the output. */
+const LOOPBACK_US = 50_000;
+
+type Cell = string | number;
+function table(head: readonly string[], rows: readonly (readonly Cell[])[], name = ''): string {
+  const cell = (tag: string, value: Cell) =>
+    `<${tag}${typeof value === 'number' || /^[-\d.]+$/.test(value) ? ' class="n"' : ''}>${escapeHtml(String(value))}</${tag}>`;
+  const top = head.length === 0 ? '' : `<tr>${head.map((h) => cell('th', h)).join('')}</tr>`;
+  const body = rows.map((row) => `<tr>${row.map((v) => cell('td', v)).join('')}</tr>`);
+  return `<table class="${name}">${top}${body.join('\n')}</table>`;
+}
+
+const fixed = (value: number | null | undefined, digits: number) =>
+  value === null || value === undefined || Number.isNaN(value) ? '' : value.toFixed(digits);
+
+export function facts({ description, beganUs, endedUs, rig, state }: SessionData): string {
+  const { software, board, seed, ended, water, replay } = description;
+  const minutes = (endedUs - beganUs) / 60e6;
+  const check =
+    replay === undefined
+      ? 'not made yet: `lapwing replay` makes it'
+      : replay.identical
+        ? `identical: ${replay.inputs} inputs, ${replay.decisions} decisions, ${replay.commands} commands`
+        : (replay.failed ?? `different at input ${replay.difference?.input}`);
+  return table(
+    [],
+    [
+      ['session', description.name],
+      ['started', `${description.startedAt}, ${minutes.toFixed(1)} min`],
+      ['experimenter', description.experimenter ?? ''],
+      ['ended', ended === null ? 'not known' : `${ended.how}: ${ended.reason}`],
+      ['rig', `${rig.name}, belt ${rig.belt.lengthCm} cm, board ${board?.model ?? 'not recorded'}`],
+      ['software', `lapwing ${software.version}, seed ${seed}`],
+      ['water', water ? `${water.givenUl} uL given, ${water.uncertainUl} uL uncertain` : ''],
+      ['record', [state.state, ...describeTroubles(state)].join('; ')],
+      ['replay of the record', check],
+      ...description.files.map(({ role, source, sha256 }) => [
+        `${role} file`,
+        `${source}, SHA-256 ${sha256.slice(0, 16)}...`,
+      ]),
+    ],
+  );
+}
+
+/** Numbers on licking, each with the method by which it was found. */
+export function statistics(session: SessionData, { licking, laps, lengthCm }: Shown): string {
+  const inside = new Set(laps.map(({ lap }) => lap));
+  const placed = licking.before.filter((l) => l.positionCm !== null && inside.has(l.lap));
+  const all = circularSummary(
+    placed.map((l) => l.positionCm!),
+    lengthCm,
+  );
+  const first = circularSummary(
+    licking.laps.flatMap(({ firstCm }) => (firstCm === null ? [] : [firstCm])),
+    lengthCm,
+  );
+  const seed = [...session.description.seed].reduce((s, c) => (s * 31 + c.charCodeAt(0)) | 0, 7);
+  const rows = licking.laps.filter(({ licks }) => licks > 0);
+  const share = bootstrap(
+    rows,
+    (drawn) =>
+      drawn.reduce((sum, r) => sum + r.inSpout + r.inApproach, 0) /
+      drawn.reduce((sum, r) => sum + r.licks, 0),
+    seed,
+  );
+  const slow = bootstrap(
+    licking.laps.filter((r) => Number.isFinite(r.slowing)),
+    (drawn) =>
+      quantile(
+        drawn.map((r) => r.slowing),
+        0.5,
+      ),
+    seed,
+  );
+  const between = (i: typeof share) =>
+    `${fixed(i.estimate, 2)} (${fixed(i.low, 2)} to ${fixed(i.high, 2)})`;
+  const circular = (c: typeof all) => [
+    c.n,
+    fixed(c.meanCm, 1),
+    fixed(c.resultantLength, 3),
+    c.pValue < 0.001 ? '< 0.001' : c.pValue.toFixed(3),
+  ];
+  return [
+    table(
+      ['', 'n', 'mean place (cm)', 'resultant length', 'Rayleigh p'],
+      [
+        ['licks that wait for water', ...circular(all)],
+        ['first lick of each lap', ...circular(first)],
+      ],
+    ),
+    table(
+      ['', 'estimate (95 % interval)'],
+      [
+        ['share of waiting licks at the spout or in the 20 cm before it', between(share)],
+        ['speed before the spout over speed elsewhere, median of laps', between(slow)],
+      ],
+    ),
+    '<p>Circular mean, mean resultant length and Rayleigh test: Fisher, Statistical Analysis of ' +
+      'Circular Data (1993), 2.3 and 4.3. Licks come in bouts, so the p of all licks is too small; ' +
+      'that of first licks has one place a lap. Intervals: percentile bootstrap over laps, 2000 ' +
+      'rounds, seeded by the session (Efron and Tibshirani 1993). They speak of this session alone: ' +
+      'across animals the unit is the animal.</p>',
+  ].join('\n');
+}
+
+/** Armed firings and those decided in the host, each with its places and their uncertainty. */
+export function proofs(
+  session: SessionData,
+  firings: readonly Firing[],
+  loopback: Loopback | undefined,
+): string {
+  const section = (title: string, rows: readonly Firing[]) => {
+    if (rows.length === 0) return `<h3>${title}</h3><p>None.</p>`;
+    const errors = rows.flatMap(({ errorMm }) => (errorMm === null ? [] : [Math.abs(errorMm)]));
+    const sum =
+      errors.length === 0
+        ? ''
+        : `<p>${rows.length} firings; from the place intended: median ` +
+          `${fixed(quantile(errors, 0.5), 2)} mm, at most ${fixed(Math.max(...errors), 2)} mm.</p>`;
+    const head = [
+      ...['lap', 'time (s)', 'rule', 'output', 'intended (cm)', 'as decided (cm)', 'error (mm)'],
+      ...['after slip (cm)', 'latency (ms)', 'speed (cm/s)', 'on (ms)'],
+      ...(loopback === undefined ? [] : ['measured back']),
+    ];
+    const lines = rows.map((f) => [
+      ...[f.lap, fixed((f.boardUs - session.beganUs) / 1e6, 3), f.rule, f.output ?? 'sham'],
+      fixed(f.placeCm, 2),
+      `${fixed(f.riseCm, 2)} ${plusMinus(f.decidedUncertaintyMm)}`,
+      fixed(f.errorMm, 2),
+      f.correctedCm === null
+        ? ''
+        : `${fixed(f.correctedCm, 2)} ${plusMinus(f.correctedUncertaintyMm)}`,
+      fixed(f.latencyUs === null ? null : f.latencyUs / 1e3, 2),
+      fixed(f.speedCmPerS, 1),
+      fixed(f.onUs === null ? null : f.onUs / 1e3, 1),
+      ...(loopback === undefined ? [] : [measured(session, f, loopback)]),
+    ]);
+    return `<h3>${title}</h3>${sum}${table(head, lines, 'wide')}`;
+  };
+  return [
+    section(
+      'Started by the board at the place',
+      firings.filter((f) => f.armed && !f.sham),
+    ),
+    section(
+      'Decided in the host',
+      firings.filter((f) => !f.armed && !f.sham),
+    ),
+    section(
+      'Shams: nothing was driven',
+      firings.filter((f) => f.sham),
+    ),
+    '<p>As decided: by the counts of that moment; after &#177;, half a count and the usual slip of ' +
+      "this session up to there. After slip: the lap's slip, found at the next mark, shared out " +
+      'evenly; after &#177;, how far off that can be if it all came at once.</p>',
+  ].join('\n');
+}
+
+const plusMinus = (mm: number | null) => (mm === null ? '' : `\u00b1 ${(mm / 10).toFixed(2)}`);
+
+function measured({ edges, rig }: SessionData, f: Firing, { output, input }: Loopback): string {
+  if (f.output !== output) return '';
+  const rise = edges.find(
+    (e) =>
+      e.name === input &&
+      e.level === 1 &&
+      e.boardUs >= f.boardUs - 1_000 &&
+      e.boardUs < f.boardUs + LOOPBACK_US,
+  );
+  if (rise === undefined) return 'not seen';
+  const laterUs = rise.boardUs - f.boardUs;
+  const laterMm = (laterUs / 1e6) * f.speedCmPerS * 10;
+  const at =
+    f.riseCm === null ? '' : `${((f.riseCm + laterMm / 10) % rig.belt.lengthCm).toFixed(2)} cm, `;
+  return `${at}${laterUs} us later`;
+}
+
+/** What was not done and why, counted by rule and reason. */
+export function notDone({ decisions }: SessionData): string {
+  const counts = new Map<string, { times: number; laps: number[] }>();
+  for (const d of decisions) {
+    if (
+      d.kind !== 'withheld' &&
+      d.kind !== 'missed' &&
+      d.kind !== 'refused' &&
+      d.kind !== 'uncertain'
+    )
+      continue;
+    const key = JSON.stringify([d.kind, d.rule, d.reason]);
+    const found = counts.get(key) ?? { times: 0, laps: [] };
+    found.times++;
+    if (found.laps.at(-1) !== d.lap) found.laps.push(d.lap);
+    counts.set(key, found);
+  }
+  if (counts.size === 0) return '<p>Nothing.</p>';
+  const rows = [...counts].map(([key, { times, laps }]) => {
+    const [kind, rule, reason] = JSON.parse(key) as [string, string, string];
+    const listed = laps.length > 12 ? `${laps.slice(0, 12).join(', ')}, ...` : laps.join(', ');
+    return [kind, rule, reason, times, listed];
+  });
+  return table(['', 'rule', 'why', 'times', 'laps'], rows);
+}
+
+export function health({ decisions, samples, beganUs, endedUs }: SessionData): string {
+  const count = (kind: string) => decisions.filter((d) => d.kind === kind).length;
+  const lost = decisions.reduce((sum, d) => sum + (d.kind === 'frames lost' ? d.frames : 0), 0);
+  const links = (state: string) =>
+    decisions.filter((d) => d.kind === 'link' && d.state === state && d.boardUs >= beganUs).length;
+  const sensor = (state: string) =>
+    decisions.filter((d) => d.kind === 'lick sensor' && d.state === state).length;
+  const seam = (event: string) =>
+    decisions.filter((d) => d.kind === 'seam' && d.event === event).length;
+  return table(
+    [],
+    [
+      [
+        'samples',
+        `${samples.length}, ${((samples.length * 1e6) / (endedUs - beganUs)).toFixed(0)} a second`,
+      ],
+      ['frames lost or bad', lost],
+      ['link to the board lost', links('down')],
+      ['program restarted', links('resumed')],
+      ['faults that the board told', count('board fault')],
+      ['lick sensor stuck', sensor('stuck')],
+      ['lick sensor too fast', sensor('too fast')],
+      ['seam marks accepted', seam('accepted')],
+      ['seam marks missed or ignored', seam('missed') + seam('ignored')],
+    ],
+  );
+}
+
+/** What whoever reads the numbers should know first. */
+export function cautions(session: SessionData, { licking, laps, firings }: Shown): string {
+  const { decisions, description, state, rig } = session;
+  const all = lapsOf(session);
+  const excluded = all.filter((lap) => lap.excluded).map((lap) => lap.lap);
+  const found: string[] = [];
+  if (state.state !== 'whole')
+    found.push(`The record is ${state.state}: see what is missing above.`);
+  if (description.replay?.identical === false)
+    found.push('A replay of the record did not give the same decisions.');
+  if (description.board?.simulated) found.push('The board was simulated: no wire left it.');
+  if (excluded.length > 0) found.push(`Laps left out by the operator: ${excluded.join(', ')}.`);
+  const uncertain = decisions.filter(({ kind }) => kind === 'uncertain').length;
+  if (uncertain > 0) found.push(`${uncertain} firings are uncertain: the board never said.`);
+  const doubt = decisions.filter((d) => d.kind === 'trust' && d.trust === 'doubtful').length;
+  if (doubt > 0) found.push(`Position was doubtful ${doubt} times.`);
+  const warn = (rig.belt.seam?.warnCm ?? Number.POSITIVE_INFINITY) * 10;
+  const slipped = laps.filter(({ slipMm }) => slipMm !== null && Math.abs(slipMm) > warn);
+  if (slipped.length > 0) found.push(`Slip of more than ${warn} mm on ${slipped.length} laps.`);
+  const artefacts = decisions.filter((d) => d.kind === 'lick' && d.artefact).length;
+  if (artefacts > 0)
+    found.push(`${artefacts} licks may be electrical artefacts; they are left out.`);
+  if (licking.spoutCm === null)
+    found.push('No water at a known place: there is no spout to speak of.');
+  if (laps.length < 10) found.push(`Only ${laps.length} complete laps.`);
+  const late = firings.filter((f) => (f.latencyUs ?? 0) > 10_000).length;
+  if (late > 0) found.push(`${late} firings rose more than 10 ms after their decision.`);
+  found.push(
+    'The partial stretch before the first mark and the lap that the end cut short are in no figure.',
+  );
+  return `<ul>${found.map((caution) => `<li>${escapeHtml(caution)}</li>`).join('')}</ul>`;
+}
