@@ -1,4 +1,4 @@
-import { existsSync, readFileSync, rmSync } from 'node:fs';
+import { rmSync } from 'node:fs';
 import { join, resolve, sep } from 'node:path';
 import { setTimeout as delay } from 'node:timers/promises';
 import type { Logger } from 'pino';
@@ -10,7 +10,6 @@ import { portOpener } from '../link/resolvePort.js';
 import { packageVersion } from '../packageRoot.js';
 import type { SessionSetup } from '../session/core/sessionCore.js';
 import type { StampedDecision } from '../session/decisions.js';
-import { readDescription } from '../session/description.js';
 import type { Actor, OperatorAct, RareInput } from '../session/inputs.js';
 import { idleRules, newSeed, prepareRules } from '../session/prepare.js';
 import { finish } from '../session/record/finish.js';
@@ -18,11 +17,11 @@ import { readRecord } from '../session/record/readRecord.js';
 import { Recorder } from '../session/record/recorder.js';
 import type { TroubleKind } from '../session/record/segmentLog.js';
 import type { Rig } from '../session/rig/rig.js';
-import { type SessionRecorder, SessionRunner } from '../session/runner.js';
+import { SessionRunner } from '../session/runner.js';
 import { describeEnd, openSession, recordHeaderOf, waterTodayNl } from '../session/store.js';
-import { writeFileWhole } from '../session/writeFileWhole.js';
 import { CAPABILITY, type Sample } from '../wire/messages.js';
 import { checkAct } from './checkAct.js';
+import { type CurrentSession, keepCurrent, leftOver } from './currentSession.js';
 import { EventRing } from './eventRing.js';
 import { LiveRecord } from './liveRecord.js';
 import { LocalServer, type LoopService } from './localServer.js';
@@ -37,16 +36,6 @@ const TICK_MS = 20;
 const ID_MARGIN = 1_000;
 /** What was cut short at the end is reported within a few frames. */
 const LAST_WORDS_MS = 600;
-
-/** The running session as a restarted loop finds it. */
-interface CurrentSession {
-  readonly folder: string;
-  readonly subject: string;
-  readonly experimenter: string;
-  readonly seed: string;
-  readonly startedAt: string;
-  readonly waterTodayNl: number;
-}
 
 /**
  * One rig's loop: owns the port and the record, and runs one session after another. Between
@@ -112,7 +101,7 @@ export class Loop implements LinkHandler, LoopService {
   /** @throws LapwingError LOOP_RIG_TAKEN, or what is wrong with the rules file to begin with */
   async start(): Promise<void> {
     await this.#server.open();
-    const left = this.#leftOver();
+    const left = leftOver(this.#address.currentFile);
     if (left === undefined) this.#toBegin = this.#options.begin;
     else if (this.#options.resume) await this.#resume(left);
     else throw new LapwingError('loopUnfinished', `${left.folder} was left unfinished.`);
@@ -272,7 +261,7 @@ export class Loop implements LinkHandler, LoopService {
       throw new LapwingError('loopNoBoard', 'The board does not answer.');
     }
     const { folder } = session;
-    writeFileWhole(this.#address.currentFile, JSON.stringify(currentOf(session)));
+    keepCurrent(this.#address.currentFile, session);
     this.#record.recorder = recorder;
     this.#session = session;
     this.#ended = null;
@@ -290,26 +279,14 @@ export class Loop implements LinkHandler, LoopService {
     this.#server.announceSetup();
   }
 
-  /** The session that a loop which died was running; one that was mended since is over. */
-  #leftOver(): CurrentSession | undefined {
-    const { currentFile } = this.#address;
-    if (!existsSync(currentFile)) return undefined;
-    const current = JSON.parse(readFileSync(currentFile, 'utf8')) as CurrentSession;
-    if (existsSync(current.folder) && readDescription(current.folder).ended === null)
-      return current;
-    rmSync(currentFile, { force: true });
-    return undefined;
-  }
-
   /** Takes up the session that a loop which died was running, from its record. */
   async #resume(current: CurrentSession): Promise<void> {
     const { folder } = current;
     const rules = prepareRules(join(folder, 'rules.yaml'), this.#rigFile);
     const session = { ...current, rules, startedAt: new Date(current.startedAt) };
     const reader = await readRecord(folder);
-    const recorder = new LateRecorder();
     const setup = setupFor(this.#rigFile, session);
-    const runner = new SessionRunner(setup, this.#send, recorder, this.#onDecision);
+    const runner = new SessionRunner(setup, this.#send, undefined, this.#onDecision);
     runner.replay(() =>
       reader.visit({
         sample: (_, sample) => runner.sample(sample),
@@ -320,13 +297,14 @@ export class Loop implements LinkHandler, LoopService {
         },
       }),
     );
-    this.#runner = runner;
-    this.#session = session;
-    recorder.to = Recorder.create(folder, recordHeaderOf(folder), {
+    const recorder = Recorder.create(folder, recordHeaderOf(folder), {
       onTrouble: (kind, error) => this.#trouble(kind, error),
       resume: reader.resumePoint(),
     });
-    this.#record.recorder = recorder.to;
+    runner.recordTo(recorder);
+    this.#runner = runner;
+    this.#session = session;
+    this.#record.recorder = recorder;
     this.#take({ kind: 'link down', reason: 'the loop was restarted' });
     this.#take({ kind: 'resume', note: 'what was recorded has been replayed' });
     this.#log.warn({ folder, inputs: runner.core.input }, 'session resumed');
@@ -444,11 +422,6 @@ function linkUpInput({ identity, tag, sameBoot, transport }: LinkUp): RareInput 
   };
 }
 
-function currentOf(session: RunningSession): CurrentSession {
-  const { folder, subject, experimenter, seed, startedAt, waterTodayNl } = session;
-  return { folder, subject, experimenter, seed, startedAt: startedAt.toISOString(), waterTodayNl };
-}
-
 function setupFor(rig: Rig, { rules, seed, waterTodayNl }: RunningSession): SessionSetup {
   return { rig, program: rules.program, title: rules.file.title, seed, waterTodayNl };
 }
@@ -456,25 +429,4 @@ function setupFor(rig: Rig, { rules, seed, waterTodayNl }: RunningSession): Sess
 /** Lets everything that has come from the board in the meantime be taken. */
 function frames(): Promise<void> {
   return new Promise((resolve) => setTimeout(resolve, 1));
-}
-
-/** Stands in for the recorder until what was recorded has been replayed. */
-class LateRecorder implements SessionRecorder {
-  to: Recorder | undefined;
-
-  sample(...args: Parameters<SessionRecorder['sample']>): void {
-    this.to?.sample(...args);
-  }
-  input(...args: Parameters<SessionRecorder['input']>): void {
-    this.to?.input(...args);
-  }
-  command(...args: Parameters<SessionRecorder['command']>): void {
-    this.to?.command(...args);
-  }
-  decision(...args: Parameters<SessionRecorder['decision']>): void {
-    this.to?.decision(...args);
-  }
-  batchEnd(commanded: boolean): void {
-    this.to?.batchEnd(commanded);
-  }
 }

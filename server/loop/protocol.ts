@@ -5,6 +5,7 @@
  * `hello`, `quiet` and `end` never change across versions, so that an old client can always stop a
  * new loop.
  */
+import type { EngineView } from '../rules/engine/view.js';
 import type { Trust } from '../rules/instant.js';
 import type { StampedDecision } from '../session/decisions.js';
 import type { OperatorAct } from '../session/inputs.js';
@@ -121,25 +122,9 @@ export interface Snapshot {
   readonly licks: number;
   readonly phase: string | null;
   readonly phaseLap: number;
-  readonly places: readonly {
-    readonly name: string;
-    readonly fromCm: number;
-    /** Same as `fromCm` for a point. */
-    readonly toCm: number;
-  }[];
-  readonly choices: readonly {
-    readonly name: string;
-    readonly value: number | string;
-    readonly queued: number | string | null;
-  }[];
-  readonly rules: readonly {
-    readonly name: string;
-    readonly firings: number;
-    readonly shams: number;
-    readonly withheld: number;
-    readonly missed: number;
-    readonly armed: boolean;
-  }[];
+  readonly places: EngineView['places'];
+  readonly choices: EngineView['choices'];
+  readonly rules: EngineView['rules'];
   /** Bit n for output n. */
   readonly outputs: number;
   readonly inputs: number;

@@ -27,7 +27,7 @@ type Pending =
 export class SessionRunner implements CoreOutput {
   readonly core: SessionCore;
   readonly #send: SendCommand;
-  readonly #recorder: SessionRecorder | undefined;
+  #recorder: SessionRecorder | undefined;
   readonly #onDecision: ((decision: StampedDecision) => void) | undefined;
   readonly #pending: Pending[] = [];
   #commanded = false;
@@ -77,6 +77,11 @@ export class SessionRunner implements CoreOutput {
       this.#muted = false;
       this.#pending.length = 0;
     }
+  }
+
+  /** Records from now on: for a resumed session, whose record goes on once it has been replayed. */
+  recordTo(recorder: SessionRecorder): void {
+    this.#recorder = recorder;
   }
 
   command<N extends HostMessageName>(name: N, message: MessageOf[N]): void {

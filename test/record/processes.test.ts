@@ -1,9 +1,8 @@
-import { execFileSync, spawn } from 'node:child_process';
+import { spawn } from 'node:child_process';
 import fs from 'node:fs';
-import { createRequire } from 'node:module';
 import path from 'node:path';
 import fc from 'fast-check';
-import { beforeAll, describe, expect, it } from 'vitest';
+import { describe, expect, it } from 'vitest';
 import { packageRoot } from '../../server/packageRoot.js';
 import { readDescription, rfc3339, writeDescription } from '../../server/session/description.js';
 import { finish } from '../../server/session/record/finish.js';
@@ -17,33 +16,13 @@ const [events] = fc
   .sample(session(1500), { seed: 51, numRuns: 20 })
   .sort((a, b) => b.length - a.length);
 const stored = asStored(events!);
-let built = '';
-const script = (name: string) => path.join(built, name);
+/** What runs in a process of its own is what `npm run build` made. */
+const script = (name: string) => path.join(packageRoot, 'dist', name);
 const FINISH = 'server/session/record/finishProcess.js';
-
-beforeAll(() => {
-  // What runs in a process of its own must be compiled; a folder that finds the packages will do.
-  built = temporaryFolder();
-  fs.writeFileSync(path.join(built, 'package.json'), '{"type":"module","version":"0.0.0"}');
-  fs.symlinkSync(path.join(packageRoot, 'node_modules'), path.join(built, 'node_modules'), 'dir');
-  const compiler = createRequire(import.meta.url).resolve('typescript/package.json');
-  execFileSync(
-    process.execPath,
-    [
-      path.join(path.dirname(compiler), 'bin', 'tsc'),
-      'server/session/record/finishProcess.ts',
-      'test/record/recordUntilKilled.ts',
-      '--ignoreConfig',
-      ...['--outDir', built, '--rootDir', '.', '--module', 'nodenext', '--target', 'es2023'],
-      ...['--types', 'node', '--strict', '--skipLibCheck', '--noCheck'],
-    ],
-    { cwd: packageRoot, stdio: 'inherit' },
-  );
-});
 
 /** Starts a recording process and kills it once it has said `lines` lines; the last input it said. */
 async function killed(folder: string, lines: number): Promise<number> {
-  const child = spawn(process.execPath, [script('test/record/recordUntilKilled.js'), folder], {
+  const child = spawn(process.execPath, [script('test/tools/recordUntilKilled.js'), folder], {
     stdio: ['ignore', 'pipe', 'inherit'],
   });
   let said = '';

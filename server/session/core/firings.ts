@@ -1,3 +1,4 @@
+// One file, since every way in which an id can end has to be seen beside the way it was charged.
 import { type Guard, IN_SLOT } from '../../guard/guard.js';
 import type {
   ArmRequest,

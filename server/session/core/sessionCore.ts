@@ -1,3 +1,4 @@
+// One file, so that an input's path from frame to command can be read from top to bottom.
 import { Guard } from '../../guard/guard.js';
 import type { Program } from '../../rules/engine/program.js';
 import { RulesEngine } from '../../rules/engine/rulesEngine.js';
