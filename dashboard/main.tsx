@@ -9,9 +9,10 @@ import { emptyLive, take } from './model/live.js';
 import { STOP_RETRY_MS, stopAsked, stopConfirmed, stopFailed, stopIdle } from './model/stop.js';
 import { type Answer, api } from './stream/api.js';
 import { Connection } from './stream/connection.js';
-import type { Actions, Theme } from './view/actions.js';
+import type { Actions, PageName, Theme } from './view/actions.js';
 import { listenForKeys, setSingleKeys } from './view/keys.js';
 import { Page } from './view/page.js';
+import type { Desk } from './view/rehearse/desk.js';
 
 const live = emptyLive();
 const root = document.getElementById('page')!;
@@ -20,6 +21,9 @@ root.replaceChildren();
 const still = matchMedia('(prefers-reduced-motion: reduce)');
 const charts = new Charts(() => schedule());
 let theme = (document.documentElement.dataset.theme ?? 'dark') as Theme;
+/** The Rehearse page and its editor are loaded when they are first asked for. */
+let loaded: { view: typeof import('./view/rehearse/whole.js'); desk: Desk } | undefined;
+let page = pageAsked();
 let keys = recall('lapwing.keys') !== 'off';
 let escapeHeld = false;
 let changed = true;
@@ -41,13 +45,35 @@ function paint(): void {
   noteAwake(live, nowMs);
   if (changed) {
     changed = false;
-    render(<Page {...{ live, nowMs, theme, keys, escapeHeld, actions, charts }} />, root);
+    const rehearse = loaded && <loaded.view.RehearsePage desk={loaded.desk} theme={theme} />;
+    const shown = { live, nowMs, page, rehearse, theme, keys, escapeHeld, actions, charts };
+    render(<Page {...shown} />, root);
     showTitle(nowMs);
   }
   const moving =
     !still.matches && live.state?.session === 'running' && freshness(live, nowMs).fresh;
   if (charts.draw(live, nowMs, moving)) schedule();
 }
+
+function pageAsked(): PageName {
+  return location.hash === '#rehearse' ? 'rehearse' : 'run';
+}
+
+/** Back to the Run page, what was on the desk stays there. */
+async function openPage(): Promise<void> {
+  page = pageAsked();
+  touch();
+  if (page !== 'rehearse' || loaded) return;
+  const view = await import('./view/rehearse/whole.js');
+  loaded ??= { view, desk: new view.Desk(touch) };
+  touch();
+  void loaded.desk.start();
+}
+
+window.addEventListener('hashchange', () => void openPage());
+window.addEventListener('beforeunload', (event) => {
+  if (loaded?.desk.unsaved) event.preventDefault();
+});
 
 /** The tab says the lap, for whoever works in another one. */
 function showTitle(nowMs: number): void {
@@ -170,4 +196,5 @@ listenForKeys(stopEverything, (is) => {
   touch();
 });
 connection.open();
+void openPage();
 schedule();

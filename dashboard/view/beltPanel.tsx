@@ -20,14 +20,7 @@ export function BeltPanel({ live, charts }: { live: Live; charts: Charts }) {
   return (
     <section class="panel belt-panel" aria-labelledby="belt-title">
       <h2 id="belt-title">Belt and laps</h2>
-      <ul class="legend">
-        {LEGEND.map(([kind, word]) => (
-          <li key={word}>
-            <MarkShape kind={kind} />
-            {word}
-          </li>
-        ))}
-      </ul>
+      <Legend />
       <div class="stack strip" role="img" aria-label={beltWords(live)}>
         <Canvas name="belt" charts={charts} />
         <Canvas name="animal" charts={charts} />
@@ -55,6 +48,20 @@ export function BeltPanel({ live, charts }: { live: Live; charts: Charts }) {
         <Canvas name="profile" charts={charts} />
       </div>
     </section>
+  );
+}
+
+/** What each kind of mark looks like. */
+export function Legend() {
+  return (
+    <ul class="legend">
+      {LEGEND.map(([kind, word]) => (
+        <li key={word}>
+          <MarkShape kind={kind} />
+          {word}
+        </li>
+      ))}
+    </ul>
   );
 }
 

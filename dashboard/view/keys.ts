@@ -27,7 +27,9 @@ export function bindKey(key: string, handler: KeyHandler): () => void {
   };
 }
 
-function isTyping(target: EventTarget | null): boolean {
+/** Of what is typed into the rules editor, the page sees only the editor's shadow host. */
+function isTyping(event: Event): boolean {
+  const [target] = event.composedPath();
   if (!(target instanceof HTMLElement)) return false;
   return target.isContentEditable || /^(INPUT|TEXTAREA|SELECT)$/.test(target.tagName);
 }
@@ -54,7 +56,7 @@ export function listenForKeys(stop: () => void, holding: (is: boolean) => void):
       }
       const plain = !(event.ctrlKey || event.metaKey || event.altKey || event.repeat);
       const handler = handlers.get(event.key.toLowerCase());
-      if (!on || !plain || !handler || isTyping(event.target)) return;
+      if (!on || !plain || !handler || isTyping(event)) return;
       event.preventDefault();
       handler.down();
     },

@@ -1,7 +1,8 @@
+import type { ComponentChild } from 'preact';
 import type { Charts } from '../draw/charts.js';
 import { freshness } from '../model/freshness.js';
 import type { Live } from '../model/live.js';
-import type { Actions, Theme } from './actions.js';
+import type { Actions, PageName, Theme } from './actions.js';
 import { AlarmsPanel } from './alarmsPanel.js';
 import { Banners } from './banners.js';
 import { BeltPanel, SpeedPanel } from './beltPanel.js';
@@ -16,6 +17,9 @@ import { Vitals } from './vitals.js';
 export interface PageProps {
   readonly live: Live;
   readonly nowMs: number;
+  readonly page: PageName;
+  /** The Rehearse page, once it is loaded. */
+  readonly rehearse: ComponentChild;
   readonly theme: Theme;
   readonly keys: boolean;
   readonly escapeHeld: boolean;
@@ -25,38 +29,52 @@ export interface PageProps {
 
 /** The whole page from what is known now. What is stale turns grey; the controls never do. */
 export function Page(props: PageProps) {
-  const { live, nowMs, actions, charts } = props;
+  const { live, nowMs, actions, page } = props;
   const fresh = freshness(live, nowMs);
   const stale = fresh.fresh ? '' : 'stale';
   return (
     <>
       <TopBar {...props} freshness={fresh} />
       <Banners live={live} freshness={fresh} nowMs={nowMs} actions={actions} />
-      <main>
-        <div class={`shown now ${stale}`}>
-          <Vitals live={live} />
-        </div>
-        <div class={`shown seen ${stale}`}>
-          <BeltPanel live={live} charts={charts} />
-          <SpeedPanel charts={charts} />
-        </div>
-        <div class="side">
-          <AlarmsPanel live={live} actions={actions} />
-          <SessionPanel live={live} actions={actions} />
-          <SteerPanel live={live} actions={actions} />
-          <div class={`shown ${stale}`}>
-            <RulesPanel live={live} />
-          </div>
-          <HealthPanel live={live} />
-        </div>
-        <div class={`shown events ${stale}`}>
-          <EventsPanel live={live} />
-        </div>
-      </main>
+      {page === 'run' ? <Run {...props} stale={stale} /> : (props.rehearse ?? <Loading />)}
       <footer>
         Lapwing is not a safety interlock. It may be used only under an approved protocol, your
         local rules and by trained staff, with a manual switch that cuts the outputs.
       </footer>
     </>
+  );
+}
+
+function Run({ live, actions, charts, stale }: PageProps & { stale: string }) {
+  return (
+    <main>
+      <div class={`shown now ${stale}`}>
+        <Vitals live={live} />
+      </div>
+      <div class={`shown seen ${stale}`}>
+        <BeltPanel live={live} charts={charts} />
+        <SpeedPanel charts={charts} />
+      </div>
+      <div class="side">
+        <AlarmsPanel live={live} actions={actions} />
+        <SessionPanel live={live} actions={actions} />
+        <SteerPanel live={live} actions={actions} />
+        <div class={`shown ${stale}`}>
+          <RulesPanel live={live} />
+        </div>
+        <HealthPanel live={live} />
+      </div>
+      <div class={`shown events ${stale}`}>
+        <EventsPanel live={live} />
+      </div>
+    </main>
+  );
+}
+
+function Loading() {
+  return (
+    <main class="rehearse">
+      <p class="loading">The editor is loading.</p>
+    </main>
   );
 }

@@ -1,7 +1,7 @@
 import { clock } from '../model/format.js';
 import type { Freshness } from '../model/freshness.js';
 import type { Live } from '../model/live.js';
-import type { Actions, Theme } from './actions.js';
+import type { Actions, PageName, Theme } from './actions.js';
 import { Crest } from './shapes.js';
 
 const THEMES: readonly [Theme, string][] = [
@@ -10,10 +10,16 @@ const THEMES: readonly [Theme, string][] = [
   ['light', 'Light'],
 ];
 
+const PAGES: readonly [PageName, string][] = [
+  ['run', 'Run'],
+  ['rehearse', 'Rehearse'],
+];
+
 /** Which rig, which animal, how far; the theme; and the stop that never scrolls away. */
 export function TopBar(props: {
   live: Live;
   freshness: Freshness;
+  page: PageName;
   theme: Theme;
   keys: boolean;
   escapeHeld: boolean;
@@ -28,6 +34,13 @@ export function TopBar(props: {
         <Crest />
         <h1>Lapwing</h1>
       </div>
+      <nav class="pages" aria-label="Pages">
+        {PAGES.map(([name, word]) => (
+          <a key={name} href={`#${name}`} aria-current={props.page === name ? 'page' : undefined}>
+            {word}
+          </a>
+        ))}
+      </nav>
       <p class="where">
         <strong>{setup ? setup.rig : 'no rig yet'}</strong>
         {setup?.simulated ? <span class="tag">simulated</span> : null}

@@ -5,7 +5,7 @@ import type { FastifyInstance } from 'fastify';
 import type { Browser, BrowserContextOptions, Page } from 'playwright-core';
 import { build } from 'vite';
 import { afterAll, afterEach, beforeAll } from 'vitest';
-import { buildWeb } from '../../server/web/buildWeb.js';
+import { buildWeb, type WebOptions } from '../../server/web/buildWeb.js';
 import { launchBrowser } from '../tools/browser.js';
 import { FakeLoop } from '../tools/fakeLoop.js';
 
@@ -45,7 +45,9 @@ export async function openPage(
   context: BrowserContextOptions = {},
   prepare: (loop: FakeLoop) => void = () => undefined,
   theme = 'dark',
+  more: Partial<WebOptions> & { readonly at?: string } = {},
 ): Promise<PageRig> {
+  const { at = '', ...web } = more;
   const loop = await new FakeLoop().start();
   prepare(loop);
   const { socketPath, tokenFile } = loop;
@@ -56,6 +58,7 @@ export async function openPage(
     log: false,
     requestsPerS: 1000,
     loopTimeoutMs: 1500,
+    ...web,
   });
   const url = await app.listen({ host: '127.0.0.1', port: 0 });
   const viewport = { width: 1440, height: 1000 };
@@ -67,7 +70,7 @@ export async function openPage(
     if (message.type() === 'error') troubles.push(message.text());
   });
   await page.addInitScript((name) => localStorage.setItem('lapwing.theme', name), theme);
-  await page.goto(url);
+  await page.goto(url + at);
   end = async () => {
     await view.close();
     await app.close();
