@@ -1,6 +1,8 @@
 /** A board under test: a line of bytes, and time that passes. What only a bench can do is optional. */
 export interface BoardLine {
   readonly name: string;
+  /** `wait` goes by a clock that the board does not share. */
+  readonly realTime?: true;
   write(bytes: Uint8Array): void;
   /** Set by whoever listens. */
   heard: (bytes: Uint8Array) => void;

@@ -77,11 +77,11 @@ export class ConformanceHost {
     this.send('identify', { nonce, protocol: PROTOCOL_VERSION, newTag }, newTag);
     this.tag = newTag;
     for (let n = 0; n < 40 && this.identities.at(-1)?.nonce !== nonce; n++) {
-      await this.line.wait(5_000);
+      await this.wait(5_000);
     }
     this.check(this.identity.nonce === nonce, 'identity never answered identify');
     // What was kept follows.
-    await this.line.wait(1_000 + 800 * this.identity.outcomesKept);
+    await this.wait(1_000 + 800 * this.identity.outcomesKept);
   }
 
   /** A fresh connection, outputs 0 and 1 generously configured, everything else never on. */
@@ -92,11 +92,11 @@ export class ConformanceHost {
     for (const list of [this.samples, this.edges, this.outcomes, this.faults, this.clocks]) {
       list.length = 0;
     }
-    await this.line.wait(6_000);
+    await this.wait(6_000);
     this.beat();
     this.configure({ output: 0 });
     this.configure({ output: 1 });
-    await this.line.wait(3_000);
+    await this.wait(3_000);
   }
 
   beat(finishedUs = this.boardUs): void {
@@ -148,15 +148,29 @@ export class ConformanceHost {
   /** Lets time pass while the host is alive and beats. */
   async live(us: number): Promise<void> {
     for (let left = us; left > 0; left -= WIRE_TIMES.beatUs) {
-      await this.line.wait(Math.min(left, WIRE_TIMES.beatUs));
+      await this.wait(Math.min(left, WIRE_TIMES.beatUs));
       this.beat();
     }
-    await this.line.wait(4_000);
+    await this.wait(4_000);
   }
 
   /** Lets time pass while the host says nothing. */
   silent(us: number): Promise<void> {
-    return this.line.wait(us);
+    return this.wait(us);
+  }
+
+  /**
+   * Lets board time pass. A board that lives in real time tells by its samples how much has: a busy
+   * computer's own clock would not say what the board has had time for.
+   */
+  async wait(us: number): Promise<void> {
+    if (this.line.realTime !== true) return this.line.wait(us);
+    const fromUs = this.boardUs;
+    for (let turn = 0; turn < us / 250 + 2_000; turn++) {
+      await this.line.wait(1_000);
+      // Samples come every 5 ms at least: what the newest shows may be so much behind.
+      if (((this.boardUs - fromUs) | 0) >= us + 5_000) return;
+    }
   }
 
   get count(): number {

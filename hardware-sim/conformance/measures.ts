@@ -29,7 +29,7 @@ export async function measureRoundTrip(
     host.pulse({ output: never });
     for (let turn = 0; turn < 200 && host.outcomes.length === known; turn++)
       await host.line.wait(0);
-    for (let turn = 0; turn < 50 && host.outcomes.length === known; turn++)
+    for (let turn = 0; turn < 4_000 && host.outcomes.length === known; turn++)
       await host.line.wait(500);
     us.push(clock() - fromUs);
     host.check(host.outcomes.length > known, 'a command was never answered');
@@ -53,7 +53,7 @@ export async function measureDrift(
     let best = { boardUs: 0, hostUs: Number.POSITIVE_INFINITY };
     let first: number | undefined;
     for (let n = 0; n < 200; n++) {
-      await host.line.wait(2_000);
+      await host.wait(2_000);
       const boardUs = host.last(host.samples, 'sample').boardUs;
       first ??= boardUs;
       const hostUs = clock();

@@ -1,6 +1,6 @@
 import { Command, InvalidArgumentError } from 'commander';
 import type { BoardLine } from '../../hardware-sim/conformance/boardLine.js';
-import { ConformanceHost } from '../../hardware-sim/conformance/conformanceHost.js';
+import { ConformanceHost, NotConforming } from '../../hardware-sim/conformance/conformanceHost.js';
 import {
   measureDrift,
   measureLoopback,
@@ -22,6 +22,7 @@ interface SelftestFlags {
 
 /** Long enough for a boot loader that runs when the port is opened. */
 const BOOT_MS = 2_500;
+const ATTEMPTS = 3;
 
 /** `lapwing selftest PORT`: the conformance suite on a real board, and what it can measure there. */
 export function selftestCommand(): Command {
@@ -55,12 +56,25 @@ async function selftest(line: BoardLine, flags: SelftestFlags): Promise<boolean>
   tell(`${outputs} outputs, ${inputs} inputs, ${slots} slots`);
   let failed = 0;
   for (const script of SCRIPTS) {
-    const result = await runScript(host, script);
+    let result = await runScript(host, script);
+    // A computer that is held up for a quarter of a second trips the board's watchdog, rightly.
+    for (let n = 1; n < ATTEMPTS && result.result === 'does not'; n++) {
+      tell(`     again, since this computer may have been held up: ${script.name}: ${result.why}`);
+      result = await runScript(host, script);
+    }
     if (result.result === 'does not') failed++;
     tell(resultLine(result));
   }
   tell(failed === 0 ? 'the board conforms' : `${failed} scripts failed`);
-  if (flags.measure) await measure(host, flags);
+  if (flags.measure) {
+    try {
+      await measure(host, flags);
+    } catch (error) {
+      if (!(error instanceof NotConforming)) throw error;
+      tell(`not measured: ${error.message}`);
+      return false;
+    }
+  }
   return failed === 0;
 }
 
@@ -88,6 +102,7 @@ function resultLine({ script, result, why }: ScriptResult): string {
 function portLine(port: BytePort): BoardLine {
   const line: BoardLine = {
     name: port.name,
+    realTime: true,
     heard: () => {},
     write(bytes) {
       if (!port.write(bytes)) {
