@@ -3,8 +3,13 @@ import { join } from 'node:path';
 import { Ajv2020 } from 'ajv/dist/2020.js';
 import { afterAll, describe, expect, it } from 'vitest';
 import { SimulatedLedBoard } from '../../server/main/ledBoard.js';
-import { readDescription, sessionSchemaFile } from '../../server/session/description.js';
+import {
+  readDescription,
+  sessionSchemaFile,
+  updateDescription,
+} from '../../server/session/description.js';
 import { loadSession } from '../../server/session/loadSession.js';
+import { finish } from '../../server/session/record/finish.js';
 import { noteReplay } from '../../server/session/selfCheck.js';
 import { whatIf } from '../../server/session/whatIf.js';
 import { recordedSession } from './recorded.js';
@@ -96,5 +101,16 @@ describe('the self-check at the end of a session', () => {
     const note = await noteReplay(session.folder);
     writeFileSync(file, rules);
     expect(note).toMatchObject({ identical: false, failed: expect.any(String) });
+  });
+
+  it('is made by the process that finishes the record', async () => {
+    updateDescription(session.folder, {
+      replay: { identical: false, inputs: 0, decisions: 0, commands: 0 },
+    });
+    await finish(session.folder);
+    const { replay, record } = readDescription(session.folder);
+    expect(record!.state).toBe('whole');
+    expect(replay).toMatchObject({ identical: true });
+    expect(replay!.inputs).toBe(record!.lastInput + 1);
   });
 });

@@ -23,7 +23,7 @@ export type Point = readonly [x: number, y: number];
 const WIDTH = 700;
 const LEFT = 58;
 const RIGHT = 14;
-const TOP = 8;
+const TOP = 18;
 const BOTTOM = 40;
 
 /** One figure with two axes, drawn as SVG text: no script, no style sheet. */
@@ -50,7 +50,7 @@ export class Plot {
     const h = this.#height - BOTTOM - TOP;
     this.#parts.push(
       `<rect x="${n(a)}" y="${TOP}" width="${n(b - a)}" height="${h}" fill="${colour}" opacity="0.16"/>`,
-      `<text x="${n((a + b) / 2)}" y="${TOP + 11}" text-anchor="middle" class="small">${escapeHtml(label)}</text>`,
+      `<text x="${n((a + b) / 2)}" y="${TOP - 5}" text-anchor="middle" class="small">${escapeHtml(label)}</text>`,
     );
     return this;
   }
@@ -68,11 +68,14 @@ export class Plot {
   }
 
   band(points: readonly (readonly [x: number, low: number, high: number])[], colour: string): this {
+    // A mean less its spread may lie below the axis.
+    const [bottom, most] = [this.#axes[1].from, this.#axes[1].to];
+    const inside = (y: number) => n(this.y(Math.min(most, Math.max(bottom, y))));
     const path = area<readonly [number, number, number]>()
       .defined(([, low, high]) => Number.isFinite(low) && Number.isFinite(high))
       .x(([x]) => n(this.x(x)))
-      .y0(([, low]) => n(this.y(low)))
-      .y1(([, , high]) => n(this.y(high)))(points);
+      .y0(([, low]) => inside(low))
+      .y1(([, , high]) => inside(high))(points);
     this.#parts.push(`<path d="${path ?? ''}" fill="${colour}" opacity="0.18"/>`);
     return this;
   }
