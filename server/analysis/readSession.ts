@@ -31,9 +31,13 @@ export interface SessionData extends LoadedSession {
 /**
  * Reads a record and feeds its inputs through the engine again, which gives position, speed and lap
  * at each sample; decisions and edges are those that were recorded.
+ * @param progress called with the share read, 0 to 1, of a record that has been finished
  * @throws LapwingError RECORD_NO_SESSION where the record holds no beginning of a session
  */
-export async function readSession(folder: string): Promise<SessionData> {
+export async function readSession(
+  folder: string,
+  progress: (done: number) => void = () => {},
+): Promise<SessionData> {
   const loaded = loadSession(folder);
   const { rig } = loaded;
   const reader = await readRecord(folder);
@@ -55,10 +59,12 @@ export async function readSession(folder: string): Promise<SessionData> {
     const { level, count } = message;
     edges.push({ boardUs, name: nameOfLine(message.input), level, count });
   };
+  const inputs = loaded.description.record?.lastInput ?? 0;
   const state = reader.visit({
     sample: (input, sample) => {
       core.sample(sample);
       samples.push(input, core.instant, sample);
+      if ((samples.length & 0x3fff) === 0 && inputs > 0) progress(Math.min(1, input / inputs));
     },
     input: (_, input) => {
       core.take(input);

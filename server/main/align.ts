@@ -9,6 +9,7 @@ import { LapwingError } from '../errors/codes.js';
 import { csvLine, fixed } from '../export/table.js';
 import { derivedFolder } from '../export/writeTables.js';
 import { writeFileWhole } from '../session/writeFileWhole.js';
+import { progressBar } from './progressBar.js';
 
 interface AlignFlags {
   line?: string;
@@ -29,7 +30,9 @@ export function alignCommand(): Command {
     .option('--json', 'print the result as JSON')
     .action(async (folder: string, edges: string, flags: AlignFlags) => {
       const acquisitions = readEdges(textOf(edges), options(flags));
-      const session = await readSession(folder);
+      const bar = progressBar('reading');
+      const session = await readSession(folder, (done) => bar.show(done));
+      bar.clear();
       const {
         line,
         edges: own,

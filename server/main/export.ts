@@ -22,13 +22,17 @@ export function exportCommand(): Command {
 }
 
 async function write(folder: string, format: string, into: string | undefined): Promise<string> {
-  if (format === 'nwb')
-    return exportNwb(folder, into ?? join(derivedFolder(resolve(folder)), 'session.nwb'));
+  const bar = progressBar('exporting');
+  if (format === 'nwb') {
+    const file = into ?? join(derivedFolder(resolve(folder)), 'session.nwb');
+    const written = await exportNwb(folder, file, (done) => bar.show(done));
+    bar.clear();
+    return written;
+  }
   if (format !== 'tables') throw new LapwingError('exportFormatUnknown', `--to ${format}.`);
-  const bar = progressBar('writing');
-  const session = await readSession(folder);
+  const session = await readSession(folder, (done) => bar.show(done / 4));
   const path = into ?? join(derivedFolder(resolve(folder)), 'tables');
-  writeTables(session, path, (done) => bar.show(done));
+  writeTables(session, path, (done) => bar.show(0.25 + 0.75 * done));
   bar.clear();
   return path;
 }

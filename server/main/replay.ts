@@ -5,6 +5,7 @@ import { describeTroubles } from '../session/record/recordState.js';
 import { type ReplayResult, replaySession } from '../session/replay.js';
 import { type FiringCompared, type FiringSeen, type WhatIf, whatIf } from '../session/whatIf.js';
 import { SimulatedLedBoard } from './ledBoard.js';
+import { progressBar } from './progressBar.js';
 
 /**
  * `lapwing replay SESSION`: the record through the engine again, every decision compared.
@@ -23,7 +24,11 @@ export function replayCommand(): Command {
         print(flags.json ? JSON.stringify(found, null, 2) : whatIfInWords(found));
         return;
       }
-      const result = await replaySession(folder, loadSession(folder).setup);
+      const { setup, description } = loadSession(folder);
+      const bar = progressBar('replaying');
+      const most = description.record?.lastInput ?? Number.POSITIVE_INFINITY;
+      const result = await replaySession(folder, setup, (n) => bar.show(Math.min(1, n / most)));
+      bar.clear();
       print(flags.json ? JSON.stringify(result, null, 2) : inWords(result));
       if (result.difference !== null || result.state.state === 'damaged') process.exitCode = 1;
     });

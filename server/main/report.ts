@@ -6,6 +6,7 @@ import { reportPage } from '../export/report/page.js';
 import type { Loopback } from '../export/report/tables.js';
 import { derivedFolder } from '../export/writeTables.js';
 import { writeFileWhole } from '../session/writeFileWhole.js';
+import { progressBar } from './progressBar.js';
 
 interface ReportFlags {
   into?: string;
@@ -22,7 +23,9 @@ export function reportCommand(): Command {
     .option('--loopback <output=input>', 'an output that is wired back to an input', loopbackOf)
     .option('--json', 'print what was written as JSON')
     .action(async (folder: string, flags: ReportFlags) => {
-      const session = await readSession(folder);
+      const bar = progressBar('reading');
+      const session = await readSession(folder, (done) => bar.show(done));
+      bar.clear();
       const page = reportPage(session, flags.loopback);
       const file = resolve(flags.into ?? join(derivedFolder(folder), 'report.html'));
       try {

@@ -24,8 +24,13 @@ export interface ReplayResult {
 /**
  * Feeds a record's inputs through the engine again and compares every command and decision.
  * @param folder the session folder
+ * @param progress called now and then with the number of inputs compared
  */
-export async function replaySession(folder: string, setup: SessionSetup): Promise<ReplayResult> {
+export async function replaySession(
+  folder: string,
+  setup: SessionSetup,
+  progress?: (inputs: number) => void,
+): Promise<ReplayResult> {
   const reader = await readRecord(folder);
   // What the replay has said and the record has not yet confirmed, in order.
   const said: Said[] = [];
@@ -57,6 +62,7 @@ export async function replaySession(folder: string, setup: SessionSetup): Promis
   const state = reader.visit({
     sample: (_, sample) => {
       inputs++;
+      if ((inputs & 0x3fff) === 0) progress?.(inputs);
       if (said.length > 0 || next > 0) before();
       core.sample(sample);
     },

@@ -118,6 +118,24 @@ describe('edges at random intervals', () => {
     for (const { residualsUs } of results.slice(0, 2)) expect(residualsUs.p99).toBeLessThan(200);
   });
 
+  it('in other units than they were said to be are refused in those words', () => {
+    const c = {
+      seed: 3,
+      driftPpm: 0,
+      lostOurs: 0,
+      lostTheirs: 0,
+      spurious: 0,
+      lateS: 0,
+      offsetS: 9,
+    };
+    const { ref, other } = simulated(c);
+    const samples = other.map((t) => t * 30_000);
+    expect(align(ref, [samples])[0]).toHaveProperty(
+      'refused',
+      expect.stringContaining('in other units'),
+    );
+  });
+
   it('too few to be sure of are refused with their number', () => {
     const { ref, other } = simulated({
       seed: 3,

@@ -1,4 +1,4 @@
-import { type Line, robustLine, valueAt } from './robustLine.js';
+import { type Line, median, robustLine, valueAt } from './robustLine.js';
 
 /** Which edge is which: indices into the two lists, both rising. */
 export interface Pair {
@@ -15,6 +15,8 @@ const WANDER = 50e-6;
 /** How far from its place an edge may be seen: sampling, debouncing. */
 const JITTER_S = 0.001;
 const WINDOW = 30;
+/** Lost and spurious edges change the usual interval by less than this factor. */
+const SCALE = 4;
 const LEAST_VOTES = 8;
 /** Edges in a row that fit nowhere, after which the match is sought anew. */
 const LOST = 20;
@@ -32,6 +34,13 @@ const LOCAL = 40;
 export function matchRandom(ref: readonly number[], other: readonly number[]): Pair[] | Why {
   if (other.length < LEAST_VOTES) return `${other.length} edges are too few to be recognised`;
   if (ref.length < LEAST_VOTES) return `the record holds only ${ref.length} edges of that line`;
+  const usual = (times: readonly number[]) => median(times.slice(1).map((t, i) => t - times[i]!));
+  const [ours, theirs] = [usual(ref), usual(other)];
+  if (theirs > SCALE * ours || theirs < ours / SCALE)
+    return (
+      `its edges are usually ${theirs.toPrecision(3)} s apart and the record's ` +
+      `${ours.toPrecision(3)} s: they are in other units, or of another line`
+    );
   let why: Why = '';
   for (let from = 0; from < other.length; from += WINDOW) {
     const seeded = seed(ref, other, Math.min(from, Math.max(0, other.length - WINDOW)));

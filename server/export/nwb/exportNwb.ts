@@ -9,14 +9,24 @@ import { packageRoot } from '../../packageRoot.js';
  * Writes a session as an NWB file in a process of its own. Returns the file's path.
  * @throws LapwingError as `readSession` and `writeNwb` do
  */
-export async function exportNwb(folder: string, file: string): Promise<string> {
+export async function exportNwb(
+  folder: string,
+  file: string,
+  progress: (done: number) => void = () => {},
+): Promise<string> {
   const child = spawn(process.execPath, [compiledScript(), folder, file], {
     stdio: ['ignore', 'pipe', 'pipe'],
   });
   let out = '';
+  let last = '';
   let complaint = '';
   child.stdout.setEncoding('utf8').on('data', (text: string) => {
-    out += text;
+    const lines = (out + text).split('\n');
+    out = lines.pop()!;
+    for (const line of lines) {
+      if (line.startsWith('{"done":')) progress((JSON.parse(line) as { done: number }).done);
+      else last = line;
+    }
   });
   child.stderr.setEncoding('utf8').on('data', (text: string) => {
     complaint = (complaint + text).slice(-2000);
@@ -27,7 +37,7 @@ export async function exportNwb(folder: string, file: string): Promise<string> {
   });
   let line: { path?: string; error?: { code: string; message: string } };
   try {
-    line = JSON.parse(out);
+    line = JSON.parse(last);
   } catch {
     throw new LapwingError('exportFolderBad', `${file}: ${how}. ${complaint}`.trim());
   }
