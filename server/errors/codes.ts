@@ -2,8 +2,8 @@
  * Every error that a user can meet, once: its code never changes, and `server/errors/ERRORS.md`
  * has an entry for each (a test holds the two together).
  *
- * The code's first part says where it comes from: WIRE, LINK, RIG, RULES, GUARD, RECORD, LOOP, WEB,
- * CLI.
+ * The code's first part says where it comes from: WIRE, LINK, RIG, RULES, GUARD, RECORD, EXPORT,
+ * ALIGN, REPORT, LOOP, WEB, CLI.
  */
 export interface ErrorEntry {
   readonly code: string;
@@ -252,6 +252,11 @@ export const ERRORS = {
     'EXPORT_FORMAT_UNKNOWN',
     'There is no export of that name.',
     'Say `--to tables` for CSV, or `--to nwb` for one NWB file.',
+  ),
+  reportSubjects: entry(
+    'REPORT_SUBJECTS',
+    'The sessions are of more than one subject.',
+    'Give sessions of one animal; across animals the unit is the animal, so compare their reports.',
   ),
   alignEdgesBad: entry(
     'ALIGN_EDGES_BAD',

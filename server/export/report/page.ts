@@ -10,7 +10,8 @@ import * as figures from './figures.js';
 import { escapeHtml } from './plot.js';
 import { cautions, facts, health, type Loopback, notDone, proofs, statistics } from './tables.js';
 
-const STYLE = `
+/** For the screen and for paper. */
+export const STYLE = `
 body { font: 15px/1.45 Georgia, 'DejaVu Serif', serif; color: #111; background: #fff; max-width: 760px; margin: 24px auto; padding: 0 16px; }
 h1 { font-size: 24px; margin: 0 0 4px; } h2 { font-size: 18px; border-top: 1px solid #999; padding-top: 10px; margin-top: 26px; break-after: avoid; }
 table { border-collapse: collapse; width: 100%; font-size: 13px; margin: 8px 0; font-variant-numeric: tabular-nums; }

@@ -18,7 +18,12 @@ export interface Loopback {
 const LOOPBACK_US = 50_000;
 
 type Cell = string | number;
-function table(head: readonly string[], rows: readonly (readonly Cell[])[], name = ''): string {
+/** An HTML table; cells that are numbers stand to the right. */
+export function table(
+  head: readonly string[],
+  rows: readonly (readonly Cell[])[],
+  name = '',
+): string {
   const cell = (tag: string, value: Cell) =>
     `<${tag}${typeof value === 'number' || /^[-\d.]+$/.test(value) ? ' class="n"' : ''}>${escapeHtml(String(value))}</${tag}>`;
   const top = head.length === 0 ? '' : `<tr>${head.map((h) => cell('th', h)).join('')}</tr>`;
@@ -26,7 +31,8 @@ function table(head: readonly string[], rows: readonly (readonly Cell[])[], name
   return `<table class="${name}">${top}${body.join('\n')}</table>`;
 }
 
-const fixed = (value: number | null | undefined, digits: number) =>
+/** A number with so many decimals; nothing where it is not known. */
+export const fixed = (value: number | null | undefined, digits: number) =>
   value === null || value === undefined || Number.isNaN(value) ? '' : value.toFixed(digits);
 
 export function facts({ description, beganUs, endedUs, rig, state }: SessionData): string {
