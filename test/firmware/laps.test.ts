@@ -126,4 +126,29 @@ function run(speedCmPerS: (dice: Dice) => number, laps: number) {
         runner.take({ kind: 'operator', act: { act: 'end', reason: 'enough laps' }, by });
       };
     },
-  }, 120_000);
+  });
+  return { virtual, decisions };
+}
+
+test.each([
+  ['realistic', 60, (dice: Dice) => dice.between(15, 60)],
+  ['extreme', 140, (dice: Dice) => dice.between(90, 220)],
+] as const)(
+  'at %s speeds every armed firing is within a count of its place, none twice',
+  (_, laps, speed) => {
+    const { virtual, decisions } = run(speed, laps);
+    const fired = decisions.filter((one) => one.kind === 'fired');
+    const armed = fired.filter((one) => one.armed);
+    expect(virtual.stalls).toBeGreaterThan(20);
+    expect(armed.length).toBeGreaterThan(laps);
+    const countMm = 10 / COUNTS_PER_CM;
+    for (const one of armed) expect(Math.abs(one.errorMm!)).toBeLessThanOrEqual(countMm + 1e-6);
+    const serials = fired.map(({ rule, serial }) => `${rule} ${serial}`);
+    expect(new Set(serials).size).toBe(serials.length);
+    // The pins rose as often as the session says, and never for a lap twice.
+    const rose = virtual.rig.rises.reduce((sum, rises) => sum + rises, 0);
+    expect(rose).toBe(fired.length);
+    expect(rose).toBeLessThanOrEqual(2 * (laps + 1));
+  },
+  120_000,
+);
