@@ -11,7 +11,7 @@ import { packageVersion } from '../packageRoot.js';
 import type { SessionSetup } from '../session/core/sessionCore.js';
 import type { StampedDecision } from '../session/decisions.js';
 import type { Actor, OperatorAct, RareInput } from '../session/inputs.js';
-import { idleRules, newSeed, prepareRules } from '../session/prepare.js';
+import { idleRules, newSeed, type PreparedRules, prepareRules } from '../session/prepare.js';
 import { finish } from '../session/record/finish.js';
 import { readRecord } from '../session/record/readRecord.js';
 import { Recorder } from '../session/record/recorder.js';
@@ -32,6 +32,7 @@ import { type RunningSession, setupOf, snapshotOf } from './view.js';
 
 const EVENTS_KEPT = 20_000;
 const TICK_MS = 20;
+const HANDSHAKE_MS = 3_000;
 /** Ids of a loop that was killed, which the board may know and has not told. */
 const ID_MARGIN = 1_000;
 /** What was cut short at the end is reported within a few frames. */
@@ -61,7 +62,7 @@ export class Loop implements LinkHandler, LoopService {
   #session: RunningSession | undefined;
   #ended: string | null = null;
   #lastUp: LinkUp | undefined;
-  #toBegin: BeginOptions | undefined;
+  #toBegin: (BeginOptions & { readonly rules: PreparedRules }) | undefined;
   #beginning = false;
   /** The highest id that the board has been seen to know, over all sessions. */
   #highestId = 0;
@@ -102,12 +103,18 @@ export class Loop implements LinkHandler, LoopService {
   async start(): Promise<void> {
     await this.#server.open();
     const left = leftOver(this.#address.currentFile);
-    if (left === undefined) this.#toBegin = this.#options.begin;
+    if (left === undefined) this.#prepare(this.#options.begin);
     else if (this.#options.resume) await this.#resume(left);
     else throw new LapwingError('loopUnfinished', `${left.folder} was left unfinished.`);
     this.#link.start();
     this.#tick = setInterval(() => this.#everyTick(), TICK_MS);
     this.#report({ report: 'ready' });
+  }
+
+  /** Compiles what is to begin before there is a board to keep waiting. */
+  #prepare(begin: BeginOptions | undefined): void {
+    if (begin === undefined) return;
+    this.#toBegin = { ...begin, rules: prepareRules(begin.rulesPath, this.#rigFile) };
   }
 
   /** Ends the session, waits briefly for the board's last words, and closes the record. */
@@ -157,7 +164,7 @@ export class Loop implements LinkHandler, LoopService {
     const begin = this.#toBegin;
     if (begin === undefined) return;
     this.#toBegin = undefined;
-    this.#begin(begin).catch((error: unknown) => this.#fail(error));
+    this.#begin(begin, begin.rules).catch((error: unknown) => this.#fail(error));
   }
 
   down(why: LapwingError): void {
@@ -229,13 +236,13 @@ export class Loop implements LinkHandler, LoopService {
    * Begins a session. What takes long (compiling, syncing files) is done in steps, and frames are
    * taken in between, so that the board never misses a beat.
    */
-  async #begin(begin: BeginOptions): Promise<void> {
+  async #begin(begin: BeginOptions, prepared?: PreparedRules): Promise<void> {
     if (this.#session !== undefined || this.#beginning) {
       throw new LapwingError('loopBusy', 'End it before another begins.');
     }
     this.#beginning = true;
     try {
-      const rules = prepareRules(begin.rulesPath, this.#rigFile);
+      const rules = prepared ?? prepareRules(begin.rulesPath, this.#rigFile);
       await frames();
       const { subject, experimenter } = begin;
       const seed = begin.seed ?? newSeed();
@@ -247,11 +254,18 @@ export class Loop implements LinkHandler, LoopService {
       const opened = openSession(this.#recordFolder, this.#rigFile, rules, card, board, {
         onTrouble: (kind, error) => this.#trouble(kind, error),
       });
-      await frames();
+      await this.#linkIsUp();
       this.#start({ folder: opened.folder, rules, ...card }, opened.recorder);
     } finally {
       this.#beginning = false;
     }
+  }
+
+  /** A board that lost us meanwhile is given the time of a handshake. */
+  async #linkIsUp(): Promise<void> {
+    const untilMs = performance.now() + HANDSHAKE_MS;
+    do await frames();
+    while (this.#link.state !== 'up' && performance.now() < untilMs);
   }
 
   #start(session: RunningSession, recorder: Recorder): void {
