@@ -52,16 +52,24 @@ export class RawHost {
   }
 
   /** Waits until a frame comes that passes. */
-  async until(passes: (frame: HeardFrame) => boolean, what: string): Promise<HeardFrame> {
+  async until(
+    passes: (frame: HeardFrame) => boolean,
+    what: string,
+    patienceMs = PATIENCE_MS,
+  ): Promise<HeardFrame> {
     let looked = 0;
     let found: HeardFrame | undefined;
-    await this.#wait(() => {
-      while (looked < this.heard.length && found === undefined) {
-        const frame = this.heard[looked++]!;
-        if (passes(frame)) found = frame;
-      }
-      return found !== undefined;
-    }, what);
+    await this.#wait(
+      () => {
+        while (looked < this.heard.length && found === undefined) {
+          const frame = this.heard[looked++]!;
+          if (passes(frame)) found = frame;
+        }
+        return found !== undefined;
+      },
+      what,
+      patienceMs,
+    );
     return found!;
   }
 
@@ -96,9 +104,9 @@ export class RawHost {
     this.#close();
   }
 
-  #wait(done: () => boolean, what: string): Promise<void> {
+  #wait(done: () => boolean, what: string, patienceMs = PATIENCE_MS): Promise<void> {
     return new Promise((resolve, reject) => {
-      const late = setTimeout(() => reject(new Error(`waited too long for ${what}`)), PATIENCE_MS);
+      const late = setTimeout(() => reject(new Error(`waited too long for ${what}`)), patienceMs);
       this.#wake = () => {
         if (!done()) return;
         clearTimeout(late);

@@ -6,7 +6,7 @@ import { afterEach, beforeEach, describe, expect, test } from 'vitest';
 import { blank } from '../../server/wire/codec.js';
 import { OUTCOME } from '../../server/wire/messages.js';
 import { PtyRig, RIG_SCRIPT } from '../tools/ptyRig.js';
-import { RawHost } from './rawHost.js';
+import { type HeardFrame, RawHost } from './rawHost.js';
 
 const TAG = 0x31;
 let rig: PtyRig | undefined;
@@ -99,15 +99,17 @@ describe('the simulated rig as a process', () => {
   test('is another boot after a reset, and says so first', async () => {
     const on = await connected([]);
     const { bootId } = await on.handshake(TAG);
-    on.heard.length = 0;
-    await rig!.reset();
-    const first = await on.until(
-      ({ name, message }) => name === 'identity' && message.nonce === 0,
-      'the board to speak first',
-    );
+    const spoke = ({ name, message }: HeardFrame) => name === 'identity' && message.nonce === 0;
+    let first: HeardFrame | undefined;
+    // Said once; on a machine that is held up the line may be full just then.
+    for (let tries = 0; tries < 4 && first === undefined; tries++) {
+      on.heard.length = 0;
+      await rig!.reset();
+      first = await on.until(spoke, 'the board to speak first', 4_000).catch(() => undefined);
+    }
     expect(first).toMatchObject({ tag: 0 });
-    expect(first.message).toMatchObject({ resetCause: 2 });
-    expect(first.message.bootId).not.toBe(bootId);
+    expect(first!.message).toMatchObject({ resetCause: 2 });
+    expect(first!.message.bootId).not.toBe(bootId);
   });
 
   test('lets time go after a stall instead of catching up', async () => {
