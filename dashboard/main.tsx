@@ -65,9 +65,13 @@ async function openPage(): Promise<void> {
   touch();
   if (page !== 'rehearse' || loaded) return;
   const view = await import('./view/rehearse/whole.js');
-  loaded ??= { view, desk: new view.Desk(touch) };
+  const desk = new view.Desk(() => {
+    if (desk.state.path !== undefined) keep('lapwing.rules', desk.state.path);
+    touch();
+  });
+  loaded ??= { view, desk };
   touch();
-  void loaded.desk.start();
+  void loaded.desk.start(recall('lapwing.rules') ?? undefined);
 }
 
 window.addEventListener('hashchange', () => void openPage());

@@ -97,6 +97,9 @@ test('laps grow, killed processes come back, stop leaves the outputs idle, the s
     .first()
     .waitFor();
   expect(await shownNumber(page, 'water')).toBeGreaterThan(0);
+  // The web process was told the rig and its rules: they can be edited beside the session.
+  const { files } = (await (await fetch(`${url}/api/rules`)).json()) as { files: string[] };
+  expect(files).toContain('demo.yaml');
 
   // Each is started again by the launcher; the page follows by itself, with the laps that it had.
   for (const script of ['webProcess.js', 'loopProcess.js']) {

@@ -1,5 +1,5 @@
 /**
- * Pictures of the page of a running service, in each theme, as on a desk and on a phone:
+ * Pictures of the pages of a running service, in each theme, as on a desk and on a phone:
  * `node dist/test/tools/screenshot.js --url http://127.0.0.1:8711 --out pictures [--laps 12]`.
  */
 import { mkdir } from 'node:fs/promises';
@@ -25,7 +25,23 @@ const SCREENS = [
   { name: 'phone', width: 390, height: 844, scale: 2, phone: true },
 ] as const;
 
-/** Writes `run-THEME-desk.png` and `run-THEME-phone.png` into `out`, and returns their paths. */
+/** Rehearses the file that the other page opens with. */
+async function pictureRehearsal(page: Page, url: string, file: string): Promise<string> {
+  await page.goto(`${url}/#rehearse`);
+  await page.locator('.belt-row').first().waitFor();
+  await page.getByRole('button', { name: 'Rehearse', exact: true }).click();
+  await page.locator('.result').waitFor({ timeout: 120_000 });
+  await page.locator('.belt-row').last().focus();
+  await page.evaluate(() => window.scrollTo(0, 0));
+  await page.waitForTimeout(300);
+  await page.screenshot({ path: file });
+  return file;
+}
+
+/**
+ * Writes `run-THEME-desk.png`, `run-THEME-phone.png`, and the same of the Rehearse page, into `out`,
+ * and returns their paths.
+ */
 export async function takePictures(wanted: Pictures): Promise<string[]> {
   const { url, out, laps = 0, themes = ['dark', 'light', 'red'], timeoutMs = 300_000 } = wanted;
   await mkdir(out, { recursive: true });
@@ -49,6 +65,7 @@ export async function takePictures(wanted: Pictures): Promise<string[]> {
         const file = join(out, `run-${theme}-${name}.png`);
         await page.screenshot({ path: file });
         files.push(file);
+        files.push(await pictureRehearsal(page, url, join(out, `rehearse-${theme}-${name}.png`)));
         await page.close();
       }
     }

@@ -38,7 +38,7 @@ export function EditorPanel({ desk, state }: { desk: Desk; state: Rehearse }) {
             Save
           </button>
         )}
-        <span class={`tag ${changed ? 'unsaved' : ''}`}>{changed ? 'not saved' : 'saved'}</span>
+        {changed ? <span class="tag unsaved">not saved</span> : null}
         <form
           class="save-as"
           onSubmit={(event) => {
