@@ -92,6 +92,7 @@ export class Firings {
     if (orders.length === 0 && request.orders.length > 0) return 'its mark is busy';
     if (request.sham) {
       for (const order of orders) this.#sham(order);
+      if (orders.length > 0) this.#tellSham(request);
       return undefined;
     }
     if (orders.length === 0) return undefined;
@@ -267,6 +268,15 @@ export class Firings {
     const id = this.#ledger.takeId();
     guard.reserve(id, order, instant.nowUs);
     guard.settle(id, 'sham', order.widthUs * order.repeats, instant.nowUs);
+  }
+
+  #tellSham({ rule, serial, placeTravel }: FiringRequest): void {
+    const { tracker } = this.#context;
+    this.#context.tell({
+      ...{ kind: 'fired', rule: this.#context.ruleName(rule), serial, sham: true, armed: false },
+      ...{ output: null, riseUs: null, riseCm: null, errorMm: null },
+      placeCm: Number.isNaN(placeTravel) ? null : tracker.positionCmOf(placeTravel),
+    });
   }
 
   #send(live: LiveId): void {

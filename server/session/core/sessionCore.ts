@@ -397,9 +397,9 @@ export class SessionCore {
   #journal(): Journal {
     const name = (rule: number) => this.#ruleName(rule);
     return {
-      // What the board fires is told when the board says so, with its place and time.
+      // What drives an output is told when the board says so, and a sham as it is asked.
       fired: (rule, serial, sham) => {
-        if (!sham && this.#drivesOutput(rule)) return;
+        if (this.#drivesOutput(rule)) return;
         this.#tell({
           ...{ kind: 'fired', rule: name(rule), serial, sham, armed: false, output: null },
           ...{ riseUs: null, placeCm: null, riseCm: null, errorMm: null },
