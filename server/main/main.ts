@@ -7,6 +7,7 @@ import { checkCommand } from './check.js';
 import { demoCommand } from './demo.js';
 import { explainCommand } from './explain.js';
 import { exportCommand } from './export.js';
+import { flashCommand } from './flash.js';
 import { mendCommand } from './mend.js';
 import { portsCommand } from './ports.js';
 import { quietCommand } from './quiet.js';
@@ -15,6 +16,7 @@ import { replayCommand } from './replay.js';
 import { reportCommand } from './report.js';
 import { resumeCommand } from './resume.js';
 import { runCommand } from './run.js';
+import { selftestCommand } from './selftest.js';
 import { serveCommand } from './serve.js';
 import { tellError } from './tellError.js';
 
@@ -34,6 +36,8 @@ const program = new Command('lapwing')
   .addCommand(alignCommand())
   .addCommand(reportCommand())
   .addCommand(portsCommand())
+  .addCommand(selftestCommand())
+  .addCommand(flashCommand())
   .addCommand(quietCommand());
 
 // A reader that closes early (`lapwing explain FILE | head`) is no error.

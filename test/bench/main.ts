@@ -4,6 +4,7 @@
  */
 import { arch, cpus, loadavg, release } from 'node:os';
 import { benchEngine } from './engine.js';
+import { benchFirmware } from './firmware.js';
 import { benchMemory } from './memory.js';
 import { benchRecord } from './record.js';
 import { benchRehearsal } from './rehearsal.js';
@@ -97,7 +98,41 @@ function memory(): void {
   );
 }
 
-const PARTS = { wire, engine, record, rehearsal, memory, 'round-trip': roundTrip } as const;
+async function firmware(): Promise<void> {
+  const { board, counts, edgeToOutput, watchdogUs, stackLeftBytes } = await benchFirmware();
+  console.log(`the committed program for the ${board}, emulated`);
+  for (const { edgesPerS, edges, lost } of counts) {
+    console.log(`${edgesPerS} edges/s: ${lost} of ${edges} lost`);
+  }
+  for (const shots of edgeToOutput) {
+    const { minUs, medianUs, p99Us, maxUs, widthErrorUs, longestOffUs } = shots;
+    const figure = [minUs, medianUs, p99Us, maxUs].map((us) => us.toFixed(2)).join(' / ');
+    bar(
+      `edge to output at ${shots.edgesPerS} edges/s (<= 10 us)`,
+      `${figure} us, ${shots.missed} of ${shots.shots} missed`,
+      maxUs <= 10,
+    );
+    bar(
+      'pulse width (within 20 us)',
+      `${widthErrorUs.least.toFixed(1)} to ${widthErrorUs.most.toFixed(1)} us`,
+      widthErrorUs.most <= 20,
+    );
+    console.log(`  longest stretch with interrupts off: ${longestOffUs.toFixed(1)} us`);
+  }
+  console.log(
+    `watchdog: ${(watchdogUs / 1000).toFixed(1)} ms; ${stackLeftBytes} bytes of stack never reached`,
+  );
+}
+
+const PARTS = {
+  wire,
+  engine,
+  record,
+  rehearsal,
+  memory,
+  firmware,
+  'round-trip': roundTrip,
+} as const;
 
 const asked = process.argv.slice(2);
 const unknown = asked.filter((name) => !(name in PARTS));
