@@ -23,6 +23,7 @@ export function simulatedRigFor(
   } satisfies SimulatedRigOptions);
   return {
     simulated,
+    reentrant: true,
     get nowUs() {
       return simulated.nowUs;
     },

@@ -2,6 +2,7 @@ import type { BoardMessageName, HostMessageName, Identity, MessageOf } from '../
 import { PROTOCOL_VERSION } from '../wire/messages.js';
 import type { SessionSetup } from './core/sessionCore.js';
 import type { StampedDecision } from './decisions.js';
+import type { RareInput } from './inputs.js';
 import { type SessionRecorder, SessionRunner } from './runner.js';
 
 /** Told a board's messages; each is reused by the board. */
@@ -13,6 +14,8 @@ export type BoardListener = {
 export interface VirtualRig {
   /** Microseconds since the rig was switched on. */
   readonly nowUs: number;
+  /** It may be told commands from within a listener, and acts on them after the event at hand. */
+  readonly reentrant?: boolean;
   advanceTo(us: number): void;
   connect(listener: BoardListener): void;
   receive<N extends HostMessageName>(name: N, message: MessageOf[N], tag: number): void;
@@ -30,8 +33,13 @@ export interface RehearsalOptions {
 }
 
 const TAG = 1;
-/** What the host sends reaches the board at the end of the same millisecond. */
+/** What the host sends reaches the board at the end of the same millisecond, */
 const STEP_US = 1_000;
+/**
+ * or with the next frame (1 ms later while the belt moves, 5 ms at most), where the rig can be told
+ * then: a third less work, since the rig may run on by itself in between.
+ */
+const REENTRANT_STEP_US = 1_000_000;
 const MINUTE_US = 60_000_000;
 
 /**
@@ -44,24 +52,29 @@ export function rehearse(
   options: RehearsalOptions,
 ): SessionRunner {
   const outbox: { name: HostMessageName; message: MessageOf[HostMessageName] }[] = [];
+  const deliver = () => {
+    for (const { name, message } of outbox) rig.receive(name, message, TAG);
+    outbox.length = 0;
+  };
+  const reentrant = rig.reentrant === true;
+  const stepUs = reentrant ? REENTRANT_STEP_US : STEP_US;
   const runner = new SessionRunner(
     setup,
     (name, message) => outbox.push({ name, message }),
     options.recorder,
     options.onDecision,
   );
-  shakeHands(rig, runner);
+  shakeHands(rig, runner, () => {
+    if (reentrant && outbox.length > 0) deliver();
+  });
   options.began?.(runner);
   const beganUs = rig.nowUs;
   let minuteUs = beganUs + MINUTE_US;
   let untilUs = beganUs;
   const { core } = runner;
   while (core.state !== 'ended') {
-    if (outbox.length > 0) {
-      for (const { name, message } of outbox) rig.receive(name, message, TAG);
-      outbox.length = 0;
-    }
-    untilUs += STEP_US;
+    if (outbox.length > 0) deliver();
+    untilUs += stepUs;
     rig.advanceTo(untilUs);
     if (untilUs < minuteUs) continue;
     minuteUs += MINUTE_US;
@@ -71,17 +84,25 @@ export function rehearse(
   return runner;
 }
 
-function shakeHands(rig: VirtualRig, runner: SessionRunner): void {
+/** @param before called before each frame is taken */
+function shakeHands(rig: VirtualRig, runner: SessionRunner, before: () => void): void {
   let answered: Identity | undefined;
+  const take = (input: RareInput) => {
+    before();
+    if (runner.core.state !== 'ended') runner.take(input);
+  };
   rig.connect({
     identity: (message) => {
       answered = { ...message };
     },
-    sample: (message) => runner.sample(message),
-    edge: (message) => runner.take({ kind: 'edge', message }),
-    outcome: (message) => runner.take({ kind: 'outcome', message }),
-    fault: (message) => runner.take({ kind: 'fault', message }),
-    clock: (message) => runner.take({ kind: 'clock', message }),
+    sample: (message) => {
+      before();
+      if (runner.core.state !== 'ended') runner.sample(message);
+    },
+    edge: (message) => take({ kind: 'edge', message }),
+    outcome: (message) => take({ kind: 'outcome', message }),
+    fault: (message) => take({ kind: 'fault', message }),
+    clock: (message) => take({ kind: 'clock', message }),
   });
   rig.receive('identify', { nonce: 1, protocol: PROTOCOL_VERSION, newTag: TAG }, 0);
   if (answered === undefined) throw new Error('the simulated board did not answer');
