@@ -7,5 +7,8 @@ export default defineConfig({
     testTimeout: 30_000,
     hookTimeout: 60_000,
     maxWorkers: 2,
+    // Real processes, sockets and a browser meet machines that stand still for a second or more. What
+    // fails twice in a row is no accident of the machine.
+    retry: 1,
   },
 });
