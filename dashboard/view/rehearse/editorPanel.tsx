@@ -89,14 +89,17 @@ function EditorBox({ desk }: { desk: Desk }) {
       rehearse: () => void desk.rehearse(),
       rig: () => state.rig,
     });
-    desk.onChecked = () => editor.show(desk.state.check?.problems ?? []);
+    const checked = () => editor.show(desk.state.check?.problems ?? []);
+    desk.onChecked = checked;
     desk.onGoTo = (offset) => editor.goTo(offset);
     desk.onFocus = () => editor.focus();
     desk.onChecked();
     return () => {
+      editor.release();
+      // The next editor may be there already, and it is the one to be told.
+      if (desk.onChecked !== checked) return;
       desk.onChecked = desk.onFocus = () => {};
       desk.onGoTo = () => {};
-      editor.release();
     };
   }, [desk]);
   return <div class="editor-box" ref={box} />;
