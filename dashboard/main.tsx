@@ -9,10 +9,10 @@ import { emptyLive, take } from './model/live.js';
 import { STOP_RETRY_MS, stopAsked, stopConfirmed, stopFailed, stopIdle } from './model/stop.js';
 import { type Answer, api } from './stream/api.js';
 import { Connection } from './stream/connection.js';
-import type { Actions, PageName, Theme } from './view/actions.js';
+import type { Actions, Theme } from './view/actions.js';
 import { listenForKeys, setSingleKeys } from './view/keys.js';
 import { Page } from './view/page.js';
-import type { Desk } from './view/rehearse/desk.js';
+import { PageBook } from './view/pageBook.js';
 
 const live = emptyLive();
 const root = document.getElementById('page')!;
@@ -21,9 +21,7 @@ root.replaceChildren();
 const still = matchMedia('(prefers-reduced-motion: reduce)');
 const charts = new Charts(() => schedule());
 let theme = (document.documentElement.dataset.theme ?? 'dark') as Theme;
-/** The Rehearse page and its editor are loaded when they are first asked for. */
-let loaded: { view: typeof import('./view/rehearse/whole.js'); desk: Desk } | undefined;
-let page = pageAsked();
+const book = new PageBook({ touch, recall, keep });
 let keys = recall('lapwing.keys') !== 'off';
 let escapeHeld = false;
 let changed = true;
@@ -45,8 +43,9 @@ function paint(): void {
   noteAwake(live, nowMs);
   if (changed) {
     changed = false;
-    const rehearse = loaded && <loaded.view.RehearsePage desk={loaded.desk} theme={theme} />;
-    const shown = { live, nowMs, page, rehearse, theme, keys, escapeHeld, actions, charts };
+    const page = book.current.name;
+    const other = book.view({ live, nowMs, theme, actions });
+    const shown = { live, nowMs, page, other, theme, keys, escapeHeld, actions, charts };
     render(<Page {...shown} />, root);
     showTitle(nowMs);
   }
@@ -55,28 +54,9 @@ function paint(): void {
   if (charts.draw(live, nowMs, moving)) schedule();
 }
 
-function pageAsked(): PageName {
-  return location.hash === '#rehearse' ? 'rehearse' : 'run';
-}
-
-/** Back to the Run page, what was on the desk stays there. */
-async function openPage(): Promise<void> {
-  page = pageAsked();
-  touch();
-  if (page !== 'rehearse' || loaded) return;
-  const view = await import('./view/rehearse/whole.js');
-  const desk = new view.Desk(() => {
-    if (desk.state.path !== undefined) keep('lapwing.rules', desk.state.path);
-    touch();
-  });
-  loaded ??= { view, desk };
-  touch();
-  void loaded.desk.start(recall('lapwing.rules') ?? undefined);
-}
-
-window.addEventListener('hashchange', () => void openPage());
+window.addEventListener('hashchange', () => void book.turnTo(location.hash));
 window.addEventListener('beforeunload', (event) => {
-  if (loaded?.desk.unsaved) event.preventDefault();
+  if (book.unsaved) event.preventDefault();
 });
 
 /** The tab says the lap, for whoever works in another one. */
@@ -84,7 +64,8 @@ function showTitle(nowMs: number): void {
   const { state } = live;
   const { fresh } = freshness(live, nowMs);
   const lap = state?.session === 'running' ? `Lap ${state.lap} · ${state.phase ?? ''} · ` : '';
-  const title = `${fresh ? '' : '(stale) '}${lap}Lapwing`;
+  const where = book.current.load ? `${book.current.title} · ` : '';
+  const title = `${fresh ? '' : '(stale) '}${lap}${where}Lapwing`;
   if (title === titleShown) return;
   titleShown = title;
   document.title = title;
@@ -200,5 +181,5 @@ listenForKeys(stopEverything, (is) => {
   touch();
 });
 connection.open();
-void openPage();
+void book.turnTo(location.hash);
 schedule();

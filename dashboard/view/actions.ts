@@ -2,7 +2,6 @@ import type { OperatorAct } from '../../server/session/inputs.js';
 import type { Answer, Beginning } from '../stream/api.js';
 
 export type Theme = 'dark' | 'red' | 'light';
-export type PageName = 'run' | 'rehearse';
 
 /** What the page can do; everything that a view calls. */
 export interface Actions {

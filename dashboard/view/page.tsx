@@ -2,7 +2,7 @@ import type { ComponentChild } from 'preact';
 import type { Charts } from '../draw/charts.js';
 import { freshness } from '../model/freshness.js';
 import type { Live } from '../model/live.js';
-import type { Actions, PageName, Theme } from './actions.js';
+import type { Actions, Theme } from './actions.js';
 import { AlarmsPanel } from './alarmsPanel.js';
 import { Banners } from './banners.js';
 import { BeltPanel, SpeedPanel } from './beltPanel.js';
@@ -17,9 +17,10 @@ import { Vitals } from './vitals.js';
 export interface PageProps {
   readonly live: Live;
   readonly nowMs: number;
-  readonly page: PageName;
-  /** The Rehearse page, once it is loaded. */
-  readonly rehearse: ComponentChild;
+  /** The name of the page in front. */
+  readonly page: string;
+  /** What is in front, unless it is the Run page. */
+  readonly other: ComponentChild;
   readonly theme: Theme;
   readonly keys: boolean;
   readonly escapeHeld: boolean;
@@ -29,14 +30,14 @@ export interface PageProps {
 
 /** The whole page from what is known now. What is stale turns grey; the controls never do. */
 export function Page(props: PageProps) {
-  const { live, nowMs, actions, page } = props;
+  const { live, nowMs, actions, other } = props;
   const fresh = freshness(live, nowMs);
   const stale = fresh.fresh ? '' : 'stale';
   return (
     <>
       <TopBar {...props} freshness={fresh} />
       <Banners live={live} freshness={fresh} nowMs={nowMs} actions={actions} />
-      {page === 'run' ? <Run {...props} stale={stale} /> : (props.rehearse ?? <Loading />)}
+      {other === undefined ? <Run {...props} stale={stale} /> : other}
       <footer>
         Lapwing is not a safety interlock. It may be used only under an approved protocol, your
         local rules and by trained staff, with a manual switch that cuts the outputs.
@@ -67,14 +68,6 @@ function Run({ live, actions, charts, stale }: PageProps & { stale: string }) {
       <div class={`shown events ${stale}`}>
         <EventsPanel live={live} />
       </div>
-    </main>
-  );
-}
-
-function Loading() {
-  return (
-    <main class="rehearse">
-      <p class="loading">The editor is loading.</p>
     </main>
   );
 }

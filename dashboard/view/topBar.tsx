@@ -1,7 +1,8 @@
 import { clock } from '../model/format.js';
 import type { Freshness } from '../model/freshness.js';
 import type { Live } from '../model/live.js';
-import type { Actions, PageName, Theme } from './actions.js';
+import type { Actions, Theme } from './actions.js';
+import { PAGES } from './pages.js';
 import { Crest } from './shapes.js';
 
 const THEMES: readonly [Theme, string][] = [
@@ -10,16 +11,11 @@ const THEMES: readonly [Theme, string][] = [
   ['light', 'Light'],
 ];
 
-const PAGES: readonly [PageName, string][] = [
-  ['run', 'Run'],
-  ['rehearse', 'Rehearse'],
-];
-
 /** Which rig, which animal, how far; the theme; and the stop that never scrolls away. */
 export function TopBar(props: {
   live: Live;
   freshness: Freshness;
-  page: PageName;
+  page: string;
   theme: Theme;
   keys: boolean;
   escapeHeld: boolean;
@@ -35,9 +31,9 @@ export function TopBar(props: {
         <h1>Lapwing</h1>
       </div>
       <nav class="pages" aria-label="Pages">
-        {PAGES.map(([name, word]) => (
+        {PAGES.map(({ name, title }) => (
           <a key={name} href={`#${name}`} aria-current={props.page === name ? 'page' : undefined}>
-            {word}
+            {title}
           </a>
         ))}
       </nav>

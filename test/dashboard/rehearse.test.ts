@@ -14,7 +14,8 @@ import {
   placesOf,
   spotsWords,
 } from '../../dashboard/model/rehearse.js';
-import type { RulesApi, Told } from '../../dashboard/stream/rulesApi.js';
+import type { Told } from '../../dashboard/stream/ask.js';
+import type { RulesApi } from '../../dashboard/stream/rulesApi.js';
 import { Desk } from '../../dashboard/view/rehearse/desk.js';
 import { packageRoot } from '../../server/packageRoot.js';
 import type {
