@@ -222,8 +222,13 @@ export class Loop implements LinkHandler, LoopService {
     const subject = String(message.subject ?? '').trim();
     if (subject === '') throw new LapwingError('loopBadAct', 'A session needs a subject.');
     const experimenter = String(message.experimenter ?? '');
-    const { seed } = message;
-    return this.#begin({ rulesPath, subject, experimenter, ...(seed ? { seed } : {}) });
+    const { protocolNumber, sessionNumber, seed } = message;
+    return this.#begin({
+      ...{ rulesPath, subject, experimenter },
+      ...(protocolNumber ? { protocolNumber } : {}),
+      ...(sessionNumber ? { sessionNumber } : {}),
+      ...(seed ? { seed } : {}),
+    });
   }
 
   act(message: Extract<ClientMessage, { say: 'act' }>): void {
@@ -244,11 +249,11 @@ export class Loop implements LinkHandler, LoopService {
     try {
       const rules = prepared ?? prepareRules(begin.rulesPath, this.#rigFile);
       await frames();
-      const { subject, experimenter } = begin;
+      const { rulesPath: _, ...who } = begin;
       const seed = begin.seed ?? newSeed();
       const startedAt = new Date();
-      const earlierNl = waterTodayNl(this.#recordFolder, subject, startedAt);
-      const card = { subject, experimenter, seed, startedAt, waterTodayNl: earlierNl };
+      const earlierNl = waterTodayNl(this.#recordFolder, who.subject, startedAt);
+      const card = { ...who, seed, startedAt, waterTodayNl: earlierNl };
       await frames();
       const board = this.#link.identity ?? null;
       const opened = openSession(this.#recordFolder, this.#rigFile, rules, card, board, {

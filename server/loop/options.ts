@@ -19,6 +19,9 @@ export interface BeginOptions {
   readonly rulesPath: string;
   readonly subject: string;
   readonly experimenter: string;
+  readonly protocolNumber?: string;
+  /** Counted on from the subject's last where nothing is said. */
+  readonly sessionNumber?: number;
   /** The seed of every draw; made up and recorded where nothing is said. */
   readonly seed?: string;
 }

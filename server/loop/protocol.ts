@@ -29,6 +29,9 @@ export type ClientMessage = { readonly request?: number; readonly saidMs?: numbe
       readonly rules: string;
       readonly subject: string;
       readonly experimenter?: string;
+      readonly protocolNumber?: string;
+      /** Counted on from the subject's last where nothing is said. */
+      readonly sessionNumber?: number;
       readonly seed?: string;
     }
   | { readonly say: 'act'; readonly act: OperatorAct; readonly who: string; readonly from: string }

@@ -2,7 +2,7 @@ import { resolve } from 'node:path';
 import { Command } from 'commander';
 import { prepareRules } from '../session/prepare.js';
 import { readRig } from '../session/rig/readRig.js';
-import { loginName, portOption, rigOption } from './arguments.js';
+import { loginName, portOption, rigOption, wholeNumber } from './arguments.js';
 import { runLive } from './live.js';
 import { tellWarnings } from './tellWarnings.js';
 
@@ -10,6 +10,8 @@ interface RunFlags {
   rig: string;
   subject: string;
   experimenter: string;
+  protocol?: string;
+  sessionNumber?: number;
   seed?: string;
   records?: string;
   web?: boolean;
@@ -24,6 +26,12 @@ export function runCommand(): Command {
     .addOption(rigOption())
     .option('--subject <name>', 'the animal', 'nobody')
     .option('--experimenter <name>', 'who runs it', loginName())
+    .option('--protocol <number>', 'number of the animal protocol under which it is done')
+    .option(
+      '--session-number <n>',
+      "which session of the animal; else one more than its last one's",
+      wholeNumber(1, 1_000_000),
+    )
     .option('--seed <text>', 'the seed of every draw; made up and recorded where nothing is said')
     .option('--records <folder>', "instead of the rig file's record folder")
     .option('--web', 'serve the page too')
@@ -32,12 +40,17 @@ export function runCommand(): Command {
       const rig = readRig(flags.rig);
       // Mistakes in the file are told before any process starts.
       tellWarnings(prepareRules(resolve(rules), rig));
-      const { subject, experimenter, seed } = flags;
+      const { subject, experimenter, protocol, sessionNumber, seed } = flags;
       await runLive({
         rig,
         rigPath: flags.rig,
         exitWhenEnded: true,
-        begin: { rulesPath: resolve(rules), subject, experimenter, ...(seed ? { seed } : {}) },
+        begin: {
+          ...{ rulesPath: resolve(rules), subject, experimenter },
+          ...(protocol ? { protocolNumber: protocol } : {}),
+          ...(sessionNumber === undefined ? {} : { sessionNumber }),
+          ...(seed ? { seed } : {}),
+        },
         ...(flags.records === undefined ? {} : { recordFolder: resolve(flags.records) }),
         ...(flags.web ? { web: { host: '127.0.0.1', port: flags.port } } : {}),
       });

@@ -28,8 +28,12 @@ const TITLE_MOST = 40;
 /** `2026-12-01_14-03-22_m31_Induction-with-sham-laps`, local time, safe whatever was typed. */
 export function sessionFolderName({ subject, title, startedAt }: FolderName): string {
   const time = rfc3339(startedAt).slice(0, 19).replace('T', '_').replaceAll(':', '-');
-  const who = safeName(subject, SUBJECT_MOST, 'subject');
-  return `${time}_${who}_${safeName(title, TITLE_MOST, 'session')}`;
+  return `${time}${subjectInName(subject)}${safeName(title, TITLE_MOST, 'session')}`;
+}
+
+/** How a subject stands in the names of its sessions' folders, between two `_`. */
+export function subjectInName(subject: string): string {
+  return `_${safeName(subject, SUBJECT_MOST, 'subject')}_`;
 }
 
 /**

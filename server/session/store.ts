@@ -12,7 +12,7 @@ import {
   updateDescription,
   writeDescription,
 } from './description.js';
-import { createSessionFolder, type InputFile, storeInputFiles } from './folder.js';
+import { createSessionFolder, type InputFile, storeInputFiles, subjectInName } from './folder.js';
 import type { PreparedRules } from './prepare.js';
 import { Recorder, type RecorderOptions, type RecordHeader } from './record/recorder.js';
 import type { Rig } from './rig/rig.js';
@@ -21,6 +21,10 @@ import type { Rig } from './rig/rig.js';
 export interface SessionCard {
   readonly subject: string;
   readonly experimenter: string;
+  /** Of the animal protocol under which it is done, as the committee numbers it. */
+  readonly protocolNumber?: string;
+  /** Which session of this subject; counted on from the subject's last where nothing is said. */
+  readonly sessionNumber?: number;
   readonly seed: string;
   readonly startedAt: Date;
   /** Given to this animal earlier today. */
@@ -39,6 +43,7 @@ export function openSession(
   const { title } = rules.file;
   const { subject, startedAt, seed } = card;
   const live = options.mode !== 'bulk';
+  const sessionNumber = card.sessionNumber ?? (live ? nextSessionNumber(root, subject) : null);
   const folder = createSessionFolder(root, { subject, title, startedAt }, { live });
   const files = storeInputFiles(folder, inputFiles(rig, rules));
   writeDescription(folder, {
@@ -46,8 +51,8 @@ export function openSession(
     name: basename(folder),
     subject,
     experimenter: card.experimenter || null,
-    protocolNumber: null,
-    sessionNumber: null,
+    protocolNumber: card.protocolNumber || null,
+    sessionNumber,
     title,
     startedAt: rfc3339(startedAt),
     software: {
@@ -104,6 +109,28 @@ export function waterTodayNl(root: string, subject: string, now: Date): number {
     }
   }
   return nl;
+}
+
+/**
+ * One more than the subject's last session below `root`; 1 for the first. Sessions that were recorded
+ * without a number are counted.
+ */
+export function nextSessionNumber(root: string, subject: string): number {
+  const who = subjectInName(subject);
+  let uncounted = 0;
+  // Names begin with the time, so the last comes first, and usually no other need be opened.
+  for (const name of namesBelow(root).sort().reverse()) {
+    if (!name.includes(who)) continue;
+    try {
+      const { subject: whose, sessionNumber } = readDescription(join(root, name));
+      if (whose !== subject) continue;
+      if (sessionNumber !== null) return sessionNumber + uncounted + 1;
+      uncounted++;
+    } catch {
+      // As above.
+    }
+  }
+  return uncounted + 1;
 }
 
 function namesBelow(root: string): string[] {

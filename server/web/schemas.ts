@@ -44,6 +44,8 @@ export const bodies = {
     rules: text(200, 1),
     subject: text(64, 1),
     experimenter: text(64),
+    protocolNumber: text(64),
+    sessionNumber: { type: 'integer', minimum: 1, maximum: 1_000_000 },
     seed: text(64),
   }),
   act: closed(['act'], { act: operatorAct, who }),

@@ -20,6 +20,7 @@ import {
 } from '../../server/session/folder.js';
 import { diskFree, whyNotLocal } from '../../server/session/localDisk.js';
 import { safeName } from '../../server/session/safeName.js';
+import { nextSessionNumber } from '../../server/session/store.js';
 import { writeFileWhole } from '../../server/session/writeFileWhole.js';
 import { identity } from './identity.js';
 import { temporaryFolder } from './sessions.js';
@@ -262,6 +263,30 @@ describe('session.json', () => {
     expect(() => writeFileWhole(blocked, 'text')).toThrow();
     expect(fs.readdirSync(folder).sort()).toEqual(['blocked', 'session.json']);
     expect(readDescription(folder)).toEqual(DESCRIPTION);
+  });
+});
+
+describe("a subject's sessions", () => {
+  it('are counted on from its last one, and from no other animal', () => {
+    const root = temporaryFolder();
+    const record = (subject: string, sessionNumber: number | null, day: number) => {
+      const name = { subject, title: 'Test', startedAt: new Date(2026, 2, day, 9) };
+      const folder = createSessionFolder(root, name);
+      writeDescription(folder, { ...DESCRIPTION, subject, sessionNumber });
+      return folder;
+    };
+    expect(nextSessionNumber(path.join(root, 'none yet'), 'm31')).toBe(1);
+    record('m31', 1, 1);
+    // Its name is the same in a folder's, and it is another animal.
+    record('m 31', 70, 2);
+    record('m-31', 80, 2);
+    expect(nextSessionNumber(root, 'm31')).toBe(2);
+    expect(nextSessionNumber(root, 'm 31')).toBe(71);
+    // The lab counts as it likes; sessions without a number and torn descriptions do no harm.
+    record('m31', 14, 3);
+    record('m31', null, 4);
+    fs.writeFileSync(path.join(record('m31', 90, 5), 'session.json'), '{');
+    expect(nextSessionNumber(root, 'm31')).toBe(16);
   });
 });
 

@@ -61,12 +61,15 @@ describe('a session folder', () => {
   it('holds the rules with everything that they bring in, and can be run as it stands', () => {
     const sessions = join(packageRoot, 'hardware-sim/demo/sessions');
     const rules = prepareRules(join(sessions, '11-yoked-control.yaml'), demoRig);
-    const card = { subject: 'm1', experimenter: '', seed: 's', startedAt: new Date(0) };
+    const numbers = { protocolNumber: 'P-2026-014', sessionNumber: 3 };
+    const who = { subject: 'm1', experimenter: '', ...numbers };
+    const card = { ...who, seed: 's', startedAt: new Date(0) };
     const opened = openSession(folder, demoRig, rules, { ...card, waterTodayNl: 0 }, null, {
       mode: 'bulk',
     });
     opened.recorder.close('done');
-    const { files } = readDescription(opened.folder);
+    const { files, ...described } = readDescription(opened.folder);
+    expect(described).toMatchObject(numbers);
     expect(files.map(({ role, stored }) => `${role} ${stored}`)).toEqual([
       'rig rig.yaml',
       'rules rules.yaml',
