@@ -183,6 +183,21 @@ export const ERRORS = {
     'A rehearsal is running already, and there is one at a time.',
     'Wait for it to end, or cancel it: `DELETE /api/rehearse`.',
   ),
+  webTooManyJobs: entry(
+    'WEB_TOO_MANY_JOBS',
+    'So much long work is waiting already that no more is taken.',
+    'Wait for some of it to end, or cancel what nobody needs: `GET /api/jobs` lists it.',
+  ),
+  webJobUnknown: entry(
+    'WEB_JOB_UNKNOWN',
+    'There is no such job: results are kept for the last few dozen, until the service is started again.',
+    'Ask for the work again; what was written stays where it was written.',
+  ),
+  webJobDied: entry(
+    'WEB_JOB_DIED',
+    'The process that did this work died or took too long. The record is untouched by it.',
+    'Ask again. If it comes back, try the command line, which says more: `lapwing --help`.',
+  ),
   webInternal: entry(
     'WEB_INTERNAL',
     'The web process met a fault of its own; the session is not touched by it.',
@@ -251,7 +266,7 @@ export const ERRORS = {
   exportFormatUnknown: entry(
     'EXPORT_FORMAT_UNKNOWN',
     'There is no export of that name.',
-    'Say `--to tables` for CSV, or `--to nwb` for one NWB file.',
+    'Say `--to tables` for CSV, `--to parquet` for Parquet, or `--to nwb` for one NWB file.',
   ),
   reportSubjects: entry(
     'REPORT_SUBJECTS',

@@ -20,6 +20,8 @@ const STATUS = new Map<string, number>([
   [ERRORS.webRulesUnwritable.code, 500],
   [ERRORS.webNoRig.code, 503],
   [ERRORS.webRehearsalBusy.code, 409],
+  [ERRORS.webTooManyJobs.code, 503],
+  [ERRORS.webJobUnknown.code, 404],
   [ERRORS.webInternal.code, 500],
   [ERRORS.loopAway.code, 503],
   [ERRORS.loopTokenRefused.code, 503],
