@@ -140,6 +140,8 @@ export function actWords(act: OperatorAct): string {
       return 'stopped everything';
     case 'allow stimulation':
       return 'allowed stimulation';
+    case 'hand on belt':
+      return act.on ? 'put a hand on the belt' : 'took the hand off the belt';
     case 'end':
       return `ended the session: ${act.reason}`;
     default:

@@ -2,6 +2,7 @@ import { ageWords, type Freshness } from '../model/freshness.js';
 import type { Live } from '../model/live.js';
 import { stopAlarm } from '../model/stop.js';
 import type { Actions } from './actions.js';
+import { HandBanner } from './handOnBelt.js';
 import { LevelShape } from './shapes.js';
 
 /** What must not be overlooked: the stop's fate, staleness, and the answer to the last request. */
@@ -14,6 +15,7 @@ export function Banners(props: {
   return (
     <section class="banners" aria-label="Notices">
       <StopBanner {...props} />
+      <HandBanner live={props.live} />
       <StaleBanner {...props} />
       <Notice {...props} />
     </section>

@@ -4,6 +4,7 @@ import { boundsProblem } from '../model/bounds.js';
 import { unitWords } from '../model/format.js';
 import type { Live } from '../model/live.js';
 import type { Actions } from './actions.js';
+import { HandButton } from './handOnBelt.js';
 import { HoldButton } from './holdButton.js';
 import { bindKey, LONG_PRESS_MS } from './keys.js';
 
@@ -22,6 +23,7 @@ export function SteerPanel({ live, actions }: { live: Live; actions: Actions }) 
         <Hold what="stimulus" shortcut="s" reason={state.held.stimulus} actions={actions} />
         <Hold what="water" shortcut="w" reason={state.held.water} actions={actions} />
       </div>
+      <HandButton live={live} actions={actions} />
       {session.buttons.length > 0 ? (
         <div class="buttons">
           {session.buttons.map((button, n) => (

@@ -22,6 +22,7 @@ export function checkAct(
   const { program, choices } = rules;
   switch (act.act) {
     case 'press':
+      if (core.handOnBelt) throw bad('a hand is on the belt: take it off first');
       oneOf('button', act.button, program.buttons);
       return;
     case 'choose':
@@ -46,6 +47,9 @@ export function checkAct(
       text('note', act.text);
       return;
     case 'allow stimulation':
+      return;
+    case 'hand on belt':
+      if (typeof act.on !== 'boolean') throw bad('`on` must be true or false');
       return;
     case 'end':
       text('reason', act.reason);

@@ -138,6 +138,8 @@ export interface Snapshot {
   readonly waterTodayUl: number;
   readonly waterDayLimitUl: number;
   readonly held: { readonly stimulus: string | null; readonly water: string | null };
+  /** A hand turns the belt: nothing counts. */
+  readonly handOnBelt: boolean;
   readonly record: {
     readonly state: 'off' | 'writing' | 'failed';
     readonly bytes: number;

@@ -124,6 +124,7 @@ export function snapshotOf(
     waterTodayUl: (core.waterEarlierNl + guard.waterGivenNl) / 1_000,
     waterDayLimitUl: rig.water.perDayNl / 1_000,
     held: { stimulus: holds.reason('stimulus'), water: holds.reason('water') },
+    handOnBelt: core.handOnBelt,
     record,
   };
 }

@@ -50,4 +50,6 @@ export type OperatorAct =
   | { readonly act: 'stop everything' }
   /** After a board restart or a watchdog trip, stimulation waits for this. */
   | { readonly act: 'allow stimulation' }
+  /** A hand turns the belt: nothing counts, nothing is given, until the next mark after it is off. */
+  | { readonly act: 'hand on belt'; readonly on: boolean }
   | { readonly act: 'end'; readonly reason: string };

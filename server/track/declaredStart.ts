@@ -15,9 +15,9 @@ export class DeclaredStart {
     this.#trustNow('trusted', 'start declared; there is no seam mark to check it');
   }
 
-  lost(): void {
+  lost(reason: string): void {
     if (this.trust === 'unknown') return;
-    this.#trustNow('unknown', 'the board restarted; the start must be declared again');
+    this.#trustNow('unknown', reason);
   }
 
   #trustNow(trust: Trust, reason: string): void {

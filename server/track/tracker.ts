@@ -1,3 +1,4 @@
+// One file, since a frame passes clock, count, mark and lap in one order that has to be seen whole.
 import type { Instant, Trust } from '../rules/instant.js';
 import {
   type Clock,
@@ -59,6 +60,7 @@ export class Tracker {
   #forwardsBefore = true;
   /** The next frame's movement happened unseen. */
   #unseen = false;
+  #hand = false;
   #newestUs = 0;
   // Where this instant's movement began.
   #travelFrom = 0;
@@ -95,11 +97,6 @@ export class Tracker {
   /** Why trust is what it is, in words for the screen. */
   get trustReason(): string {
     return (this.#seam ?? this.#start).reason;
-  }
-
-  /** Slip at the newest accepted mark, mm: positive when the mark came late. */
-  get slipMm(): number {
-    return this.#seam === null ? 0 : this.#seam.slipCounts * this.#cmPerCount * 10;
   }
 
   /** Output states as the board last told them, bit n for output n. */
@@ -160,13 +157,11 @@ export class Tracker {
     this.#end(into);
   }
 
-  /** A clock frame: time is right again after a silence longer than time's wrap. */
+  /**
+   * A clock frame, or a handshake: time is right again after a silence longer than time's wrap.
+   * After a restart call `linkResumed(false)` first.
+   */
   clock(m: Clock): void {
-    this.#clock.takeWraps(m.wraps, m.boardUs);
-  }
-
-  /** As `clock`, at a handshake. After a restart call `linkResumed(false)` first. */
-  identity(m: Clock): void {
     this.#clock.takeWraps(m.wraps, m.boardUs);
   }
 
@@ -174,11 +169,25 @@ export class Tracker {
   boardRestarted(): void {
     this.#clock.restarted();
     this.#counted = false;
+    this.#levels.forget();
+    this.#lost('the board restarted');
+  }
+
+  /**
+   * A hand turns the belt: position is unknown and no mark is believed until the hand is off, and
+   * then until the next mark. Without a mark, the belt stands at 0 cm when the hand leaves it.
+   */
+  hand(on: boolean): void {
+    this.#hand = on;
+    this.#lost(on ? 'a hand is on the belt' : 'a hand was on the belt');
+    if (!on) this.declareStart();
+  }
+
+  #lost(why: string): void {
     this.#homed = false;
     this.#placed = false;
-    this.#levels.forget();
-    this.#seam?.lost('the board restarted; waiting for the seam mark');
-    this.#start.lost();
+    this.#seam?.lost(`${why}; waiting for the seam mark`);
+    this.#start.lost(`${why}; the start must be declared again`);
     this.#flush();
   }
 
@@ -289,7 +298,7 @@ export class Tracker {
     this.#newestUs = nowUs;
     this.#unseen = false;
     this.#speed.restart(nowUs, this.#moved);
-    if (this.#seam === null && this.#lap === 0) this.declareStart();
+    if (this.#seam === null && this.#lap === 0 && !this.#hand) this.declareStart();
   }
 
   /** Nobody saw when places on the way were passed, so movement begins where it ended. */
@@ -303,7 +312,7 @@ export class Tracker {
   }
 
   #seamEdge(rose: boolean, forwards: boolean, moved: number): void {
-    if (!this.#seam?.leads(rose, forwards, moved)) return;
+    if (!this.#seam?.leads(rose, forwards, moved) || this.#hand) return;
     if (!this.#homed) {
       if (!rose) return;
       const before = this.#progress;

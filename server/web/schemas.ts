@@ -35,6 +35,7 @@ const operatorAct = {
     act('note', { text: text(2000, 1) }),
     act('stop everything'),
     act('allow stimulation'),
+    act('hand on belt', { on: { type: 'boolean' } }),
     act('end', { reason: text(200) }),
   ],
 } as const;

@@ -321,6 +321,7 @@ function idleState(): Writable<Snapshot> {
     waterTodayUl: 120,
     waterDayLimitUl: 1500,
     held: { stimulus: null, water: null },
+    handOnBelt: false,
     record: { state: 'off', bytes: 0, reason: '', diskFreeGb: 212 },
   };
 }

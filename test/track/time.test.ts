@@ -53,7 +53,7 @@ describe('board time', () => {
     const rig = new TrackedBelt({}, { startUs: 50 * MIN_US }).begin();
     const beforeUs = rig.instant.nowUs;
     rig.tracker.linkResumed(false);
-    rig.tracker.identity({ ...blank('identity'), boardUs: 2000, wraps: 0 });
+    rig.tracker.clock({ ...blank('identity'), boardUs: 2000, wraps: 0 });
     expect(rig.tracker.nowUs).toBe(beforeUs);
     rig.belt.nowUs = 7000;
     rig.belt.sample();
@@ -106,7 +106,7 @@ describe('a link that comes back', () => {
     const rig = new TrackedBelt().begin(100);
     rig.belt.run(LAP, 4);
     rig.tracker.linkResumed(false);
-    rig.tracker.identity({ ...blank('identity'), boardUs: 0 });
+    rig.tracker.clock({ ...blank('identity'), boardUs: 0 });
     rig.belt.encoder = 0;
     rig.belt.nowUs = 1000;
     rig.belt.run(40, 4);

@@ -1,7 +1,7 @@
 import type { Guard, Holdable } from '../../guard/guard.js';
 
-/** Who holds: the operator, or Lapwing itself until the operator allows it again. */
-export type Holder = 'operator' | 'restart';
+/** Who holds: the operator, a hand on the belt, or Lapwing until the operator allows it again. */
+export type Holder = 'operator' | 'hand' | 'restart';
 
 /** What is held back, and by whom: several may hold at once, and each lets go for itself. */
 export class Holds {

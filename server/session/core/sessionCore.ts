@@ -68,6 +68,7 @@ export class SessionCore {
   #configureDue = false;
   #drainedUs = 0;
   #licks = 0;
+  #handOnBelt = false;
 
   constructor(setup: SessionSetup, out: CoreOutput) {
     this.#setup = setup;
@@ -104,6 +105,10 @@ export class SessionCore {
   /** Licks since the session began, artefacts left out. */
   get licks(): number {
     return this.#licks;
+  }
+  /** A hand turns the belt: rules are not asked, and nothing counts. */
+  get handOnBelt(): boolean {
+    return this.#handOnBelt;
   }
 
   // ---- inputs --------------------------------------------------------------------------------
@@ -166,7 +171,7 @@ export class SessionCore {
   #advance(): void {
     const { instant } = this;
     if (this.#state === 'running') {
-      this.engine.step(instant);
+      if (!this.#handOnBelt) this.engine.step(instant);
       this.firings.check(instant.nowUs);
       // Allowances are right only while nothing is under way.
       if (this.#configureDue && this.firings.settled) this.#configure();
@@ -206,7 +211,7 @@ export class SessionCore {
     this.#overNetwork = overNetwork;
     // The board's new time has to be known before anything is stamped with it.
     if (this.#input > 0) this.tracker.linkResumed(sameBoot);
-    this.tracker.identity(identity);
+    this.tracker.clock(identity);
     this.tracker.unmoved(this.instant);
     // A board acts on nothing before the first beat under its tag.
     this.#beatUs = Number.NEGATIVE_INFINITY;
@@ -300,13 +305,15 @@ export class SessionCore {
         this.#tell({ kind: 'note', text: act.text });
         break;
       case 'stop everything':
-        // The sync train goes on: it harms nobody, and without it the record cannot be aligned.
-        this.#out.command('quiet', { outputs: EVERYTHING & ~this.#syncBit });
+        this.#quiet();
         this.#hold('stimulus', true, `everything stopped by ${by.who}`);
         this.#hold('water', true, `everything stopped by ${by.who}`);
         break;
       case 'allow stimulation':
         this.holds.release('stimulus', 'restart');
+        break;
+      case 'hand on belt':
+        this.#hand(act.on, by.who);
         break;
       case 'end':
         this.#end(act.reason, 'operator');
@@ -315,8 +322,27 @@ export class SessionCore {
     this.#beat(this.instant.nowUs);
   }
 
-  get #syncBit(): number {
-    return this.rig.sync === undefined ? 0 : 1 << this.rig.sync.line;
+  /** The sync train goes on: it harms nobody, and without it the record cannot be aligned. */
+  #quiet(): void {
+    const syncBit = this.rig.sync === undefined ? 0 : 1 << this.rig.sync.line;
+    this.#out.command('quiet', { outputs: EVERYTHING & ~syncBit });
+  }
+
+  #hand(on: boolean, who: string): void {
+    if (on === this.#handOnBelt) return;
+    this.#handOnBelt = on;
+    this.tracker.hand(on);
+    this.tracker.unmoved(this.instant);
+    if (on) {
+      const reason = `the hand of ${who} is on the belt`;
+      this.holds.set('stimulus', 'hand', reason);
+      this.holds.set('water', 'hand', reason);
+      this.firings.disarmAll(reason);
+      this.#quiet();
+    } else {
+      this.holds.release('stimulus', 'hand');
+      this.holds.release('water', 'hand');
+    }
   }
 
   #hold(what: 'stimulus' | 'water', on: boolean, reason: string): void {
@@ -333,6 +359,7 @@ export class SessionCore {
   #tracked(event: TrackEvent): void {
     switch (event.kind) {
       case 'lick':
+        if (this.#handOnBelt) return;
         if (!event.artefact) this.#licks++;
         this.#tell({ kind: 'lick', artefact: event.artefact });
         return;
