@@ -23,6 +23,8 @@ export interface Question {
   readonly failure: ErrorName;
   /** Told `done` of each line `{"done": 0.5}` on the way. */
   readonly progress?: (done: number) => void;
+  /** It is killed after so long. */
+  readonly timeoutMs?: number;
 }
 
 /**
@@ -30,8 +32,11 @@ export interface Question {
  * @throws LapwingError the child's own when it answers `{"error": {code, message}}`, else `failure`
  */
 export async function askChild<Answer extends object>(question: Question): Promise<Answer> {
-  const { script, args, about, failure, progress } = question;
-  const child = spawn(process.execPath, [script, ...args], { stdio: ['ignore', 'pipe', 'pipe'] });
+  const { script, args, about, failure, progress, timeoutMs } = question;
+  const child = spawn(process.execPath, [script, ...args], {
+    stdio: ['ignore', 'pipe', 'pipe'],
+    ...(timeoutMs === undefined ? {} : { timeout: timeoutMs, killSignal: 'SIGKILL' }),
+  });
   let out = '';
   let last = '';
   let complaint = '';

@@ -3,7 +3,7 @@
  * has an entry for each (a test holds the two together).
  *
  * The code's first part says where it comes from: WIRE, LINK, RIG, RULES, GUARD, RECORD, EXPORT,
- * ALIGN, REPORT, LOOP, WEB, CLI.
+ * ALIGN, REPORT, ANIMALS, LOOP, WEB, CLI.
  */
 export interface ErrorEntry {
   readonly code: string;
@@ -115,8 +115,58 @@ export const ERRORS = {
   ),
   webHostNotLoopback: entry(
     'WEB_HOST_NOT_LOOPBACK',
-    'The page would be open to the network, and there is no sign-in yet.',
-    'Use 127.0.0.1, and reach it from another machine through an SSH tunnel: `ssh -L 8711:127.0.0.1:8711 RIG`.',
+    'The page would be open to the network, and nobody has to sign in.',
+    'Open it with `lapwing serve --listen ADDRESS:PORT`, which makes an operator and a viewer; or stay on 127.0.0.1 and reach it through an SSH tunnel: `ssh -L 8711:127.0.0.1:8711 RIG`.',
+  ),
+  webListen: entry(
+    'WEB_LISTEN',
+    'That is no address to serve the page at, or none of a proxy.',
+    'Give `--listen` an address and a port, such as `0.0.0.0:8711` or `[::]:8711`, and `--behind-proxy` the address from which the proxy connects.',
+  ),
+  webTls: entry(
+    'WEB_TLS',
+    'The certificate or its key cannot be used.',
+    'Give `--tls-cert` the certificate with its chain and `--tls-key` its key, both as PEM files that this user may read, the key without a passphrase.',
+  ),
+  webPerson: entry(
+    'WEB_PERSON',
+    'There is no such person for this rig, or the name is taken or not allowed.',
+    'See who there is with `lapwing people --rig RIG`.',
+  ),
+  webPeopleFile: entry(
+    'WEB_PEOPLE_FILE',
+    'The file with the people who may sign in cannot be used.',
+    'Let only its owner read it (`chmod 600`). If it is damaged, remove it and add the people again with `lapwing people add`.',
+  ),
+  webSignInNeeded: entry(
+    'WEB_SIGN_IN_NEEDED',
+    'Nobody is signed in here, or not any more.',
+    'Sign in at /sign-in.html, or from a script with POST /api/sign-in. At the rig, the manual switch and `lapwing quiet` stop everything without it.',
+  ),
+  webSignInWrong: entry(
+    'WEB_SIGN_IN_WRONG',
+    'The name or the secret is not right.',
+    'Look at what Lapwing printed when the secret was made. A lost one is replaced at the rig: `lapwing people renew NAME --rig RIG`.',
+  ),
+  webSignInWait: entry(
+    'WEB_SIGN_IN_WAIT',
+    'Signing in was tried too often in a short time.',
+    'Wait as long as it says, then try again.',
+  ),
+  webRoleRefused: entry(
+    'WEB_ROLE_REFUSED',
+    'A viewer sees everything and changes nothing.',
+    'Ask the operator, or sign in as one.',
+  ),
+  webControlsElsewhere: entry(
+    'WEB_CONTROLS_ELSEWHERE',
+    'Another browser holds the controls, or none does, and one operator acts at a time.',
+    'Take the controls first. Stopping everything and holding the stimulus work without them.',
+  ),
+  webControlsChanged: entry(
+    'WEB_CONTROLS_CHANGED',
+    'The controls are not in the hands that the request names.',
+    'Look who holds them now, and take them from there if that is still what you want.',
   ),
   webHostRefused: entry(
     'WEB_HOST_REFUSED',
@@ -282,6 +332,41 @@ export const ERRORS = {
     'ALIGN_REFUSED',
     "The edges could not be matched with the session's own beyond doubt, so nothing was written.",
     'Check that the file is of this session and line (`--line`), that times are in seconds or `--rate` is right, and that both edges were not exported.',
+  ),
+  animalsNoFolder: entry(
+    'ANIMALS_NO_FOLDER',
+    'It is not said where the animals are kept.',
+    'Give `--animals FOLDER`, or a `--rig` file with a line `animals: FOLDER`, or set LAPWING_ANIMALS.',
+  ),
+  animalsFolderBad: entry(
+    'ANIMALS_FOLDER_BAD',
+    'The animals folder cannot be read or written.',
+    'Check that the share is connected and that you may write there (`ls -ld FOLDER`); `lapwing animals add` makes a folder that is not there yet.',
+  ),
+  animalsUnknown: entry(
+    'ANIMALS_UNKNOWN',
+    'No animal of that name is kept in the animals folder.',
+    'Look at `lapwing animals`, or begin to keep it with `lapwing animals add NAME`.',
+  ),
+  animalsExists: entry(
+    'ANIMALS_EXISTS',
+    'An animal of that name is kept already.',
+    'Change it with `lapwing animals change NAME`, or choose another name.',
+  ),
+  animalsEntryBad: entry(
+    'ANIMALS_ENTRY_BAD',
+    'The entry is not one that can be written down.',
+    'Correct what is named; amounts have a unit: 23.4 g, 400 uL, 0.4 mL.',
+  ),
+  animalsUnlikely: entry(
+    'ANIMALS_UNLIKELY',
+    'The amount looks mistyped, so it was not written down.',
+    'Read the balance again. If it is right, say so: `--sure`, or the box on the page. If it is, the animal needs somebody now: tell the veterinarian.',
+  ),
+  animalsAgainst: entry(
+    'ANIMALS_AGAINST',
+    'Something speaks against a session with this animal, so none was begun.',
+    'Weigh it (`lapwing weigh NAME GRAMS`) or mend what is named. To begin in spite of it, give the reason: `--despite REASON`, or the field on the page; it is kept. The protocol and the veterinarian decide.',
   ),
   rulesInvalid: entry(
     'RULES_INVALID',

@@ -18,15 +18,16 @@ import { Recorder } from '../session/record/recorder.js';
 import type { TroubleKind } from '../session/record/segmentLog.js';
 import type { Rig } from '../session/rig/rig.js';
 import { SessionRunner } from '../session/runner.js';
-import { describeEnd, openSession, recordHeaderOf, waterTodayNl } from '../session/store.js';
+import { describeEnd, openSession, recordHeaderOf } from '../session/store.js';
 import { CAPABILITY, type Sample } from '../wire/messages.js';
+import { BookTalk } from './bookTalk.js';
 import { checkAct } from './checkAct.js';
 import { type CurrentSession, keepCurrent, leftOver } from './currentSession.js';
 import { EventRing } from './eventRing.js';
 import { LiveRecord } from './liveRecord.js';
 import { LocalServer, type LoopService } from './localServer.js';
 import type { BeginOptions, LoopOptions, LoopReport } from './options.js';
-import type { ClientMessage, Setup, Snapshot } from './protocol.js';
+import type { AskedBy, ClientMessage, Setup, Snapshot } from './protocol.js';
 import { type RigAddress, rigAddress } from './rigLock.js';
 import { type RunningSession, setupOf, snapshotOf } from './view.js';
 
@@ -58,6 +59,7 @@ export class Loop implements LinkHandler, LoopService {
   readonly #record: LiveRecord;
   readonly #recordFolder: string;
   readonly #rulesFolder: string;
+  readonly #book: BookTalk;
   #runner: SessionRunner;
   #session: RunningSession | undefined;
   #ended: string | null = null;
@@ -87,6 +89,13 @@ export class Loop implements LinkHandler, LoopService {
     this.#leave = leave;
     this.#recordFolder = options.recordFolder ?? rig.recordFolder;
     this.#rulesFolder = options.rulesFolder ?? rig.rulesFolder;
+    this.#book = new BookTalk(
+      rig.name,
+      options.animalsFolder ?? rig.animalsFolder,
+      this.#recordFolder,
+      log,
+      (text) => report({ report: 'notice', text }),
+    );
     this.#address = rigAddress(rig.name);
     this.#server = new LocalServer(this, this.#address);
     this.#record = new LiveRecord(this.#recordFolder, (kind, error) => this.#trouble(kind, error));
@@ -203,15 +212,15 @@ export class Loop implements LinkHandler, LoopService {
     );
   }
 
-  quiet(): void {
-    this.#act({ act: 'stop everything' }, { who: 'a local client', from: 'local socket' });
+  quiet(by: AskedBy): void {
+    this.#act({ act: 'stop everything' }, localActor(by));
     // Sent once more whatever the session thinks: it can only make things idle.
     this.#link.send('quiet', { outputs: 0xffff });
   }
 
-  end(reason: string): void {
+  end(reason: string, by: AskedBy): void {
     if (this.#session === undefined) throw new LapwingError('loopNoSession', 'Nothing to end.');
-    this.#act({ act: 'end', reason }, { who: 'a local client', from: 'local socket' });
+    this.#act({ act: 'end', reason }, localActor(by));
   }
 
   begin(message: Extract<ClientMessage, { say: 'begin' }>): Promise<void> {
@@ -223,11 +232,13 @@ export class Loop implements LinkHandler, LoopService {
     if (subject === '') throw new LapwingError('loopBadAct', 'A session needs a subject.');
     const experimenter = String(message.experimenter ?? '');
     const { protocolNumber, sessionNumber, seed } = message;
+    const despite = String(message.despite ?? '').trim();
     return this.#begin({
       ...{ rulesPath, subject, experimenter },
       ...(protocolNumber ? { protocolNumber } : {}),
       ...(sessionNumber ? { sessionNumber } : {}),
       ...(seed ? { seed } : {}),
+      ...(despite === '' ? {} : { despite }),
     });
   }
 
@@ -251,9 +262,9 @@ export class Loop implements LinkHandler, LoopService {
       await frames();
       const { rulesPath: _, ...who } = begin;
       const seed = begin.seed ?? newSeed();
+      const known = await this.#book.before(who.subject, begin.despite);
       const startedAt = new Date();
-      const earlierNl = waterTodayNl(this.#recordFolder, who.subject, startedAt);
-      const card = { ...who, seed, startedAt, waterTodayNl: earlierNl };
+      const card = { ...who, seed, startedAt, ...known };
       await frames();
       const board = this.#link.identity ?? null;
       const opened = openSession(this.#recordFolder, this.#rigFile, rules, card, board, {
@@ -261,6 +272,7 @@ export class Loop implements LinkHandler, LoopService {
       });
       await this.#linkIsUp();
       this.#start({ folder: opened.folder, rules, ...card }, opened.recorder);
+      this.#book.began(opened.folder, who.subject, known.animal);
     } finally {
       this.#beginning = false;
     }
@@ -358,6 +370,7 @@ export class Loop implements LinkHandler, LoopService {
         (error: Error) => this.#log.error({ folder }, error.message),
       );
     }
+    this.#closing = this.#closing.then(() => this.#book.ended(folder));
     if (this.#options.exitWhenEnded) void this.#closing.then(() => this.#leave());
   }
 
@@ -426,6 +439,10 @@ export class Loop implements LinkHandler, LoopService {
     process.exitCode = 2;
     this.#leave();
   }
+}
+
+function localActor({ who, from }: AskedBy): Actor {
+  return { who: who || 'a local client', from: from || 'local socket' };
 }
 
 const SELF: Actor = { who: 'Lapwing', from: 'this computer' };

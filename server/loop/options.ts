@@ -6,6 +6,7 @@ export interface LoopOptions {
   /** Instead of the rig file's folders. */
   readonly recordFolder?: string;
   readonly rulesFolder?: string;
+  readonly animalsFolder?: string;
   /** A session to begin as soon as the board answers. */
   readonly begin?: BeginOptions;
   /** Go on with the session that a loop left when it died; without it, one left over is refused. */
@@ -24,6 +25,8 @@ export interface BeginOptions {
   readonly sessionNumber?: number;
   /** The seed of every draw; made up and recorded where nothing is said. */
   readonly seed?: string;
+  /** Why it is to begin whatever the animals folder says against it. */
+  readonly despite?: string;
 }
 
 /** What the loop process tells its launcher over their IPC channel. */
@@ -31,6 +34,8 @@ export type LoopReport =
   | { readonly report: 'ready' }
   | { readonly report: 'session began'; readonly folder: string }
   | { readonly report: 'session ended'; readonly folder: string; readonly reason: string }
+  /** Something that whoever began the session should know. */
+  | { readonly report: 'notice'; readonly text: string }
   /** It cannot run at all, and starting it again would not help. */
   | {
       readonly report: 'failed';

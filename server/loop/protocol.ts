@@ -12,6 +12,12 @@ import type { OperatorAct } from '../session/inputs.js';
 
 export const LOCAL_PROTOCOL = 1;
 
+/** Who asks and from where, of a client that speaks for several people. */
+export interface AskedBy {
+  readonly who?: string;
+  readonly from?: string;
+}
+
 /**
  * Client to loop. Every request may carry a number that the answer repeats, and when it was said
  * (milliseconds since 1970, the same machine): a loop that was stopped refuses what it reads too
@@ -19,8 +25,8 @@ export const LOCAL_PROTOCOL = 1;
  */
 export type ClientMessage = { readonly request?: number; readonly saidMs?: number } & (
   | { readonly say: 'hello'; readonly token: string; readonly client: string }
-  | { readonly say: 'quiet' }
-  | { readonly say: 'end'; readonly reason: string }
+  | ({ readonly say: 'quiet' } & AskedBy)
+  | ({ readonly say: 'end'; readonly reason: string } & AskedBy)
   /** Begin sending state (latest only, at most `hz` times a second) and events after `after`. */
   | { readonly say: 'watch'; readonly hz: number; readonly after: number }
   | {
@@ -33,6 +39,8 @@ export type ClientMessage = { readonly request?: number; readonly saidMs?: numbe
       /** Counted on from the subject's last where nothing is said. */
       readonly sessionNumber?: number;
       readonly seed?: string;
+      /** Why it is to begin whatever the animals folder says against it. */
+      readonly despite?: string;
     }
   | { readonly say: 'act'; readonly act: OperatorAct; readonly who: string; readonly from: string }
 );

@@ -20,6 +20,7 @@ export interface LaunchEvents {
   webReady?(url: string): void;
   restarted(what: 'loop' | 'web', why: string): void;
   sessionEnded(folder: string, reason: string): void;
+  notice?(text: string): void;
 }
 
 /** A crash this soon after so many others is not helped by another start. */
@@ -122,6 +123,8 @@ export class Launcher {
       this.#begun = true;
     } else if (report.report === 'session ended') {
       this.#events.sessionEnded(report.folder, report.reason);
+    } else if (report.report === 'notice') {
+      this.#events.notice?.(report.text);
     } else {
       this.#failure = Object.assign(new Error(report.message), {
         code: report.code,
@@ -160,10 +163,11 @@ export class Launcher {
     const port = this.#webPort ?? this.#plan.web!.port;
     const { socketPath, tokenFile } = rigAddress(this.#plan.rig.name);
     const log = process.env.LAPWING_LOG ?? 'warn';
-    const { rigPath, rulesFolder } = this.#plan.loop;
+    const { rigPath, rulesFolder, animalsFolder } = this.#plan.loop;
     const child = this.#fork('../web/webProcess.js', [
       ...['--socket', socketPath, '--token-file', tokenFile, '--rig-file', rigPath],
       ...(rulesFolder === undefined ? [] : ['--rules-folder', rulesFolder]),
+      ...(animalsFolder === undefined ? [] : ['--animals-folder', animalsFolder]),
       ...['--host', host, '--port', String(port), '--log', log],
     ]);
     this.#web = child;

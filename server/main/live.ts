@@ -15,6 +15,7 @@ export interface LiveOptions {
   readonly web?: { readonly host: string; readonly port: number };
   readonly recordFolder?: string;
   readonly rulesFolder?: string;
+  readonly animalsFolder?: string;
   readonly exitWhenEnded: boolean;
   readonly simulatedRig?: readonly string[];
   /** Printed once the page can be opened. */
@@ -39,6 +40,7 @@ export async function runLive(options: LiveOptions): Promise<void> {
         ...(options.resume === undefined ? {} : { resume: options.resume }),
         ...(options.recordFolder === undefined ? {} : { recordFolder: options.recordFolder }),
         ...(options.rulesFolder === undefined ? {} : { rulesFolder: options.rulesFolder }),
+        ...(options.animalsFolder === undefined ? {} : { animalsFolder: options.animalsFolder }),
       },
       ...(options.web === undefined ? {} : { web: options.web }),
       ...(options.simulatedRig === undefined ? {} : { simulatedRig: options.simulatedRig }),
@@ -47,6 +49,7 @@ export async function runLive(options: LiveOptions): Promise<void> {
       ready: () => client.start(),
       webReady: (url) => status.say(options.hello?.(url) ?? `dashboard: ${url}`),
       restarted: (what, why) => status.say(`the ${what} process ${why}; started again`),
+      notice: (text) => status.say(text),
       sessionEnded: (folder, reason) => status.say(`session ended: ${reason}\nrecord: ${folder}`),
     },
   );

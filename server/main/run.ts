@@ -14,6 +14,8 @@ interface RunFlags {
   sessionNumber?: number;
   seed?: string;
   records?: string;
+  animals?: string;
+  despite?: string;
   web?: boolean;
   port: number;
 }
@@ -34,13 +36,18 @@ export function runCommand(): Command {
     )
     .option('--seed <text>', 'the seed of every draw; made up and recorded where nothing is said')
     .option('--records <folder>', "instead of the rig file's record folder")
+    .option('--animals <folder>', "instead of the rig file's animals folder")
+    .option(
+      '--despite <reason>',
+      'begin though the animal was not weighed today, or something else speaks against it',
+    )
     .option('--web', 'serve the page too')
     .addOption(portOption())
     .action(async (rules: string, flags: RunFlags) => {
       const rig = readRig(flags.rig);
       // Mistakes in the file are told before any process starts.
       tellWarnings(prepareRules(resolve(rules), rig));
-      const { subject, experimenter, protocol, sessionNumber, seed } = flags;
+      const { subject, experimenter, protocol, sessionNumber, seed, despite } = flags;
       await runLive({
         rig,
         rigPath: flags.rig,
@@ -50,7 +57,9 @@ export function runCommand(): Command {
           ...(protocol ? { protocolNumber: protocol } : {}),
           ...(sessionNumber === undefined ? {} : { sessionNumber }),
           ...(seed ? { seed } : {}),
+          ...(despite ? { despite } : {}),
         },
+        ...(flags.animals === undefined ? {} : { animalsFolder: resolve(flags.animals) }),
         ...(flags.records === undefined ? {} : { recordFolder: resolve(flags.records) }),
         ...(flags.web ? { web: { host: '127.0.0.1', port: flags.port } } : {}),
       });

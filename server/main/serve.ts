@@ -9,6 +9,7 @@ interface ServeFlags {
   port: number;
   rules?: string;
   records?: string;
+  animals?: string;
 }
 
 /** `lapwing serve --rig RIG`: the page, from which sessions are begun and ended. */
@@ -19,6 +20,7 @@ export function serveCommand(): Command {
     .addOption(portOption())
     .option('--rules <folder>', "instead of the rig file's rules folder")
     .option('--records <folder>', "instead of the rig file's record folder")
+    .option('--animals <folder>', "instead of the rig file's animals folder")
     .action(async (flags: ServeFlags) => {
       await runLive({
         rig: readRig(flags.rig),
@@ -26,6 +28,7 @@ export function serveCommand(): Command {
         exitWhenEnded: false,
         web: { host: '127.0.0.1', port: flags.port },
         ...(flags.records === undefined ? {} : { recordFolder: resolve(flags.records) }),
+        ...(flags.animals === undefined ? {} : { animalsFolder: resolve(flags.animals) }),
         ...(flags.rules === undefined ? {} : { rulesFolder: resolve(flags.rules) }),
       });
     });

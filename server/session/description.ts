@@ -37,6 +37,7 @@ export interface SessionDescription {
   readonly waterEarlierUl?: number;
   /** What was given, by the board's word; uncertain: drops that nobody can account for. */
   readonly water?: { readonly givenUl: number; readonly uncertainUl: number };
+  readonly animal?: AnimalBefore;
   readonly record?: {
     readonly state: 'whole' | 'open' | 'torn' | 'damaged';
     readonly messages: number;
@@ -58,6 +59,22 @@ export interface SessionDescription {
     /** Why the check could not be made. */
     readonly failed?: string;
   };
+}
+
+/** What the animals folder said of the subject when the session began. */
+export interface AnimalBefore {
+  readonly folder: string;
+  readonly rig: string;
+  /** Its water goes into the book. */
+  readonly kept: boolean;
+  readonly weightG: number | null;
+  readonly percent: number | null;
+  readonly leastPercent: number | null;
+  readonly protocol: string;
+  readonly targetUl: number | null;
+  /** What spoke against the session, and why it was begun all the same. */
+  readonly against: readonly string[];
+  readonly despite?: string;
 }
 
 export interface SessionEnd {

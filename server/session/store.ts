@@ -4,6 +4,7 @@ import { packageVersion } from '../packageRoot.js';
 import type { Identity } from '../wire/messages.js';
 import type { SessionCore } from './core/sessionCore.js';
 import {
+  type AnimalBefore,
   describeBoard,
   readDescription,
   rfc3339,
@@ -29,6 +30,8 @@ export interface SessionCard {
   readonly startedAt: Date;
   /** Given to this animal earlier today. */
   readonly waterTodayNl: number;
+  /** What the animals folder says; undefined where none is kept for the rig. */
+  readonly animal?: AnimalBefore;
 }
 
 /** Makes a session's folder: copies of its files, its description, and a recorder ready to write. */
@@ -51,7 +54,7 @@ export function openSession(
     name: basename(folder),
     subject,
     experimenter: card.experimenter || null,
-    protocolNumber: card.protocolNumber || null,
+    protocolNumber: card.protocolNumber || card.animal?.protocol || null,
     sessionNumber,
     title,
     startedAt: rfc3339(startedAt),
@@ -67,6 +70,7 @@ export function openSession(
     files,
     ended: null,
     waterEarlierUl: card.waterTodayNl / 1_000,
+    ...(card.animal === undefined ? {} : { animal: card.animal }),
   });
   return { folder, recorder: Recorder.create(folder, recordHeaderOf(folder), options) };
 }

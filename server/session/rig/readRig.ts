@@ -41,6 +41,7 @@ interface RigText {
   sync?: { output: string; width: string; from: string; to: string };
   record?: { folder?: string; when_full?: Rig['whenFull'] };
   rules_folder?: string;
+  animals?: string;
 }
 interface OutputText {
   line: string;
@@ -194,6 +195,7 @@ class RigBuilder {
       whenFull: file.record?.when_full ?? 'water stops',
       recordFolder: resolve(base, file.record?.folder ?? 'records'),
       rulesFolder: resolve(base, file.rules_folder ?? '.'),
+      ...(file.animals === undefined ? {} : { animalsFolder: resolve(base, file.animals) }),
       path: this.path,
       text: this.text,
     };

@@ -21,6 +21,10 @@ export interface Rig {
   /** Absolute. */
   readonly recordFolder: string;
   readonly rulesFolder: string;
+  /** Where animals, weights and water are kept, for all rigs; nothing is asked of it where unsaid. */
+  readonly animalsFolder?: string;
+  /** Over the network, viewers may hold the stimulus back (and never let go of it). */
+  readonly viewersMayHold: boolean;
   /** The file as it was read, for the session folder. */
   readonly path: string;
   readonly text: string;
