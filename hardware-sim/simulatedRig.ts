@@ -41,10 +41,14 @@ export interface SimulatedRigOptions {
   readonly valve?: Partial<ValveParameters>;
   /** Extra changes at the beginning of a lick's contact. */
   readonly lickBounces?: number;
+  /** How long the animal keeps a speed, microseconds, in whole milliseconds; 1000 unless said. */
+  readonly strideUs?: number;
 }
 
-const SEGMENT_US = 1000;
-const EVENT = { none: 0, input: 1, lick: 2, output: 3, mark: 4, slot: 5 } as const;
+/** The shortest stretch in which the belt runs at one speed, and the grid of the board's looks. */
+const GRID_US = 1000;
+const EVENT = { none: 0, input: 1, lick: 2, output: 3, mark: 4, slot: 5, look: 6 } as const;
+const NEVER = Number.POSITIVE_INFINITY;
 
 export class SimulatedRig<B extends RigBoard = Board> {
   readonly board: B;
@@ -61,7 +65,14 @@ export class SimulatedRig<B extends RigBoard = Board> {
   readonly #pending = new PendingInputs();
   readonly #dice: Dice;
   readonly #lickBounces: number;
-  #segmentEndUs = SEGMENT_US;
+  readonly #segmentUs: number;
+  #segmentEndUs: number;
+  readonly #strideUs: number;
+  #strideEndUs: number;
+  /** What the host wants to be shown: counts above and below, and a time on the grid. */
+  #lookUpCount = NEVER;
+  #lookDownCount = -NEVER;
+  #lookUs = NEVER;
   #cmPerUs = 0;
   /** Whole counts told to the board so far, not wrapped. */
   #count: number;
@@ -77,6 +88,10 @@ export class SimulatedRig<B extends RigBoard = Board> {
     this.valve = { deadUs: 5_000, usPerUl: 8_000, ...options.valve };
     this.#lickBounces = options.lickBounces ?? 0;
     this.#dice = new Dice(seed + 5);
+    this.#strideUs = options.strideUs ?? GRID_US;
+    this.#strideEndUs = this.#strideUs;
+    this.#segmentUs = options.board?.reportUs ?? GRID_US;
+    this.#segmentEndUs = this.#segmentUs;
     this.#count = options.board?.startCount ?? 0;
     this.belt = new Belt(beltParameters, startCm, this.#count, seed + 2);
     this.#mark = new SeamMark(beltParameters, startCm, seed + 3);
@@ -90,6 +105,7 @@ export class SimulatedRig<B extends RigBoard = Board> {
       seed + 4,
       options.trained ?? false,
       options.spoutCm ?? beltParameters.lengthCm / 2,
+      this.#strideUs,
     );
     this.board.probe((number, on, worldUs) => this.#outputChanged(number, on, worldUs));
   }
@@ -98,11 +114,24 @@ export class SimulatedRig<B extends RigBoard = Board> {
   advanceTo(us: number): void {
     while (this.#segmentEndUs <= us) {
       this.#runTo(this.#segmentEndUs);
-      this.#segmentEndUs += SEGMENT_US;
+      this.#segmentEndUs += this.#segmentUs;
+      if (this.nowUs < this.#strideEndUs) continue;
+      this.#strideEndUs += this.#strideUs;
       const wants = this.animal.step(this.nowUs, this.belt.positionCm);
       this.#cmPerUs = (this.forcedCmPerS ?? wants) * 1e-6;
     }
     if (us > this.nowUs) this.#runTo(us);
+  }
+
+  /**
+   * Asks the board for a sample once the encoder has come so many counts up or down from where it
+   * is, or at a time (world microseconds): at the end of that millisecond, as a board that looks
+   * every millisecond would send it. Replaces what was asked before.
+   */
+  lookAt(upCounts: number, downCounts: number, us: number): void {
+    this.#lookUpCount = this.#count + upCounts;
+    this.#lookDownCount = this.#count - downCounts;
+    this.#lookUs = gridUs(us > this.nowUs ? us : this.nowUs + 1);
   }
 
   /** The encoder turns without the belt, by so many cm as it would read them, at this moment. */
@@ -111,7 +140,7 @@ export class SimulatedRig<B extends RigBoard = Board> {
     this.#followEncoder();
   }
 
-  /** Runs to a time within the present millisecond, in which the speed stays as it is. */
+  /** Runs to a time within the present stretch, in which the speed stays as it is. */
   #runTo(untilUs: number): void {
     const { belt, board, animal } = this;
     for (;;) {
@@ -128,6 +157,10 @@ export class SimulatedRig<B extends RigBoard = Board> {
       if (board.nextOutputUs < atUs) {
         atUs = board.nextOutputUs;
         event = EVENT.output;
+      }
+      if (this.#lookUs < atUs) {
+        atUs = this.#lookUs;
+        event = EVENT.look;
       }
       const cmPerUs = this.#cmPerUs;
       if (atUs < this.nowUs) atUs = this.nowUs;
@@ -146,6 +179,7 @@ export class SimulatedRig<B extends RigBoard = Board> {
           this.#fireSlotAt(Math.max(slotUs, this.nowUs));
           continue;
         }
+        if (this.#comesToLook(atUs)) continue;
         this.#moveBeltTo(atUs);
       }
       board.advanceTo(atUs);
@@ -164,6 +198,9 @@ export class SimulatedRig<B extends RigBoard = Board> {
       this.#lick();
     } else if (event === EVENT.mark) {
       if (this.#mark.cross(this.#cmPerUs > 0)) this.#edge(wiring.seamInput, this.#mark.level);
+    } else if (event === EVENT.look) {
+      this.#lookUs = NEVER;
+      board.look?.();
     }
   }
 
@@ -203,6 +240,22 @@ export class SimulatedRig<B extends RigBoard = Board> {
       );
     }
     return Number.POSITIVE_INFINITY;
+  }
+
+  /** A count to be looked at is passed by `atUs`, and the millisecond of it ends before. */
+  #comesToLook(atUs: number): boolean {
+    const { belt } = this;
+    const countsPerUs = this.#cmPerUs * belt.countsPerTravelCm;
+    const encoder = belt.encoder + countsPerUs * (atUs - this.nowUs);
+    let counts: number;
+    if (encoder >= this.#lookUpCount) counts = this.#lookUpCount - belt.encoder;
+    else if (encoder < this.#lookDownCount + 1) counts = this.#lookDownCount + 1 - belt.encoder;
+    else return false;
+    this.#lookUpCount = NEVER;
+    this.#lookDownCount = -NEVER;
+    const us = gridUs(this.nowUs + Math.max(0, Math.ceil(counts / countsPerUs)));
+    if (us < this.#lookUs) this.#lookUs = us;
+    return us < atUs;
   }
 
   /** The count that fires a slot happens at its own microsecond. */
@@ -262,4 +315,9 @@ export class SimulatedRig<B extends RigBoard = Board> {
       this.animal.drop(openUs / this.valve.usPerUl, this.belt.positionCm, worldUs);
     }
   }
+}
+
+/** The end of the millisecond that a time lies in. */
+function gridUs(us: number): number {
+  return Math.ceil(us / GRID_US) * GRID_US;
 }

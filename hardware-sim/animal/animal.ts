@@ -2,8 +2,8 @@ import { Dice } from './dice.js';
 import { LickSensor } from './lickSensor.js';
 import type { AnimalParameters } from './parameters.js';
 
-/** How often the animal makes up its mind, ms. */
-const THINK_MS = 10;
+/** How often the animal makes up its mind, microseconds. */
+const THINK_US = 10_000;
 /** One stride: how long a speed within a bout lasts, s. */
 const STRIDE_S = 0.5;
 const BURST_S = 1;
@@ -31,7 +31,8 @@ export class Animal {
   #strideFactor = 1;
   #strideEndsUs = 0;
   #modeEndsUs = 300_000;
-  #thinkIn = 0;
+  #thinkUs = 0;
+  readonly #thinkEveryUs: number;
   readonly #follow: number;
   #atSpoutUl = 0;
   /** It has begun to lick in expectation on this approach. */
@@ -44,6 +45,7 @@ export class Animal {
     seed: number,
     trained: boolean,
     expectedCm: number,
+    strideUs = 1_000,
   ) {
     this.#parameters = parameters;
     this.#lengthCm = lengthCm;
@@ -51,7 +53,8 @@ export class Animal {
     this.licking = new LickSensor(parameters, seed + 1);
     this.skill = trained ? 0.95 : 0;
     this.expectedCm = trained ? expectedCm : Number.NaN;
-    this.#follow = 1 - Math.exp(-0.001 / parameters.responseS);
+    this.#thinkEveryUs = Math.max(THINK_US, strideUs);
+    this.#follow = 1 - Math.exp(-strideUs / 1e6 / parameters.responseS);
   }
 
   /** 1 at the start of a session, 0 when it has had its fill. */
@@ -64,10 +67,10 @@ export class Animal {
     return this.#atSpoutUl;
   }
 
-  /** One millisecond: the speed from `nowUs` on, cm/s, negative backwards. */
+  /** One stride of the simulation's clock: the speed from `nowUs` on, cm/s, negative backwards. */
   step(nowUs: number, positionCm: number): number {
-    if (--this.#thinkIn <= 0) {
-      this.#thinkIn = THINK_MS;
+    if (nowUs >= this.#thinkUs) {
+      this.#thinkUs = nowUs + this.#thinkEveryUs;
       this.#think(nowUs, positionCm);
     }
     const wants = this.#wantsCmPerS;
@@ -176,7 +179,7 @@ export class Animal {
       }
     }
     const boutsPerS = p.naiveBoutsPerS * (1 - this.skill) ** 2 + p.trainedBoutsPerS;
-    if (dice.chance((boutsPerS * this.thirst * THINK_MS) / 1000)) {
+    if (dice.chance((boutsPerS * this.thirst * this.#thinkEveryUs) / 1e6)) {
       this.licking.begin(nowUs, 1 + Math.round(dice.wait(p.dryLicks - 1)));
     }
     this.#wantsCmPerS = wants;

@@ -20,8 +20,6 @@ import { ILLEGAL, QuadratureDecoder } from './quadrature.js';
 import { Voice } from './voice.js';
 import { Xorshift32 } from './xorshift.js';
 
-const TICK_US = WIRE_TIMES.sampleLeastUs;
-
 /** Told of every change of an output, as a probe on its pin would be. */
 export type OutputProbe = (output: number, on: boolean, worldUs: number) => void;
 
@@ -164,6 +162,14 @@ export class Board {
     }
   }
 
+  /** Sends a sample now, whenever the next one were due. */
+  look(): void {
+    this.#working = true;
+    this.#voice.sample();
+    this.#working = false;
+    this.#drain();
+  }
+
   /** One count up or down. */
   step(direction: 1 | -1): void {
     this.move(direction);
@@ -227,14 +233,14 @@ export class Board {
   }
 
   #boot(cause: number, startUs: number): void {
-    this.#nextTickUs = startUs + TICK_US;
+    this.#nextTickUs = startUs + this.setting.reportUs;
     this.#nextClockUs = startUs + WIRE_TIMES.clockUs;
     this.#voice.boot(this.#boots.next(), cause, startUs);
   }
 
   #tick(): void {
     const voice = this.#voice;
-    this.#nextTickUs += TICK_US;
+    this.#nextTickUs += this.setting.reportUs;
     this.#commands.tick();
     voice.sampleIfDue();
     if (voice.nowUs >= this.#nextClockUs) {

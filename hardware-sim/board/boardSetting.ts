@@ -1,4 +1,4 @@
-import { CAPABILITY } from '../../server/wire/messages.js';
+import { CAPABILITY, WIRE_TIMES } from '../../server/wire/messages.js';
 
 /** What a board has and is. */
 export interface BoardSetting {
@@ -21,6 +21,11 @@ export interface BoardSetting {
   readonly startCount: number;
   /** Inputs that are active when it is first switched on, bit n for input n: no edge is told. */
   readonly startInputs: number;
+  /**
+   * How often it looks whether there is a sample to send, microseconds. More than the wire's own
+   * (WIRE.md) is no real board's: for rehearsing many sessions quickly, beside `Board.look`.
+   */
+  readonly reportUs: number;
 }
 export type BoardOptions = Partial<BoardSetting>;
 
@@ -39,6 +44,7 @@ export function settingOf(options: BoardOptions): BoardSetting {
     startUs: 0,
     startCount: 0,
     startInputs: 0,
+    reportUs: WIRE_TIMES.sampleLeastUs,
     ...options,
   };
 }

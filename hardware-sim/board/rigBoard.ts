@@ -17,6 +17,8 @@ export interface RigBoard {
   advanceTo(worldUs: number): void;
   move(counts: number): void;
   setInput(input: number, level: 0 | 1): void;
+  /** Sends a sample now, where the board can be told to. */
+  look?(): void;
   receiveBytes(bytes: Uint8Array): void;
   reset(): void;
 }

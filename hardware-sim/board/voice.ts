@@ -93,11 +93,18 @@ export class Voice {
     ) {
       return;
     }
+    this.sample();
+  }
+
+  /** A sample now. */
+  sample(): void {
+    const told = this.#sample;
+    const { nowUs } = this;
     this.#lastSampleUs = nowUs;
     told.boardUs = nowUs < WRAP ? nowUs : nowUs % WRAP;
-    told.count = count;
-    told.inputs = inputs;
-    told.outputs = outputs;
+    told.count = this.count;
+    told.inputs = this.inputs;
+    told.outputs = this.outputs;
     told.illegal = this.#illegal;
     told.badFrames = this.#badFrames;
     told.overruns = this.#overruns;

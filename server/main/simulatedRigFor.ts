@@ -1,16 +1,32 @@
+import type { AnimalParameters } from '../../hardware-sim/animal/parameters.js';
 import { SimulatedRig, type SimulatedRigOptions } from '../../hardware-sim/simulatedRig.js';
 import type { VirtualRig } from '../session/rehearsal.js';
 import type { Rig } from '../session/rig/rig.js';
 
+/**
+ * Between places and timers, a brisk rig's board reports 50 times a second and not 1000: a session
+ * takes a fifth of the time, and a condition that is watched (a speed, a duration) is seen up to
+ * 20 ms later. Places, licks, inputs and delays are told to the millisecond, as ever.
+ */
+const BRISK_REPORT_US = 20_000;
+
+export interface SimulatedAnimal {
+  readonly seed: number;
+  readonly trained: boolean;
+  readonly animal?: Partial<AnimalParameters>;
+}
+
 /** A simulated rig that is wired, long and calibrated as a rig file says, in virtual time. */
 export function simulatedRigFor(
   rig: Rig,
-  animal: { readonly seed: number; readonly trained: boolean },
+  animal: SimulatedAnimal,
+  brisk = false,
 ): VirtualRig & { readonly simulated: SimulatedRig } {
   const { belt } = rig;
   const valve = rig.outputs.find((output) => output.kind === 'valve');
   const simulated = new SimulatedRig({
     ...animal,
+    ...(brisk ? { strideUs: BRISK_REPORT_US, board: { reportUs: BRISK_REPORT_US } } : {}),
     belt: { lengthCm: belt.lengthCm, countsPerCm: belt.countsPerCm },
     wiring: {
       ...(rig.lick === undefined ? {} : { lickInput: rig.lick.line }),
@@ -28,6 +44,7 @@ export function simulatedRigFor(
       return simulated.nowUs;
     },
     advanceTo: (us) => simulated.advanceTo(us),
+    ...(brisk ? { lookAt: (up, down, us) => simulated.lookAt(up, down, us) } : {}),
     connect: (listener) => simulated.board.connect(listener),
     receive: (name, message, tag) => simulated.board.receive(name, message, tag),
   };

@@ -17,6 +17,11 @@ export interface VirtualRig {
   /** It may be told commands from within a listener, and acts on them after the event at hand. */
   readonly reentrant?: boolean;
   advanceTo(us: number): void;
+  /**
+   * For a rig whose board reports more seldom than a real one: asks for a sample once the belt has
+   * come so many counts forwards or back, or at a time, at the end of that millisecond.
+   */
+  lookAt?(upCounts: number, downCounts: number, us: number): void;
   connect(listener: BoardListener): void;
   receive<N extends HostMessageName>(name: N, message: MessageOf[N], tag: number): void;
 }
@@ -41,6 +46,7 @@ const STEP_US = 1_000;
  */
 const REENTRANT_STEP_US = 1_000_000;
 const MINUTE_US = 60_000_000;
+const NEVER = Number.POSITIVE_INFINITY;
 
 /**
  * Runs a whole session on a simulated rig in virtual time, with the code that runs a live one: the
@@ -52,21 +58,31 @@ export function rehearse(
   options: RehearsalOptions,
 ): SessionRunner {
   const outbox: { name: HostMessageName; message: MessageOf[HostMessageName] }[] = [];
+  let commanded = false;
   const deliver = () => {
     for (const { name, message } of outbox) rig.receive(name, message, TAG);
     outbox.length = 0;
+    commanded = false;
   };
   const reentrant = rig.reentrant === true;
   const stepUs = reentrant ? REENTRANT_STEP_US : STEP_US;
   const runner = new SessionRunner(
     setup,
-    (name, message) => outbox.push({ name, message }),
+    (name, message) => {
+      outbox.push({ name, message });
+      if (name !== 'beat') commanded = true;
+    },
     options.recorder,
     options.onDecision,
   );
-  shakeHands(rig, runner, () => {
-    if (reentrant && outbox.length > 0) deliver();
-  });
+  shakeHands(
+    rig,
+    runner,
+    () => {
+      if (reentrant && outbox.length > 0) deliver();
+    },
+    rig.lookAt === undefined ? () => {} : (soon) => lookAhead(rig, runner, soon || commanded),
+  );
   options.began?.(runner);
   const beganUs = rig.nowUs;
   let minuteUs = beganUs + MINUTE_US;
@@ -84,12 +100,22 @@ export function rehearse(
   return runner;
 }
 
-/** @param before called before each frame is taken */
-function shakeHands(rig: VirtualRig, runner: SessionRunner, before: () => void): void {
+/**
+ * @param before called before each frame is taken
+ * @param after called after it; `soon` for a message that was no sample, since what it did to inputs
+ *   and outputs shows in the next one
+ */
+function shakeHands(
+  rig: VirtualRig,
+  runner: SessionRunner,
+  before: () => void,
+  after: (soon: boolean) => void,
+): void {
   let answered: Identity | undefined;
   const take = (input: RareInput) => {
     before();
     if (runner.core.state !== 'ended') runner.take(input);
+    after(true);
   };
   rig.connect({
     identity: (message) => {
@@ -98,6 +124,7 @@ function shakeHands(rig: VirtualRig, runner: SessionRunner, before: () => void):
     sample: (message) => {
       before();
       if (runner.core.state !== 'ended') runner.sample(message);
+      after(false);
     },
     edge: (message) => take({ kind: 'edge', message }),
     outcome: (message) => take({ kind: 'outcome', message }),
@@ -109,6 +136,24 @@ function shakeHands(rig: VirtualRig, runner: SessionRunner, before: () => void):
   const identity = answered;
   runner.take({ kind: 'link up', identity, tag: TAG, sameBoot: false, overNetwork: false });
   runner.take({ kind: 'begin', firstId: 1 });
+}
+
+/**
+ * Has a board that reports seldom report where rules wait for something, as one that looks every
+ * millisecond would: at places, at the lap's end, when delays run out.
+ * @param soon at the end of this millisecond anyway
+ */
+function lookAhead(rig: VirtualRig, { core }: SessionRunner, soon: boolean): void {
+  const { engine, instant } = core;
+  const travel = instant.travelTo;
+  if (!instant.placed) {
+    rig.lookAt!(NEVER, NEVER, soon ? 0 : engine.nextTimerUs);
+    return;
+  }
+  const lapEnd = (instant.lap + 1) * instant.lapCounts;
+  const up = Math.ceil(Math.min(engine.nextAhead, lapEnd) - travel);
+  const down = Math.floor(travel - engine.nextBehind) + 1;
+  rig.lookAt!(up, down, soon ? 0 : engine.nextTimerUs);
 }
 
 function endIt(runner: SessionRunner, over: boolean, mostUs: number): void {

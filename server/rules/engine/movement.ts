@@ -57,6 +57,15 @@ export class Movement {
     if (this.anyMoving) this.resolve();
   }
 
+  /** Travel at which something happens next as the animal goes on; Infinity: nothing waits. */
+  get nextAhead(): number {
+    return Math.min(this.nextReach, this.nextUpper);
+  }
+  /** Travel below which something happens as it goes back. */
+  get nextBehind(): number {
+    return this.nextLower;
+  }
+
   /** Reckons every place anew: a phase, a draw or a choice may have moved it. */
   resolve(): void {
     const { s } = this.run;

@@ -1,6 +1,8 @@
 import type { Actuator, Instant, Journal, Settlement } from '../instant.js';
 import { ArmingPass } from './arming.js';
+import { Asking } from './asking.js';
 import { Course } from './course.js';
+import { Ending } from './ending.js';
 import { Firing } from './firing.js';
 import { Licking } from './licking.js';
 import { Motion } from './motion.js';
@@ -73,6 +75,28 @@ export class RulesEngine {
     this.parts?.goTo(phase);
   }
 
+  /**
+   * The operator asks for a rule: in the next so many laps its `if` and `chance` are taken as true;
+   * 0 laps fires it at the next instant. Replaces what was asked of it before.
+   * @returns false when the file does not let the rule be asked for so
+   */
+  ask(rule: string, laps: number): boolean {
+    return this.parts?.asking.ask(rule, laps) ?? false;
+  }
+
+  /** Takes back what was asked of a rule. @returns false when nothing was */
+  withdraw(rule: string): boolean {
+    return this.parts?.asking.withdraw(rule) ?? false;
+  }
+
+  /**
+   * Puts off the end, by `end` or by the last phase, once it has come.
+   * @returns false beyond what may be put off in one session
+   */
+  putOff(laps: number, minutes: number): boolean {
+    return this.parts?.ending.putOff(laps, minutes) ?? false;
+  }
+
   /** The operator starts again for the next cell, at the next instant. */
   newCell(): void {
     this.parts?.course.askCell();
@@ -83,31 +107,47 @@ export class RulesEngine {
     return this.parts?.course.cell ?? 0;
   }
 
+  /** Travel, counts, at which a place comes next: going on, and going back. */
+  get nextAhead(): number {
+    return this.parts?.movement.nextAhead ?? Number.POSITIVE_INFINITY;
+  }
+  get nextBehind(): number {
+    return this.parts?.movement.nextBehind ?? Number.NEGATIVE_INFINITY;
+  }
+  /** Extended board time at which a delay or an interval of a rule runs out next. */
+  get nextTimerUs(): number {
+    return this.parts?.run.nextTimerUs ?? Number.POSITIVE_INFINITY;
+  }
+
   /** What a dashboard shows. Allocates: not for every frame. */
   view(): EngineView {
-    return viewOf(this.program, this.parts?.run.s);
+    return viewOf(this.program, this.parts?.run.s, this.parts?.ending);
   }
 }
 
 /** The engine's parts, made anew for a session, and the order in which an instant goes through them. */
 class Parts {
   readonly course: Course;
-  private readonly movement: Movement;
+  readonly movement: Movement;
   private readonly motion: Motion;
   private readonly licking: Licking;
   private readonly firing: Firing;
   private readonly arming: ArmingPass;
+  readonly asking: Asking;
+  readonly ending: Ending;
   private readonly turns: Turns;
   private readonly waterTallies: number[];
   private readonly pressed: number[] = [];
 
   constructor(readonly run: Run) {
-    this.course = new Course(run);
+    this.ending = new Ending(run);
+    this.course = new Course(run, this.ending);
     this.movement = new Movement(run);
     this.motion = new Motion(run);
     this.licking = new Licking(run);
     this.firing = new Firing(run);
     this.arming = new ArmingPass(run, this.firing);
+    this.asking = new Asking(run, this.firing, this.arming);
     this.turns = new Turns(run, this.firing, this.arming);
     this.waterTallies = run.s.program.tallies.flatMap((t, n) => (t.of === 'water' ? [n] : []));
   }
@@ -144,11 +184,13 @@ class Parts {
     }
 
     if (run.held.length > 0) this.endHolds();
-    if (run.endReason === '') this.turns.take();
+    if (run.endReason === '') {
+      this.asking.step();
+      this.turns.take();
+    }
     if (corrected) this.arming.disarmAll();
     this.arming.step();
-    const { end } = s.program;
-    if (end !== undefined && end(s) === TRUE) run.requestEnd('its `end` is true');
+    this.ending.step(lapBegan);
     if (run.endReason !== '') this.end();
   }
 
