@@ -1,4 +1,5 @@
 import type { StampedDecision } from '../session/decisions.js';
+import { type OnSpan, onSpans } from './pulses.js';
 import type { SessionData } from './readSession.js';
 import { slipSpans } from './slips.js';
 
@@ -19,6 +20,8 @@ export interface Firing {
   readonly boardUs: number;
   /** Microseconds on, all pulses of it; null where the board never said. */
   readonly onUs: number | null;
+  /** Each pulse of it; none for a sham, or where the board never said. */
+  readonly spans: readonly OnSpan[];
   /** Rise after the decision; null for an armed one, which the board starts at the place. */
   readonly latencyUs: number | null;
   readonly speedCmPerS: number;
@@ -35,20 +38,23 @@ export interface Firing {
 
 /** Every firing and sham of the session, in order of its decision. */
 export function firingsOf(session: SessionData): Firing[] {
-  const { decisions, rig } = session;
+  const { decisions, rig, shapes } = session;
   const { lengthCm } = rig.belt;
   const spans = slipSpans(decisions, lengthCm);
   const typicalMm = rms(spans.map(({ slipMm }) => slipMm));
   const markCm = spans[0]?.markCm ?? 0;
   const halfCountMm = 5 / rig.belt.countsPerCm;
-  const asked = new Map<string, number>();
-  const doneByOutput = falls(decisions);
+  const asked = new Map<string, { readonly boardUs: number; readonly ids: readonly number[] }>();
+  const fallOf = falls(decisions);
   const firings: Firing[] = [];
   for (const d of decisions) {
-    if (d.kind === 'asked' || d.kind === 'armed') asked.set(`${d.rule} ${d.serial}`, d.boardUs);
+    if (d.kind === 'asked' || d.kind === 'armed') asked.set(`${d.rule} ${d.serial}`, d);
     if (d.kind !== 'fired') continue;
     const boardUs = d.riseUs ?? d.boardUs;
-    const decidedUs = asked.get(`${d.rule} ${d.serial}`) ?? d.boardUs;
+    const order = asked.get(`${d.rule} ${d.serial}`);
+    const decidedUs = order?.boardUs ?? d.boardUs;
+    const onUs = fallOf.get(d)?.onUs ?? null;
+    const shape = order?.ids.map((id) => shapes.get(id)).find((s) => s?.output === d.output);
     const riseCm = d.riseCm ?? (d.sham ? d.positionCm : null);
     const span = spans.find(({ fromUs, toUs }) => boardUs >= fromUs && boardUs < toUs);
     // How far round the belt since the mark: slip is taken to gather evenly on the way.
@@ -61,7 +67,7 @@ export function firingsOf(session: SessionData): Firing[] {
     firings.push({
       ...{ input: d.input, rule: d.rule, serial: d.serial, sham: d.sham, armed: d.armed },
       ...{ output: d.output, lap: d.lap, decidedUs, boardUs },
-      onUs: d.output === null ? null : (doneByOutput(d)?.onUs ?? null),
+      ...{ onUs, spans: onUs === null ? [] : onSpans(boardUs, onUs, shape) },
       latencyUs: d.armed || d.riseUs === null ? null : d.riseUs - decidedUs,
       speedCmPerS: d.speedCmPerS,
       ...{ placeCm: d.placeCm, riseCm, errorMm: d.errorMm, correctedCm: real },
@@ -76,17 +82,19 @@ export function firingsOf(session: SessionData): Firing[] {
   return firings;
 }
 
-/** The fall that belongs to a rise: the next on its output. */
-function falls(decisions: readonly StampedDecision[]) {
-  const done = new Map<string, Of<'pulse done'>[]>();
+/** For each rise the fall that belongs to it: the next of its rule on its output, before another rise. */
+function falls(decisions: readonly StampedDecision[]): Map<StampedDecision, Of<'pulse done'>> {
+  const found = new Map<StampedDecision, Of<'pulse done'>>();
+  const open = new Map<string, Of<'fired'>>();
   for (const d of decisions) {
+    if (d.kind === 'fired' && d.output !== null) open.set(d.output, d);
     if (d.kind !== 'pulse done') continue;
-    const list = done.get(d.output) ?? [];
-    list.push(d);
-    done.set(d.output, list);
+    const fired = open.get(d.output);
+    if (fired?.rule !== d.rule) continue;
+    found.set(fired, d);
+    open.delete(d.output);
   }
-  return (fired: Of<'fired'>) =>
-    done.get(fired.output!)?.find((d) => d.input >= fired.input && d.rule === fired.rule);
+  return found;
 }
 
 function rms(values: readonly number[]): number | null {

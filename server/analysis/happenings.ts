@@ -3,6 +3,8 @@ import { slipSpans } from './slips.js';
 
 /** One lap: from its 0 cm to the next lap's, or to the session's end. */
 export interface Lap {
+  /** Number of the engine input with which it began. */
+  readonly input: number;
   /** 0 is the stretch before the first lap, in which position is not known. */
   readonly lap: number;
   readonly startUs: number;
@@ -38,6 +40,7 @@ export interface Drop {
   readonly positionCm: number | null;
 }
 export interface PhaseSpan {
+  readonly input: number;
   readonly phase: string;
   readonly index: number;
   readonly startUs: number;
@@ -53,12 +56,12 @@ export function lapsOf({ decisions, beganUs, endedUs, rig }: SessionData): Lap[]
   const excluded = new Set<number>();
   let cell = 1;
   let phase: string | null = null;
-  const begin = (lap: number, startUs: number) =>
+  const begin = (input: number, lap: number, startUs: number) =>
     laps.push({
-      ...{ lap, startUs, stopUs: endedUs, complete: false },
+      ...{ input, lap, startUs, stopUs: endedUs, complete: false },
       ...{ excluded: false, cell, phase, slipMm: null },
     });
-  begin(0, beganUs);
+  begin(decisions.find(({ kind }) => kind === 'session began')!.input, 0, beganUs);
   for (const decision of decisions) {
     if (decision.boardUs < beganUs) continue;
     const open = laps.at(-1)!;
@@ -66,7 +69,7 @@ export function lapsOf({ decisions, beganUs, endedUs, rig }: SessionData): Lap[]
       case 'lap began':
         open.stopUs = decision.boardUs;
         open.complete = open.lap > 0;
-        begin(decision.lap, decision.boardUs);
+        begin(decision.input, decision.lap, decision.boardUs);
         break;
       case 'phase began':
         phase = decision.phase;
@@ -128,8 +131,8 @@ export function dropsOf(session: SessionData): Drop[] {
 
 export function phasesOf({ decisions, endedUs }: SessionData): PhaseSpan[] {
   const began = decisions.flatMap((d) => (d.kind === 'phase began' ? [d] : []));
-  return began.map(({ phase, index, boardUs, lap, reason }, i) => ({
-    ...{ phase, index, lap, reason, startUs: boardUs },
+  return began.map(({ input, phase, index, boardUs, lap, reason }, i) => ({
+    ...{ input, phase, index, lap, reason, startUs: boardUs },
     stopUs: began[i + 1]?.boardUs ?? endedUs,
   }));
 }

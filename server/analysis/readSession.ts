@@ -4,12 +4,15 @@ import type { StampedDecision } from '../session/decisions.js';
 import { type LoadedSession, loadSession } from '../session/loadSession.js';
 import { readRecord } from '../session/record/readRecord.js';
 import type { RecordState } from '../session/record/recordState.js';
-import { type Edge, SYNC_EDGE } from '../wire/messages.js';
+import { type Arm, type Edge, type Pulse, SYNC_EDGE } from '../wire/messages.js';
 import { extend32 } from '../wire/time.js';
+import type { PulseShape } from './pulses.js';
 import { SampleColumns } from './sampleColumns.js';
 
 /** A change of an input, or of the output that a sync train moves, at the board's own stamp. */
 export interface EdgeSeen {
+  /** Number of the engine input that it was. */
+  readonly input: number;
   readonly boardUs: number;
   readonly name: string;
   readonly level: number;
@@ -24,6 +27,8 @@ export interface SessionData extends LoadedSession {
   readonly endedUs: number;
   readonly samples: SampleColumns;
   readonly edges: readonly EdgeSeen[];
+  /** What was commanded, by command id. */
+  readonly shapes: ReadonlyMap<number, PulseShape>;
   /** As recorded. */
   readonly decisions: readonly StampedDecision[];
 }
@@ -43,21 +48,23 @@ export async function readSession(
   const reader = await readRecord(folder);
   const samples = new SampleColumns();
   const edges: EdgeSeen[] = [];
+  const shapes = new Map<number, PulseShape>();
   const decisions: StampedDecision[] = [];
   const core = new SessionCore(loaded.setup, { command: () => {}, decision: () => {} });
+  const nameOfOutput = (output: number) =>
+    rig.outputs.find(({ line }) => line === output)?.name ?? `output ${output}`;
   const nameOfLine = (input: number) => {
     if ((input & SYNC_EDGE) === 0)
       return rig.inputs.find(({ line }) => line === input)?.name ?? `input ${input}`;
-    const output = input & ~SYNC_EDGE;
-    return rig.outputs.find(({ line }) => line === output)?.name ?? `output ${output}`;
+    return nameOfOutput(input & ~SYNC_EDGE);
   };
-  const edge = (message: Edge) => {
+  const edge = (input: number, message: Edge) => {
     // The stamp of an edge that a later frame overtook is a little before the instant's time.
     const nowUs = core.instant.nowUs;
     const onBoardUs = core.tracker.toBoardUs(nowUs);
     const boardUs = extend32(onBoardUs, message.boardUs) - onBoardUs + nowUs;
     const { level, count } = message;
-    edges.push({ boardUs, name: nameOfLine(message.input), level, count });
+    edges.push({ input, boardUs, name: nameOfLine(message.input), level, count });
   };
   const inputs = loaded.description.record?.lastInput ?? 0;
   const state = reader.visit({
@@ -66,9 +73,14 @@ export async function readSession(
       samples.push(input, core.instant, sample);
       if ((samples.length & 0x3fff) === 0 && inputs > 0) progress(Math.min(1, input / inputs));
     },
-    input: (_, input) => {
+    input: (number, input) => {
       core.take(input);
-      if (input.kind === 'edge') edge(input.message);
+      if (input.kind === 'edge') edge(number, input.message);
+    },
+    command: (_, name, message) => {
+      if (name !== 'pulse' && name !== 'arm') return;
+      const { id, output, widthUs, periodUs, repeats } = message as Pulse | Arm;
+      shapes.set(id, { output: nameOfOutput(output), widthUs, periodUs, repeats });
     },
     decision: (decision) => decisions.push(decision),
   });
@@ -77,5 +89,8 @@ export async function readSession(
     throw new LapwingError('recordNoSession', `${folder}: no session begins in its record.`);
   const ended = decisions.findLast(({ kind }) => kind === 'session ended');
   const endedUs = ended?.boardUs ?? core.instant.nowUs;
-  return { ...loaded, state, beganUs: began.boardUs, endedUs, samples, edges, decisions };
+  return {
+    ...{ ...loaded, state, beganUs: began.boardUs, endedUs },
+    ...{ samples, edges, shapes, decisions },
+  };
 }

@@ -1,7 +1,9 @@
 import { firingsOf } from '../analysis/firings.js';
 import { dropsOf, lapsOf, licksOf, phasesOf } from '../analysis/happenings.js';
+import { countsByLap } from '../analysis/lapCounts.js';
 import type { SessionData } from '../analysis/readSession.js';
 import { TRUSTS } from '../analysis/sampleColumns.js';
+import { toldOf } from '../analysis/told.js';
 import { type Column, fixed, seconds, type Table, yes } from './table.js';
 
 const time = (name: string, meaning: string): Column => ({
@@ -10,19 +12,20 @@ const time = (name: string, meaning: string): Column => ({
 const column = (name: string, type: Column['type'], unit: string, meaning: string): Column => ({
   ...{ name, type, unit, meaning },
 });
-const INPUT = column('input', 'integer', '', 'number of the input in the record that caused it');
+const INPUT = column('input', 'integer', '', 'number of the input in the record that it came from');
 const LAP = column('lap', 'integer', '', 'lap number; 0 before the first mark, place unknown');
 const POSITION = column('position_cm', 'number', 'cm', 'along the belt from 0 cm');
 const SPEED = column('speed_cm_per_s', 'number', 'cm/s', "over the rig file's window; signed");
 
 /** The session's tables, in the order in which they are explained. */
 export function tablesOf(session: SessionData): Table[] {
-  return [laps, licks, firings, water, phases, inputs, samples].map((make) => make(session));
+  const all = [laps, licks, firings, water, phases, decisions, inputs, samples];
+  return all.map((make) => make(session));
 }
 
 function laps(session: SessionData): Table {
   const since = (us: number) => seconds(us - session.beganUs);
-  const counts = countsByLap(session);
+  const countsOf = countsByLap(session);
   return {
     name: 'laps',
     meaning: 'one row a lap, from its 0 cm to the next; row 0 is the partial stretch before it',
@@ -39,14 +42,15 @@ function laps(session: SessionData): Table {
       column('water_ul', 'number', 'uL', 'given'),
       column('firings', 'integer', '', 'outputs fired, shams left out'),
       column('shams', 'integer', '', 'shams'),
+      INPUT,
     ],
     rows: lapsOf(session).map((lap) => {
-      const found = counts.get(lap.lap);
+      const counts = countsOf(lap.lap);
       return [
         ...[String(lap.lap), since(lap.startUs), since(lap.stopUs), yes(lap.complete)],
         ...[yes(lap.excluded), String(lap.cell), lap.phase ?? '', fixed(lap.slipMm, 3)],
-        ...[String(found?.licks ?? 0), fixed(found?.waterUl ?? 0, 3)],
-        ...[String(found?.firings ?? 0), String(found?.shams ?? 0)],
+        ...[String(counts.licks), fixed(counts.waterUl, 3)],
+        ...[String(counts.firings), String(counts.shams), String(lap.input)],
       ];
     }),
   };
@@ -138,10 +142,37 @@ function phases(session: SessionData): Table {
       time('stop_s', 'it ended'),
       column('lap', 'integer', '', 'lap in which it began'),
       column('reason', 'text', '', 'why it began'),
+      INPUT,
     ],
     rows: phasesOf(session).map((span) => [
       ...[span.phase, seconds(span.startUs - session.beganUs)],
       ...[seconds(span.stopUs - session.beganUs), String(span.lap), span.reason],
+      String(span.input),
+    ]),
+  };
+}
+
+function decisions(session: SessionData): Table {
+  return {
+    name: 'decisions',
+    meaning: 'one row for everything else that was decided, found or done by a person',
+    columns: [
+      time('time_s', 'when'),
+      column(
+        'kind',
+        'text',
+        '',
+        'withheld, missed, refused, uncertain, drawn, note, operator, ...',
+      ),
+      column('rule', 'text', '', 'the rule or draw; empty where it is of none'),
+      column('detail', 'text', '', 'why or what: reason, value, text; else its fields as JSON'),
+      LAP,
+      POSITION,
+      INPUT,
+    ],
+    rows: toldOf(session).map((told) => [
+      ...[seconds(told.boardUs - session.beganUs), told.kind, told.rule, told.detail],
+      ...[String(told.lap), fixed(told.positionCm, 4), String(told.input)],
     ]),
   };
 }
@@ -155,10 +186,11 @@ function inputs(session: SessionData): Table {
       column('line', 'text', '', 'name in the rig file'),
       column('level', 'integer', '', '1: active from here on, 0: no longer'),
       column('count', 'integer', 'counts', "the encoder's own count"),
+      INPUT,
     ],
     rows: session.edges.map((edge) => [
       ...[seconds(edge.boardUs - session.beganUs), edge.name],
-      ...[String(edge.level), String(edge.count)],
+      ...[String(edge.level), String(edge.count), String(edge.input)],
     ]),
   };
 }
@@ -190,28 +222,4 @@ function* sampleRows({ samples: s, beganUs }: SessionData): Generator<string[]> 
       ...[String(s.inputs[i]), String(s.outputs[i]), String(s.input[i])],
     ];
   }
-}
-
-interface LapCounts {
-  licks: number;
-  waterUl: number;
-  firings: number;
-  shams: number;
-}
-
-/** What happened on each lap, counted. */
-export function countsByLap(session: SessionData): Map<number, LapCounts> {
-  const counts = new Map<number, LapCounts>();
-  const of = (lap: number) => {
-    let found = counts.get(lap);
-    if (found === undefined) {
-      found = { licks: 0, waterUl: 0, firings: 0, shams: 0 };
-      counts.set(lap, found);
-    }
-    return found;
-  };
-  for (const { lap, artefact } of licksOf(session)) if (!artefact) of(lap).licks++;
-  for (const { lap, volumeUl } of dropsOf(session)) of(lap).waterUl += volumeUl;
-  for (const { lap, sham } of firingsOf(session)) of(lap)[sham ? 'shams' : 'firings']++;
-  return counts;
 }

@@ -6,8 +6,8 @@ import { alignSession } from '../analysis/align/alignSession.js';
 import { type EdgeFileOptions, readEdges } from '../analysis/align/readEdges.js';
 import { readSession } from '../analysis/readSession.js';
 import { LapwingError } from '../errors/codes.js';
+import { derivedFolder } from '../export/exportFolder.js';
 import { csvLine, fixed } from '../export/table.js';
-import { derivedFolder } from '../export/writeTables.js';
 import { writeFileWhole } from '../session/writeFileWhole.js';
 import { progressBar } from './progressBar.js';
 

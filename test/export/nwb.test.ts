@@ -4,8 +4,10 @@ import { existsSync, readdirSync, readFileSync } from 'node:fs';
 import { join } from 'node:path';
 import { afterAll, beforeAll, describe, expect, it } from 'vitest';
 import { firingsOf } from '../../server/analysis/firings.js';
-import { dropsOf, lapsOf, licksOf } from '../../server/analysis/happenings.js';
+import { dropsOf, lapsOf, licksOf, phasesOf } from '../../server/analysis/happenings.js';
+import { countsByLap } from '../../server/analysis/lapCounts.js';
 import { readSession, type SessionData } from '../../server/analysis/readSession.js';
+import { toldOf } from '../../server/analysis/told.js';
 import { exportNwb } from '../../server/export/nwb/exportNwb.js';
 import { writeNwb } from '../../server/export/nwb/writeNwb.js';
 import { packageRoot } from '../../server/packageRoot.js';
@@ -34,6 +36,10 @@ f = h5py.File(sys.argv[1], "r")
 us = lambda a: np.rint(a[()] * 1e6).astype("<i8")
 sha = lambda a: hashlib.sha256(a.tobytes()).hexdigest()
 text = lambda d: [v.decode() for v in d[()]]
+um = lambda d: [None if np.isnan(v) else int(np.rint(v * 1e6)) for v in d[()]]
+things = []
+f.visititems(lambda n, o: things.append((n, o)))
+needs = lambda o: o.attrs["neurodata_type"] in ("TimeSeries", "SpatialSeries", "EventsTable", "TimeIntervals", "VectorData", "TimestampVectorData", "DurationVectorData", "Device", "ProcessingModule")
 e, beh = f["events"], f["processing/behavior"]
 out = {
   "samples": len(f["acquisition/belt_encoder/data"]),
@@ -45,7 +51,24 @@ out = {
   "dropUs": us(e["water/timestamp"]).tolist(), "openUs": us(e["water/duration"]).tolist(),
   "volumeNl": np.rint(e["water/volume"][()] * 1e3).astype(int).tolist(),
   "firingUs": us(e["firings/timestamp"]).tolist(), "firingRule": text(e["firings/rule"]),
-  "sham": e["firings/sham"][()].tolist(),
+  "sham": e["firings/sham"][()].tolist(), "armed": e["firings/armed"][()].tolist(),
+  "decidedUs": us(e["firings/decided"]).tolist(),
+  "placeUm": um(e["firings/place"]), "riseUm": um(e["firings/rise"]), "correctedUm": um(e["firings/corrected"]),
+  "inputs": [e[t + "/input"][()].tolist() for t in ("licks", "water", "firings")],
+  "speed": sha(beh["BehavioralTimeSeries/speed/data"][()].astype("<f8")),
+  "lapAt": sha(beh["BehavioralTimeSeries/lap/data"][()].astype("<i4")),
+  "trust": sha(beh["BehavioralTimeSeries/position_trust/data"][()]),
+  "units": [d.attrs["unit"] for d in (f["acquisition/belt_encoder/data"], beh["Position/belt_position/data"],
+    beh["BehavioralTimeSeries/speed/data"], e["licks/timestamp"])],
+  "lapLicks": f["intervals/laps/licks"][()].tolist(), "lapFirings": f["intervals/laps/firings"][()].tolist(),
+  "lapNl": np.rint(f["intervals/laps/water"][()] * 1e3).astype(int).tolist(),
+  "phases": list(zip(text(f["intervals/phases/phase"]), us(f["intervals/phases/start_time"]).tolist())),
+  "decisions": list(zip(text(e["decisions/what"]), e["decisions/input"][()].tolist())),
+  "rig": f["scratch/rig_file"][()].decode(), "device": f["general/devices/treadmill"].attrs["description"],
+  "model": f["general/devices/treadmill"].get("model", getlink=True).path,
+  "core": json.loads(f[f.attrs[".specloc"]]["core/2.10.0/namespace"][()])["namespaces"][0]["version"],
+  "eventSchema": json.loads(f["specifications/core/2.10.0/nwb.event"][()])["groups"][0]["neurodata_type_def"],
+  "undescribed": [n for n, o in things if "neurodata_type" in o.attrs and needs(o) and not o.attrs.get("description")],
   "gateUs": us(f["stimulus/presentation/gate/timestamps"]).tolist(),
   "lapUs": us(f["intervals/laps/start_time"]).tolist(), "lap": f["intervals/laps/lap"][()].tolist(),
   "rules": f["scratch/rules_file"][()].decode(), "subject": f["general/subject/subject_id"][()].decode(),
@@ -89,6 +112,8 @@ describe('an NWB file', () => {
     const firings = firingsOf(session);
     const drops = dropsOf(session);
     const laps = lapsOf(session);
+    const countsOf = countsByLap(session);
+    const micrometres = (cm: number | null) => (cm === null ? null : Math.round(cm * 1e4));
     expect(found).toEqual({
       samples: n,
       sampleUs: sha(sampleUs),
@@ -102,9 +127,30 @@ describe('an NWB file', () => {
       firingUs: firings.map((firing) => since(firing.boardUs)),
       firingRule: firings.map((firing) => firing.rule),
       sham: firings.map((firing) => Number(firing.sham)),
-      gateUs: firings.flatMap(({ output, boardUs, onUs }) =>
-        output === 'gate' ? [since(boardUs), since(boardUs + onUs!)] : [],
-      ),
+      armed: firings.map((firing) => Number(firing.armed)),
+      decidedUs: firings.map((firing) => since(firing.decidedUs)),
+      placeUm: firings.map((firing) => micrometres(firing.placeCm)),
+      riseUm: firings.map((firing) => micrometres(firing.riseCm)),
+      correctedUm: firings.map((firing) => micrometres(firing.correctedCm)),
+      inputs: [licksOf(session), drops, firings].map((rows) => rows.map(({ input }) => input)),
+      speed: sha(samples.speedCmPerS.slice(0, n).map((cm) => cm / 100)),
+      lapAt: sha(samples.lap.slice(0, n)),
+      trust: sha(samples.trust.slice(0, n)),
+      units: ['counts', 'meters', 'm/s', 'seconds'],
+      lapLicks: laps.map(({ lap }) => countsOf(lap).licks),
+      lapFirings: laps.map(({ lap }) => countsOf(lap).firings),
+      lapNl: laps.map(({ lap }) => Math.round(countsOf(lap).waterUl * 1_000)),
+      phases: phasesOf(session).map(({ phase, startUs }) => [phase, since(startUs)]),
+      decisions: toldOf(session).map(({ kind, input }) => [kind, input]),
+      rig: readFileSync(join(recorded.folder, 'rig.yaml'), 'utf8'),
+      device: expect.stringContaining(session.rig.name),
+      model: '/general/devices/models/belt_rig',
+      core: '2.10.0',
+      eventSchema: 'EventsTable',
+      undescribed: [],
+      gateUs: firings
+        .filter(({ output }) => output === 'gate')
+        .flatMap(({ spans }) => spans.flatMap(({ fromUs, toUs }) => [since(fromUs), since(toUs)])),
       lapUs: laps.map((lap) => since(lap.startUs)),
       lap: laps.map((lap) => lap.lap),
       rules: readFileSync(join(recorded.folder, 'rules.yaml'), 'utf8'),
@@ -131,9 +177,14 @@ describe('an NWB file', () => {
     });
   });
 
-  it('is written by a process of its own', async () => {
+  it('is written by a process of its own, which says how far it is', async () => {
     const path = join(recorded.root, 'child.nwb');
-    expect(await exportNwb(recorded.folder, path)).toBe(path);
+    const told: number[] = [];
+    expect(await exportNwb(recorded.folder, path, (done) => told.push(done))).toBe(path);
+    expect(told.length).toBeGreaterThanOrEqual(4);
+    expect(told).toEqual([...told].sort((a, b) => a - b));
+    expect(told.at(-1)).toBeGreaterThan(0.9);
+    expect(told.at(-1)).toBeLessThanOrEqual(1);
     // HDF5's own signature (HDF5 file format specification, superblock).
     expect(readFileSync(path).subarray(0, 8)).toEqual(Buffer.from('\x89HDF\r\n\x1a\n', 'latin1'));
     await expect(exportNwb(join(recorded.root, 'none'), path)).rejects.toMatchObject({

@@ -13,7 +13,7 @@ try {
   const tell = (done: number) => process.stdout.write(`${JSON.stringify({ done })}\n`);
   // Reading takes about a third of the time.
   const session = await readSession(folder, (done) => tell(done / 3));
-  await writeNwb(session, file, rfc3339(new Date()));
+  await writeNwb(session, file, rfc3339(new Date()), (done) => tell((1 + 2 * done) / 3));
   process.stdout.write(`${JSON.stringify({ path: file })}\n`);
 } catch (error) {
   const code = error instanceof LapwingError ? error.code : 'EXPORT_FOLDER_BAD';

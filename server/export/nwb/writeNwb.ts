@@ -4,17 +4,27 @@ import { File, type Group } from 'h5wasm/node';
 import type { SessionData } from '../../analysis/readSession.js';
 import { LapwingError } from '../../errors/codes.js';
 import { packageVersion } from '../../packageRoot.js';
-import { syncFolder } from '../../session/writeFileWhole.js';
+import { syncFile, syncFolder } from '../../session/writeFileWhole.js';
 import { loadHdf5, NwbBuilder, text } from './hdf5.js';
-import { putIntervals, putLicksAndWater, putRest, putStimuli } from './nwbEvents.js';
+import { putDecisions, putFirings, putLicksAndWater, putLines } from './nwbEvents.js';
+import { putIntervals } from './nwbIntervals.js';
+import { putBelt, putStimuli } from './nwbSeries.js';
+import { putSpecifications } from './specifications.js';
 
 /**
  * Writes a session as one NWB 2.10 file (HDF5), under a temporary name that is synced and renamed.
  * Times are seconds since the session began by the board's clock. The same record and the same
  * `createdAt` give the same bytes, so `file_create_date` is the one field that may differ.
+ * @param createdAt RFC 3339
+ * @param progress called with the share done, 0 to 1
  * @throws LapwingError EXPORT_FOLDER_BAD
  */
-export async function writeNwb(session: SessionData, file: string, createdAt: string) {
+export async function writeNwb(
+  session: SessionData,
+  file: string,
+  createdAt: string,
+  progress: (done: number) => void = () => {},
+): Promise<void> {
   await loadHdf5();
   const temporary = `${file}.${process.pid}.new`;
   const now = Date.now;
@@ -24,14 +34,12 @@ export async function writeNwb(session: SessionData, file: string, createdAt: st
     fs.rmSync(temporary, { force: true });
     const nwb = new File(temporary, 'w');
     try {
-      fill(nwb, session, createdAt);
+      fill(nwb, session, createdAt, progress);
       nwb.flush();
     } finally {
       nwb.close();
     }
-    const fd = fs.openSync(temporary, 'r+');
-    fs.fsyncSync(fd);
-    fs.closeSync(fd);
+    syncFile(temporary);
     fs.renameSync(temporary, file);
     syncFolder(path.dirname(file));
   } catch (error) {
@@ -44,7 +52,12 @@ export async function writeNwb(session: SessionData, file: string, createdAt: st
   }
 }
 
-function fill(nwb: File, session: SessionData, createdAt: string): void {
+function fill(
+  nwb: File,
+  session: SessionData,
+  createdAt: string,
+  progress: (done: number) => void,
+): void {
   const { description, rig } = session;
   const nb = new NwbBuilder(description.name);
   nb.typed(nwb, '/', 'NWBFile');
@@ -73,11 +86,16 @@ function fill(nwb: File, session: SessionData, createdAt: string): void {
   const presentation = nb.group(stimulus, 'presentation');
   nb.group(stimulus, 'templates');
   putGeneral(nb, general, session);
-  putBelt(nb, acquisition, processing, session);
+  // The samples are nearly all of it.
+  putBelt(nb, acquisition, processing, session, (done) => progress(0.9 * done));
   putLicksAndWater(nb, events, session);
-  putStimuli(nb, presentation, events, session);
+  putStimuli(nb, presentation, session);
+  putFirings(nb, events, session);
   putIntervals(nb, nwb.get('intervals') as Group, session);
-  putRest(nb, events, session);
+  putDecisions(nb, events, session);
+  putLines(nb, events, session);
+  progress(0.95);
+  putSpecifications(nb, nwb);
   for (const [name, file, notes] of [
     ['rig_file', 'rig.yaml', 'The rig file that the session ran on, as it was'],
     ['rules_file', 'rules.yaml', 'The rules file that the session ran, as it was'],
@@ -91,16 +109,19 @@ function fill(nwb: File, session: SessionData, createdAt: string): void {
 }
 
 function putGeneral(nb: NwbBuilder, general: Group, { description, rig }: SessionData): void {
-  const { subject, experimenter, protocolNumber, board, software } = description;
+  const { subject, experimenter, protocolNumber, sessionNumber, board, software } = description;
   if (experimenter) nb.texts(general, 'experimenter', [experimenter]);
   nb.text(general, 'session_id', description.name);
   if (protocolNumber) nb.text(general, 'protocol', protocolNumber);
   nb.text(general, 'experiment_description', description.title);
-  nb.texts(general, 'was_generated_by', ['lapwing', packageVersion], [1, 2]);
+  const made = ['lapwing', packageVersion];
+  if (board !== null) made.push(`firmware of ${board.model}`, String(board.firmware));
+  nb.texts(general, 'was_generated_by', made, [made.length / 2, 2]);
   nb.text(
     general,
     'notes',
-    'Time zero is the beginning of the session by the clock of the board; session_start_time is ' +
+    (sessionNumber === null ? '' : `Session ${sessionNumber} of this subject. `) +
+      'Time zero is the beginning of the session by the clock of the board; session_start_time is ' +
       `as good as the computer clock. Recorded by lapwing ${software.version}. Lap 0 is the partial ` +
       'stretch before the first mark, where position is not known (NaN). file_create_date alone ' +
       'differs when the same record is exported again.',
@@ -117,44 +138,8 @@ function putGeneral(nb: NwbBuilder, general: Group, { description, rig }: Sessio
     'description',
     `Rig ${rig.name}, ${rig.belt.lengthCm} cm belt, board ${boardName}`,
   );
+  if (board?.boardId) text(treadmill, 'serial_number', String(board.boardId));
   treadmill.create_soft_link('/general/devices/models/belt_rig', 'model');
   const animal = nb.group(general, 'subject', 'Subject');
   nb.text(animal, 'subject_id', subject);
-}
-
-function putBelt(nb: NwbBuilder, acquisition: Group, processing: Group, session: SessionData) {
-  const { samples: s, beganUs } = session;
-  const n = s.length;
-  const timestamps = Float64Array.from({ length: n }, (_, i) => (s.boardUs[i]! - beganUs) / 1e6);
-  nb.series(acquisition, 'belt_encoder', {
-    ...{ data: s.count.slice(0, n), timestamps, unit: 'counts', resolution: 1 },
-    description: "The encoder's own count at each sample, signed 32 bits",
-    continuity: 'continuous',
-  });
-  const behavior = nb.group(processing, 'behavior', 'ProcessingModule');
-  text(
-    behavior,
-    'description',
-    'Place on the belt and running speed, from the encoder and the mark',
-  );
-  const timestampsOf = '/acquisition/belt_encoder';
-  const position = nb.group(behavior, 'Position', 'Position');
-  const place = nb.series(position, 'belt_position', {
-    ...{ type: 'SpatialSeries', timestampsOf, unit: 'meters', continuity: 'continuous' },
-    data: s.positionCm.slice(0, n).map((cm) => cm / 100),
-    description: 'Place along the belt, [0, length); NaN while it is not known',
-    resolution: 0.01 / session.rig.belt.countsPerCm,
-  });
-  nb.text(place, 'reference_frame', "Metres from the belt's 0 cm, along the running direction");
-  const behavioral = nb.group(behavior, 'BehavioralTimeSeries', 'BehavioralTimeSeries');
-  nb.series(behavioral, 'speed', {
-    ...{ timestampsOf, unit: 'm/s', continuity: 'continuous' },
-    data: s.speedCmPerS.slice(0, n).map((cm) => cm / 100),
-    description: `Signed speed over the last ${session.rig.belt.speedWindowUs / 1000} ms`,
-  });
-  nb.series(behavioral, 'lap', {
-    ...{ timestampsOf, unit: 'laps', continuity: 'step', resolution: 1 },
-    data: s.lap.slice(0, n),
-    description: 'Lap number; 0 before the first mark',
-  });
 }
