@@ -233,6 +233,26 @@ export const ERRORS = {
     'A rehearsal is running already, and there is one at a time.',
     'Wait for it to end, or cancel it: `DELETE /api/rehearse`.',
   ),
+  webSessionUnknown: entry(
+    'WEB_SESSION_UNKNOWN',
+    'There is no session of that name in the records folder.',
+    'Choose one from the list of sessions; its folder may have been moved or renamed.',
+  ),
+  webNoRecords: entry(
+    'WEB_NO_RECORDS',
+    'The web process was not told where the records are.',
+    'Start Lapwing with `lapwing serve --rig RIG`, or give the web process `--records`.',
+  ),
+  webNotMade: entry(
+    'WEB_NOT_MADE',
+    'This was not made from the record yet.',
+    'Ask for it first (`POST /api/records/NAME/work`), and fetch it when that job is done.',
+  ),
+  webOtherSubjects: entry(
+    'WEB_OTHER_SUBJECTS',
+    'The sessions to compare are not all of one animal, or one of them cannot be compared.',
+    'Choose sessions of one animal that have ended; across animals the unit is the animal.',
+  ),
   webTooManyJobs: entry(
     'WEB_TOO_MANY_JOBS',
     'So much long work is waiting already that no more is taken.',

@@ -166,6 +166,7 @@ export class Launcher {
     const { rigPath, rulesFolder, animalsFolder } = this.#plan.loop;
     const child = this.#fork('../web/webProcess.js', [
       ...['--socket', socketPath, '--token-file', tokenFile, '--rig-file', rigPath],
+      ...['--records', this.#plan.loop.recordFolder ?? this.#plan.rig.recordFolder],
       ...(rulesFolder === undefined ? [] : ['--rules-folder', rulesFolder]),
       ...(animalsFolder === undefined ? [] : ['--animals-folder', animalsFolder]),
       ...['--host', host, '--port', String(port), '--log', log],

@@ -1,38 +1,10 @@
 /** The HTTP interface in OpenAPI 3.1, served at `/api/openapi.json`; made of the same schemas that check. */
 import { ERRORS } from '../errors/codes.js';
+import { asks, json, problems, ref, shows } from './openapiParts.js';
+import { recordsPaths } from './records/description.js';
+import { recordsSchemas } from './records/schemas.js';
 import { rulesSchemas } from './rules/answerSchemas.js';
 import { bodies } from './schemas.js';
-
-const json = (schema: unknown) => ({ 'application/json': { schema } });
-const ref = (name: string) => ({ $ref: `#/components/schemas/${name}` });
-
-const problems = {
-  description: 'Problem details (RFC 9457), with a stable `code` and a `remedy`.',
-  content: { 'application/problem+json': { schema: ref('Problem') } },
-};
-const done = { description: 'The loop did it.', content: json(ref('Done')) };
-
-function asks(summary: string, body: string) {
-  return {
-    post: {
-      summary,
-      requestBody: { required: true, content: json(ref(body)) },
-      responses: { '200': done, default: problems },
-    },
-  };
-}
-
-function shows(summary: string, schema: unknown) {
-  return {
-    get: {
-      summary,
-      responses: {
-        '200': { description: 'As it is now.', content: json(schema) },
-        default: problems,
-      },
-    },
-  };
-}
 
 /** The description, with the program's version. */
 export function openapi(version: string): Record<string, unknown> {
@@ -101,6 +73,7 @@ export function openapi(version: string): Record<string, unknown> {
           },
         },
       },
+      ...recordsPaths,
       '/api/openapi.json': shows('This description.', ref('Object')),
       '/healthz': shows('Whether this process lives and has the loop.', ref('Object')),
     },
@@ -114,6 +87,7 @@ export function openapi(version: string): Record<string, unknown> {
         SaveRules: bodies.saveRules,
         Rehearse: bodies.rehearse,
         ...rulesSchemas,
+        ...recordsSchemas,
         Object: { type: 'object' },
         Done: { type: 'object', required: ['done'], properties: { done: { const: true } } },
         Problem: {

@@ -10,8 +10,8 @@ export interface JobPlan {
   readonly about: readonly string[];
   readonly script: string;
   readonly task: object;
-  /** Called when it was cancelled or its process died, to clear away what was half made. */
-  readonly tidy?: () => void;
+  /** Called with the process's number when it left without a result: it may have half made something. */
+  readonly tidy?: (pid: number) => void;
 }
 
 export interface JobLimits {
@@ -154,7 +154,7 @@ export class Jobs {
       clearTimeout(late);
       delete job.child;
       fail(job, why);
-      if (job.state.state !== 'done') job.plan.tidy?.();
+      if (job.state.state !== 'done' && child.pid) job.plan.tidy?.(child.pid);
       this.#startNext();
     };
     child.once('error', (error) => left(error.message));

@@ -3,8 +3,8 @@ const string = { type: 'string' } as const;
 const number = { type: 'number' } as const;
 const integer = { type: 'integer' } as const;
 const boolean = { type: 'boolean' } as const;
-const list = (items: object) => ({ type: 'array', items });
-const shape = (properties: Record<string, object>, optional: readonly string[] = []) => ({
+export const list = (items: object) => ({ type: 'array', items });
+export const shape = (properties: Record<string, object>, optional: readonly string[] = []) => ({
   type: 'object',
   required: Object.keys(properties).filter((key) => !optional.includes(key)),
   properties,
@@ -23,7 +23,7 @@ const outlined = shape({
   ...{ name: string, line: integer, from: integer, to: integer, words: string },
   spots: list(stretch),
 });
-const orNull = (schema: object) => ({ anyOf: [schema, { type: 'null' }] });
+export const orNull = (schema: object) => ({ anyOf: [schema, { type: 'null' }] });
 
 const result = shape({
   ...{ seed: string, sessionS: number, laps: integer, licks: integer, waterUl: number },

@@ -60,6 +60,16 @@ export class RulesFolder {
     return { path: name, text: new TextDecoder().decode(bytes), version: versionOf(bytes) };
   }
 
+  /**
+   * The full path of a rules file that there is.
+   * @throws LapwingError WEB_RULES_PATH, WEB_NOT_FOUND
+   */
+  pathOf(name: string): string {
+    const full = this.#inside(name, ['.yaml', '.yml']);
+    if (fs.existsSync(full)) return full;
+    throw new LapwingError('webNotFound', `There is no file ${JSON.stringify(name)}.`);
+  }
+
   /** For what a rules file brings in: included files and tables. Throws what people can read. */
   readIncluded(name: string): Uint8Array {
     return readWhole(this.#inside(name, ['.yaml', '.yml', '.csv']), MOST_TABLE_BYTES, name);
