@@ -3,6 +3,10 @@
 import { Command } from 'commander';
 import { packageVersion } from '../packageRoot.js';
 import { alignCommand } from './align.js';
+import { animalsCommand } from './animals/animals.js';
+import { correctCommand } from './animals/correct.js';
+import { waterCommand } from './animals/water.js';
+import { weighCommand } from './animals/weigh.js';
 import { checkCommand } from './check.js';
 import { demoCommand } from './demo.js';
 import { explainCommand } from './explain.js';
@@ -35,6 +39,10 @@ const program = new Command('lapwing')
   .addCommand(exportCommand())
   .addCommand(alignCommand())
   .addCommand(reportCommand())
+  .addCommand(animalsCommand())
+  .addCommand(weighCommand())
+  .addCommand(waterCommand())
+  .addCommand(correctCommand())
   .addCommand(portsCommand())
   .addCommand(selftestCommand())
   .addCommand(flashCommand())
