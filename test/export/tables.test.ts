@@ -7,12 +7,14 @@ import { readSession, type SessionData } from '../../server/analysis/readSession
 import { csvLine, fixed, seconds } from '../../server/export/table.js';
 import { tablesOf } from '../../server/export/tables.js';
 import { writeTables } from '../../server/export/writeTables.js';
+import { readRecord } from '../../server/session/record/readRecord.js';
 import { recordedSession } from '../analysis/recorded.js';
+import { HARD_TEXT } from './hardText.js';
 
 const recorded = recordedSession({
-  minutes: 5,
+  minutes: 3,
   acts: [
-    { act: 'note', text: 'said "so", and\nso' },
+    { act: 'note', text: HARD_TEXT },
     { act: 'exclude lap', lap: 2 },
   ],
 });
@@ -94,6 +96,33 @@ describe('the tables', () => {
     });
   });
 
+  it('keep what a person typed, and what was withheld, with its reason', () => {
+    const kinds = column('decisions', 'kind');
+    const details = column('decisions', 'detail');
+    expect(details.filter((_, i) => kinds[i] === 'note')).toContain(HARD_TEXT);
+    const withheld = session.decisions.filter(({ kind }) => kind === 'withheld');
+    expect(kinds.filter((kind) => kind === 'withheld')).toHaveLength(withheld.length);
+  });
+
+  it('say of every row which input of the record it came from', async () => {
+    const kinds = new Map<number, string>();
+    const reader = await readRecord(recorded.folder);
+    reader.visit({
+      sample: (input) => kinds.set(input, 'sample'),
+      input: (input, { kind }) => kinds.set(input, kind),
+    });
+    for (const { name } of tablesOf(session)) {
+      const inputs = column(name, 'input');
+      expect(inputs.length, name).toBeGreaterThan(0);
+      const from = new Set(inputs.map((text) => kinds.get(Number(text))));
+      expect(from.has(undefined), name).toBe(false);
+      if (name === 'samples') expect([...from]).toEqual(['sample']);
+      if (name === 'inputs') expect([...from]).toEqual(['edge']);
+      if (name === 'licks') expect([...from]).toEqual(['edge']);
+      if (name === 'water') expect([...from]).toEqual(['outcome']);
+    }
+  });
+
   it('explain every column in the dictionary', () => {
     const lines = readFileSync(join(into, 'dictionary.csv'), 'utf8').trimEnd().split('\r\n');
     const columns = tablesOf(session).reduce((sum, table) => sum + table.columns.length, 0);
@@ -102,7 +131,7 @@ describe('the tables', () => {
 });
 
 /** What a loader in another language must find: rows of each table, and sums of some columns. */
-const expected = () => ({
+const expected = (lineBreak: string) => ({
   laps: column('laps', 'lap').length,
   licks: column('licks', 'time_s').length,
   samples: column('samples', 'time_s').length,
@@ -110,10 +139,15 @@ const expected = () => ({
   onS: column('firings', 'on_s').reduce((sum, text) => sum + Number(text), 0),
   excluded: column('laps', 'excluded').filter((text) => text === '1').length,
   phases: column('phases', 'phase').join('|'),
+  // Every text of a column, as bytes of UTF-8 in hexadecimal: no printing can change it.
+  details: Buffer.from(
+    column('decisions', 'detail').join('|').replaceAll('\r\n', lineBreak),
+  ).toString('hex'),
 });
-function same(printed: string): void {
+/** @param lineBreak what the language makes of CR LF inside a text */
+function same(printed: string, lineBreak = '\r\n'): void {
   const found = JSON.parse(printed) as Record<string, number | string>;
-  for (const [name, value] of Object.entries(expected())) {
+  for (const [name, value] of Object.entries(expected(lineBreak))) {
     if (typeof value === 'string') expect(found[name], name).toBe(value);
     else expect(found[name], name).toBeCloseTo(value, 5);
   }
@@ -137,23 +171,26 @@ print(json.dumps({
   "laps": len(s["laps"]["lap"]), "licks": len(s["licks"]["time_s"]),
   "samples": len(s["samples"]["time_s"]), "lickS": sum(s["licks"]["time_s"]),
   "onS": sum(x or 0 for x in s["firings"]["on_s"]), "excluded": sum(s["laps"]["excluded"]),
-  "phases": "|".join(s["phases"]["phase"])}))`;
+  "phases": "|".join(s["phases"]["phase"]),
+  "details": "|".join(s["decisions"]["detail"]).encode().hex()}))`;
     const printed = run('python3', ['-B', '-c', code]);
     if (printed !== undefined) same(printed);
   });
   it('read them in R', () => {
     const code = `source("load_session.R"); s <- load_session(".")
-cat(sprintf('{"laps":%d,"licks":%d,"samples":%d,"lickS":%.9f,"onS":%.9f,"excluded":%d,"phases":"%s"}',
+cat(sprintf('{"laps":%d,"licks":%d,"samples":%d,"lickS":%.9f,"onS":%.9f,"excluded":%d,"phases":"%s","details":"%s"}',
   nrow(s$laps), nrow(s$licks), nrow(s$samples), sum(s$licks$time_s),
-  sum(s$firings$on_s, na.rm = TRUE), sum(s$laps$excluded), paste(s$phases$phase, collapse = "|")))`;
+  sum(s$firings$on_s, na.rm = TRUE), sum(s$laps$excluded), paste(s$phases$phase, collapse = "|"),
+  paste(as.character(charToRaw(paste(s$decisions$detail, collapse = "|"))), collapse = "")))`;
     const printed = run('Rscript', ['--vanilla', '-e', code]);
-    if (printed !== undefined) same(printed);
+    if (printed !== undefined) same(printed, '\n');
   });
   it('read them in Octave', () => {
     const code = `s = load_session('.'); on = s.firings.on_s;
-printf('{"laps":%d,"licks":%d,"samples":%d,"lickS":%.9f,"onS":%.9f,"excluded":%d,"phases":"%s"}', ...
+printf('{"laps":%d,"licks":%d,"samples":%d,"lickS":%.9f,"onS":%.9f,"excluded":%d,"phases":"%s","details":"%s"}', ...
   numel(s.laps.lap), numel(s.licks.time_s), numel(s.samples.time_s), sum(s.licks.time_s), ...
-  sum(on(~isnan(on))), sum(s.laps.excluded), strjoin(s.phases.phase', '|'));`;
+  sum(on(~isnan(on))), sum(s.laps.excluded), strjoin(s.phases.phase', '|'), ...
+  sprintf('%02x', uint8(strjoin(s.decisions.detail', '|'))));`;
     const printed = run('octave-cli', ['--no-gui', '--eval', code]);
     if (printed !== undefined) same(printed);
   });

@@ -67,20 +67,34 @@ function ensureCompiler() {
 /** What reads an NWB file back and checks it: Debian's packages are installed when root. */
 function ensureNwbReaders() {
   const python = fs.existsSync('/usr/bin/python3') ? '/usr/bin/python3' : 'python3';
-  const present = () =>
-    spawnSync(python, ['-c', 'import hdmf, h5py'], { stdio: 'ignore' }).status === 0;
+  ensureDebian(
+    ['python3-hdmf', 'python3-h5py'],
+    () => spawnSync(python, ['-c', 'import hdmf, h5py'], { stdio: 'ignore' }).status === 0,
+    'NWB files are written and not read back',
+  );
+}
+
+/** The languages that the loaders beside the tables are for; Octave reads as MATLAB does. */
+function ensureLanguages() {
+  const missing = (what) => `the loader for ${what} is not run`;
+  ensureDebian(['r-base-core'], () => onPath('Rscript') !== undefined, missing('R'));
+  ensureDebian(['octave'], () => onPath('octave-cli') !== undefined, missing('Octave'));
+}
+
+/** Installs what only some tests need; where it is not to be had they say so and pass. */
+function ensureDebian(packages, present, otherwise) {
   if (present()) return;
+  const names = packages.join(' ');
   if (process.getuid?.() === 0 && onPath('apt-get') !== undefined) {
-    console.log('test: no hdmf and h5py here; installing the Debian packages');
+    console.log(`test: installing the Debian packages ${names}`);
     const env = { DEBIAN_FRONTEND: 'noninteractive' };
-    const packages = ['python3-hdmf', 'python3-h5py'];
     run('apt-get', ['update', '-q'], env);
     run('apt-get', ['install', '-q', '-y', '--no-install-recommends', ...packages], env);
     if (present()) return;
   }
   console.log(
-    'test: hdmf and h5py are not to be had, so NWB files are written and not read back. Install ' +
-      'them with `sudo apt-get install python3-hdmf python3-h5py` (Debian, Ubuntu).',
+    `test: ${names} not to be had, so ${otherwise}. Install with ` +
+      `\`sudo apt-get install ${names}\` (Debian, Ubuntu).`,
   );
 }
 
@@ -135,6 +149,7 @@ function main() {
   }
   const browser = ensureBrowser();
   ensureNwbReaders();
+  ensureLanguages();
   ensureCompiler();
   step('lint (biome check)', tool('@biomejs/biome/bin/biome', ['check', '.']));
   step('the type check (tsc)', tool('typescript/bin/tsc', ['--noEmit']));

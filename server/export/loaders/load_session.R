@@ -1,4 +1,5 @@
 # Reads a folder of Lapwing tables: load_session(folder)$laps$start_s[1]. Base R alone.
+# (R itself reads CR LF inside a text as LF.)
 load_session <- function(folder) {
   dictionary <- read.csv(file.path(folder, "dictionary.csv"), colClasses = "character")
   classes <- c("number" = "numeric", "integer" = "numeric", "yes/no" = "numeric", "text" = "character")
