@@ -3,7 +3,7 @@
  * has an entry for each (a test holds the two together).
  *
  * The code's first part says where it comes from: WIRE, LINK, RIG, RULES, GUARD, RECORD, EXPORT,
- * ALIGN, REPORT, ANIMALS, LOOP, WEB, CLI.
+ * ALIGN, REPORT, ANIMALS, REHEARSE, PLAN, LOOP, WEB, CLI.
  */
 export interface ErrorEntry {
   readonly code: string;
@@ -107,6 +107,31 @@ export const ERRORS = {
     'RIG_INVALID',
     'The rig file does not describe a rig.',
     'Correct each place named; `hardware-sim/demo/rig.yaml` is a whole example.',
+  ),
+  benchInSession: entry(
+    'BENCH_IN_SESSION',
+    'Outputs are tried between sessions only.',
+    'End the session first; within one, a rule that the operator may ask for drives outputs.',
+  ),
+  benchBusy: entry(
+    'BENCH_BUSY',
+    'An output that was tried has not ended yet.',
+    'Wait until it is idle; outputs are tried one at a time.',
+  ),
+  benchWithheld: entry(
+    'BENCH_WITHHELD',
+    'The output was not tried: the guards or the board said no.',
+    "The limit named is the rig file's. Wait, ask for less, or look at the output's settings on the Rig page.",
+  ),
+  benchStopped: entry(
+    'BENCH_STOPPED',
+    'What was being tried has been stopped.',
+    'Look at the rig, then begin again.',
+  ),
+  benchOtherRig: entry(
+    'BENCH_OTHER_RIG',
+    'The rig file now describes another rig, or another way to its board.',
+    'End Lapwing and start it again with the new rig file.',
   ),
   webPortBusy: entry(
     'WEB_PORT_BUSY',
@@ -338,11 +363,6 @@ export const ERRORS = {
     'There is no export of that name.',
     'Say `--to tables` for CSV, `--to parquet` for Parquet, or `--to nwb` for one NWB file.',
   ),
-  reportSubjects: entry(
-    'REPORT_SUBJECTS',
-    'The sessions are of more than one subject.',
-    'Give sessions of one animal; across animals the unit is the animal, so compare their reports.',
-  ),
   alignEdgesBad: entry(
     'ALIGN_EDGES_BAD',
     'The file of edge times cannot be read.',
@@ -397,6 +417,26 @@ export const ERRORS = {
     'RULES_OUTSIDE',
     'The rules file asked for does not lie in the rules folder.',
     'Choose one of the files listed, or start with another `--rules` folder.',
+  ),
+  rehearseLatencyBad: entry(
+    'REHEARSE_LATENCY_BAD',
+    'The file of latencies cannot be read.',
+    'Give what `lapwing calibrate latency` kept, or a text file with one number of microseconds on each line.',
+  ),
+  rehearseAnimalBad: entry(
+    'REHEARSE_ANIMAL_BAD',
+    'The file that describes the simulated animal is wrong.',
+    'Mend the lines that are named. `lapwing animal show` prints a right one with every parameter, its unit and its meaning.',
+  ),
+  rehearseFailed: entry(
+    'REHEARSE_FAILED',
+    'A process that rehearsed sessions ended before its work was done.',
+    'Try again with fewer `--jobs`; if it goes on, the computer may be short of memory.',
+  ),
+  planTooFew: entry(
+    'PLAN_TOO_FEW',
+    'What was given does not suffice for a plan.',
+    'Rehearse more runs, or sessions long enough to have complete laps with licks.',
   ),
   loopFailed: entry(
     'LOOP_FAILED',

@@ -1,9 +1,8 @@
 import type { StampedDecision } from '../session/decisions.js';
-import type { NumberedEvent } from './protocol.js';
 
 /** The last events, by number from 1; older ones are in the record only. */
-export class EventRing {
-  readonly #events: NumberedEvent[] = [];
+export class EventRing<T = StampedDecision> {
+  readonly #events: { readonly number: number; readonly event: T }[] = [];
   readonly #capacity: number;
   #last = 0;
 
@@ -21,14 +20,14 @@ export class EventRing {
     return Math.max(1, this.#last - this.#capacity + 1);
   }
 
-  push(event: StampedDecision): void {
+  push(event: T): void {
     this.#last++;
     this.#events[this.#last % this.#capacity] = { number: this.#last, event };
   }
 
   /** At most `most` events after number `after`, oldest first; those no longer kept are left out. */
-  after(after: number, most: number): NumberedEvent[] {
-    const events: NumberedEvent[] = [];
+  after(after: number, most: number): { readonly number: number; readonly event: T }[] {
+    const events: { readonly number: number; readonly event: T }[] = [];
     for (let n = Math.max(after + 1, this.first); n <= this.#last && events.length < most; n++) {
       events.push(this.#events[n % this.#capacity]!);
     }

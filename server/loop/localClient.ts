@@ -9,7 +9,18 @@ import { connect, type Socket } from 'node:net';
 import { LapwingError } from '../errors/codes.js';
 import type { OperatorAct } from '../session/inputs.js';
 import { LineReader } from './lines.js';
-import type { ClientMessage, LoopMessage, NumberedEvent, Setup, Snapshot } from './protocol.js';
+import type {
+  AskedBy,
+  BenchItem,
+  BenchNow,
+  ClientMessage,
+  LoopMessage,
+  NumberedEvent,
+  Setup,
+  Snapshot,
+  Tried,
+  TryRequest,
+} from './protocol.js';
 
 export interface LocalClientOptions {
   readonly socketPath: string;
@@ -41,6 +52,7 @@ export interface LocalCallbacks {
   state?(state: Snapshot): void;
   events?(events: readonly NumberedEvent[]): void;
   gap?(from: number, to: number): void;
+  bench?(now: BenchNow, items: readonly BenchItem[]): void;
 }
 
 export type Hello = Extract<LoopMessage, { tell: 'hello' }>;
@@ -64,7 +76,7 @@ export class LoopRefusal extends Error {
 }
 
 interface Pending {
-  resolve(): void;
+  resolve(result: unknown): void;
   reject(error: Error): void;
   timer: NodeJS.Timeout;
 }
@@ -115,12 +127,12 @@ export class LocalClient {
   }
 
   /** All outputs idle; resolves when the loop says it is done. */
-  quiet(): Promise<void> {
-    return this.ask({ say: 'quiet' });
+  quiet(by: AskedBy = {}): Promise<void> {
+    return this.ask({ say: 'quiet', ...by });
   }
 
-  end(reason: string): Promise<void> {
-    return this.ask({ say: 'end', reason });
+  end(reason: string, by: AskedBy = {}): Promise<void> {
+    return this.ask({ say: 'end', reason, ...by });
   }
 
   begin(session: Beginning): Promise<void> {
@@ -129,6 +141,21 @@ export class LocalClient {
 
   act(act: OperatorAct, who: string, from: string): Promise<void> {
     return this.ask({ say: 'act', act, who, from });
+  }
+
+  /** Raw edges from now on, or no longer; `frames` times every frame too. Not asked again by itself. */
+  bench(on: boolean, frames = false): Promise<void> {
+    return this.ask({ say: 'bench', on, frames });
+  }
+
+  /** One pulse of one output, between sessions; resolves when the board has said what became of it. */
+  tryOutput(request: TryRequest): Promise<Tried> {
+    return this.ask<Tried>({ say: 'try', ...request });
+  }
+
+  /** Lets the loop read its rig file again, between sessions. */
+  reload(): Promise<void> {
+    return this.ask({ say: 'reload' });
   }
 
   /** Ends the connection and every attempt at one; what is pending is rejected. */
@@ -196,7 +223,7 @@ export class LocalClient {
         this.greeted(message);
         return;
       case 'done':
-        this.settle(message.request)?.resolve();
+        this.settle(message.request)?.resolve(message.result);
         return;
       case 'error':
         this.refused(message);
@@ -213,6 +240,9 @@ export class LocalClient {
         callbacks?.events?.(message.events);
         return;
       }
+      case 'bench':
+        callbacks?.bench?.(message.now, message.items);
+        return;
       case 'gap':
         if (this.watching) this.watching.after = message.to;
         callbacks?.gap?.(message.from, message.to);
@@ -242,7 +272,7 @@ export class LocalClient {
     }
   }
 
-  private ask(message: Asking): Promise<void> {
+  private ask<T = void>(message: Asking): Promise<T> {
     if (!this.hello) return Promise.reject(this.lastFailure ?? away('There is no connection yet.'));
     const request = this.nextRequest++;
     return new Promise((resolve, reject) => {
@@ -250,7 +280,7 @@ export class LocalClient {
         this.pending.delete(request);
         reject(new LapwingError('loopSilent', `The loop did not answer \`${message.say}\`.`));
       }, this.options.requestTimeoutMs ?? 3000);
-      this.pending.set(request, { resolve, reject, timer });
+      this.pending.set(request, { resolve: (result) => resolve(result as T), reject, timer });
       this.send({ ...message, request, saidMs: Date.now() } as ClientMessage);
     });
   }
@@ -304,12 +334,13 @@ function explain(failure: Error | undefined, path: string): LapwingError {
 /** One quiet over a connection of its own: works however the caller's own client stands. */
 export async function quietOnce(
   options: Pick<LocalClientOptions, 'socketPath' | 'token' | 'tokenFile' | 'requestTimeoutMs'>,
+  by: AskedBy = {},
 ): Promise<void> {
   const client = new LocalClient({ ...options, client: 'quiet', reconnect: false });
   client.start();
   try {
     await client.ready();
-    await client.quiet();
+    await client.quiet(by);
   } finally {
     client.close();
   }

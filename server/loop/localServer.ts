@@ -6,11 +6,15 @@ import { LapwingError } from '../errors/codes.js';
 import type { EventRing } from './eventRing.js';
 import { LineReader } from './lines.js';
 import {
+  type AskedBy,
+  type BenchItem,
+  type BenchNow,
   type ClientMessage,
   LOCAL_PROTOCOL,
   type LoopMessage,
   type Setup,
   type Snapshot,
+  type Tried,
 } from './protocol.js';
 import { leaveRig, type RigAddress, takeRig } from './rigLock.js';
 
@@ -21,10 +25,18 @@ export interface LoopService {
   readonly events: EventRing;
   setup(): Setup;
   snapshot(): Snapshot;
-  quiet(): void;
-  end(reason: string): void;
+  quiet(by: AskedBy): void;
+  end(reason: string, by: AskedBy): void;
   begin(message: Extract<ClientMessage, { say: 'begin' }>): Promise<void>;
   act(message: Extract<ClientMessage, { say: 'act' }>): void;
+  readonly bench: {
+    readonly items: EventRing<BenchItem>;
+    readonly now: BenchNow;
+    /** Whether anybody watches it, and whether frames are to be timed. */
+    watch(watched: boolean, timed: boolean): void;
+  };
+  tryOutput(message: Extract<ClientMessage, { say: 'try' }>): Promise<Tried>;
+  reload(): void;
 }
 
 const MOST_CLIENTS = 40;
@@ -35,6 +47,7 @@ const LOST_BYTES = 8 * 1024 * 1024;
 const STATE_MS = 20;
 const STALE_MS = 2_500;
 const EVENTS_AT_ONCE = 200;
+const ITEMS_AT_ONCE = 1_000;
 
 /**
  * The loop's only door: local clients over a Unix socket. Nothing here runs on the frame path; state
@@ -93,7 +106,7 @@ export class LocalServer {
     socket.on('error', () => socket.destroy());
     socket.on('close', () => {
       this.#clients.delete(client);
-      this.#tickOnlyWhileWatched();
+      this.#benchChanged();
     });
   }
 
@@ -111,10 +124,9 @@ export class LocalServer {
 
   async #answer(client: Client, message: ClientMessage): Promise<void> {
     try {
-      await this.#obey(client, message);
-      if (message.request !== undefined) {
-        client.socket.write(lineOf({ tell: 'done', request: message.request }));
-      }
+      const result = await this.#obey(client, message);
+      const { request } = message;
+      if (request !== undefined) client.socket.write(lineOf({ tell: 'done', request, result }));
     } catch (error) {
       this.#refuse(client, message.request, error);
     }
@@ -129,13 +141,13 @@ export class LocalServer {
     client.socket.write(lineOf({ tell: 'hello', protocol: LOCAL_PROTOCOL, version, rig }));
   }
 
-  #obey(client: Client, message: ClientMessage): Promise<void> | void {
+  #obey(client: Client, message: ClientMessage): Promise<unknown> | void {
     switch (message.say) {
       case 'quiet':
-        this.#service.quiet();
+        this.#service.quiet(askedBy(message));
         return;
       case 'end':
-        this.#service.end(textOf(message.reason) || 'asked to end');
+        this.#service.end(textOf(message.reason) || 'asked to end', askedBy(message));
         return;
       case 'begin':
         refuseStale(message);
@@ -151,6 +163,19 @@ export class LocalServer {
         client.socket.write(lineOf({ tell: 'setup', setup: this.#service.setup() }));
         this.#tickOnlyWhileWatched();
         return;
+      case 'bench':
+        client.bench = message.on === true;
+        client.timed = client.bench && message.frames === true;
+        client.sentItem = this.#service.bench.items.last;
+        this.#benchChanged();
+        return;
+      case 'try':
+        refuseStale(message);
+        if (!client.bench) throw new LapwingError('loopGarbled', 'Say `bench` before `try`.');
+        return this.#service.tryOutput(message);
+      case 'reload':
+        this.#service.reload();
+        return;
       default:
         throw new LapwingError('loopGarbled', `Unknown request ${JSON.stringify(message)}.`);
     }
@@ -162,8 +187,17 @@ export class LocalServer {
     client.socket.write(lineOf({ tell: 'error', ...which, code, message, remedy }));
   }
 
+  #benchChanged(): void {
+    const clients = [...this.#clients];
+    this.#service.bench.watch(
+      clients.some((client) => client.bench),
+      clients.some((client) => client.timed),
+    );
+    this.#tickOnlyWhileWatched();
+  }
+
   #tickOnlyWhileWatched(): void {
-    const watched = [...this.#clients].some((client) => client.watching);
+    const watched = [...this.#clients].some((client) => client.watching || client.bench);
     if (watched && !this.#timer) this.#timer = setInterval(() => this.#tick(), STATE_MS);
     if (!watched) {
       clearInterval(this.#timer);
@@ -176,19 +210,28 @@ export class LocalServer {
     const now = performance.now();
     let line: string | undefined;
     for (const client of this.#clients) {
-      if (!client.watching) continue;
+      if (!client.watching && !client.bench) continue;
       const behind = client.socket.writableLength;
       if (behind > LOST_BYTES) {
         client.socket.destroy();
         continue;
       }
       if (behind > SLOW_BYTES) continue;
+      if (client.bench) this.#sendBench(client);
+      if (!client.watching) continue;
       this.#sendEvents(client);
       if (now < client.dueMs) continue;
       client.dueMs = Math.max(client.dueMs + client.everyMs, now);
       line ??= lineOf({ tell: 'state', state: this.#service.snapshot() });
       client.socket.write(line);
     }
+  }
+
+  #sendBench(client: Client): void {
+    const { items, now } = this.#service.bench;
+    const next = items.after(client.sentItem, ITEMS_AT_ONCE);
+    client.sentItem = next.at(-1)?.number ?? client.sentItem;
+    client.socket.write(lineOf({ tell: 'bench', now, items: next.map(({ event }) => event) }));
   }
 
   #sendEvents(client: Client): void {
@@ -213,6 +256,9 @@ class Client {
   everyMs = 50;
   dueMs = 0;
   sentEvent = 0;
+  bench = false;
+  timed = false;
+  sentItem = 0;
 
   constructor(readonly socket: Socket) {}
 }
@@ -239,6 +285,10 @@ function parse(line: string): ClientMessage {
 
 function textOf(value: unknown): string {
   return typeof value === 'string' ? value.slice(0, 200) : '';
+}
+
+function askedBy({ who, from }: AskedBy): AskedBy {
+  return { who: textOf(who), from: textOf(from) };
 }
 
 function sameText(a: string, b: string): boolean {

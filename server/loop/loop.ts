@@ -16,10 +16,12 @@ import { finish } from '../session/record/finish.js';
 import { readRecord } from '../session/record/readRecord.js';
 import { Recorder } from '../session/record/recorder.js';
 import type { TroubleKind } from '../session/record/segmentLog.js';
+import { readRig } from '../session/rig/readRig.js';
 import type { Rig } from '../session/rig/rig.js';
 import { SessionRunner } from '../session/runner.js';
 import { describeEnd, openSession, recordHeaderOf } from '../session/store.js';
 import { CAPABILITY, type Sample } from '../wire/messages.js';
+import { Bench } from './bench.js';
 import { BookTalk } from './bookTalk.js';
 import { checkAct } from './checkAct.js';
 import { type CurrentSession, keepCurrent, leftOver } from './currentSession.js';
@@ -27,7 +29,7 @@ import { EventRing } from './eventRing.js';
 import { LiveRecord } from './liveRecord.js';
 import { LocalServer, type LoopService } from './localServer.js';
 import type { BeginOptions, LoopOptions, LoopReport } from './options.js';
-import type { AskedBy, ClientMessage, Setup, Snapshot } from './protocol.js';
+import type { AskedBy, ClientMessage, Setup, Snapshot, Tried } from './protocol.js';
 import { type RigAddress, rigAddress } from './rigLock.js';
 import { type RunningSession, setupOf, snapshotOf } from './view.js';
 
@@ -48,7 +50,20 @@ export class Loop implements LinkHandler, LoopService {
   readonly version = packageVersion;
   readonly rig: string;
   readonly events = new EventRing(EVENTS_KEPT);
-  readonly #rigFile: Rig;
+  readonly bench = new Bench({
+    rig: () => this.#rigFile,
+    send: (name, message) => this.#send(name, message),
+    begin: (runner) => {
+      this.#runner = runner;
+      this.#takeLinkUp();
+      this.#take({ kind: 'begin', firstId: this.#highestId + ID_MARGIN });
+    },
+    ended: () => {
+      this.#link.send('quiet', { outputs: 0xffff });
+      if (this.#session === undefined) this.#goIdle();
+    },
+  });
+  #rigFile: Rig;
   readonly #options: LoopOptions;
   readonly #log: Logger;
   readonly #report: (report: LoopReport) => void;
@@ -144,13 +159,16 @@ export class Loop implements LinkHandler, LoopService {
 
   sample(message: Sample): void {
     this.#runner.sample(message);
+    this.bench.sample(message, this.#runner.core.tracker.stampUs);
   }
   edge(message: Extract<RareInput, { kind: 'edge' }>['message']): void {
     this.#take({ kind: 'edge', message });
+    this.bench.edge(message, this.#runner.core.tracker.stampUs);
   }
   outcome(message: Extract<RareInput, { kind: 'outcome' }>['message']): void {
     this.#highestId = Math.max(this.#highestId, message.id);
     this.#take({ kind: 'outcome', message });
+    this.bench.outcome(message, this.#runner.core.tracker.extend(message.boardUs));
   }
   fault(message: Extract<RareInput, { kind: 'fault' }>['message']): void {
     this.#log.warn({ fault: message }, 'the board reported a fault');
@@ -213,6 +231,7 @@ export class Loop implements LinkHandler, LoopService {
   }
 
   quiet(by: AskedBy): void {
+    this.bench.close('everything was stopped');
     this.#act({ act: 'stop everything' }, localActor(by));
     // Sent once more whatever the session thinks: it can only make things idle.
     this.#link.send('quiet', { outputs: 0xffff });
@@ -246,6 +265,33 @@ export class Loop implements LinkHandler, LoopService {
     this.#act(message.act, { who: String(message.who), from: String(message.from) });
   }
 
+  // ---- between sessions ----------------------------------------------------------------------
+
+  tryOutput(message: Extract<ClientMessage, { say: 'try' }>): Promise<Tried> {
+    if (this.#session !== undefined || this.#beginning) {
+      throw new LapwingError('benchInSession', `\`${message.output}\` was not tried.`);
+    }
+    if (this.#link.state !== 'up') throw new LapwingError('loopNoBoard', 'Nothing was tried.');
+    return this.bench.attempt(message);
+  }
+
+  /** Reads the rig file again: calibrations that it names may be others now. */
+  reload(): void {
+    if (this.#session !== undefined || this.#beginning) {
+      throw new LapwingError('loopBusy', 'The rig file is read again between sessions.');
+    }
+    const rig = readRig(this.#options.rigPath);
+    const { name, port, baudRate, boardId } = this.#rigFile;
+    const same = rig.name === name && rig.port === port && rig.baudRate === baudRate;
+    if (!same || rig.boardId !== boardId) {
+      throw new LapwingError('benchOtherRig', `${rig.path}: name, port, baud or board_id changed.`);
+    }
+    this.bench.close('the rig file is read again');
+    this.#rigFile = rig;
+    this.#goIdle();
+    this.#server.announceSetup();
+  }
+
   // ---- sessions ------------------------------------------------------------------------------
 
   /**
@@ -258,6 +304,7 @@ export class Loop implements LinkHandler, LoopService {
     }
     this.#beginning = true;
     try {
+      this.bench.close('a session begins');
       const rules = prepared ?? prepareRules(begin.rulesPath, this.#rigFile);
       await frames();
       const { rulesPath: _, ...who } = begin;
@@ -356,10 +403,7 @@ export class Loop implements LinkHandler, LoopService {
       this.#log.error({ error, folder }, 'the description could not be brought up to date');
     }
     rmSync(this.#address.currentFile, { force: true });
-    this.#runner = this.#idleRunner();
-    if (this.#lastUp !== undefined && this.#link.state === 'up') {
-      this.#take(linkUpInput({ ...this.#lastUp, sameBoot: false }));
-    }
+    this.#goIdle();
     this.#log.info({ folder, reason: core.endReason }, 'session ended');
     this.#server.announceSetup();
     this.#report({ report: 'session ended', folder, reason: core.endReason });
@@ -372,6 +416,17 @@ export class Loop implements LinkHandler, LoopService {
     }
     this.#closing = this.#closing.then(() => this.#book.ended(folder));
     if (this.#options.exitWhenEnded) void this.#closing.then(() => this.#leave());
+  }
+
+  #goIdle(): void {
+    this.#runner = this.#idleRunner();
+    this.#takeLinkUp();
+  }
+
+  /** A new runner is told of the board that answers. */
+  #takeLinkUp(): void {
+    if (this.#lastUp === undefined || this.#link.state !== 'up') return;
+    this.#take(linkUpInput({ ...this.#lastUp, sameBoot: false }));
   }
 
   #idleRunner(): SessionRunner {

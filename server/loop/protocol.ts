@@ -43,6 +43,12 @@ export type ClientMessage = { readonly request?: number; readonly saidMs?: numbe
       readonly despite?: string;
     }
   | { readonly say: 'act'; readonly act: OperatorAct; readonly who: string; readonly from: string }
+  /** Raw edges from now on, or no longer; `frames` times every frame as well. */
+  | { readonly say: 'bench'; readonly on: boolean; readonly frames?: boolean }
+  /** One pulse of one output, between sessions only, by a client that watches the bench. */
+  | ({ readonly say: 'try' } & TryRequest)
+  /** The rig file has changed: read it again, between sessions only. */
+  | { readonly say: 'reload' }
 );
 
 /** Loop to client. */
@@ -53,7 +59,8 @@ export type LoopMessage =
       readonly version: string;
       readonly rig: string;
     }
-  | { readonly tell: 'done'; readonly request: number }
+  | { readonly tell: 'done'; readonly request: number; readonly result?: unknown }
+  | { readonly tell: 'bench'; readonly now: BenchNow; readonly items: readonly BenchItem[] }
   | {
       readonly tell: 'error';
       readonly request?: number;
@@ -66,6 +73,45 @@ export type LoopMessage =
   | { readonly tell: 'events'; readonly events: readonly NumberedEvent[] }
   /** The client fell behind: events `from` to `to` are in the record and not sent. */
   | { readonly tell: 'gap'; readonly from: number; readonly to: number };
+
+export interface TryRequest {
+  /** By its name in the rig file. */
+  readonly output: string;
+  readonly widthUs: number;
+  /** Where a valve's water goes: a vial has none of the limits of an animal's water. */
+  readonly into: 'vial' | 'spout';
+}
+
+/** What became of a pulse that was tried. */
+export interface Tried {
+  readonly output: string;
+  /** Extended board time of the rise; null where only the fall was told. */
+  readonly riseUs: number | null;
+  /** As the board measured it. */
+  readonly onUs: number;
+  readonly volumeNl: number;
+  /** From the command's write to the board's word of the rise, by the computer's clock. */
+  readonly roundTripUs: number | null;
+}
+
+/** What the bench shows, in board time; lines are the board's numbers. */
+export type BenchItem =
+  | {
+      readonly is: 'edge';
+      readonly atUs: number;
+      /** The encoder's count, 32 bits signed. */
+      readonly count: number;
+      readonly line: number;
+      readonly level: 0 | 1;
+    }
+  | { readonly is: 'output'; readonly atUs: number; readonly line: number; readonly on: boolean }
+  /** Board and host time of frames by turns, microseconds. */
+  | { readonly is: 'frames'; readonly us: readonly number[] };
+
+export interface BenchNow {
+  readonly atUs: number;
+  readonly count: number;
+}
 
 export interface NumberedEvent {
   readonly number: number;

@@ -243,6 +243,11 @@ export class Tracker {
     return this.#scale.travelOf(lap, placeCm);
   }
 
+  /** A stamp of the board's near now, extended. */
+  extend(boardUs: number): number {
+    return this.#clock.extend(boardUs);
+  }
+
   /** What the board's clock says at extended time `us`: what commands to it must carry. */
   toBoardUs(us: number): number {
     return this.#clock.toBoard(us);

@@ -35,6 +35,9 @@ export interface FiringContext {
   accounted(): void;
 }
 
+/** Stands for a rule where a person tries an output between sessions. */
+export const BY_HAND = -1;
+
 /** An unanswered id is asked about again this long after its answer was due, and so many times. */
 const ANSWER_US = 100_000;
 const MOST_ASKED = 4;
@@ -76,6 +79,11 @@ export class Firings {
   isArmed(rule: number): boolean {
     return this.#armory.ofRule(rule) !== undefined;
   }
+  /** Since when the rule's slot has stood, extended board time; NaN while it has none. */
+  armedSinceUs(rule: number): number {
+    return this.#armory.sinceUs(rule);
+  }
+
   // ---- what rules ask ------------------------------------------------------------------------
 
   /** Guards all orders of a firing together and sends them to the board. */
@@ -141,7 +149,7 @@ export class Firings {
       answerDueUs: Number.POSITIVE_INFINITY,
       asked: 0,
     };
-    this.#armory.take(slot, live, request, count);
+    this.#armory.take(slot, live, request, count, this.#context.instant.nowUs);
     this.#send(live);
     this.#tellSent('armed', firing);
     return undefined;

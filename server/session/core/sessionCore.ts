@@ -2,7 +2,7 @@
 import { Guard } from '../../guard/guard.js';
 import type { Program } from '../../rules/engine/program.js';
 import { RulesEngine } from '../../rules/engine/rulesEngine.js';
-import type { Actuator, Instant, Journal } from '../../rules/instant.js';
+import type { Actuator, Inquiry, Instant, Journal } from '../../rules/instant.js';
 import type { TrackEvent } from '../../track/events.js';
 import { blankInstant, Tracker } from '../../track/tracker.js';
 import {
@@ -18,9 +18,12 @@ import type { Actor, OperatorAct, RareInput } from '../inputs.js';
 import { beltOf, guardConfigOf } from '../rig/parts.js';
 import type { Rig, RigOutput } from '../rig/rig.js';
 import { configureOutputs, syncSeed } from './boardSetup.js';
+import { ButtonBox } from './buttonBox.js';
+import { ChoiceWatch } from './choiceWatch.js';
 import type { CoreOutput } from './coreOutput.js';
-import { Firings } from './firings.js';
+import { BY_HAND, Firings } from './firings.js';
 import { Holds } from './holds.js';
+import { Marks } from './marks.js';
 
 export interface SessionSetup {
   readonly rig: Rig;
@@ -30,6 +33,8 @@ export interface SessionSetup {
   readonly seed: string;
   /** Given to this animal earlier today, by the records of its sessions. */
   readonly waterTodayNl: number;
+  /** Told why rules were not tried; a rehearsal asks. */
+  readonly inquiry?: Inquiry;
 }
 
 /** After the end, the outcomes of what was cut short are waited for this long. */
@@ -37,6 +42,7 @@ const DRAIN_US = 500_000;
 /** Ids that a killed loop may have sent after the last that it recorded. */
 const RESUME_SKIP = 1_000;
 const EVERYTHING = 0xffff;
+const HAND = 'nothing can be asked for at once while a hand is on the belt';
 
 /**
  * The whole of a session between its inputs and its commands: track, decide, guard, command.
@@ -52,6 +58,9 @@ export class SessionCore {
   readonly guard: Guard;
   readonly holds: Holds;
   readonly firings: Firings;
+  readonly marks = new Marks();
+  /** Which of the operator's changes the board has yet to confirm. */
+  readonly changes: ChoiceWatch;
   readonly rig: Rig;
   readonly #setup: SessionSetup;
   readonly #out: CoreOutput;
@@ -69,6 +78,7 @@ export class SessionCore {
   #drainedUs = 0;
   #licks = 0;
   #handOnBelt = false;
+  readonly #buttons: ButtonBox;
 
   constructor(setup: SessionSetup, out: CoreOutput) {
     this.#setup = setup;
@@ -78,7 +88,19 @@ export class SessionCore {
     this.guard = new Guard(guardConfigOf(setup.rig, setup.waterTodayNl));
     this.holds = new Holds(this.guard);
     this.firings = new Firings(this.#firingContext());
-    this.engine = new RulesEngine(setup.program, setup.seed, this.#actuator(), this.#journal());
+    this.changes = new ChoiceWatch(
+      setup.program,
+      (rule) => this.firings.armedSinceUs(rule),
+      (decision) => this.#tell(decision),
+    );
+    this.#buttons = this.#buttonBox();
+    this.engine = new RulesEngine(
+      setup.program,
+      setup.seed,
+      this.#actuator(),
+      this.#journal(),
+      setup.inquiry,
+    );
   }
 
   /** Sequence number of the newest input; -1 before the first. */
@@ -157,6 +179,11 @@ export class SessionCore {
       case 'operator':
         this.#operator(input.act, input.by);
         break;
+      case 'alarm': {
+        const { kind, alarm, raised, level, text, remedy } = input;
+        this.#tell({ kind, alarm, state: raised ? 'raised' : 'cleared', level, text, remedy });
+        break;
+      }
       case 'resume':
         this.firings.skipIds(RESUME_SKIP);
         this.#tell({ kind: 'link', state: 'resumed', reason: input.note });
@@ -171,8 +198,10 @@ export class SessionCore {
   #advance(): void {
     const { instant } = this;
     if (this.#state === 'running') {
+      this.#buttons.step(instant);
       if (!this.#handOnBelt) this.engine.step(instant);
       this.firings.check(instant.nowUs);
+      this.changes.step(instant.nowUs);
       // Allowances are right only while nothing is under way.
       if (this.#configureDue && this.firings.settled) this.#configure();
     } else if (this.#state === 'ending') {
@@ -199,6 +228,7 @@ export class SessionCore {
     this.#state = 'running';
     this.#configure();
     this.#tell({ kind: 'session began', title: this.#setup.title, seed: this.#setup.seed });
+    this.#buttons.begin(this.instant);
     this.engine.begin(this.instant);
   }
 
@@ -291,6 +321,7 @@ export class SessionCore {
         break;
       case 'hold':
         this.#hold(act.what, act.on, `held by ${by.who}`);
+        if (act.on) this.#quietKind(act.what === 'water' ? 'valve' : 'stimulus');
         break;
       case 'phase':
         this.engine.goTo(act.to);
@@ -300,9 +331,33 @@ export class SessionCore {
         this.#tell({ kind: 'cell began', index: this.engine.cell, fields: act.fields });
         break;
       case 'exclude lap':
+      case 'controls':
+      case 'acknowledge':
         break;
-      case 'note':
-        this.#tell({ kind: 'note', text: act.text });
+      case 'note': {
+        const { mark = null, boardUs: markedUs = null } = this.marks.word(act.mark) ?? {};
+        this.#tell({ kind: 'note', text: act.text, mark, markedUs });
+        break;
+      }
+      case 'mark': {
+        const { nowUs: boardUs, lap, placed, positionCm } = this.instant;
+        const { mark } = this.marks.make({ boardUs, lap, positionCm: placed ? positionCm : null });
+        this.#tell({ kind: 'note', text: '', mark, markedUs: boardUs });
+        break;
+      }
+      case 'ask':
+        if (this.#handOnBelt && act.laps === 0) this.#remark(HAND);
+        else if (!this.engine.ask(act.rule, act.laps)) {
+          this.#remark(`the rules file does not let ${act.rule} be asked for so`);
+        }
+        break;
+      case 'withdraw':
+        this.engine.withdraw(act.rule);
+        break;
+      case 'put off':
+        if (!this.engine.putOff(act.laps, act.minutes)) {
+          this.#remark('the end has been put off as far as it may be');
+        }
         break;
       case 'stop everything':
         this.#quiet();
@@ -326,6 +381,14 @@ export class SessionCore {
   #quiet(): void {
     const syncBit = this.rig.sync === undefined ? 0 : 1 << this.rig.sync.line;
     this.#out.command('quiet', { outputs: EVERYTHING & ~syncBit });
+  }
+
+  /** What has begun ends now, too. */
+  #quietKind(kind: RigOutput['kind']): void {
+    const outputs = this.rig.outputs
+      .filter((output) => output.kind === kind)
+      .reduce((mask, { line }) => mask | (1 << line), 0);
+    if (outputs !== 0) this.#out.command('quiet', { outputs });
   }
 
   #hand(on: boolean, who: string): void {
@@ -376,6 +439,24 @@ export class SessionCore {
       default:
         this.#tell(event);
     }
+  }
+
+  #buttonBox(): ButtonBox {
+    const { instant } = this;
+    const state = {
+      get lap() {
+        return instant.lap;
+      },
+      isHeld: (what: 'stimulus' | 'water') => this.holds.isHeldBy(what, 'operator'),
+    };
+    return new ButtonBox(this.rig.buttons, state, (act, from) =>
+      this.#operator(act, { who: 'button box', from }),
+    );
+  }
+
+  /** What Lapwing says of itself among the notes. */
+  #remark(text: string): void {
+    this.#tell({ kind: 'note', text, mark: null, markedUs: null });
   }
 
   #tell(decision: Decision): void {
@@ -441,7 +522,13 @@ export class SessionCore {
       phaseBegan: (phase, index, reason) =>
         this.#tell({ kind: 'phase began', phase, index, reason }),
       cellBegan: () => {},
-      noted: (rule, serial) => this.#tell({ kind: 'note', text: `${name(rule)} ${serial}` }),
+      noted: (rule, serial) => this.#remark(`${name(rule)} ${serial}`),
+      chosen: (choice, value) => this.changes.inForce(choice, value, this.instant.nowUs),
+      endForeseen: (laps, us, exact, reason) =>
+        this.#tell({
+          ...{ kind: 'end foreseen', laps: Number.isNaN(laps) ? null : laps, exact, reason },
+          s: Number.isNaN(us) ? null : us / 1_000_000,
+        }),
     };
   }
 
@@ -450,6 +537,7 @@ export class SessionCore {
   }
 
   #ruleName(rule: number): string {
+    if (rule === BY_HAND) return 'by hand';
     return this.#setup.program.rules[rule]?.name ?? `rule ${rule}`;
   }
 }
