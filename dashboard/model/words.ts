@@ -119,6 +119,12 @@ function atPlace(cm: number | null): string {
   return cm === null ? '' : ` at ${fixed(cm, 1)} cm`;
 }
 
+function controlsWords(holder: string | null, before: string | null): string {
+  if (holder === null) return `gave up the controls${before === null ? '' : ` that ${before} had`}`;
+  if (holder === before) return `${holder} holds the controls`;
+  return before === null ? 'took the controls' : `took the controls from ${before}`;
+}
+
 /** An operator's act, as others read it. */
 export function actWords(act: OperatorAct): string {
   switch (act.act) {
@@ -142,6 +148,8 @@ export function actWords(act: OperatorAct): string {
       return 'allowed stimulation';
     case 'hand on belt':
       return act.on ? 'put a hand on the belt' : 'took the hand off the belt';
+    case 'controls':
+      return controlsWords(act.holder, act.before);
     case 'end':
       return `ended the session: ${act.reason}`;
     default:

@@ -51,6 +51,9 @@ export function checkAct(
     case 'hand on belt':
       if (typeof act.on !== 'boolean') throw bad('`on` must be true or false');
       return;
+    case 'controls':
+      for (const name of [act.holder, act.before]) if (name !== null) text('name', name);
+      return;
     case 'end':
       text('reason', act.reason);
       return;

@@ -4,12 +4,13 @@ import { LapwingError } from '../errors/codes.js';
 import type { LoopOptions, LoopReport } from '../loop/options.js';
 import { rigAddress } from '../loop/rigLock.js';
 import type { Rig } from '../session/rig/rig.js';
+import { type Listening, listeningArguments } from '../web/listening.js';
 import { simulatedRigArguments } from './simulatedRigFor.js';
 
 export interface LaunchPlan {
   readonly rig: Rig;
   readonly loop: LoopOptions;
-  readonly web?: { readonly host: string; readonly port: number };
+  readonly web?: Listening;
   /** Arguments for the simulated rig, when the rig file's port is `simulated` or `emulated`. */
   readonly simulatedRig?: readonly string[];
 }
@@ -28,6 +29,7 @@ const MOST_RESTARTS = 8;
 const RESTART_WINDOW_MS = 60_000;
 const RESTART_DELAY_MS = 50;
 const CANNOT_RUN = 2;
+const WEB_AGAIN_MS = 5_000;
 
 /**
  * Starts the loop and the web process (and the simulated rig, where the rig file asks for it), and
@@ -159,8 +161,8 @@ export class Launcher {
   }
 
   #startWeb(): void {
-    const { host } = this.#plan.web!;
-    const port = this.#webPort ?? this.#plan.web!.port;
+    const plan = this.#plan.web!;
+    const listening = { ...plan, port: this.#webPort ?? plan.port };
     const { socketPath, tokenFile } = rigAddress(this.#plan.rig.name);
     const log = process.env.LAPWING_LOG ?? 'warn';
     const { rigPath, rulesFolder, animalsFolder } = this.#plan.loop;
@@ -169,7 +171,7 @@ export class Launcher {
       ...['--records', this.#plan.loop.recordFolder ?? this.#plan.rig.recordFolder],
       ...(rulesFolder === undefined ? [] : ['--rules-folder', rulesFolder]),
       ...(animalsFolder === undefined ? [] : ['--animals-folder', animalsFolder]),
-      ...['--host', host, '--port', String(port), '--log', log],
+      ...[...listeningArguments(listening), '--log', log],
     ]);
     this.#web = child;
     firstLine(child).then(
@@ -193,8 +195,16 @@ export class Launcher {
     });
   }
 
-  /** The page is a guest of a session that runs; without a session, it is all there is. */
+  /**
+   * The page is a guest of a session that runs; without a session, it is all there is. One that could
+   * be served before (a certificate was replaced by half, say) is tried again: a session may run.
+   */
   #webCannotRun(): void {
+    if (this.#webPort !== undefined) {
+      this.#events.restarted('web', 'cannot be served for now');
+      setTimeout(() => !this.#stopping && !this.#web && this.#startWeb(), WEB_AGAIN_MS);
+      return;
+    }
     if (this.#plan.loop.exitWhenEnded) return;
     this.#failure = new Error('the page cannot be served');
     this.stop();

@@ -3,6 +3,7 @@ import { LocalClient } from '../loop/localClient.js';
 import type { BeginOptions } from '../loop/options.js';
 import { rigAddress } from '../loop/rigLock.js';
 import type { Rig } from '../session/rig/rig.js';
+import type { Listening } from '../web/listening.js';
 import { Launcher } from './launcher.js';
 import { StatusLine } from './statusLine.js';
 import { tellPortWarnings } from './tellWarnings.js';
@@ -12,7 +13,7 @@ export interface LiveOptions {
   readonly rigPath: string;
   readonly begin?: BeginOptions;
   readonly resume?: boolean;
-  readonly web?: { readonly host: string; readonly port: number };
+  readonly web?: Listening;
   readonly recordFolder?: string;
   readonly rulesFolder?: string;
   readonly animalsFolder?: string;

@@ -13,6 +13,7 @@ import { explainCommand } from './explain.js';
 import { exportCommand } from './export.js';
 import { flashCommand } from './flash.js';
 import { mendCommand } from './mend.js';
+import { peopleCommand } from './people.js';
 import { portsCommand } from './ports.js';
 import { quietCommand } from './quiet.js';
 import { rehearseCommand } from './rehearse.js';
@@ -29,6 +30,7 @@ const program = new Command('lapwing')
   .version(packageVersion)
   .addCommand(demoCommand())
   .addCommand(serveCommand())
+  .addCommand(peopleCommand())
   .addCommand(runCommand())
   .addCommand(resumeCommand())
   .addCommand(rehearseCommand())

@@ -24,6 +24,15 @@ export type EngineInput =
   | { readonly kind: 'gap'; readonly frames: number }
   | { readonly kind: 'bad frame'; readonly why: string }
   | { readonly kind: 'operator'; readonly act: OperatorAct; readonly by: Actor }
+  /** The loop raises an alarm or clears one: told and recorded, and nothing is decided by it. */
+  | {
+      readonly kind: 'alarm';
+      readonly alarm: string;
+      readonly raised: boolean;
+      readonly level: AlarmLevel;
+      readonly text: string;
+      readonly remedy: string;
+    }
   /** The loop came back: what was recorded has been replayed, and this follows it. */
   | { readonly kind: 'resume'; readonly note: string }
   /** The session begins; its ids go on from those that the board knows already. */
@@ -31,6 +40,9 @@ export type EngineInput =
 
 /** Inputs that come a few times a second at most: all but the sample. */
 export type RareInput = Exclude<EngineInput, { kind: 'sample' }>;
+
+/** `note` tells, `warn` wants a look, `bad` wants a hand. */
+export type AlarmLevel = 'note' | 'warn' | 'bad';
 
 /** Who did it and from where: `keyboard`, `dashboard 127.0.0.1`, `button box`. */
 export interface Actor {
@@ -45,11 +57,23 @@ export type OperatorAct =
   | { readonly act: 'phase'; readonly to: string | 'next' | 'previous' | 'repeat' }
   | { readonly act: 'new cell'; readonly fields: Readonly<Record<string, string>> }
   | { readonly act: 'exclude lap'; readonly lap: number }
-  | { readonly act: 'note'; readonly text: string }
+  /** A note; `mark` is the number of the mark that it puts into words. */
+  | { readonly act: 'note'; readonly text: string; readonly mark?: number }
+  /** Something is seen now; the words may come later. */
+  | { readonly act: 'mark' }
+  /** A rule in the next so many laps, whatever its `if` says; 0: at once. */
+  | { readonly act: 'ask'; readonly rule: string; readonly laps: number }
+  | { readonly act: 'withdraw'; readonly rule: string }
+  /** The session's end, once it has come by itself, waits so long. */
+  | { readonly act: 'put off'; readonly laps: number; readonly minutes: number }
+  /** An alarm was seen; `all` are those that are on now. */
+  | { readonly act: 'acknowledge'; readonly alarm: string }
   /** Stop everything: all outputs idle, stimuli and water held until released; recording goes on. */
   | { readonly act: 'stop everything' }
   /** After a board restart or a watchdog trip, stimulation waits for this. */
   | { readonly act: 'allow stimulation' }
   /** A hand turns the belt: nothing counts, nothing is given, until the next mark after it is off. */
   | { readonly act: 'hand on belt'; readonly on: boolean }
+  /** The controls went from one person to another: names, null for nobody. Decides nothing. */
+  | { readonly act: 'controls'; readonly holder: string | null; readonly before: string | null }
   | { readonly act: 'end'; readonly reason: string };

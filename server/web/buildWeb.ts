@@ -2,32 +2,36 @@
  * The web process's server: a guest of the loop. It mirrors what the loop says to any number of
  * pages, and passes on what an operator asks.
  *
- * There is no sign-in: it may be bound to loopback only, where whoever can reach it can also reach
- * the rig's own processes.
+ * On loopback there is no sign-in: whoever can reach it can also reach the rig's own processes. Over
+ * the network people sign in (`access/`).
  */
 import type { Socket } from 'node:net';
 import fastifyStatic from '@fastify/static';
-import Fastify, { type FastifyInstance, type FastifyRequest, LogController } from 'fastify';
+import Fastify, { type FastifyInstance, LogController } from 'fastify';
 import { LapwingError } from '../errors/codes.js';
-import { type Beginning, LocalClient, quietOnce } from '../loop/localClient.js';
 import { packageVersion } from '../packageRoot.js';
-import type { OperatorAct } from '../session/inputs.js';
 import type { Rig } from '../session/rig/rig.js';
-import { checkAct } from './acts.js';
-import { checkSender, RateLimit, SECURITY_HEADERS } from './gates.js';
+import { Access } from './access/access.js';
+import type { AccessFiles } from './access/people.js';
+import { addAccessRoutes, youOf } from './access/routes.js';
+import type { Cost } from './access/secrets.js';
+import { Door, guardRoutes } from './door.js';
+import { httpServer, SOCKET_LIMITS, type SocketLimits } from './httpServer.js';
+import { Jobs } from './jobs/jobs.js';
+import { addJobRoutes } from './jobs/routes.js';
+import { type LoopPlace, LoopSide } from './loopSide.js';
 import { Mirror } from './mirror.js';
 import { openapi } from './openapi.js';
 import { PROBLEM_TYPE, problem, problemFrom, sendProblem } from './problems.js';
+import { addRecordsRoutes } from './records/routes.js';
 import type { Rehearsals } from './rehearsal/rehearsals.js';
 import { addRulesRoutes } from './rules/routes.js';
-import { bodies } from './schemas.js';
+import { Senders } from './senders.js';
+import { addSessionRoutes } from './sessionRoutes.js';
 import { STREAM_LIMITS, Stream, type StreamLimits } from './stream.js';
+import type { TlsFiles } from './tls.js';
 
-export interface WebOptions {
-  /** The loop's socket and its token, given or in a file. */
-  readonly socketPath: string;
-  readonly token?: string;
-  readonly tokenFile?: string;
+export interface WebOptions extends LoopPlace {
   /** The built dashboard; without it only the HTTP interface is served. */
   readonly dashboard?: string;
   readonly version?: string;
@@ -35,15 +39,25 @@ export interface WebOptions {
   readonly rig?: Rig | undefined;
   readonly rulesFolder?: string;
   readonly rehearsals?: Rehearsals;
+  /** Where the sessions are; absolute. */
+  readonly records?: string;
+  readonly jobs?: Jobs;
   /** Further host names that this service answers to, without port. */
   readonly allowedHosts?: readonly string[];
+  /** Who may sign in, and who is signed in; without them nobody needs to (loopback). */
+  readonly access?: AccessFiles | undefined;
+  /** Of hashes made for nobody; tests take a cheap one. */
+  readonly hashCost?: Cost;
+  readonly tls?: TlsFiles | undefined;
+  /** Reverse proxies whose word on callers is believed: addresses or subnets. */
+  readonly proxies?: readonly string[];
   /** `false` is silent; else pino's level, to stderr. */
   readonly log?: string | false;
   readonly limits?: Partial<StreamLimits>;
+  readonly sockets?: Partial<SocketLimits>;
   /** Events kept for pages that join: forty laps of a busy session. */
   readonly keepEvents?: number;
   readonly requestsPerS?: number;
-  readonly loopTimeoutMs?: number;
 }
 
 const BODY_BYTES = 16 << 10;
@@ -52,6 +66,8 @@ const FOR_GOOD = 'public, max-age=31536000, immutable';
 
 /** Builds the server and begins to look for the loop; `listen` and `close` are Fastify's. */
 export function buildWeb(options: WebOptions): FastifyInstance {
+  const senders = new Senders(options.proxies);
+  const version = options.version ?? packageVersion;
   const app = Fastify({
     bodyLimit: BODY_BYTES,
     logger:
@@ -60,7 +76,9 @@ export function buildWeb(options: WebOptions): FastifyInstance {
         : { level: options.log ?? 'info', stream: process.stderr, base: { from: 'web' } },
     logController: new LogController({ disableRequestLogging: true }),
     forceCloseConnections: true,
-    requestTimeout: 10_000,
+    trustProxy: (address) => senders.isProxy(address),
+    serverFactory: (handler) =>
+      httpServer(handler, options.tls, senders, { ...SOCKET_LIMITS, ...options.sockets }),
     ajv: {
       customOptions: {
         removeAdditional: false,
@@ -72,90 +90,36 @@ export function buildWeb(options: WebOptions): FastifyInstance {
     },
   });
   const mirror = new Mirror(options.keepEvents ?? 6000);
-  const loop = makeClient(options, mirror, (message) => stream.announce(message));
   const stream = new Stream(
     mirror,
-    stopEverything,
     app.log,
     { ...STREAM_LIMITS, ...options.limits },
-    options.version ?? packageVersion,
+    {
+      version,
+      you: (visitor) => youOf(visitor, access),
+      controls: () => (access.signInUsed ? access.controls.now : undefined),
+      quiet: (by) => loop.stopEverything(by),
+      seen: (signIn) => access.signIns.seen(signIn),
+    },
   );
-  const allowedHosts = new Set((options.allowedHosts ?? []).map((host) => host.toLowerCase()));
-  const perS = options.requestsPerS ?? 40;
-  const rate = new RateLimit(perS, perS * 4);
-
-  function makeClient(
-    { socketPath, token, tokenFile, loopTimeoutMs }: WebOptions,
-    into: Mirror,
-    announce: Stream['announce'],
-  ): LocalClient {
-    return new LocalClient({
-      socketPath,
-      ...(token === undefined ? {} : { token }),
-      ...(tokenFile === undefined ? {} : { tokenFile }),
-      ...(loopTimeoutMs === undefined ? {} : { requestTimeoutMs: loopTimeoutMs }),
-      client: 'web',
-      fromOldest: true,
-      callbacks: {
-        up: (hello) => {
-          app.log.info({ rig: hello.rig }, 'connected to the loop');
-          into.beginLife();
-          stream.startOver();
-        },
-        down: (why) => {
-          app.log.warn({ code: why.code }, `the loop is away: ${why.message}`);
-          into.loseLoop(why.message, why.remedy);
-          announce(into.loop);
-        },
-        setup: (setup) => {
-          into.setup = setup;
-          announce({ tell: 'setup', setup });
-        },
-        state: (state) => {
-          into.takeState(state);
-          stream.changed();
-        },
-        events: (events) => {
-          into.takeEvents(events);
-          stream.changed();
-        },
-      },
-    });
-  }
-
-  /** Over the standing connection; and, if that fails in any way, over one of its own. */
-  async function stopEverything(): Promise<void> {
-    try {
-      await loop.quiet();
-    } catch {
-      await quietOnce({ ...options, requestTimeoutMs: options.loopTimeoutMs ?? 2000 });
-    }
-  }
-
-  app.addHook('onRequest', async (request, reply) => {
-    reply.headers(SECURITY_HEADERS);
-    if (request.url.startsWith('/api/')) reply.header('cache-control', 'no-store');
-    checkSender(request.raw, allowedHosts);
-    if (!isQuiet(request) && !rate.take(request.ip)) {
-      reply.header('retry-after', '1');
-      throw new LapwingError('webTooManyRequests', `More than ${perS} requests a second.`);
-    }
+  const loop = new LoopSide(options, mirror, stream, app.log, () => access.tellSession());
+  const access = new Access({
+    files: options.access,
+    ...(options.hashCost ? { cost: options.hashCost } : {}),
+    viewersMayHold: options.rig?.viewersMayHold ?? false,
+    log: app.log,
+    record: (act, by) => loop.record(act, by),
+    ended: (signIns) => stream.signedOut(signIns),
+    heldChanged: (controls) => stream.announce({ tell: 'controls', controls }),
   });
-  app.setErrorHandler((error, _request, reply) => {
-    const body = problemFrom(error);
-    if (body.status === 500) app.log.error(error);
-    return sendProblem(reply, body);
-  });
-  app.setNotFoundHandler((request, reply) => {
-    return sendProblem(
-      reply,
-      problem('webNotFound', `${request.method} ${request.url.slice(0, 200)}`),
-    );
-  });
+  const hosts = new Set((options.allowedHosts ?? []).map((host) => host.toLowerCase()));
+  const door = new Door(senders, hosts, options.requestsPerS ?? 40, access);
+  const needs = guardRoutes(app, door, access);
+  answerProblems(app);
   // Only JSON: a form from another site cannot send that without asking first (CSRF).
   app.removeContentTypeParser('text/plain');
 
-  app.get('/healthz', async () => ({
+  app.get('/healthz', { config: { needs: 'nothing' } }, async () => ({
     status: 'ok',
     loop: mirror.loop.state,
     clients: stream.clients,
@@ -163,48 +127,10 @@ export function buildWeb(options: WebOptions): FastifyInstance {
     uptimeS: Math.floor(process.uptime()),
     memoryMb: Math.round(process.memoryUsage.rss() / 1e6),
   }));
-  const description = openapi(options.version ?? packageVersion);
-  app.get('/api/openapi.json', async () => description);
-  app.get('/api/setup', async () => mirror.setup ?? raise(loop));
-  app.get('/api/state', async () => mirror.state ?? raise(loop));
-
-  app.post<{ Body: Beginning }>(
-    '/api/session',
-    { schema: { body: bodies.begin } },
-    async (request) => {
-      const { rules } = request.body;
-      // Only a file that the loop offered, or that lies in its folder by now: no path from a request reaches the file system.
-      const offered = [...(mirror.setup?.rulesFiles ?? []), ...(rulesFolder?.list() ?? [])];
-      if (mirror.setup && !offered.includes(rules)) {
-        throw new LapwingError('webActUnknown', `There is no rules file ${JSON.stringify(rules)}.`);
-      }
-      await loop.begin(request.body);
-      return { done: true };
-    },
-  );
-  app.post<{ Body: { act: OperatorAct; who?: string } }>(
-    '/api/acts',
-    { schema: { body: bodies.act } },
-    async (request) => {
-      const { act, who } = request.body;
-      checkAct(act, mirror.setup);
-      await loop.act(act, who ?? 'operator', `dashboard ${request.ip}`);
-      return { done: true };
-    },
-  );
-  app.post<{ Body: { reason?: string } }>(
-    '/api/end',
-    { schema: { body: bodies.end } },
-    async (request) => {
-      await loop.end(request.body.reason || 'ended from the dashboard');
-      return { done: true };
-    },
-  );
-  app.post('/api/quiet', { schema: { body: bodies.quiet } }, async () => {
-    await stopEverything();
-    return { done: true };
-  });
-
+  const description = openapi(version, needs);
+  app.get('/api/openapi.json', async () => description());
+  addAccessRoutes(app, access);
+  addSessionRoutes(app, loop, mirror, access, () => rulesFolder?.list() ?? []);
   const rulesFolder = addRulesRoutes(app, {
     rig: options.rig,
     rulesFolder: options.rulesFolder,
@@ -216,49 +142,64 @@ export function buildWeb(options: WebOptions): FastifyInstance {
     },
   });
 
+  const jobs = options.jobs ?? new Jobs();
+  addJobRoutes(app, jobs);
+  addRecordsRoutes(app, { records: options.records, rules: rulesFolder, jobs });
+
   app.server.on('upgrade', (request, socket: Socket, head) => {
     socket.on('error', () => socket.destroy());
     try {
       if (request.url?.split('?')[0] !== '/api/stream') {
         throw new LapwingError('webNotFound', 'The stream is at /api/stream.');
       }
-      checkSender(request, allowedHosts);
-      if (!rate.take(socket.remoteAddress ?? '')) {
-        throw new LapwingError('webTooManyRequests', 'Too many connections at once.');
-      }
+      const sender = door.senderOf(request);
+      const visitor = door.admit(request, sender);
+      access.check(visitor, 'signed in');
       if (stream.full) throw new LapwingError('webTooManyViewers', 'No more fit.');
-      stream.accept(request, socket, head);
+      stream.accept(request, socket, head, { visitor: visitor!, address: sender.address });
     } catch (error) {
       refuseUpgrade(socket, error);
     }
   });
 
-  if (options.dashboard !== undefined) {
-    app.register(fastifyStatic, {
-      root: options.dashboard,
-      index: 'index.html',
-      cacheControl: false,
-      // Names under assets/ carry a hash of their content.
-      setHeaders: (response, path) => {
-        const lasting = /[/\\]assets[/\\]/.test(path);
-        response.setHeader('cache-control', lasting ? FOR_GOOD : 'no-cache');
-      },
-    });
-  }
-
+  if (options.dashboard !== undefined) serveDashboard(app, options.dashboard);
   app.addHook('preClose', () => stream.close());
-  app.addHook('onClose', async () => loop.close());
-  loop.watch(20);
+  app.addHook('onClose', async () => {
+    access.close();
+    loop.client.close();
+  });
   loop.start();
   return app;
 }
 
-function isQuiet(request: FastifyRequest): boolean {
-  return request.method === 'POST' && request.url === '/api/quiet';
+function answerProblems(app: FastifyInstance): void {
+  app.setErrorHandler((error, _request, reply) => {
+    const body = problemFrom(error);
+    if (body.status === 500) app.log.error(error);
+    if (body.status === 401) reply.header('www-authenticate', 'Lapwing sign-in="/api/sign-in"');
+    if (body.status === 429) {
+      const { retryAfterS = 1 } = error as { retryAfterS?: number };
+      reply.header('retry-after', String(retryAfterS));
+    }
+    return sendProblem(reply, body);
+  });
+  app.setNotFoundHandler((request, reply) => {
+    const found = `${request.method} ${request.url.slice(0, 200)}`;
+    return sendProblem(reply, problem('webNotFound', found));
+  });
 }
 
-function raise(loop: LocalClient): never {
-  throw loop.failure ?? new LapwingError('loopAway', 'The loop has said nothing yet.');
+function serveDashboard(app: FastifyInstance, root: string): void {
+  app.register(fastifyStatic, {
+    root,
+    index: 'index.html',
+    cacheControl: false,
+    // Names under assets/ carry a hash of their content.
+    setHeaders: (response, path) => {
+      const lasting = /[/\\]assets[/\\]/.test(path);
+      response.setHeader('cache-control', lasting ? FOR_GOOD : 'no-cache');
+    },
+  });
 }
 
 function refuseUpgrade(socket: Socket, error: unknown): void {

@@ -2,6 +2,7 @@
 import type { IncomingMessage } from 'node:http';
 import { isIP } from 'node:net';
 import { LapwingError } from '../errors/codes.js';
+import { plainAddress } from './senders.js';
 
 const LOOPBACK_NAMES = new Set(['localhost', '127.0.0.1', '[::1]']);
 
@@ -14,18 +15,27 @@ export function isLoopback(host: string): boolean {
  * Refuses a request that names another host (DNS rebinding: a hostile page whose name was made to
  * point here) or that a browser says comes from another site. A caller that is no browser sends no
  * origin, and holds no cookie that could be abused.
+ *
+ * The bare address that the caller connected to is always ours: no name can be made to point at it.
+ *
+ * @param hosts names that this service answers to, lower case, without port
+ * @param secure the caller came over TLS
  */
-export function checkSender(request: IncomingMessage, allowedHosts: ReadonlySet<string>): void {
+export function checkSender(
+  request: IncomingMessage,
+  hosts: ReadonlySet<string>,
+  secure: boolean,
+): void {
   const host = request.headers.host ?? '';
   const bare = host.replace(/:\d+$/, '').toLowerCase();
-  if (!LOOPBACK_NAMES.has(bare) && !allowedHosts.has(bare)) {
+  if (!LOOPBACK_NAMES.has(bare) && !hosts.has(bare) && !isWhereItCame(request, bare)) {
     throw new LapwingError(
       'webHostRefused',
       `Asked for host ${JSON.stringify(host.slice(0, 80))}.`,
     );
   }
   const { origin } = request.headers;
-  if (origin !== undefined && !sameOrigin(origin, host)) {
+  if (origin !== undefined && !sameOrigin(origin, host, secure)) {
     throw new LapwingError('webOriginRefused', `Origin ${JSON.stringify(origin.slice(0, 80))}.`);
   }
   const site = request.headers['sec-fetch-site'];
@@ -35,12 +45,17 @@ export function checkSender(request: IncomingMessage, allowedHosts: ReadonlySet<
   }
 }
 
-function sameOrigin(origin: string, host: string): boolean {
+function isWhereItCame(request: IncomingMessage, bareHost: string): boolean {
+  const literal = bareHost.replace(/^\[(.*)\]$/, '$1');
+  return isIP(literal) !== 0 && literal === plainAddress(request.socket.localAddress);
+}
+
+/** Over TLS a page that came without it is another site: anybody on the way may have written it. */
+function sameOrigin(origin: string, host: string, secure: boolean): boolean {
   try {
     const url = new URL(origin);
-    return (
-      (url.protocol === 'http:' || url.protocol === 'https:') && url.host === host.toLowerCase()
-    );
+    const protocols = secure ? ['https:'] : ['http:', 'https:'];
+    return protocols.includes(url.protocol) && url.host === host.toLowerCase();
   } catch {
     return false;
   }
@@ -81,6 +96,9 @@ export class RateLimit {
     }
   }
 }
+
+/** Over TLS: browsers come back over TLS only, for half a year (RFC 6797). */
+export const STRICT_TRANSPORT = 'max-age=15724800';
 
 /**
  * No inline script or style, nothing from elsewhere, no framing. Chosen after the OWASP Secure

@@ -1,20 +1,37 @@
 /** The HTTP interface in OpenAPI 3.1, served at `/api/openapi.json`; made of the same schemas that check. */
 import { ERRORS } from '../errors/codes.js';
+import { accessPaths, accessSchemas, SECURITY_SCHEMES, securityOf } from './access/description.js';
+import type { Needs } from './door.js';
 import { asks, json, problems, ref, shows } from './openapiParts.js';
 import { recordsPaths } from './records/description.js';
 import { recordsSchemas } from './records/schemas.js';
 import { rulesSchemas } from './rules/answerSchemas.js';
 import { bodies } from './schemas.js';
 
-/** The description, with the program's version. */
-export function openapi(version: string): Record<string, unknown> {
+/**
+ * Makes the description once every route is there, with the program's version.
+ * @param needs what each route wants of whoever asks, as it is enforced
+ */
+export function openapi(version: string, needs: Needs): () => Record<string, unknown> {
+  let made: Record<string, unknown> | undefined;
+  return () => {
+    if (!made) {
+      const described = describe(version);
+      made = { ...described, paths: securityOf(described.paths, needs) };
+    }
+    return made;
+  };
+}
+
+function describe(version: string) {
   return {
     openapi: '3.1.0',
     info: {
       title: 'Lapwing',
       version,
       description:
-        'Watch and steer the session of one rig. Bound to this machine; there is no sign-in. ' +
+        'Watch and steer the session of one rig. On the rig itself there is no sign-in; over the ' +
+        'network a cookie says who asks, and `x-needs` of each request what it wants of them. ' +
         'Requests that change something are JSON, and from a browser only of the same origin. ' +
         'The live stream is a websocket at /api/stream (server/web/HTTP.md).',
     },
@@ -74,11 +91,14 @@ export function openapi(version: string): Record<string, unknown> {
         },
       },
       ...recordsPaths,
+      ...accessPaths,
       '/api/openapi.json': shows('This description.', ref('Object')),
       '/healthz': shows('Whether this process lives and has the loop.', ref('Object')),
     },
     components: {
+      securitySchemes: SECURITY_SCHEMES,
       schemas: {
+        ...accessSchemas,
         Begin: bodies.begin,
         Act: bodies.act,
         End: bodies.end,

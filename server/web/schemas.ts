@@ -1,7 +1,11 @@
 /** JSON Schema of every body that the HTTP interface takes. Unknown fields are refused everywhere. */
 
-const text = (maxLength: number, minLength = 0) => ({ type: 'string', minLength, maxLength });
-const closed = (required: string[], properties: Record<string, unknown>) => ({
+export const text = (maxLength: number, minLength = 0) => ({
+  type: 'string',
+  minLength,
+  maxLength,
+});
+export const closed = (required: string[], properties: Record<string, unknown>) => ({
   type: 'object',
   additionalProperties: false,
   required,
@@ -52,6 +56,12 @@ export const bodies = {
   act: closed(['act'], { act: operatorAct, who }),
   end: closed([], { reason: text(200) }),
   quiet: closed([], {}),
+  signIn: closed(['name', 'secret'], { name: text(64, 1), secret: text(128, 1) }),
+  signOut: closed([], { everywhere: { type: 'boolean' } }),
+  controls: closed(['take'], {
+    take: { type: 'boolean' },
+    seen: { type: 'integer', minimum: 0, maximum: Number.MAX_SAFE_INTEGER },
+  }),
   checkRules: closed(['text'], { text: text(256 << 10), path: text(200, 1) }),
   saveRules: closed(['path', 'text'], {
     path: text(200, 1),

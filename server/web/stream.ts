@@ -7,6 +7,10 @@ import type { IncomingMessage } from 'node:http';
 import type { Duplex } from 'node:stream';
 import type { FastifyBaseLogger } from 'fastify';
 import { type WebSocket, WebSocketServer } from 'ws';
+import type { Actor } from '../session/inputs.js';
+import type { Held, YouMessage } from './access/accessMessages.js';
+import type { SignIn } from './access/signIns.js';
+import type { Visitor } from './access/visitor.js';
 import type { Mirror } from './mirror.js';
 import { STREAM_VERSION, type StreamMessage } from './streamMessages.js';
 
@@ -32,11 +36,32 @@ export const STREAM_LIMITS: StreamLimits = {
   pingMs: 15_000,
 };
 
+/** Who watches, as the door let them in. */
+export interface Watcher {
+  readonly visitor: Visitor;
+  readonly address: string;
+}
+
+/** What the stream needs of the rest of the service. */
+export interface StreamPort {
+  readonly version: string;
+  you(visitor: Visitor): YouMessage;
+  /** Undefined where nobody signs in. */
+  controls(): Held | undefined;
+  quiet(by: Actor): Promise<void>;
+  /** A page of this sign-in is still there. */
+  seen(signIn: SignIn): void;
+}
+
+/** Close codes of our own (RFC 6455, 7.4.2: 4000 and up are for applications). */
+export const CLOSED = { signedOut: 4401 } as const;
+
 /** Events in one message: about 60 kB, well below `softBytes`. */
 const EVENTS_A_MESSAGE = 250;
 
 interface Viewer {
   readonly socket: WebSocket;
+  readonly watcher: Watcher;
   after: number;
   stateCount: number;
   stalledSinceMs: number;
@@ -61,10 +86,9 @@ export class Stream {
 
   constructor(
     private readonly mirror: Mirror,
-    private readonly quiet: () => Promise<void>,
     private readonly log: FastifyBaseLogger,
     private readonly limits: StreamLimits,
-    private readonly version: string,
+    private readonly port: StreamPort,
   ) {
     this.ping = setInterval(() => this.checkAlive(), limits.pingMs);
     this.ping.unref();
@@ -79,7 +103,7 @@ export class Stream {
   }
 
   /** Takes over a checked upgrade request. */
-  accept(request: IncomingMessage, socket: Duplex, head: Buffer): void {
+  accept(request: IncomingMessage, socket: Duplex, head: Buffer, watcher: Watcher): void {
     const query = new URL(request.url ?? '/', 'http://any').searchParams;
     const asked = Number(query.get('after'));
     const life = query.get('life') ?? this.mirror.loop.life;
@@ -88,6 +112,7 @@ export class Stream {
       const after = known ? asked : 0;
       this.add({
         socket: ws,
+        watcher,
         after,
         stateCount: -1,
         stalledSinceMs: Number.NaN,
@@ -117,6 +142,19 @@ export class Stream {
     for (const viewer of this.viewers) viewer.socket.send(text);
   }
 
+  /** Sign-ins have ended: their pages see nothing more. */
+  signedOut(signIns: readonly SignIn[]): void {
+    for (const viewer of this.viewers) {
+      const { socket, watcher } = viewer;
+      const { signIn } = watcher.visitor;
+      if (!signIn || !signIns.includes(signIn)) continue;
+      // At once: what is told from now on is not for them.
+      this.viewers.delete(viewer);
+      socket.close(CLOSED.signedOut, 'Signed out.');
+      setTimeout(() => socket.terminate(), 1000).unref();
+    }
+  }
+
   /** Tells the clients to come back, then ends the ones that do not answer. */
   async close(): Promise<void> {
     this.closing = true;
@@ -144,7 +182,11 @@ export class Stream {
     });
     socket.on('message', (data) => this.hear(viewer, String(data)));
     const say = (message: StreamMessage) => socket.send(JSON.stringify(message));
-    say({ tell: 'welcome', version: STREAM_VERSION, lapwing: this.version });
+    const { visitor } = viewer.watcher;
+    const { version: lapwing } = this.port;
+    say({ tell: 'welcome', version: STREAM_VERSION, lapwing, you: this.port.you(visitor) });
+    const controls = this.port.controls();
+    if (controls) say({ tell: 'controls', controls });
     say(this.mirror.loop);
     if (this.mirror.setup) say({ tell: 'setup', setup: this.mirror.setup });
     this.serve(viewer);
@@ -170,7 +212,13 @@ export class Stream {
         viewer.socket.send(JSON.stringify(message));
       }
     };
-    this.quiet().then(
+    const { visitor, address } = viewer.watcher;
+    if (visitor.role !== 'operator') {
+      answer(false, `${visitor.name} is signed in as ${visitor.role}.`);
+      return;
+    }
+    const by = { who: visitor.name || 'operator', from: `dashboard ${address}` };
+    this.port.quiet(by).then(
       () => answer(true, ''),
       (error: Error) => answer(false, error.message),
     );
@@ -217,7 +265,9 @@ export class Stream {
 
   private checkAlive(): void {
     for (const viewer of this.viewers) {
+      const { signIn } = viewer.watcher.visitor;
       if (!viewer.alive) viewer.socket.terminate();
+      else if (signIn) this.port.seen(signIn);
       viewer.alive = false;
       if (viewer.socket.readyState === viewer.socket.OPEN) viewer.socket.ping();
     }

@@ -6,11 +6,19 @@
  * the newest that are kept.
  */
 import type { NumberedEvent, Setup, Snapshot } from '../loop/protocol.js';
+import type { Held, YouMessage } from './access/accessMessages.js';
 
 export const STREAM_VERSION = 1;
 
 export type StreamMessage =
-  | { readonly tell: 'welcome'; readonly version: number; readonly lapwing: string }
+  | {
+      readonly tell: 'welcome';
+      readonly version: number;
+      readonly lapwing: string;
+      readonly you: YouMessage;
+    }
+  /** Who holds the controls, where people sign in: at first and at each change. */
+  | { readonly tell: 'controls'; readonly controls: Held }
   /** Whether the web process has the loop; while it is away, whatever is shown is old. */
   | {
       readonly tell: 'loop';

@@ -1,13 +1,16 @@
 /**
  * The web process's entry: `webProcess --socket PATH --token-file FILE [--rig-file FILE]
- * [--rules-folder FOLDER] [--host H] [--port N]`.
+ * [--rules-folder FOLDER] [--records FOLDER] [--host H] [--port N] [--sign-in] [--name HOST ...]
+ * [--proxy ADDRESS ...] [--tls-cert FILE --tls-key FILE]`.
  */
 import { fileURLToPath } from 'node:url';
 import { parseArgs } from 'node:util';
 import { LapwingError } from '../errors/codes.js';
 import { readRig } from '../session/rig/readRig.js';
+import { accessFiles } from './access/people.js';
 import { buildWeb } from './buildWeb.js';
 import { isLoopback } from './gates.js';
+import { certificateWarning, readTls } from './tls.js';
 
 export const DEFAULT_PORT = 8711;
 
@@ -23,25 +26,43 @@ export async function runWeb(argv: readonly string[]): Promise<void> {
       'token-file': { type: 'string' },
       'rig-file': { type: 'string' },
       'rules-folder': { type: 'string' },
+      records: { type: 'string' },
       host: { type: 'string', default: '127.0.0.1' },
       port: { type: 'string', default: String(DEFAULT_PORT) },
+      'sign-in': { type: 'boolean', default: false },
+      name: { type: 'string', multiple: true, default: [] },
+      proxy: { type: 'string', multiple: true, default: [] },
+      'tls-cert': { type: 'string' },
+      'tls-key': { type: 'string' },
       dashboard: { type: 'string' },
       log: { type: 'string', default: 'info' },
     },
   });
   if (values.socket === undefined) throw new LapwingError('loopAway', '`--socket` is missing.');
-  if (!isLoopback(values.host))
-    throw new LapwingError('webHostNotLoopback', `--host ${values.host}`);
+  const signIn = values['sign-in'];
+  if (!signIn && (!isLoopback(values.host) || values.proxy.length > 0)) {
+    throw new LapwingError('webHostNotLoopback', `--host ${values.host} without --sign-in`);
+  }
+  const rig = values['rig-file'] === undefined ? undefined : readRig(values['rig-file']);
+  const { 'tls-cert': cert, 'tls-key': key } = values;
+  const tls = cert === undefined || key === undefined ? undefined : readTls(cert, key);
   // Beside this file in dist/: dist/server/web and dist/dashboard.
   const built = fileURLToPath(new URL('../../dashboard/', import.meta.url));
   const app = buildWeb({
     socketPath: values.socket,
     ...(values['token-file'] === undefined ? {} : { tokenFile: values['token-file'] }),
-    ...(values['rig-file'] === undefined ? {} : { rig: readRig(values['rig-file']) }),
+    ...(rig === undefined ? {} : { rig }),
+    ...(signIn ? { access: accessFiles(rig?.name ?? '') } : {}),
+    ...(tls ? { tls } : {}),
+    allowedHosts: values.name,
+    proxies: values.proxy,
     ...(values['rules-folder'] === undefined ? {} : { rulesFolder: values['rules-folder'] }),
+    ...(values.records === undefined ? {} : { records: values.records }),
     dashboard: values.dashboard ?? built,
     log: values.log === 'silent' ? false : values.log,
   });
+  const warning = tls && certificateWarning(tls, new Date());
+  if (warning) app.log.warn(warning);
   let stopping = false;
   const stop = () => {
     if (stopping) process.exit(1);

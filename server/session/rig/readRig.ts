@@ -6,7 +6,9 @@ import { LapwingError } from '../../errors/codes.js';
 import { packageRoot } from '../../packageRoot.js';
 import type { Dimension } from '../../rules/ast.js';
 import { parseQuantity } from '../../rules/units.js';
-import type { Rig, RigBelt, RigLick, RigOutput, RigSync } from './rig.js';
+import type { AlarmLevel } from '../inputs.js';
+import { NOTICE_NAMES, unknownNames } from './noticeNames.js';
+import type { Rig, RigBelt, RigButton, RigLick, RigNotify, RigOutput, RigSync } from './rig.js';
 
 const LONGEST_FILE_BYTES = 256 * 1024;
 const DEFAULT_BAUD = '500000';
@@ -32,16 +34,33 @@ interface RigText {
     hysteresis?: string;
     seam?: { input: string; offset?: string; warn?: string; stop?: string };
   };
-  inputs: Record<
-    string,
-    { line: string; use?: string; lockout?: string; stuck?: string; artefact?: string }
-  >;
+  inputs: Record<string, InputText>;
   outputs: Record<string, OutputText>;
   water: { per_session: string; per_day: string; largest_drop: string };
   sync?: { output: string; width: string; from: string; to: string };
   record?: { folder?: string; when_full?: Rig['whenFull'] };
   rules_folder?: string;
   animals?: string;
+  cell_fields?: string[];
+  notify?: {
+    url: string;
+    from?: AlarmLevel;
+    body?: string;
+    content_type?: string;
+    most_per_min?: string;
+  };
+  viewers_may?: 'only look' | 'hold stimulus';
+}
+interface InputText {
+  line: string;
+  use?: string;
+  lockout?: string;
+  stuck?: string;
+  artefact?: string;
+  does?: string;
+  pressed?: 'high' | 'low';
+  debounce?: string;
+  long_press?: string;
 }
 interface OutputText {
   line: string;
@@ -188,6 +207,7 @@ class RigBuilder {
       boardId: file.board.board_id === undefined ? undefined : Number(file.board.board_id),
       belt: this.belt(),
       lick: this.lick(),
+      buttons: this.buttons(),
       inputs: Object.entries(file.inputs).map(([name, { line }]) => ({ name, line: Number(line) })),
       outputs,
       water,
@@ -196,6 +216,9 @@ class RigBuilder {
       recordFolder: resolve(base, file.record?.folder ?? 'records'),
       rulesFolder: resolve(base, file.rules_folder ?? '.'),
       ...(file.animals === undefined ? {} : { animalsFolder: resolve(base, file.animals) }),
+      cellFields: file.cell_fields ?? [],
+      notify: this.notify(),
+      viewersMayHold: file.viewers_may === 'hold stimulus',
       path: this.path,
       text: this.text,
     };
@@ -247,6 +270,41 @@ class RigBuilder {
         artefactUs: this.amount(sensor.artefact ?? '5 ms', 'time'),
       }
     );
+  }
+
+  private buttons(): RigButton[] {
+    return Object.entries(this.file.inputs).flatMap(([name, input]) => {
+      const { use, does, pressed } = input;
+      if (use !== 'button') {
+        for (const key of ['does', 'pressed', 'debounce', 'long_press'] as const) {
+          if (input[key] !== undefined) this.report(['inputs', name, key], 'only of a button');
+        }
+        return [];
+      }
+      if (does === undefined) this.report(['inputs', name], 'a button needs to say what it `does`');
+      return {
+        ...{ name, line: Number(input.line), does: does ?? '', pressedHigh: pressed !== 'low' },
+        debounceUs: this.amount(input.debounce ?? '30 ms', 'time'),
+        longUs: this.amount(input.long_press ?? '500 ms', 'time'),
+      };
+    });
+  }
+
+  private notify(): RigNotify | undefined {
+    const { notify } = this.file;
+    if (notify === undefined) return undefined;
+    const unknown = unknownNames(notify.body ?? '');
+    if (unknown.length > 0) {
+      const known = NOTICE_NAMES.join(', ');
+      this.report(['notify', 'body'], `no name \`{${unknown[0]}}\`: expected one of ${known}`);
+    }
+    return {
+      url: notify.url,
+      from: notify.from ?? 'warn',
+      body: notify.body,
+      contentType: notify.content_type ?? 'application/json',
+      mostPerMin: Number(notify.most_per_min ?? '6'),
+    };
   }
 
   private output(name: string, output: OutputText): RigOutput {

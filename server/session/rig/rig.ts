@@ -1,4 +1,5 @@
 import type { OutputFacts, RigFacts } from '../../rules/facts.js';
+import type { AlarmLevel } from '../inputs.js';
 
 /** A rig file, read and checked; amounts in cm, microseconds, cm/s, nanolitres. */
 export interface Rig {
@@ -10,6 +11,8 @@ export interface Rig {
   readonly belt: RigBelt;
   readonly lick: RigLick | undefined;
   readonly inputs: readonly { readonly name: string; readonly line: number }[];
+  /** Inputs that are buttons. */
+  readonly buttons: readonly RigButton[];
   readonly outputs: readonly RigOutput[];
   readonly water: {
     readonly perSessionNl: number;
@@ -25,9 +28,36 @@ export interface Rig {
   readonly animalsFolder?: string;
   /** Over the network, viewers may hold the stimulus back (and never let go of it). */
   readonly viewersMayHold: boolean;
+  /** What is asked for at each new cell, in the order of the file. */
+  readonly cellFields: readonly string[];
+  /** Where alarms are sent. */
+  readonly notify: RigNotify | undefined;
   /** The file as it was read, for the session folder. */
   readonly path: string;
   readonly text: string;
+}
+
+/** One button of a button box, on an input of the board. */
+export interface RigButton {
+  readonly name: string;
+  readonly line: number;
+  /** In the rig file's words, such as `hold stimulus` or `ask induce`. */
+  readonly does: string;
+  readonly pressedHigh: boolean;
+  readonly debounceUs: number;
+  /** How long a press is that drives or releases a stimulus. */
+  readonly longUs: number;
+}
+
+/** An HTTP address that is told of alarms. */
+export interface RigNotify {
+  readonly url: string;
+  /** Of this level and graver. */
+  readonly from: AlarmLevel;
+  /** The body with its `{names}`; the whole message as JSON where nothing is said. */
+  readonly body: string | undefined;
+  readonly contentType: string;
+  readonly mostPerMin: number;
 }
 
 export interface RigBelt {
