@@ -47,4 +47,5 @@ export interface PageEntry {
 export const PAGES: readonly [PageEntry, ...PageEntry[]] = [
   { name: 'run', title: 'Run' },
   { name: 'rehearse', title: 'Rehearse', load: () => import('./rehearse/whole.js') },
+  { name: 'records', title: 'Records', load: () => import('./records/whole.js') },
 ];

@@ -132,7 +132,8 @@ export function addRecordsRoutes(app: FastifyInstance, options: RecordsRouteOpti
 
   function begin(task: RecordsTask, about: readonly string[], folder?: string): string {
     const tidy = folder && ((pid: number) => void tidyDerived(folder, pid).catch(() => {}));
-    return jobs.begin({ kind: task.do, about, script: SCRIPT, task, ...(tidy ? { tidy } : {}) });
+    const kind = task.do === 'export' ? `export ${task.to}` : task.do;
+    return jobs.begin({ kind, about, script: SCRIPT, task, ...(tidy ? { tidy } : {}) });
   }
 
   function taskOf(work: Work, folder: string): RecordsTask {
