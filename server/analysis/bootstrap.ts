@@ -44,6 +44,11 @@ export function meanOf(values: readonly number[]): number {
   return values.reduce((sum, value) => sum + value, 0) / values.length;
 }
 
+/** A seed made of a text: the same text, the same draws. */
+export function seedOf(text: string): number {
+  return [...text].reduce((sum, c) => (sum * 31 + c.charCodeAt(0)) | 0, 7);
+}
+
 /** Shifts 13, 17, 5 (G. Marsaglia, Journal of Statistical Software 8(14), 2003); [0, 1). */
 function xorshift(seed: number): () => number {
   let state = seed | 0 || 1;

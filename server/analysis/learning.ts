@@ -9,6 +9,8 @@ export interface LearningDay {
   readonly name: string;
   readonly subject: string;
   readonly startedAt: string;
+  /** The rules file's title. */
+  readonly title: string;
   readonly minutes: number;
   readonly laps: number;
   readonly lapsPerMinute: number;
@@ -29,6 +31,7 @@ export function learningDay(session: SessionData): LearningDay {
     licking.laps.reduce((total, row) => total + of(row), 0);
   return {
     ...{ name: description.name, subject: description.subject, startedAt: description.startedAt },
+    title: description.title,
     ...{ minutes, laps: laps.length, lapsPerMinute: laps.length / minutes },
     lickShare: sum((row) => row.inSpout + row.inApproach) / sum((row) => row.licks),
     slowing: median(licking.laps.map((row) => row.slowing).filter(Number.isFinite)),

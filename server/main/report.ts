@@ -4,6 +4,7 @@ import { type LearningDay, learningDay } from '../analysis/learning.js';
 import { readSession } from '../analysis/readSession.js';
 import { LapwingError } from '../errors/codes.js';
 import { derivedFolder } from '../export/exportFolder.js';
+import { animalsPage, animalsSummary } from '../export/report/animalsPage.js';
 import { learningPage } from '../export/report/learningPage.js';
 import { reportPage } from '../export/report/page.js';
 import type { Loopback } from '../export/report/tables.js';
@@ -18,32 +19,48 @@ interface ReportFlags {
 
 /**
  * `lapwing report SESSION`: the session as one HTML page for the lab book; of several sessions of one
- * subject, learning across them.
+ * animal, learning across them; of several animals, what they have in common.
  */
 export function reportCommand(): Command {
   return new Command('report')
     .description('write one self-contained page on a session, for the screen and for paper')
-    .argument('<session...>', 'the session folder; several of one subject: learning across them')
-    .option('--into <file>', "where to write it; else report.html in the session's own `derived`")
+    .argument(
+      '<session...>',
+      'the session folder; several of one animal: learning; of several animals: compared',
+    )
+    .option(
+      '--into <file>',
+      "where to write it; else report.html in the session's own `derived`; of several, learning.html or animals.html here",
+    )
     .option('--loopback <output=input>', 'an output that is wired back to an input', loopbackOf)
     .option('--json', 'print what was written as JSON')
     .action(async (folders: string[], flags: ReportFlags) => {
       const folder = folders[0]!;
-      if (folders.length > 1) {
-        const days = await daysOf(folders);
-        write(resolve(flags.into ?? 'learning.html'), learningPage(days), flags, days);
+      // The same session twice would count twice.
+      const different = [...new Set(folders.map((each) => resolve(each)))];
+      if (different.length > 1) {
+        const days = await daysOf(different);
+        const { animals, across, change } = animalsSummary(days);
+        if (animals.length === 1)
+          write(flags.into ?? 'learning.html', learningPage(days), flags, { sessions: days });
+        else
+          write(flags.into ?? 'animals.html', animalsPage(days), flags, {
+            animals,
+            across,
+            change,
+          });
         return;
       }
       const bar = progressBar('reading');
       const session = await readSession(folder, (done) => bar.show(done));
       bar.clear();
       const page = reportPage(session, flags.loopback);
-      const file = resolve(flags.into ?? join(derivedFolder(folder), 'report.html'));
-      write(file, page, flags);
+      write(flags.into ?? join(derivedFolder(folder), 'report.html'), page, flags);
     });
 }
 
-function write(file: string, page: string, { json }: ReportFlags, days?: LearningDay[]): void {
+function write(into: string, page: string, { json }: ReportFlags, more: object = {}): void {
+  const file = resolve(into);
   try {
     writeFileWhole(file, page);
   } catch (error) {
@@ -51,7 +68,7 @@ function write(file: string, page: string, { json }: ReportFlags, days?: Learnin
       cause: error,
     });
   }
-  const result = days === undefined ? { path: file } : { path: file, sessions: days };
+  const result = { path: file, ...more };
   process.stdout.write(json ? `${JSON.stringify(result)}\n` : `${file}\n`);
 }
 
@@ -59,13 +76,10 @@ async function daysOf(folders: readonly string[]): Promise<LearningDay[]> {
   const bar = progressBar('reading');
   const days: LearningDay[] = [];
   for (const folder of folders) {
-    days.push(learningDay(await readSession(folder)));
-    bar.show(days.length / folders.length);
+    const show = (done: number) => bar.show((days.length + done) / folders.length);
+    days.push(learningDay(await readSession(folder, show)));
   }
   bar.clear();
-  const subjects = [...new Set(days.map(({ subject }) => subject))];
-  if (subjects.length > 1)
-    throw new LapwingError('reportSubjects', `The sessions are of ${subjects.join(', ')}.`);
   return days;
 }
 

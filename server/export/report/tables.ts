@@ -1,5 +1,5 @@
 import { quantile } from '../../analysis/align/robustLine.js';
-import { bootstrap } from '../../analysis/bootstrap.js';
+import { bootstrap, seedOf } from '../../analysis/bootstrap.js';
 import { circularSummary } from '../../analysis/circular.js';
 import type { Firing } from '../../analysis/firings.js';
 import { lapsOf } from '../../analysis/happenings.js';
@@ -76,7 +76,7 @@ export function statistics(session: SessionData, { licking, laps, lengthCm }: Sh
     licking.laps.flatMap(({ firstCm }) => (firstCm === null ? [] : [firstCm])),
     lengthCm,
   );
-  const seed = [...session.description.seed].reduce((s, c) => (s * 31 + c.charCodeAt(0)) | 0, 7);
+  const seed = seedOf(session.description.seed);
   const rows = licking.laps.filter(({ licks }) => licks > 0);
   const share = bootstrap(
     rows,
