@@ -113,6 +113,8 @@ export const SECURITY_HEADERS: Readonly<Record<string, string>> = {
     "connect-src 'self'",
     "font-src 'self'",
     "manifest-src 'self'",
+    // The Records page frames reports that this service made.
+    "frame-src 'self'",
     "base-uri 'none'",
     "form-action 'self'",
     "frame-ancestors 'none'",
