@@ -32,7 +32,9 @@ export async function startWeb(options: Partial<WebOptions> = {}): Promise<WebRi
   const url = await app.listen({ host: '127.0.0.1', port: 0 });
   const web = { loop, app, url };
   running.push(web);
-  await until(async () => (await app.inject('/api/setup')).statusCode === 200);
+  // Once the loop's setup is there; who is not signed in is told that much and no more.
+  await until(async () => [200, 401].includes((await app.inject('/api/setup')).statusCode));
+  await until(async () => (await app.inject('/healthz')).json().loop === 'up');
   return web;
 }
 

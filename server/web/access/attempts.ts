@@ -41,6 +41,7 @@ export class Attempts {
   }
 
   failed(name: string, address: string): void {
+    this.forgetOld();
     const now = this.nowMs();
     for (const key of [pairOf(name, address), `address ${address}`, `name ${name}`]) {
       const tally = this.tallies.get(key) ?? { failures: 0, firstMs: now, lastMs: now };

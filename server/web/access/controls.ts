@@ -27,7 +27,7 @@ export class Controls implements Holder {
     private readonly port: ControlsPort,
     private readonly signInUsed: boolean,
     private held: Held = { change: 0, holder: null },
-    private readonly nowMs: () => number = Date.now,
+    private readonly nowMs: () => number = () => Date.now(),
   ) {}
 
   get now(): Held {

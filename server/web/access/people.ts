@@ -152,7 +152,7 @@ function readPeople(file: string): readonly Person[] {
   } catch (cause) {
     throw new LapwingError('webPeopleFile', `${file}: ${(cause as Error).message}`, { cause });
   }
-  const { format, people } = content as { format?: unknown; people?: unknown };
+  const { format, people } = (content ?? {}) as { format?: unknown; people?: unknown };
   if (format !== 1 || !Array.isArray(people) || !people.every(isPerson)) {
     throw new LapwingError('webPeopleFile', `${file}: expected format 1 with a list of people.`);
   }

@@ -38,7 +38,7 @@ export class SignIns {
     before: readonly KeptSignIn[],
     private readonly keep: () => void,
     private readonly ended: (signIns: readonly SignIn[]) => void,
-    private readonly nowMs: () => number = Date.now,
+    private readonly nowMs: () => number = () => Date.now(),
   ) {
     for (const { key, ...signIn } of before) this.all.set(key, signIn);
   }

@@ -25,6 +25,9 @@ export const RULES_BODY_BYTES = 256 << 10;
 /** A check takes some milliseconds, of a hostile file some hundred: nobody types faster than this. */
 const CHECKS_PER_S = 6;
 
+/** Nothing on the rig changes, and a running session keeps its rules: the controls are not needed. */
+const OPERATOR = { config: { needs: 'operator' } } as const;
+
 interface CheckBody {
   readonly text: string;
   readonly path?: string;
@@ -67,7 +70,7 @@ export function addRulesRoutes(
   );
   app.put<{ Body: { path: string; text: string; version?: string } }>(
     '/api/rules/file',
-    { bodyLimit, schema: { body: bodies.saveRules } },
+    { ...OPERATOR, bodyLimit, schema: { body: bodies.saveRules } },
     async (request) => {
       const { path, text, version } = request.body;
       const { folder } = need();
@@ -78,7 +81,7 @@ export function addRulesRoutes(
   );
   app.post<{ Body: CheckBody }>(
     '/api/rules/check',
-    { bodyLimit, schema: { body: bodies.checkRules } },
+    { ...OPERATOR, bodyLimit, schema: { body: bodies.checkRules } },
     async (request) => {
       if (!checks.take(request.ip)) {
         throw new LapwingError('webTooManyRequests', `More than ${CHECKS_PER_S} checks a second.`);
@@ -90,7 +93,7 @@ export function addRulesRoutes(
   );
   app.post<{ Body: RehearseBody }>(
     '/api/rehearse',
-    { bodyLimit, schema: { body: bodies.rehearse } },
+    { ...OPERATOR, bodyLimit, schema: { body: bodies.rehearse } },
     async (request) => {
       const { rig, folder } = need();
       const { text, path, seed = '', animalSeed = 1, trained = true, minutes = 60 } = request.body;
@@ -102,7 +105,7 @@ export function addRulesRoutes(
     },
   );
   app.get('/api/rehearse', async () => rehearsals.state);
-  app.delete('/api/rehearse', async () => {
+  app.delete('/api/rehearse', OPERATOR, async () => {
     rehearsals.cancel();
     return { done: true };
   });
