@@ -108,6 +108,11 @@ export const ERRORS = {
     'The rig file does not describe a rig.',
     'Correct each place named; `hardware-sim/demo/rig.yaml` is a whole example.',
   ),
+  calibrationBad: entry(
+    'CALIBRATION_BAD',
+    'A stored calibration cannot be read, or is none.',
+    'Check the name in the rig file and the folder it names; `server/session/rig/calibration.schema.json` says what is in a file. A calibration is made with `lapwing calibrate`.',
+  ),
   benchInSession: entry(
     'BENCH_IN_SESSION',
     'Outputs are tried between sessions only.',
@@ -357,6 +362,11 @@ export const ERRORS = {
     'EXPORT_FOLDER_BAD',
     'What was to be exported could not be written there.',
     'Choose another place with `--into`, one with room on the disk; nothing half written is left behind.',
+  ),
+  reportLoopback: entry(
+    'REPORT_LOOPBACK',
+    'The rig has no such output or input.',
+    'Say `--loopback OUTPUT=INPUT` with their names in the rig file of the session.',
   ),
   exportFormatUnknown: entry(
     'EXPORT_FORMAT_UNKNOWN',

@@ -1,13 +1,13 @@
 import { join, resolve } from 'node:path';
 import { Command, InvalidArgumentError } from 'commander';
 import { type LearningDay, learningDay } from '../analysis/learning.js';
+import type { Loopback } from '../analysis/loopback.js';
 import { readSession } from '../analysis/readSession.js';
 import { LapwingError } from '../errors/codes.js';
 import { derivedFolder } from '../export/exportFolder.js';
 import { animalsPage, animalsSummary } from '../export/report/animalsPage.js';
 import { learningPage } from '../export/report/learningPage.js';
 import { reportPage } from '../export/report/page.js';
-import type { Loopback } from '../export/report/tables.js';
 import { writeFileWhole } from '../session/writeFileWhole.js';
 import { progressBar } from './progressBar.js';
 

@@ -1,6 +1,7 @@
 import { firingsOf } from '../../analysis/firings.js';
 import { dropsOf, lapsOf } from '../../analysis/happenings.js';
 import { lickingOf } from '../../analysis/licking.js';
+import { type Loopback, measureBack } from '../../analysis/loopback.js';
 import { profileOf } from '../../analysis/profile.js';
 import type { SessionData } from '../../analysis/readSession.js';
 import { explain } from '../../rules/explain.js';
@@ -8,7 +9,8 @@ import { factsOf } from '../../session/rig/rig.js';
 import type { Shown } from './figures.js';
 import * as figures from './figures.js';
 import { escapeHtml } from './plot.js';
-import { cautions, facts, health, type Loopback, notDone, proofs, statistics } from './tables.js';
+import { proofs } from './proofSheet.js';
+import { cautions, facts, health, notDone, statistics } from './tables.js';
 
 /** For the screen and for paper. */
 export const STYLE = `
@@ -27,6 +29,7 @@ pre { white-space: pre-wrap; font: 12px/1.4 'DejaVu Sans Mono', monospace; backg
  * The session as one self-contained HTML page for a lab book: no script, no network, and the same
  * bytes each time.
  * @param loopback an input that an output was wired back to, to measure firings by
+ * @throws LapwingError REPORT_LOOPBACK where the rig has no such output or input
  */
 export function reportPage(session: SessionData, loopback?: Loopback): string {
   const { description, rules, rig } = session;
@@ -38,12 +41,16 @@ export function reportPage(session: SessionData, loopback?: Loopback): string {
     ...{ firings: firingsOf(session), drops: dropsOf(session) },
     stimuli: new Set(rig.outputs.filter((o) => o.kind === 'stimulus').map((o) => o.name)),
   };
+  const proved = loopback && {
+    wire: loopback,
+    measured: measureBack(session, shown.firings, loopback),
+  };
   const title = `${description.subject}: ${description.title}`;
   const body = [
     `<h1>${escapeHtml(title)}</h1>`,
     facts(session),
     '<h2>Cautions</h2>',
-    cautions(session, shown),
+    cautions(session, shown, proved?.measured),
     '<h2>What was planned</h2>',
     `<pre>${escapeHtml(explain(rules.file, factsOf(rig)).trimEnd())}</pre>`,
     '<h2>What happened</h2>',
@@ -51,7 +58,7 @@ export function reportPage(session: SessionData, loopback?: Loopback): string {
     '<h2>Licking on the belt</h2>',
     statistics(session, shown),
     '<h2>Proof sheet: every firing</h2>',
-    proofs(session, shown.firings, loopback),
+    proofs(session, shown.firings, proved),
     '<h2>Withheld, missed, refused, uncertain</h2>',
     notDone(session),
     '<h2>Health</h2>',

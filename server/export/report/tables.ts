@@ -1,21 +1,12 @@
 import { quantile } from '../../analysis/align/robustLine.js';
 import { bootstrap, seedOf } from '../../analysis/bootstrap.js';
 import { circularSummary } from '../../analysis/circular.js';
-import type { Firing } from '../../analysis/firings.js';
 import { lapsOf } from '../../analysis/happenings.js';
+import type { MeasuredBack } from '../../analysis/loopback.js';
 import type { SessionData } from '../../analysis/readSession.js';
 import { describeTroubles } from '../../session/record/recordState.js';
 import type { Shown } from './figures.js';
 import { escapeHtml } from './plot.js';
-
-/** An output wired back to an input, to measure when it really rose. */
-export interface Loopback {
-  readonly output: string;
-  readonly input: string;
-}
-
-/** A rise is looked for this long after the board says that it drove the output. */
-const LOOPBACK_US = 50_000;
 
 type Cell = string | number;
 /** An HTML table; cells that are numbers stand to the right. */
@@ -50,6 +41,8 @@ export function facts({ description, beganUs, endedUs, rig, state }: SessionData
       ['session', description.name],
       ['started', `${description.startedAt}, ${minutes.toFixed(1)} min`],
       ['experimenter', description.experimenter ?? ''],
+      ['session number', description.sessionNumber ?? ''],
+      ['animal protocol', description.protocolNumber ?? ''],
       ['ended', ended === null ? 'not known' : `${ended.how}: ${ended.reason}`],
       ['rig', `${rig.name}, belt ${rig.belt.lengthCm} cm, board ${board?.model ?? 'not recorded'}`],
       ['software', `lapwing ${software.version}, seed ${seed}`],
@@ -125,78 +118,6 @@ export function statistics(session: SessionData, { licking, laps, lengthCm }: Sh
   ].join('\n');
 }
 
-/** Armed firings and those decided in the host, each with its places and their uncertainty. */
-export function proofs(
-  session: SessionData,
-  firings: readonly Firing[],
-  loopback: Loopback | undefined,
-): string {
-  const section = (title: string, rows: readonly Firing[]) => {
-    if (rows.length === 0) return `<h3>${title}</h3><p>None.</p>`;
-    const errors = rows.flatMap(({ errorMm }) => (errorMm === null ? [] : [Math.abs(errorMm)]));
-    const sum =
-      errors.length === 0
-        ? ''
-        : `<p>${rows.length} firings; from the place intended: median ` +
-          `${fixed(quantile(errors, 0.5), 2)} mm, at most ${fixed(Math.max(...errors), 2)} mm.</p>`;
-    const head = [
-      ...['lap', 'time (s)', 'rule', 'output', 'intended (cm)', 'as decided (cm)', 'error (mm)'],
-      ...['after slip (cm)', 'latency (ms)', 'speed (cm/s)', 'on (ms)'],
-      ...(loopback === undefined ? [] : ['measured back']),
-    ];
-    const lines = rows.map((f) => [
-      ...[f.lap, fixed((f.boardUs - session.beganUs) / 1e6, 3), f.rule, f.output ?? 'sham'],
-      fixed(f.placeCm, 2),
-      `${fixed(f.riseCm, 2)} ${plusMinus(f.decidedUncertaintyMm)}`,
-      fixed(f.errorMm, 2),
-      f.correctedCm === null
-        ? ''
-        : `${fixed(f.correctedCm, 2)} ${plusMinus(f.correctedUncertaintyMm)}`,
-      fixed(f.latencyUs === null ? null : f.latencyUs / 1e3, 2),
-      fixed(f.speedCmPerS, 1),
-      fixed(f.onUs === null ? null : f.onUs / 1e3, 1),
-      ...(loopback === undefined ? [] : [measured(session, f, loopback)]),
-    ]);
-    return `<h3>${title}</h3>${sum}${table(head, lines, 'wide')}`;
-  };
-  return [
-    section(
-      'Started by the board at the place',
-      firings.filter((f) => f.armed && !f.sham),
-    ),
-    section(
-      'Decided in the host',
-      firings.filter((f) => !f.armed && !f.sham),
-    ),
-    section(
-      'Shams: nothing was driven',
-      firings.filter((f) => f.sham),
-    ),
-    '<p>As decided: by the counts of that moment; after &#177;, half a count and the usual slip of ' +
-      "this session up to there. After slip: the lap's slip, found at the next mark, shared out " +
-      'evenly; after &#177;, how far off that can be if it all came at once.</p>',
-  ].join('\n');
-}
-
-const plusMinus = (mm: number | null) => (mm === null ? '' : `\u00b1 ${(mm / 10).toFixed(2)}`);
-
-function measured({ edges, rig }: SessionData, f: Firing, { output, input }: Loopback): string {
-  if (f.output !== output) return '';
-  const rise = edges.find(
-    (e) =>
-      e.name === input &&
-      e.level === 1 &&
-      e.boardUs >= f.boardUs - 1_000 &&
-      e.boardUs < f.boardUs + LOOPBACK_US,
-  );
-  if (rise === undefined) return 'not seen';
-  const laterUs = rise.boardUs - f.boardUs;
-  const laterMm = (laterUs / 1e6) * f.speedCmPerS * 10;
-  const at =
-    f.riseCm === null ? '' : `${((f.riseCm + laterMm / 10) % rig.belt.lengthCm).toFixed(2)} cm, `;
-  return `${at}${laterUs} us later`;
-}
-
 /** What was not done and why, counted by rule and reason. */
 export function notDone({ decisions }: SessionData): string {
   const counts = new Map<string, { times: number; laps: number[] }>();
@@ -252,7 +173,11 @@ export function health({ decisions, samples, beganUs, endedUs }: SessionData): s
 }
 
 /** What whoever reads the numbers should know first. */
-export function cautions(session: SessionData, { licking, laps, firings }: Shown): string {
+export function cautions(
+  session: SessionData,
+  { licking, laps, firings }: Shown,
+  measured: MeasuredBack | undefined,
+): string {
   const { decisions, description, state, rig } = session;
   const all = lapsOf(session);
   const excluded = all.filter((lap) => lap.excluded).map((lap) => lap.lap);
@@ -278,6 +203,10 @@ export function cautions(session: SessionData, { licking, laps, firings }: Shown
   if (laps.length < 10) found.push(`Only ${laps.length} complete laps.`);
   const late = firings.filter((f) => (f.latencyUs ?? 0) > 10_000).length;
   if (late > 0) found.push(`${late} firings rose more than 10 ms after their decision.`);
+  const unseen = [...(measured?.firings.values() ?? [])].filter((seen) => seen === null).length;
+  if (unseen > 0) found.push(`${unseen} firings were not seen on the loopback input.`);
+  const extra = measured?.unexplained.length ?? 0;
+  if (extra > 0) found.push(`The loopback input rose ${extra} times without a firing.`);
   found.push(
     'The partial stretch before the first mark and the lap that the end cut short are in no figure.',
   );
