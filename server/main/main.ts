@@ -28,6 +28,8 @@ import { tellError } from './tellError.js';
 const program = new Command('lapwing')
   .description('Closed-loop triggers for a belt-treadmill rig. Not a safety interlock.')
   .version(packageVersion)
+  // A command within a command (`water give`) has options of its own.
+  .enablePositionalOptions()
   .addCommand(demoCommand())
   .addCommand(serveCommand())
   .addCommand(peopleCommand())

@@ -1,4 +1,6 @@
+import { resolve } from 'node:path';
 import { Command } from 'commander';
+import { ended } from '../animals/book.js';
 import { mend } from '../session/record/mend.js';
 import { describeTroubles } from '../session/record/recordState.js';
 
@@ -13,7 +15,18 @@ export function mendCommand(): Command {
       const lines = [
         `${state.messages} messages up to input ${state.lastInput}, ${(bytes / 1e6).toFixed(1)} MB`,
         ...(troubles.length === 0 ? ['nothing is missing'] : troubles),
+        ...(await bookWords(resolve(folder))),
       ];
       process.stdout.write(`${lines.join('\n')}\n`);
     });
+}
+
+/** What the session gave goes into the water book, where one is kept for its animal. */
+async function bookWords(sessionFolder: string): Promise<string[]> {
+  try {
+    const water = await ended({ ask: 'ended', sessionFolder });
+    return water === undefined ? [] : [`${water.givenUl.toFixed(1)} uL are in the water book`];
+  } catch (error) {
+    return [`the water book was not told: ${(error as Error).message}`];
+  }
 }
