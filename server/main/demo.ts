@@ -1,9 +1,12 @@
+import { type ChildProcess, fork } from 'node:child_process';
 import { homedir } from 'node:os';
 import { join } from 'node:path';
 import { Command } from 'commander';
+import { compiledScript } from '../askChild.js';
 import { packageRoot } from '../packageRoot.js';
 import { readRig } from '../session/rig/readRig.js';
 import { portOption } from './arguments.js';
+import { wantsDemoSessions } from './demoSessions.js';
 import { runLive } from './live.js';
 
 /** `lapwing demo`: the simulated rig, a trained animal and the demo's rules, with the page. */
@@ -13,9 +16,13 @@ export function demoCommand(): Command {
     .addOption(portOption())
     .option('--records <folder>', 'where the record goes', join(homedir(), 'lapwing-demo-records'))
     .option('--seed <number>', 'of the simulated animal', '1')
-    .action(async (flags: { port: number; records: string; seed: string }) => {
+    .option('--no-earlier', 'make no earlier sessions for an empty records folder')
+    .action(async (flags: { port: number; records: string; seed: string; earlier: boolean }) => {
       const folder = join(packageRoot, 'hardware-sim/demo');
       const rigPath = join(folder, 'rig.yaml');
+      // Looked at before the demo's own session has a folder.
+      const newcomer = flags.earlier && wantsDemoSessions(flags.records);
+      let making: ChildProcess | undefined;
       await runLive({
         rig: readRig(rigPath),
         rigPath,
@@ -28,10 +35,20 @@ export function demoCommand(): Command {
         },
         web: { host: '127.0.0.1', port: flags.port },
         simulatedRig: ['--seed', flags.seed, '--trained'],
-        hello: (url) =>
-          `The simulated rig runs, and so does the demo session. Open ${url}\n` +
-          'Lapwing is not a safety interlock. With an animal: local rules, the approved protocol and trained staff decide.\n' +
-          `Records go to ${flags.records}. Ctrl-C ends the session, and a second one at once.`,
-      });
+        hello: (url) => {
+          if (newcomer) making ??= makeDemoSessions(flags.records, rigPath);
+          return (
+            `The simulated rig runs, and so does the demo session. Open ${url}\n` +
+            'Lapwing is not a safety interlock. With an animal: local rules, the approved protocol and trained staff decide.\n' +
+            `Records go to ${flags.records}. Ctrl-C ends the session, and a second one at once.`
+          );
+        },
+      }).finally(() => making?.kill());
     });
+}
+
+/** Earlier sessions to look at, in a process of their own that goes when it is done. */
+function makeDemoSessions(records: string, rigPath: string): ChildProcess {
+  const script = compiledScript(import.meta.url, './demoSessions.js');
+  return fork(script, [records, rigPath], { stdio: 'ignore' });
 }

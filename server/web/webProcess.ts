@@ -3,6 +3,7 @@
  * [--rules-folder FOLDER] [--records FOLDER] [--host H] [--port N] [--sign-in] [--name HOST ...]
  * [--proxy ADDRESS ...] [--tls-cert FILE --tls-key FILE]`.
  */
+import { resolve } from 'node:path';
 import { fileURLToPath } from 'node:url';
 import { parseArgs } from 'node:util';
 import { LapwingError } from '../errors/codes.js';
@@ -57,7 +58,7 @@ export async function runWeb(argv: readonly string[]): Promise<void> {
     allowedHosts: values.name,
     proxies: values.proxy,
     ...(values['rules-folder'] === undefined ? {} : { rulesFolder: values['rules-folder'] }),
-    ...(values.records === undefined ? {} : { records: values.records }),
+    ...(values.records === undefined ? {} : { records: resolve(values.records) }),
     dashboard: values.dashboard ?? built,
     log: values.log === 'silent' ? false : values.log,
   });

@@ -24,7 +24,7 @@ beforeAll(async () => {
   const main = new URL('../../dist/server/main/main.js', import.meta.url).pathname;
   service = spawn(
     process.execPath,
-    [main, 'demo', '--port', await freePort(), '--records', records],
+    [main, 'demo', '--port', await freePort(), '--records', records, '--no-earlier'],
     {
       env: { ...process.env, LAPWING_RUNTIME: folder },
       stdio: ['ignore', 'pipe', 'pipe'],

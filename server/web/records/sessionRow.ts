@@ -3,7 +3,7 @@ import { Ajv2020 } from 'ajv/dist/2020.js';
 import { type SessionDescription, sessionSchemaFile } from '../../session/description.js';
 import type { SessionRow } from './recordsMessages.js';
 
-const fits = new Ajv2020({ allErrors: false }).compile<SessionDescription>(
+const fits = new Ajv2020({ allowUnionTypes: true }).compile<SessionDescription>(
   JSON.parse(readFileSync(sessionSchemaFile(), 'utf8')) as object,
 );
 
