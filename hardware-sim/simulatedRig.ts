@@ -43,7 +43,14 @@ export interface SimulatedRigOptions {
   readonly lickBounces?: number;
   /** How long the animal keeps a speed, microseconds, in whole milliseconds; 1000 unless said. */
   readonly strideUs?: number;
+  /** A wire from an output to an input. */
+  readonly loopback?: { readonly output: number; readonly input: number };
 }
+
+/** How long a change takes along the loopback wire and through the input's filter. */
+const WIRE_US = 3;
+/** One drop differs from the next by this share (standard deviation), where it is weighed. */
+const DROP_SPREAD = 0.03;
 
 /** The shortest stretch in which the belt runs at one speed, and the grid of the board's looks. */
 const GRID_US = 1000;
@@ -61,6 +68,15 @@ export class SimulatedRig<B extends RigBoard = Board> {
   nowUs = 0;
   /** How often each output has risen, whatever any host believes. */
   readonly rises: number[] = new Array(16).fill(0);
+  /** Under the spout stands a vial on a balance: drops go there, and not to the animal. */
+  vial = false;
+  /** What the vial holds, mg (a microlitre of water is very nearly one). */
+  vialMg = 0;
+  readonly #weights: Dice;
+  readonly #loopback: SimulatedRigOptions['loopback'];
+  /** Where a hand turns the belt to, unrolled cm, and how fast. */
+  #handToCm = Number.NaN;
+  #handCmPerS = 0;
   readonly #mark: SeamMark;
   readonly #pending = new PendingInputs();
   readonly #dice: Dice;
@@ -88,6 +104,8 @@ export class SimulatedRig<B extends RigBoard = Board> {
     this.valve = { deadUs: 5_000, usPerUl: 8_000, ...options.valve };
     this.#lickBounces = options.lickBounces ?? 0;
     this.#dice = new Dice(seed + 5);
+    this.#weights = new Dice(seed + 6);
+    this.#loopback = options.loopback;
     this.#strideUs = options.strideUs ?? GRID_US;
     this.#strideEndUs = this.#strideUs;
     this.#segmentUs = options.board?.reportUs ?? GRID_US;
@@ -118,6 +136,7 @@ export class SimulatedRig<B extends RigBoard = Board> {
       if (this.nowUs < this.#strideEndUs) continue;
       this.#strideEndUs += this.#strideUs;
       const wants = this.animal.step(this.nowUs, this.belt.positionCm);
+      if (!Number.isNaN(this.#handToCm)) this.#turnOn();
       this.#cmPerUs = (this.forcedCmPerS ?? wants) * 1e-6;
     }
     if (us > this.nowUs) this.#runTo(us);
@@ -132,6 +151,23 @@ export class SimulatedRig<B extends RigBoard = Board> {
     this.#lookUpCount = this.#count + upCounts;
     this.#lookDownCount = this.#count - downCounts;
     this.#lookUs = gridUs(us > this.nowUs ? us : this.nowUs + 1);
+  }
+
+  /** A hand turns the belt so far, forwards or back, and then holds it still. */
+  turn(cm: number, cmPerS: number): void {
+    this.#handToCm = this.belt.travelCm + cm;
+    this.#handCmPerS = Math.abs(cmPerS);
+  }
+
+  /** As much of the hand's way as the coming stride has room for. */
+  #turnOn(): void {
+    const leftCm = this.#handToCm - this.belt.travelCm;
+    const mostCm = this.#handCmPerS * this.#strideUs * 1e-6;
+    const stepCm = Math.max(-mostCm, Math.min(mostCm, leftCm));
+    this.forcedCmPerS = stepCm / (this.#strideUs * 1e-6);
+    if (Math.abs(leftCm) > 1e-6) return;
+    this.#handToCm = Number.NaN;
+    this.forcedCmPerS = 0;
   }
 
   /** The encoder turns without the belt, by so many cm as it would read them, at this moment. */
@@ -305,15 +341,18 @@ export class SimulatedRig<B extends RigBoard = Board> {
 
   #outputChanged(output: number, on: boolean, worldUs: number): void {
     if (on) this.rises[output]!++;
+    const loop = this.#loopback;
+    if (loop?.output === output) this.#pending.add(worldUs + WIRE_US, loop.input, on ? 1 : 0);
     if (output !== this.wiring.valveOutput) return;
     if (on) {
       this.#valveOpenedUs = worldUs;
       return;
     }
     const openUs = worldUs - this.#valveOpenedUs - this.valve.deadUs;
-    if (openUs > 0) {
-      this.animal.drop(openUs / this.valve.usPerUl, this.belt.positionCm, worldUs);
-    }
+    if (openUs <= 0) return;
+    const ul = openUs / this.valve.usPerUl;
+    if (this.vial) this.vialMg += ul * (1 + DROP_SPREAD * this.#weights.normal());
+    else this.animal.drop(ul, this.belt.positionCm, worldUs);
   }
 }
 

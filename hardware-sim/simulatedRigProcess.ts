@@ -6,6 +6,7 @@
  *     node dist/hardware-sim/simulatedRigProcess.js --seed 3 --trained --link /tmp/lapwing-board
  */
 import fs from 'node:fs';
+import net from 'node:net';
 import { createInterface } from 'node:readline';
 import { parseArgs } from 'node:util';
 import type { ByteLine } from './realTime/byteLine.js';
@@ -31,6 +32,8 @@ const HELP = `Options:
   --seam-input N      input of the seam sensor (default 1)
   --valve-output N    output of the water valve (default 0)
   --valve-dead-us X --valve-us-per-ul X   the valve's line
+  --loopback OUT:IN   a wire from an output to an input
+  --hands PATH        take the same commands over a local socket at PATH, from whoever connects
   --board-id N        the board's own number
   --start-us X        what the board's clock shows at first
   --emulated          the board is the firmware's own program, run by an emulator
@@ -38,6 +41,7 @@ const HELP = `Options:
   --tcp PORT          serve TCP on this machine instead of a pseudo-terminal (0: any free port)
 Commands on standard input, a line each:
   unplug   replug   reset   stall MS   speed CM_S   speed off   noise P   state   quit
+  turn CM [CM_S]   touch TIMES   vial on   vial off   weigh
 `;
 
 const { values } = parseArgs({
@@ -56,6 +60,8 @@ const { values } = parseArgs({
     'valve-output': { type: 'string' },
     'valve-dead-us': { type: 'string' },
     'valve-us-per-ul': { type: 'string' },
+    loopback: { type: 'string' },
+    hands: { type: 'string' },
     'board-id': { type: 'string' },
     'start-us': { type: 'string' },
     emulated: { type: 'boolean' },
@@ -93,8 +99,18 @@ function rigOptions(): SimulatedRigOptions {
       ...number('valve-output', 'valveOutput'),
     },
     valve: { ...number('valve-dead-us', 'deadUs'), ...number('valve-us-per-ul', 'usPerUl') },
+    ...loopback(),
     board: { ...number('board-id', 'boardId'), ...number('start-us', 'startUs') },
   };
+}
+
+function loopback(): Pick<SimulatedRigOptions, 'loopback'> {
+  if (values.loopback === undefined) return {};
+  const [output, input] = values.loopback.split(':').map(Number);
+  if (!Number.isInteger(output) || !Number.isInteger(input)) {
+    fail(`--loopback: ${values.loopback} is not OUTPUT:INPUT.`);
+  }
+  return { loopback: { output: output!, input: input! } };
 }
 
 function fail(message: string): never {
@@ -130,13 +146,32 @@ async function main(): Promise<void> {
     process.exit(0);
   };
   endWithParent(leave);
-  createInterface({ input: process.stdin }).on('line', async (text) => {
+  const obey = async (text: string, answerTo: (answer: CommandAnswer) => void) => {
     const answer = await runCommand(text, paced, line);
     if (answer === 'quit') leave();
-    else say(answer);
-  });
+    else answerTo(answer);
+  };
+  createInterface({ input: process.stdin }).on('line', (text) => void obey(text, say));
+  if (values.hands !== undefined) await takeHands(values.hands, obey);
   say({ port: line.port });
   paced.start();
+}
+
+/** The hands that a rig needs, for whoever rehearses with it: commands over a local socket. */
+function takeHands(
+  path: string,
+  obey: (text: string, answerTo: (answer: CommandAnswer) => void) => Promise<void>,
+): Promise<void> {
+  if (process.platform !== 'win32') fs.rmSync(path, { force: true });
+  const server = net.createServer((socket) => {
+    const tell = (answer: CommandAnswer) => void socket.write(`${JSON.stringify(answer)}\n`);
+    createInterface({ input: socket }).on('line', (text) => void obey(text, tell));
+    socket.on('error', () => socket.destroy());
+  });
+  return new Promise((resolve, reject) => {
+    server.once('error', reject);
+    server.listen(path, () => resolve());
+  });
 }
 
 /** A simulated rig without its parent would hold its port for ever. */

@@ -1,6 +1,10 @@
 import type { ByteLine } from './byteLine.js';
 import type { PacedRig } from './pacedRig.js';
 
+/** As a person turns a belt by hand. */
+const TURN_CM_PER_S = 25;
+const MOST_TOUCHES = 1_000;
+
 export type CommandAnswer = Readonly<Record<string, unknown>>;
 
 /** One command from standard input. @returns what to answer, or `quit` */
@@ -9,7 +13,7 @@ export async function runCommand(
   paced: PacedRig,
   line: ByteLine,
 ): Promise<CommandAnswer | 'quit'> {
-  const [name = '', argument = ''] = text.trim().split(/\s+/);
+  const [name = '', argument = '', speed = ''] = text.trim().split(/\s+/);
   const value = Number(argument);
   const bad = argument === '' || !Number.isFinite(value);
   switch (name) {
@@ -30,6 +34,21 @@ export async function runCommand(
       if (argument !== 'off' && bad) break;
       paced.rig.forcedCmPerS = argument === 'off' ? undefined : value;
       return { did: name };
+    case 'turn':
+      if (bad) break;
+      paced.rig.turn(value, Number(speed) || TURN_CM_PER_S);
+      return { did: name };
+    case 'touch':
+      if (bad || value < 1) break;
+      paced.rig.animal.licking.begin(paced.rig.nowUs, Math.min(MOST_TOUCHES, value));
+      return { did: name };
+    case 'vial':
+      if (argument !== 'on' && argument !== 'off') break;
+      paced.rig.vial = argument === 'on';
+      paced.rig.vialMg = 0;
+      return { did: name };
+    case 'weigh':
+      return { did: name, mg: Math.round(paced.rig.vialMg * 10) / 10 };
     case 'noise':
       if (bad || value < 0 || value >= 1) break;
       paced.noise = value;

@@ -28,6 +28,8 @@ export interface SessionDescription {
   readonly seed: string;
   readonly calibrations: readonly {
     readonly of: string;
+    /** Its file's name; none where the rig file has the numbers written out. */
+    readonly name?: string;
     readonly madeAt?: string;
     readonly values: Readonly<Record<string, number | string>>;
   }[];
@@ -92,7 +94,7 @@ export interface BoardDescription {
 }
 
 export interface StoredFile {
-  readonly role: 'rig' | 'rules' | 'included';
+  readonly role: 'rig' | 'rules' | 'included' | 'calibration';
   /** Path in the session folder, with `/`. */
   readonly stored: string;
   /** What it was called where it came from. */

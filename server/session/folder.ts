@@ -95,7 +95,7 @@ export function storeInputFiles(folder: string, files: readonly InputFile[]): St
 const OWN = /^(rig\.yaml|rules\.yaml|session\.json.*|record.*|included|derived)$/i;
 
 function placeFor(role: InputFile['role'], source: string, taken: ReadonlySet<string>): string {
-  if (role !== 'included') return `${role}.yaml`;
+  if (role !== 'included' && role !== 'calibration') return `${role}.yaml`;
   const parts = source.split(/[\\/]/).filter((part) => part !== '' && part !== '.');
   const kept = parts.length > 0 && parts.every((part) => safeName(part, 80, '') === part);
   const place = parts.join('/');

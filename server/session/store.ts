@@ -151,6 +151,13 @@ function inputFiles(rig: Rig, rules: PreparedRules): InputFile[] {
   const [main, ...included] = rules.file.sources;
   return [
     { role: 'rig', source: rig.path, content: bytes(rig.text) },
+    ...rig.calibrations.map(
+      ({ calibration, source }): InputFile => ({
+        role: 'calibration',
+        source,
+        content: bytes(`${JSON.stringify(calibration, undefined, 2)}\n`),
+      }),
+    ),
     { role: 'rules', source: rules.path, content: bytes(main!.text) },
     ...included.map(
       (file): InputFile => ({
@@ -163,9 +170,15 @@ function inputFiles(rig: Rig, rules: PreparedRules): InputFile[] {
 }
 
 function calibrationsOf(rig: Rig): SessionDescription['calibrations'] {
+  const stored = (of: string) => {
+    const used = rig.calibrations.find(({ calibration }) => calibration.of === of);
+    if (used === undefined) return { of };
+    const { name, madeAt } = used.calibration;
+    return { of, name, madeAt };
+  };
   const valves = rig.outputs.flatMap(({ name, valve }) =>
-    valve === undefined ? [] : [{ of: name, values: { ...valve } }],
+    valve === undefined ? [] : [{ ...stored(name), values: { ...valve } }],
   );
   const { lengthCm, countsPerCm } = rig.belt;
-  return [{ of: 'belt', values: { lengthCm, countsPerCm } }, ...valves];
+  return [{ ...stored('belt'), values: { lengthCm, countsPerCm } }, ...valves];
 }

@@ -7,6 +7,7 @@ import { packageRoot } from '../../packageRoot.js';
 import type { Dimension } from '../../rules/ast.js';
 import { parseQuantity } from '../../rules/units.js';
 import type { AlarmLevel } from '../inputs.js';
+import { Calibrated, type Report, UNMEASURED } from './calibrated.js';
 import { NOTICE_NAMES, unknownNames } from './noticeNames.js';
 import type { Rig, RigBelt, RigButton, RigLick, RigNotify, RigOutput, RigSync } from './rig.js';
 
@@ -25,8 +26,9 @@ interface RigText {
   rig: string;
   board: { port: string; baud?: string; board_id?: string };
   belt: {
-    length: string;
-    counts_per_cm: string;
+    calibration?: string;
+    length?: string;
+    counts_per_cm?: string;
     tolerance?: string;
     direction?: string;
     still_below?: string;
@@ -37,6 +39,8 @@ interface RigText {
   inputs: Record<string, InputText>;
   outputs: Record<string, OutputText>;
   water: { per_session: string; per_day: string; largest_drop: string };
+  loopback?: { output: string; input: string };
+  calibrations?: string;
   sync?: { output: string; width: string; from: string; to: string };
   record?: { folder?: string; when_full?: Rig['whenFull'] };
   rules_folder?: string;
@@ -54,6 +58,7 @@ interface RigText {
 interface InputText {
   line: string;
   use?: string;
+  calibration?: string;
   lockout?: string;
   stuck?: string;
   artefact?: string;
@@ -72,7 +77,7 @@ interface OutputText {
   duty?: string;
   idle?: string;
   on_silence?: string;
-  calibration?: { dead: string; per_uL: string; from: string; to: string };
+  calibration?: string | { dead: string; per_uL: string; from: string; to: string };
 }
 
 /**
@@ -179,15 +184,25 @@ function offsetOf(root: Node | null, where: readonly string[]): number {
 
 /** Turns checked text into numbers, and reports what a schema cannot say. */
 class RigBuilder {
+  private readonly base: string;
+  private readonly calibrated: Calibrated;
+
   constructor(
     private readonly path: string,
     private readonly text: string,
     private readonly file: RigText,
-    private readonly report: (where: readonly string[], message: string) => void,
-  ) {}
+    private readonly report: Report,
+  ) {
+    this.base = dirname(resolve(path));
+    this.calibrated = new Calibrated(join(this.base, this.calibrations), report);
+  }
+
+  private get calibrations(): string {
+    return this.file.calibrations ?? 'calibrations';
+  }
 
   build(): Rig {
-    const { file } = this;
+    const { file, base } = this;
     const outputs = Object.entries(file.outputs).map(([name, output]) => this.output(name, output));
     this.noneTwice('inputs', file.inputs);
     this.noneTwice('outputs', file.outputs);
@@ -199,7 +214,6 @@ class RigBuilder {
     if (water.perSessionNl > water.perDayNl) {
       this.report(['water', 'per_session'], 'more water a session than a day');
     }
-    const base = dirname(resolve(this.path));
     return {
       name: file.rig,
       port: file.board.port,
@@ -212,6 +226,12 @@ class RigBuilder {
       outputs,
       water,
       sync: this.sync(),
+      loopback: this.loopback(),
+      calibrationsFolder: join(base, this.calibrations),
+      calibrations: this.calibrated.used.map((calibration) => ({
+        calibration,
+        source: `${this.calibrations}/${calibration.name}.json`,
+      })),
       whenFull: file.record?.when_full ?? 'water stops',
       recordFolder: resolve(base, file.record?.folder ?? 'records'),
       rulesFolder: resolve(base, file.rules_folder ?? '.'),
@@ -231,8 +251,18 @@ class RigBuilder {
 
   private belt(): RigBelt {
     const { belt, inputs } = this.file;
-    const lengthCm = this.amount(belt.length, 'length');
-    const countsPerCm = Number(belt.counts_per_cm);
+    const stored = this.calibrated.belt(belt.calibration);
+    if (belt.calibration !== undefined) {
+      const { length, counts_per_cm, direction } = belt;
+      this.calibrated.refuseBoth(['belt'], { length, counts_per_cm, direction });
+      this.calibrated.refuseBoth(['belt', 'seam'], { offset: belt.seam?.offset });
+    } else {
+      for (const key of ['length', 'counts_per_cm'] as const) {
+        if (belt[key] === undefined) this.report(['belt'], `missing key \`${key}\``);
+      }
+    }
+    const lengthCm = stored?.lengthCm ?? this.amount(belt.length ?? '1 cm', 'length');
+    const countsPerCm = stored?.countsPerCm ?? Number(belt.counts_per_cm ?? 1);
     if (lengthCm <= 0) this.report(['belt', 'length'], 'a belt must be longer than nothing');
     if (countsPerCm <= 0) this.report(['belt', 'counts_per_cm'], 'expected more than 0');
     const seam = belt.seam;
@@ -243,13 +273,13 @@ class RigBuilder {
       lengthCm,
       countsPerCm,
       toleranceCm: this.amount(belt.tolerance ?? '5 mm', 'length'),
-      reversed: belt.direction === 'reversed',
+      reversed: stored?.reversed ?? belt.direction === 'reversed',
       stillBelowCmPerS: this.amount(belt.still_below ?? '1 cm/s', 'speed'),
       speedWindowUs: this.amount(belt.speed_window ?? '200 ms', 'time'),
       hysteresisCm: this.amount(belt.hysteresis ?? '5 mm', 'length'),
       seam: seam && {
         line: Number(inputs[seam.input]?.line),
-        offsetCm: this.amount(seam.offset ?? '0 cm', 'length'),
+        offsetCm: stored?.offsetCm ?? this.amount(seam.offset ?? '0 cm', 'length'),
         warnCm: this.amount(seam.warn ?? '1 cm', 'length'),
         stopCm: this.amount(seam.stop ?? '3 cm', 'length'),
       },
@@ -261,12 +291,17 @@ class RigBuilder {
     if (sensors.length > 1) {
       this.report(['inputs', sensors[1]![0]], 'a second lick sensor: one spout has one');
     }
-    const sensor = sensors[0]?.[1];
+    const [name = '', sensor] = sensors[0] ?? [];
+    const stored = this.calibrated.lick(name, sensor?.calibration);
+    if (sensor?.calibration !== undefined) {
+      const { lockout, stuck } = sensor;
+      this.calibrated.refuseBoth(['inputs', name], { lockout, stuck });
+    }
     return (
       sensor && {
         line: Number(sensor.line),
-        lockoutUs: this.amount(sensor.lockout ?? '50 ms', 'time'),
-        stuckUs: this.amount(sensor.stuck ?? '1 s', 'time'),
+        lockoutUs: stored?.lockoutUs ?? this.amount(sensor.lockout ?? '50 ms', 'time'),
+        stuckUs: stored?.stuckUs ?? this.amount(sensor.stuck ?? '1 s', 'time'),
         artefactUs: this.amount(sensor.artefact ?? '5 ms', 'time'),
       }
     );
@@ -311,17 +346,13 @@ class RigBuilder {
     const where = ['outputs', name];
     const longestOnUs = this.amount(output.longest_on, 'time');
     const duty = output.duty?.split(/ of /);
-    const calibration = output.calibration;
-    const valve = calibration && {
-      deadUs: this.amount(calibration.dead, 'time'),
-      usPerNl: this.amount(calibration.per_uL, 'time') / 1_000,
-      leastNl: this.amount(calibration.from, 'volume'),
-      mostNl: this.amount(calibration.to, 'volume'),
-    };
-    if (output.kind === 'valve' && !valve) {
-      this.report(where, 'a valve needs its calibration');
+    const { calibration } = output;
+    const valve = this.valve(name, calibration);
+    if (output.kind === 'valve' && calibration === undefined) {
+      const more = `the name of one, its line, or \`${UNMEASURED}\` until it is measured`;
+      this.report(where, `a valve needs its calibration: ${more}`);
     }
-    if (valve && output.kind !== 'valve') {
+    if (calibration !== undefined && output.kind !== 'valve') {
       this.report([...where, 'calibration'], 'only a valve has a calibration');
     }
     if (valve && valve.deadUs + valve.mostNl * valve.usPerNl > longestOnUs) {
@@ -343,6 +374,29 @@ class RigBuilder {
       finishOnSilence: output.on_silence === 'finish',
       valve,
     };
+  }
+
+  private valve(name: string, written: OutputText['calibration']): RigOutput['valve'] {
+    if (written === undefined || written === UNMEASURED) return undefined;
+    if (typeof written === 'string') return this.calibrated.valve(name, written);
+    return {
+      deadUs: this.amount(written.dead, 'time'),
+      usPerNl: this.amount(written.per_uL, 'time') / 1_000,
+      leastNl: this.amount(written.from, 'volume'),
+      mostNl: this.amount(written.to, 'volume'),
+    };
+  }
+
+  private loopback(): Rig['loopback'] {
+    const { loopback, outputs, inputs } = this.file;
+    if (loopback === undefined) return undefined;
+    if (outputs[loopback.output]?.kind !== 'mark') {
+      this.report(['loopback', 'output'], 'expected an output of kind mark');
+    }
+    if (!(loopback.input in inputs)) {
+      this.report(['loopback', 'input'], `no input is called \`${loopback.input}\``);
+    }
+    return loopback;
   }
 
   private sync(): RigSync | undefined {

@@ -1,5 +1,6 @@
 import type { OutputFacts, RigFacts } from '../../rules/facts.js';
 import type { AlarmLevel } from '../inputs.js';
+import type { Calibration } from './calibration.js';
 
 /** A rig file, read and checked; amounts in cm, microseconds, cm/s, nanolitres. */
 export interface Rig {
@@ -20,6 +21,12 @@ export interface Rig {
     readonly largestDropNl: number;
   };
   readonly sync: RigSync | undefined;
+  /** A wire from an output to an input, by which true latency is measured. */
+  readonly loopback: { readonly output: string; readonly input: string } | undefined;
+  /** Absolute: where calibrations of this rig are kept. */
+  readonly calibrationsFolder: string;
+  /** Those that the rig file refers to. */
+  readonly calibrations: readonly UsedCalibration[];
   readonly whenFull: 'water goes on' | 'water stops';
   /** Absolute. */
   readonly recordFolder: string;
@@ -58,6 +65,13 @@ export interface RigNotify {
   readonly body: string | undefined;
   readonly contentType: string;
   readonly mostPerMin: number;
+}
+
+/** A calibration in force, as it was read. */
+export interface UsedCalibration {
+  readonly calibration: Calibration;
+  /** With `/`, from the rig file's folder. */
+  readonly source: string;
 }
 
 export interface RigBelt {

@@ -57,6 +57,16 @@ function volume({ symbols, problems }: CheckContext, body: ActionBody & { kind: 
   const output = symbols.valve(body.from);
   const line = output?.valve;
   const { low, high } = intervalOf(body.volume, symbols);
+  if (output && !line) {
+    problems.report(
+      'volumeOutOfRange',
+      body.volume.at,
+      `\`${output.name}\` is not calibrated yet`,
+      {
+        expected: 'a valve that was calibrated: `lapwing calibrate valve`',
+      },
+    );
+  }
   if (!line || !output || !Number.isFinite(low) || !Number.isFinite(high)) return;
   const range = `${formatQuantity(line.leastNl, 'volume')} to ${formatQuantity(line.mostNl, 'volume')}`;
   if (low < line.leastNl || high > line.mostNl) {
