@@ -7,6 +7,8 @@ const THINK_US = 10_000;
 /** One stride: how long a speed within a bout lasts, s. */
 const STRIDE_S = 0.5;
 const BURST_S = 1;
+/** More water than this does not hang at a spout, uL: it falls. */
+const HANGS_MOST_UL = 15;
 
 type Mode = 'run' | 'pause' | 'back' | 'drink' | 'groom';
 
@@ -51,7 +53,7 @@ export class Animal {
     this.#lengthCm = lengthCm;
     this.#dice = new Dice(seed);
     this.licking = new LickSensor(parameters, seed + 1);
-    this.skill = trained ? 0.95 : 0;
+    this.skill = trained ? parameters.trainedSkill : 0;
     this.expectedCm = trained ? expectedCm : Number.NaN;
     this.#thinkEveryUs = Math.max(THINK_US, strideUs);
     this.#follow = 1 - Math.exp(-strideUs / 1e6 / parameters.responseS);
@@ -82,7 +84,11 @@ export class Animal {
 
   /** A drop appears at the spout while the animal is at `positionCm`. */
   drop(ul: number, positionCm: number, nowUs: number): void {
-    this.#atSpoutUl += ul;
+    this.#atSpoutUl = Math.min(HANGS_MOST_UL, this.#atSpoutUl + ul);
+    const { naiveMissChance, trainedMissChance } = this.#parameters;
+    const misses = trainedMissChance + (naiveMissChance - trainedMissChance) * (1 - this.skill);
+    // What it did not notice hangs there until it licks for another reason, and teaches nothing.
+    if (this.#dice.chance(misses)) return;
     this.#learn(positionCm);
     // It feels the drop: a naive animal does not always stop for it.
     if (this.#dice.chance(0.4 + 0.6 * this.skill)) {

@@ -2,6 +2,10 @@ import { mkdtempSync } from 'node:fs';
 import { tmpdir } from 'node:os';
 import { join, resolve } from 'node:path';
 import { Command } from 'commander';
+import { ANIMAL } from '../../hardware-sim/animal/parameters.js';
+import { type AnimalFile, readAnimal } from '../rehearse/animalFile.js';
+import { DEFAULT_LATENCY, readLatency } from '../rehearse/latency.js';
+import { reportLines } from '../rehearse/reportLines.js';
 import { newSeed, type PreparedRules, prepareRules } from '../session/prepare.js';
 import { rehearse } from '../session/rehearsal.js';
 import { readRig } from '../session/rig/readRig.js';
@@ -10,19 +14,30 @@ import { openSession } from '../session/store.js';
 import { type SessionSummary, Summariser, summaryLines } from '../session/summary.js';
 import { rigOption, wholeNumber } from './arguments.js';
 import { eventLine } from './eventLine.js';
+import { rehearseManyHere } from './rehearseRuns.js';
 import { simulatedRigFor } from './simulatedRigFor.js';
 import { tellWarnings } from './tellWarnings.js';
 
 interface RehearseFlags {
   rig: string;
   seed?: string;
-  animal: number;
+  animal?: string;
+  animalSeed: number;
+  runs?: number;
+  jobs?: number;
+  latency?: string;
+  everyFrame?: boolean;
   naive?: boolean;
   most: number;
   events?: boolean;
   json?: boolean;
   record?: string | true;
 }
+
+const HELP = `
+One session tells what fired where; --runs 500 tells how sessions differ: firings by rule and phase,
+water, laps, which limits are met, rules that never fire and why, phases never left, errors of
+position, balance of draws. The same --seed gives the same table on any number of cores.`;
 
 /** `lapwing rehearse RULES --rig RIG`: a whole session in virtual time, as fast as it goes. */
 export function rehearseCommand(): Command {
@@ -31,16 +46,26 @@ export function rehearseCommand(): Command {
     .argument('<rules>', 'the rules file')
     .addOption(rigOption())
     .option('--seed <text>', 'the seed of every draw')
-    .option('--animal <number>', 'the seed of the simulated animal', wholeNumber(0, 2 ** 31), 1)
+    .option('--animal <file>', 'how the simulated animal behaves; see `lapwing animal`')
+    .option('--animal-seed <number>', 'which one of its kind', wholeNumber(0, 2 ** 31), 1)
     .option('--naive', 'an animal that has not learned where water comes')
     .option('--most <minutes>', 'end after this long at most', wholeNumber(1, 24 * 60), 180)
     .option('--events', 'print every event')
     .option('--json', 'print the summary as JSON')
     .option('--record [folder]', 'write the record too, below this folder')
-    .action((path: string, flags: RehearseFlags) => {
+    .option('--runs <number>', 'this many sessions, and how they differ', wholeNumber(1, 100_000))
+    .option('--jobs <number>', 'on so many cores; all of them unless said', wholeNumber(1, 256))
+    .option('--latency <file>', 'with --runs: latencies as measured, for errors of position')
+    .option('--every-frame', 'with --runs: every frame of a board at 1 kHz, five times slower')
+    .addHelpText('after', HELP)
+    .action(async (path: string, flags: RehearseFlags) => {
       const rig = readRig(flags.rig);
       const rules = prepareRules(resolve(path), rig);
       if (!flags.json) tellWarnings(rules);
+      if (flags.runs !== undefined) {
+        await rehearseRuns(rig, rules, flags, flags.runs);
+        return;
+      }
       const summary = rehearseOnce(rig, rules, flags);
       if (flags.json) process.stdout.write(`${JSON.stringify(plain(summary), null, 2)}\n`);
       else process.stdout.write(`${summaryLines(summary).join('\n')}\n`);
@@ -50,7 +75,10 @@ export function rehearseCommand(): Command {
 function rehearseOnce(rig: Rig, rules: PreparedRules, flags: RehearseFlags): SessionSummary {
   const seed = flags.seed ?? newSeed();
   const setup = { rig, program: rules.program, title: rules.file.title, seed, waterTodayNl: 0 };
-  const virtual = simulatedRigFor(rig, { seed: flags.animal, trained: flags.naive !== true });
+  const virtual = simulatedRigFor(rig, {
+    ...{ seed: flags.animalSeed, trained: flags.naive !== true },
+    animal: animalOf(flags).parameters,
+  });
   const summariser = new Summariser(rules.file.rules.map(({ name }) => name.name));
   const opened = flags.record === undefined ? undefined : openFor(rig, rules, seed, flags.record);
   const runner = rehearse(setup, virtual, {
@@ -66,8 +94,33 @@ function rehearseOnce(rig: Rig, rules: PreparedRules, flags: RehearseFlags): Ses
     opened.recorder.close(runner.core.endReason);
     process.stdout.write(`record: ${opened.folder}\n`);
   }
-  if (!flags.json) process.stdout.write(`seed ${seed}, animal ${flags.animal}\n`);
+  if (!flags.json) process.stdout.write(`seed ${seed}, animal ${flags.animalSeed}\n`);
   return summariser.summary;
+}
+
+async function rehearseRuns(
+  rig: Rig,
+  rules: PreparedRules,
+  flags: RehearseFlags,
+  runs: number,
+): Promise<void> {
+  const { name, parameters } = animalOf(flags);
+  const latency = flags.latency === undefined ? DEFAULT_LATENCY : readLatency(flags.latency);
+  const setting = {
+    ...{ rig, file: rules.file, seed: flags.seed ?? newSeed(), animal: parameters },
+    ...{ trained: flags.naive !== true, minutes: flags.most, latency },
+    everyFrame: flags.everyFrame === true,
+  };
+  const done = await rehearseManyHere(setting, runs, name, flags.jobs);
+  if (done === undefined) return;
+  const text = flags.json
+    ? JSON.stringify(done.report, null, 2)
+    : reportLines(done.report).join('\n');
+  process.stdout.write(`${text}\n`);
+}
+
+function animalOf({ animal }: RehearseFlags): AnimalFile {
+  return animal === undefined ? { name: 'usual', parameters: ANIMAL } : readAnimal(animal);
 }
 
 function openFor(rig: Rig, rules: PreparedRules, seed: string, where: string | true) {

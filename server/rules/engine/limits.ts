@@ -3,8 +3,13 @@ import type { State } from './state.js';
 
 /** Whether every limit of a rule leaves room for one more firing now. */
 export function limitsAllow(s: State, r: RuleState): boolean {
+  return limitMet(s, r) < 0;
+}
+
+/** The first limit of a rule that leaves no room for one more firing now; -1 when all do. */
+export function limitMet(s: State, r: RuleState): number {
   const { caps } = r.spec;
-  if (caps.length === 0) return true;
+  if (caps.length === 0) return -1;
   const real = s.tallies[r.spec.realTally]!;
   const sham = s.tallies[r.spec.shamTally]!;
   for (let n = 0; n < caps.length; n++) {
@@ -35,7 +40,7 @@ export function limitsAllow(s: State, r: RuleState): boolean {
         room = s.lap - r.lastLap >= cap.laps(s);
         break;
     }
-    if (!room) return false;
+    if (!room) return n;
   }
-  return true;
+  return -1;
 }
