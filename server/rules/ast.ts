@@ -96,7 +96,14 @@ export type Measure =
       readonly kind: 'since';
       readonly unit: 'time' | 'laps';
       readonly mark: Mark;
+    })
+  /** Of the field that the rule's last firing is predicted to leave. */
+  | (Located & {
+      readonly kind: 'predicted';
+      readonly what: PredictedAmount;
+      readonly of: NameRef;
     });
+export type PredictedAmount = 'width' | 'centre' | 'shift' | 'asymmetry';
 
 export type Mark =
   | (Located & {
@@ -118,6 +125,8 @@ export type Condition =
   | (Located & { readonly kind: 'not'; readonly of: Condition })
   | (Located & { readonly kind: 'in'; readonly span: SpanExpr })
   | (Located & { readonly kind: 'still' })
+  /** The criterion of `learned.ts` is met for a span. */
+  | (Located & { readonly kind: 'learned'; readonly span: SpanExpr })
   | (Located & {
       readonly kind: 'compare';
       readonly operator: '<' | '<=' | '>' | '>=';
@@ -144,6 +153,18 @@ export type Condition =
       readonly negated: boolean;
       readonly of: Sum;
     });
+
+/** What `and` joins in a condition, at its outermost; the condition itself where it is no `and`. */
+export function termsOf(condition: Condition | undefined): readonly Condition[] {
+  if (condition === undefined) return [];
+  return condition.kind === 'and' ? condition.terms : [condition];
+}
+
+/** What `or` joins in a condition, at its outermost; the condition itself where it is no `or`. */
+export function alternativesOf(condition: Condition | undefined): readonly Condition[] {
+  if (condition === undefined) return [];
+  return condition.kind === 'or' ? condition.terms : [condition];
+}
 
 /** A choice: an amount, or a word (a phase, a draw's word, `high`, `low`, a place). */
 export type Option = Quantity | (NameRef & { readonly kind: 'name' });
@@ -191,6 +212,8 @@ export interface DrawDecl extends Located {
 export interface OperatorDecl extends Located {
   readonly name: NameRef;
   readonly choices: Choices;
+  /** A choice between bounds goes in these steps, counted from the lower bound. */
+  readonly step?: Sum;
   readonly first: Option;
 }
 export interface TableDecl extends Located {
@@ -286,6 +309,9 @@ export type Cap =
   | (Located & { readonly kind: 'apart time'; readonly time: Sum })
   | (Located & { readonly kind: 'apart laps'; readonly laps: Sum });
 
+/** What the operator may ask of a rule: to fire at once, and in so many of the next laps at most. */
+export type Asked = Located & { readonly now: boolean; readonly laps?: Sum };
+
 export interface RuleDecl extends Located {
   readonly name: NameRef;
   readonly when: When;
@@ -296,6 +322,7 @@ export interface RuleDecl extends Located {
   readonly do: readonly Action[];
   readonly limits: readonly Cap[];
   readonly within?: Sum;
+  readonly asked?: Asked;
 }
 
 export interface RulesFile {

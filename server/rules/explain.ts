@@ -5,9 +5,10 @@ import { phasesOf } from './checks/course.js';
 import { intervalOf } from './checks/interval.js';
 import { resolve, type Symbols } from './checks/symbols.js';
 import { usesIn, usesOf } from './checks/uses.js';
+import { MOST_PUT_OFF_LAPS, MOST_PUT_OFF_MIN } from './engine/ending.js';
 import type { RigFacts } from './facts.js';
 import { printChoices, printCourse, printHabit, printOccasion, printSpot } from './print.js';
-import { printAction, printCap, printWhen } from './printRule.js';
+import { printAction, printAsked, printCap, printWhen } from './printRule.js';
 import { printCondition, printSum } from './printSum.js';
 import { formatQuantity } from './units.js';
 
@@ -134,19 +135,23 @@ function drawPhrase(draw: DrawDecl, symbols: Symbols): string {
 }
 
 function steering(file: RulesFile, symbols: Symbols): string {
-  const lines = file.operator.map(({ name, choices, first }) => {
+  const lines = file.operator.map(({ name, choices, step, first }) => {
     const at = first.kind === 'quantity' ? first.written : first.name;
     const place = file.places.some(({ place: where }) =>
       usesIn(where).some(({ ref }) => ref.name === name.name),
     );
     const when =
       place || symbols.yields(choices).kind === 'point' ? 'as the next lap begins' : 'at once';
-    return `${name.name}: ${printChoices(choices)}, at first ${at}; a change counts ${when}.`;
+    const steps = step ? ` in steps of ${printSum(step)}` : '';
+    return `${name.name}: ${printChoices(choices)}${steps}, at first ${at}; a change counts ${when}.`;
   });
   const buttons = new Set(
     usesOf(file).flatMap(({ ref, as }) => (as === 'button' ? [ref.name] : [])),
   );
   for (const button of buttons) lines.push(`A button \`${button}\`.`);
+  for (const { name, asked } of file.rules) {
+    if (asked) lines.push(`${name.name} may be asked for: ${printAsked(asked)}.`);
+  }
   return titled('Steered by the operator', lines);
 }
 
@@ -177,6 +182,11 @@ function rulePhrases(rule: RuleDecl, symbols: Symbols, most: RuleBounds): string
   lines.push(
     why === undefined ? 'Started by the board itself (armed).' : `Started by the host: ${why}.`,
   );
+  if (rule.asked) {
+    lines.push(
+      `Asked for by the operator (${printAsked(rule.asked)}), its ${rule.chance ? '`if` and `chance` are' : '`if` is'} taken as true; all else holds.`,
+    );
+  }
   lines.push(`At most: ${mostPhrase(most)}.`);
   return lines;
 }
@@ -225,6 +235,7 @@ function delivery(most: SessionBounds): string {
       ({ output, pulses, onUs }) =>
         `${output}: ${Number.isFinite(pulses) ? count(pulses, 'pulse') : 'no bound on its pulses'}${onUs > 0 && Number.isFinite(onUs) ? `, ${time(onUs)} on` : ''}.`,
     ),
+    `The operator may put off the end, by ${MOST_PUT_OFF_LAPS} laps and ${MOST_PUT_OFF_MIN} min at most: that is not counted in.`,
     `Water: ${Number.isFinite(most.waterNl) ? volume(most.waterNl) : 'no bound in this file; the rig file has one'}.`,
   ]);
 }

@@ -6,6 +6,8 @@
  * `n * lapCounts`, and the seam mark's corrections are already in it.
  */
 
+import type { FieldPrediction } from '../plasticity/fieldPrediction.js';
+
 export type Trust = 'unknown' | 'trusted' | 'doubtful';
 
 /** What is known at one instant; filled by the tracker and the session before the engine runs. */
@@ -101,6 +103,29 @@ export interface Journal {
   phaseBegan(phase: string, index: number, reason: string): void;
   cellBegan(index: number): void;
   noted(rule: number, serial: number): void;
+  /** An operator's choice counts from now on. */
+  chosen(choice: number, value: number | string): void;
+  /** The session will end by itself: laps left (NaN: no pace known), time left (NaN: not by time). */
+  endForeseen(laps: number, us: number, exact: boolean, what: string): void;
+  /** @param curve over the belt in even bins, as a share of its peak */
+  fieldPredicted(
+    rule: number,
+    serial: number,
+    field: FieldPrediction,
+    curve: readonly number[],
+  ): void;
+}
+/**
+ * Told, where someone asks, of moments at which a rule was not even tried; never read back by the
+ * engine, and no part of a record. Bit n of `untrue` and `unknown` is the nth term of its `if`.
+ */
+export interface Inquiry {
+  ifFailed(rule: number, untrue: number, unknown: number): void;
+  chanceFailed(rule: number): void;
+  /** The nth limit of the rule left no room. */
+  limitMet(rule: number, limit: number): void;
+  /** The rules end the session; bit n: the nth alternative of `end` is true. */
+  ended(alternatives: number): void;
 }
 /** How a firing that was asked or armed ended. */
 export type Settlement =

@@ -12,7 +12,7 @@ import type {
   Spot,
   Sum,
 } from './ast.js';
-import { printAction, printCap, printWhen } from './printRule.js';
+import { printAction, printAsked, printCap, printWhen } from './printRule.js';
 import { printCondition, printOption, printRange, printSum } from './printSum.js';
 import { unitOf } from './text/amounts.js';
 
@@ -128,8 +128,9 @@ export function printDraw(draw: DrawDecl): string {
   return `${printChoices(draw.choices)}, every ${printOccasion(draw)}${habits}`;
 }
 
-function printOperator({ choices, first }: OperatorDecl): string {
-  return `${printChoices(choices)}, at first ${printOption(first)}`;
+function printOperator({ choices, step, first }: OperatorDecl): string {
+  const steps = step ? `, in steps of ${printSum(step)}` : '';
+  return `${printChoices(choices)}${steps}, at first ${printOption(first)}`;
 }
 
 export function printCourse({ course }: PhaseDecl): string {
@@ -160,6 +161,7 @@ function printRule(rule: RuleDecl): string {
     printActions(rule.do, indent),
     rule.limits.length > 0 ? line(indent, 'limit', rule.limits.map(printCap).join(', ')) : '',
     rule.within ? line(indent, 'within', printSum(rule.within)) : '',
+    rule.asked ? line(indent, 'asked', printAsked(rule.asked)) : '',
   ];
   return `  ${rule.name.name}:\n${keys.join('')}`;
 }

@@ -1,4 +1,4 @@
-import type { Action, ActionBody, Cap, Moment, UntilThen, When } from './ast.js';
+import type { Action, ActionBody, Asked, Cap, Moment, UntilThen, When } from './ast.js';
 import { printCondition, printSpan, printSum } from './printSum.js';
 import { ordinal } from './text/words.js';
 
@@ -78,6 +78,12 @@ function printBody(body: ActionBody): string {
 function printUntil(until: UntilThen): string {
   const holding = until.while ? ` while ${printCondition(until.while)}` : '';
   return `${holding}, up to ${printSum(until.upTo)}`;
+}
+
+export function printAsked({ now, laps }: Asked): string {
+  const next = laps ? printSum(laps) : '';
+  const later = next === '1' ? 'in the next lap' : `in the next ${next} laps`;
+  return [...(now ? ['now'] : []), ...(laps ? [later] : [])].join(' or ');
 }
 
 export function printCap(cap: Cap): string {

@@ -1,5 +1,6 @@
+import type { FieldPrediction } from '../plasticity/fieldPrediction.js';
 import type { Trust } from '../rules/instant.js';
-import type { OperatorAct } from './inputs.js';
+import type { AlarmLevel, OperatorAct } from './inputs.js';
 
 /** Where and when a decision was taken, and the input that caused it. */
 export interface Stamp {
@@ -88,7 +89,47 @@ export type Decision =
       readonly index: number;
       readonly fields: Readonly<Record<string, string>>;
     }
-  | { readonly kind: 'note'; readonly text: string }
+  | {
+      readonly kind: 'note';
+      /** Empty: a mark, whose words may come later. */
+      readonly text: string;
+      /** The mark that it is, or puts into words, and when that was made; earlier builds had none. */
+      readonly mark?: number | null;
+      readonly markedUs?: number | null;
+    }
+  /** The field that an induction is predicted to leave, reckoned a second after it. */
+  | ({
+      readonly kind: 'field predicted';
+      readonly rule: string;
+      readonly serial: number;
+      /** Over the belt in even bins from 0 cm, as a share of its peak. */
+      readonly curve: readonly number[];
+    } & FieldPrediction)
+  | {
+      readonly kind: 'end foreseen';
+      /** Laps left, the present one counted in; null while no pace is known. */
+      readonly laps: number | null;
+      /** Seconds left, where a time ends it. */
+      readonly s: number | null;
+      /** Reckoned in laps alone, and not by the pace so far. */
+      readonly exact: boolean;
+      readonly reason: string;
+    }
+  /** An operator's choice counts; and, where it moves what the board has armed, the board has it. */
+  | {
+      readonly kind: 'choice';
+      readonly name: string;
+      readonly value: number | string;
+      readonly state: 'in force' | 'armed anew';
+    }
+  | {
+      readonly kind: 'alarm';
+      readonly alarm: string;
+      readonly state: 'raised' | 'cleared';
+      readonly level: AlarmLevel;
+      readonly text: string;
+      readonly remedy: string;
+    }
   | {
       readonly kind: 'operator';
       readonly act: OperatorAct;

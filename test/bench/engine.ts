@@ -77,7 +77,14 @@ function measure(
   };
   const journal: Journal = {
     ...{ fired: nothing, withheld: nothing, missed: nothing, drawn: nothing },
-    ...{ phaseBegan: nothing, cellBegan: nothing, noted: nothing },
+    ...{
+      phaseBegan: nothing,
+      cellBegan: nothing,
+      noted: nothing,
+      endForeseen: nothing,
+      chosen: nothing,
+    },
+    fieldPredicted: nothing,
   };
   const engine = new RulesEngine(compile(file, FACTS), 'bench', actuator, journal);
   const instant = firstInstant();

@@ -162,10 +162,20 @@ rules:
   test('a choice that moves a place takes effect when the next lap begins', () => {
     const stage = new Stage(LIT).to(1, 20);
     stage.engine.choose('light_at', 100);
-    expect(stage.engine.view().choices[0]).toEqual({ name: 'light_at', value: 45, queued: 100 });
+    expect(stage.engine.view().choices[0]).toEqual({
+      name: 'light_at',
+      value: 45,
+      queued: 100,
+      fromLap: 2,
+    });
     stage.to(3, 0);
     expect(stage.places('light')).toEqual([45, 100]);
-    expect(stage.engine.view().choices[0]).toEqual({ name: 'light_at', value: 100, queued: null });
+    expect(stage.engine.view().choices[0]).toEqual({
+      name: 'light_at',
+      value: 100,
+      queued: null,
+      fromLap: null,
+    });
   });
 
   test('any other takes effect at the next instant', () => {

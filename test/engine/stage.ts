@@ -1,3 +1,4 @@
+import type { FieldPrediction } from '../../server/plasticity/fieldPrediction.js';
 import type { RulesFile } from '../../server/rules/ast.js';
 import { compile } from '../../server/rules/engine/compile.js';
 import { RulesEngine } from '../../server/rules/engine/rulesEngine.js';
@@ -89,7 +90,11 @@ export interface StageOptions {
  */
 export class Stage implements Actuator, Journal {
   readonly deeds: Deed[] = [];
+  readonly chosenSoFar: { choice: number; value: number | string; lap: number }[] = [];
+  /** What the session's end announced of itself, and in which lap. */
+  readonly foreseen: { lap: number; laps: number; us: number; exact: boolean; what: string }[] = [];
   readonly requests: FiringRequest[] = [];
+  readonly fields: ({ rule: string; serial: number; lap: number } & FieldPrediction)[] = [];
   readonly armed = new Map<number, ArmRequest>();
   readonly engine: RulesEngine;
   readonly instant: Instant;
@@ -377,6 +382,15 @@ export class Stage implements Actuator, Journal {
   }
   cellBegan(index: number): void {
     this.deed('cell', '', index);
+  }
+  endForeseen(laps: number, us: number, exact: boolean, what: string): void {
+    this.foreseen.push({ lap: this.instant.lap, laps, us, exact, what });
+  }
+  chosen(choice: number, value: number | string): void {
+    this.chosenSoFar.push({ choice, value, lap: this.instant.lap });
+  }
+  fieldPredicted(rule: number, serial: number, field: FieldPrediction): void {
+    this.fields.push({ rule: this.rule(rule), serial, lap: this.instant.lap, ...field });
   }
   noted(rule: number): void {
     this.deed('note', this.rule(rule));

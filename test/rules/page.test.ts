@@ -35,6 +35,7 @@ describe('the page', () => {
     const keys = new Set(phrases.map((phrase) => phrase.split(':')[0]));
     expect([...keys].sort()).toEqual(
       [
+        'asked',
         'chance',
         'do',
         'draw',

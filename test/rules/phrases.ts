@@ -162,7 +162,9 @@ export const PHRASES = {
       maybe(seq(',', habit)),
     ),
   ),
-  operator: close(seq(choices, ', at first', option)),
+  operator: close(
+    seq(choices, maybe(seq(', in steps of', any(amount, NUMBER))), ', at first', option),
+  ),
   phase: close(
     seq(
       any(seq('for', list(length, ' or ')), seq('until', condition), 'to the end'),
@@ -183,4 +185,12 @@ export const PHRASES = {
   do: close(any(action, seq('after', amount, ',', action))),
   limit: list(cap, ', '),
   within: amount,
+  asked: seq(
+    any(
+      'now',
+      'in the next lap',
+      seq('in the next', count, 'laps'),
+      seq('now or in the next', count, 'laps'),
+    ),
+  ),
 } as const;

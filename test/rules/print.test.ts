@@ -38,6 +38,7 @@ const file = fc
       '      - note',
       `    limit: ${phrases.limit}`,
       `    within: ${phrases.within}`,
+      `    asked: ${phrases.asked}`,
       `end: ${phrases.if}`,
       '',
     ].join('\n'),

@@ -219,9 +219,9 @@ export class ScriptedAnimal {
   private showChoices(): void {
     const { targetCm: value, queuedTarget: queued } = this;
     this.state.choices = [
-      { name: 'target', value, queued },
-      { name: 'volume', value: 4, queued: null },
-      { name: 'train', value: 'short', queued: null },
+      { name: 'target', value, queued, fromLap: queued === null ? null : this.state.lap + 1 },
+      { name: 'volume', value: 4000, queued: null, fromLap: null },
+      { name: 'train', value: 'short', queued: null, fromLap: null },
     ];
     this.state.places = [
       { name: 'zone', fromCm: 80, toCm: 98 },
@@ -270,7 +270,7 @@ function session(
     buttons: ['induce_now', 'drop'],
     choices: [
       { name: 'target', unit: 'cm', least: 20, most: 160 },
-      { name: 'volume', unit: 'uL', least: 1, most: 8 },
+      { name: 'volume', unit: 'nL', least: 1000, most: 8000 },
       { name: 'train', unit: '', options: ['short', 'long'] },
     ],
   };
@@ -284,6 +284,7 @@ function idleState(): Writable<Snapshot> {
     withheld: 0,
     missed: 0,
     armed: false,
+    asked: null,
   });
   return {
     input: 0,

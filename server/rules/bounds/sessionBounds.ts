@@ -88,14 +88,16 @@ class Bounder {
     const known = this.known.get(name);
     if (known) return known;
     const all = [
-      this.byMoment(rule.when, depth),
+      // Asked for at once, it needs no moment of its own.
+      ...(rule.asked?.now ? [] : [this.byMoment(rule.when, depth)]),
       ...rule.limits.map((cap): Most => ({ count: this.byCap(cap), because: 'its limits' })),
       this.byWater(rule),
       this.byEnd(name),
-      ...(rule.chance?.value === 0 ? [{ count: 0, because: 'its chance' }] : []),
+      ...(rule.chance?.value === 0 && !rule.asked ? [{ count: 0, because: 'its chance' }] : []),
     ];
-    const least = all.reduce((a, b) => (b.count < a.count ? b : a));
-    const most = Number.isFinite(least.count) ? least : { count: Infinity, because: '' };
+    const none: Most = { count: Infinity, because: '' };
+    const least = all.reduce((a, b) => (b.count < a.count ? b : a), none);
+    const most = Number.isFinite(least.count) ? least : none;
     if (depth === 0) this.known.set(name, most);
     return most;
   }

@@ -27,6 +27,7 @@ export interface Use {
 const ROLES: Readonly<Record<string, Readonly<Record<string, Role>>>> = {
   edge: { of: 'span' },
   firings: { of: 'rule' },
+  predicted: { of: 'rule' },
   visit: { to: 'span' },
   firing: { of: 'rule' },
   begins: { what: 'phase' },
@@ -99,15 +100,18 @@ export function usesOf(file: RulesFile): Use[] {
   const uses = [
     ...file.values.flatMap(({ value }) => usesIn(value)),
     ...file.places.flatMap(({ place }) => usesIn(place)),
-    ...file.operator.flatMap(({ choices, first }) => usesIn({ choices, first })),
+    ...file.operator.flatMap(({ choices, step, first }) => usesIn({ choices, step, first })),
     ...file.draws.flatMap(({ choices, every, habits }) => usesIn({ choices, every, habits })),
     ...file.phases.flatMap(({ course }) => usesIn(course)),
     ...(file.end ? usesIn(file.end) : []),
   ];
   for (const rule of file.rules) {
-    const { when, if: asked, sham, do: actions, limits, within } = rule;
+    const { when, if: needed, sham, do: actions, limits, within, asked } = rule;
     // A rule's `within` is an amount, unlike the `within` of a measure.
-    uses.push(...usesIn({ when, asked, sham, actions, limits }), ...usesIn({ amount: within }));
+    uses.push(
+      ...usesIn({ when, needed, sham, actions, limits, asked }),
+      ...usesIn({ amount: within }),
+    );
   }
   return uses;
 }

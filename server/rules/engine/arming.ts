@@ -85,7 +85,7 @@ export class ArmingPass {
       (target <= furthest || r.wantedSerial > 0) &&
       Math.floor(target / s.lapCounts) === Math.floor(s.travel / s.lapCounts);
     if (ahead) {
-      r.held = spec.if === undefined || spec.if(s) === TRUE;
+      r.held = this.firing.ifHolds(r);
       r.heldFrame = run.frame;
     }
     const wanted =
@@ -94,7 +94,8 @@ export class ArmingPass {
       trustLacking(s, spec) === undefined &&
       (spec.sham === undefined || spec.sham(s) !== TRUE) &&
       limitsAllow(s, r) &&
-      this.firing.chanceComesUp(r);
+      Number.isNaN(r.askedUs) &&
+      (r.isAsked(s.lap) || this.firing.chanceComesUp(r));
     if (!wanted) {
       if (r.wantedSerial > 0) this.disarm(r);
       return;
@@ -134,10 +135,12 @@ export class ArmingPass {
     r.wantedOrders = orders;
     r.wantedVersion = run.version;
     const crossedUs = Number.NaN;
-    r.slots.push({ serial, placeTravel: target, crossedUs, heldAtCrossing: false });
+    const byHand = r.isAsked(s.lap);
+    r.slots.push({ serial, placeTravel: target, crossedUs, heldAtCrossing: false, byHand });
   }
 
-  private disarm(r: RuleState): void {
+  /** Lets the rule's slot go; what became of it is still told. */
+  disarm(r: RuleState): void {
     r.wantedSerial = 0;
     this.run.actuator.disarm(r.spec.index);
   }
@@ -170,7 +173,7 @@ export class ArmingPass {
   /** `if` on the last frame before this one; as it is now when the place was not near then. */
   heldBefore(r: RuleState): boolean {
     if (r.heldFrame === this.run.frame - 1) return r.held;
-    return r.spec.if === undefined || r.spec.if(this.run.s) === TRUE;
+    return this.firing.ifHolds(r);
   }
 
   /** @returns false when the serial is not that of a slot */
@@ -187,7 +190,7 @@ export class ArmingPass {
 
   private fired(r: RuleState, slot: OutstandingSlot, how: Settlement): void {
     r.firedTravel = slot.placeTravel;
-    this.firing.count(r, slot.serial, false, false, how === 'fired');
+    this.firing.count(r, slot.serial, { byHand: slot.byHand, announce: how === 'fired' });
     if (how !== 'fired') return;
     this.run.journal.fired(r.spec.index, slot.serial, false, true);
     this.firing.act(r, slot.serial, false);

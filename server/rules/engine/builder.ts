@@ -1,7 +1,7 @@
 import type { RulesFile, Sum } from '../ast.js';
 import type { RigFacts } from '../facts.js';
 import { Names } from './names.js';
-import type { Amount, PointSpec, SpanSpec } from './program.js';
+import type { Amount, GapSpec, PointSpec, SpanSpec } from './program.js';
 import type { TallySpec } from './tally.js';
 
 /** What compiling gathers: tables that the closures refer to by index, each thing in them once. */
@@ -10,6 +10,7 @@ export class Builder {
   readonly spans: SpanSpec[] = [];
   readonly points: PointSpec[] = [];
   readonly tallies: TallySpec[] = [];
+  readonly gaps: GapSpec[] = [];
   marks = 0;
   readonly lickMarks: { span: number; mark: number }[] = [];
   readonly inputMarks: { input: number; rises: boolean; mark: number }[] = [];

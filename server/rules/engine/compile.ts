@@ -1,9 +1,10 @@
 import { isArmable } from '../armable.js';
-import type { PhaseDecl, RuleDecl, RulesFile } from '../ast.js';
+import { alternativesOf, type PhaseDecl, type RuleDecl, type RulesFile, termsOf } from '../ast.js';
 import type { RigFacts } from '../facts.js';
 import { boundsOf } from './bounds.js';
 import { Builder } from './builder.js';
 import { compileAction, compileCap } from './compileAction.js';
+import { compileAhead, lengthAhead } from './compileAhead.js';
 import { compileCondition } from './compileCondition.js';
 import { compileChoice, compileDraw, namesOfPlaces, visit } from './compileDraw.js';
 import { compileSum, edgesOfName } from './compileSum.js';
@@ -34,6 +35,7 @@ export function compile(file: RulesFile, facts: RigFacts): Program {
   const rules = file.rules.map((decl, index) => compileRule(b, decl, index, waiters));
   const phases = file.phases.map((decl) => compilePhase(b, decl));
   const end = file.end ? compileCondition(b, file.end) : undefined;
+  const endAhead = file.end ? compileAhead(b, file.end) : undefined;
   const places = placesShown(b, placeNames);
   for (const waiter of waiters.licks) {
     if (waiter.nth?.stretch === 'visit') b.spans[waiter.span]!.tracked = true;
@@ -51,6 +53,9 @@ export function compile(file: RulesFile, facts: RigFacts): Program {
     marks: b.marks,
     places,
     end,
+    endAlternatives: alternativesOf(file.end).map((one) => compileCondition(b, one)),
+    endAhead,
+    gaps: b.gaps,
     lickWaiters: waiters.licks,
     lickMarks: b.lickMarks,
     risesRules: waiters.rises,
@@ -81,17 +86,23 @@ function compileRule(b: Builder, decl: RuleDecl, index: number, waiters: Waiters
     index,
     when,
     if: decl.if ? compileCondition(b, decl.if) : undefined,
+    ifTerms: termsOf(decl.if).map((term) => compileCondition(b, term)),
     chance: decl.chance?.value,
     sham: decl.sham ? compileCondition(b, decl.sham) : undefined,
     actions: decl.do.map((action) => compileAction(b, action)),
     amountsVary: readsAnyMeasure(decl.do),
     caps,
+    induces: induces(b, decl),
     realTally: b.tally('real firings', index, { windowUs }),
     shamTally: b.tally('sham firings', index, { windowUs }),
     withinUs: byPlace ? undefined : within,
     withinCm: byPlace ? within : undefined,
     tiedToPlace: tiedToPlace(b, decl),
     arming: isArmable(decl, b.facts) ? armingOf(b, decl) : undefined,
+    asked: decl.asked && {
+      now: decl.asked.now,
+      laps: decl.asked.laps && compileSum(b, decl.asked.laps),
+    },
     firesRules: waiters.fires[index]!,
     firesDraws: b.file.draws.flatMap((draw, n) =>
       draw.every.kind === 'firing' && draw.every.of.name === decl.name.name ? [n] : [],
@@ -134,7 +145,21 @@ function readsAnyMeasure(node: unknown): boolean {
   });
   return reads;
 }
-const MEASURES = new Set(['measure', 'scoped', 'firings', 'since']);
+const MEASURES = new Set(['measure', 'scoped', 'firings', 'since', 'predicted']);
+
+/** It drives what the rig file says evokes a plateau, or the file reads its predicted field. */
+function induces(b: Builder, decl: RuleDecl): boolean {
+  const evokes = decl.do.some(({ body }) => {
+    if (body.kind !== 'pulse' && body.kind !== 'hold') return false;
+    return b.names.need(body.output.name, 'output').output.evokesPlateau === true;
+  });
+  let read = false;
+  visit(b.file, (node) => {
+    const { kind, of } = node as { kind?: string; of?: { name?: string } };
+    if (kind === 'predicted' && of?.name === decl.name.name) read = true;
+  });
+  return evokes || read;
+}
 
 /**
  * Whether a rule names or reads a place. Laps, speed and time alone do not tie it to one; `lap
@@ -145,7 +170,7 @@ function tiedToPlace(b: Builder, decl: RuleDecl): boolean {
   visit(decl, (node) => {
     const { kind, what, measure, name, within } = node as Record<string, unknown>;
     if (kind === 'reaches' || kind === 'enters' || kind === 'leaves') tied = true;
-    if (kind === 'in' || kind === 'edge' || kind === 'place mark') tied = true;
+    if (kind === 'in' || kind === 'learned' || kind === 'edge' || kind === 'place mark') tied = true;
     if (kind === 'begins' && what === 'lap') tied = true;
     if (kind === 'measure' && measure === 'position') tied = true;
     if (
@@ -168,11 +193,12 @@ function compilePhase(b: Builder, decl: PhaseDecl): PhaseSpec {
   const { course } = decl;
   const name = decl.name.name;
   if (course.kind === 'to the end') {
-    return { name, over: undefined, atLapEnd: decl.atLapEnd, why: '' };
+    return { name, over: undefined, atLapEnd: decl.atLapEnd, why: '', ahead: undefined };
   }
   if (course.kind === 'until') {
     const over = compileCondition(b, course.condition);
-    return { name, over, atLapEnd: decl.atLapEnd, why: `${name}: its \`until\` is true` };
+    const ahead = compileAhead(b, course.condition);
+    return { name, over, atLapEnd: decl.atLapEnd, why: `${name}: its \`until\` is true`, ahead };
   }
   const lengths = course.lengths.map((length): Test => {
     if (length.kind === 'laps') {
@@ -184,5 +210,6 @@ function compilePhase(b: Builder, decl: PhaseDecl): PhaseSpec {
   });
   const over: Test =
     lengths.length === 1 ? lengths[0]! : (s) => truth(lengths.some((test) => test(s) === TRUE));
-  return { name, over, atLapEnd: decl.atLapEnd, why: `${name} has run its length` };
+  const ahead = lengthAhead(b, course.lengths);
+  return { name, over, atLapEnd: decl.atLapEnd, why: `${name} has run its length`, ahead };
 }

@@ -1,3 +1,4 @@
+import { isArmable } from '../armable.js';
 import type { Choices, DrawDecl, Habit, OperatorDecl, Option } from '../ast.js';
 import type { Builder } from './builder.js';
 import { compileOption, compileSum, constant, spanOf } from './compileSum.js';
@@ -58,7 +59,11 @@ export function compileChoice(b: Builder, decl: OperatorDecl, places: Set<string
     options: optionsOf(b, choices),
     ...between,
     first: { value: first.kind === 'quantity' ? first.value : Number.NaN, option },
+    step: decl.step ? compileSum(b, decl.step) : undefined,
     movesPlace: places.has(decl.name.name),
+    rearms: b.file.rules.flatMap((rule, index) =>
+      isArmable(rule, b.facts) && namesUsed(rule, b.names).has(decl.name.name) ? [index] : [],
+    ),
   };
 }
 
@@ -80,7 +85,7 @@ export function namesOfPlaces(b: Builder): Set<string> {
   const found = namesUsed(b.file.places, b.names);
   visit([b.file.rules, b.file.phases, b.file.draws, b.file.end], (node) => {
     const { kind } = node as { kind?: unknown };
-    if (kind === 'in' || kind === 'enters' || kind === 'leaves') {
+    if (kind === 'in' || kind === 'learned' || kind === 'enters' || kind === 'leaves') {
       namesUsed((node as { span: unknown }).span, b.names, found);
     } else if (kind === 'reaches' || kind === 'place mark') {
       namesUsed((node as { place: unknown }).place, b.names, found);

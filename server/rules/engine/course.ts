@@ -1,4 +1,6 @@
+import { isOnStep } from '../steps.js';
 import type { Draw } from './draw.js';
+import type { Ending } from './ending.js';
 import { NEXT, NOWHERE, PREVIOUS, REPEAT, type Run } from './run.js';
 import { TRUE } from './truth.js';
 
@@ -10,7 +12,10 @@ export class Course {
   private cellBegan = false;
   private choiceQueued = false;
 
-  constructor(private readonly run: Run) {}
+  constructor(
+    private readonly run: Run,
+    private readonly ending: Ending,
+  ) {}
 
   /** The number of the present cell, one that was asked for counted in. */
   get cell(): number {
@@ -33,7 +38,9 @@ export class Course {
     let option = -1;
     if (spec.between) {
       if (typeof value !== 'number') return false;
-      if (!(value >= spec.between.from(s) && value <= spec.between.to(s))) return false;
+      const { from, to } = spec.between;
+      if (!(value >= from(s) && value <= to(s))) return false;
+      if (spec.step && !isOnStep(value, from(s), spec.step(s))) return false;
     } else {
       option = spec.options.findIndex((o) =>
         typeof value === 'string' ? o.word === value : o.word === '' && o.amount(s) === value,
@@ -63,6 +70,8 @@ export class Course {
       choice.value = choice.queuedValue;
       choice.option = choice.queuedOption;
       this.run.valuesChanged = true;
+      const word = s.program.choices[n]!.options[choice.option]?.word ?? '';
+      this.run.journal.chosen(n, word === '' ? choice.value : word);
     }
   }
 
@@ -93,6 +102,9 @@ export class Course {
       this.phaseOver = true;
     }
     if (spec.atLapEnd && !lapBegan) return;
+    // The last phase ends the session, unless that was put off.
+    const isLast = s.phase + 1 >= s.program.phases.length;
+    if (isLast && !this.ending.isDue('the last phase ended')) return;
     this.beginPhase(s.phase + 1, lapBegan, spec.why);
   }
 
@@ -138,6 +150,7 @@ export class Course {
     s.phaseLapBase = s.lapOrdinal - (lapBegan ? 1 : 0);
     for (const tally of s.tallies) tally.phaseBegan();
     this.phaseOver = false;
+    this.ending.phaseBegan();
     this.phaseBegan = true;
     run.valuesChanged = true;
     if (s.phase < 0) return;

@@ -1,11 +1,11 @@
-import type { FiringRequest } from '../instant.js';
+import type { FiringRequest, Inquiry } from '../instant.js';
 import { uniform } from './hash.js';
-import { limitsAllow } from './limits.js';
+import { limitMet } from './limits.js';
 import { orderOf, ordersNow, trustLacking } from './orders.js';
 import type { ActionSpec } from './program.js';
 import type { DelayedAction, PendingFiring, RuleState, UsedDraw } from './ruleState.js';
 import { NEXT, type Run } from './run.js';
-import { TRUE } from './truth.js';
+import { FALSE, TRUE } from './truth.js';
 
 /** The longest after its moment that an output may start where the rule says nothing. */
 export const DEFAULT_WITHIN_US = 50_000;
@@ -14,6 +14,15 @@ export const DEFAULT_WITHIN_US = 50_000;
  * beside the place be stimulated at any later time.
  */
 export const DISTANCE_WITHIN_US = 250_000;
+/** How a firing is counted. */
+interface Counted {
+  readonly sham?: boolean;
+  readonly awaited?: boolean;
+  /** Asked for by the operator, so that no chance was thrown. */
+  readonly byHand: boolean;
+  /** False: rules that wait for it do not hear of it. */
+  readonly announce?: boolean;
+}
 /** Outcomes that are waited for at once, per rule; far more than a board keeps. */
 const MOST_PENDING = 256;
 
@@ -30,12 +39,24 @@ export class Firing {
     const { run } = this;
     const { s } = run;
     const { spec } = r;
-    if (run.over || !ifHeld) return;
-    if (!this.chanceComesUp(r)) {
-      r.chanceIndex++;
+    if (run.over) return;
+    if (!ifHeld) {
+      if (run.inquiry !== undefined) this.tellFailed(r, run.inquiry);
       return;
     }
-    if (!limitsAllow(s, r)) return;
+    const byHand = r.isAsked(s.lap) || r.askedUs === causeUs;
+    if (!byHand && !this.chanceComesUp(r)) {
+      r.chanceIndex++;
+      run.inquiry?.chanceFailed(spec.index);
+      return;
+    }
+    const met = limitMet(s, r);
+    if (met >= 0) {
+      run.inquiry?.limitMet(spec.index, met);
+      // Whoever asked for it is waiting to see it.
+      if (byHand && r.lastLap !== s.lap) this.withheld(r, ++r.serial, 'its limits leave no room');
+      return;
+    }
     const serial = ++r.serial;
     const expiryUs = causeUs + this.windowUs(r);
     const withinCounts = this.withinCounts(r);
@@ -71,9 +92,20 @@ export class Firing {
       }
     }
     const awaited = orders.length > 0 && !sham;
-    this.count(r, serial, sham, awaited);
+    this.count(r, serial, { sham, awaited, byHand });
     if (!awaited) run.journal.fired(spec.index, serial, sham, false);
     this.act(r, serial, sham);
+  }
+
+  private tellFailed(r: RuleState, inquiry: Inquiry): void {
+    let untrue = 0;
+    let unknown = 0;
+    for (let n = 0; n < r.spec.ifTerms.length; n++) {
+      const value = r.spec.ifTerms[n]!(this.run.s);
+      if (value === FALSE) untrue |= 1 << n;
+      else if (value !== TRUE) unknown |= 1 << n;
+    }
+    inquiry.ifFailed(r.spec.index, untrue, unknown);
   }
 
   /** What of a firing is not an order: stops, notes, phases, and whatever waits for a delay. */
@@ -173,6 +205,12 @@ export class Firing {
     this.hold(action, r, serial, due.sham);
   }
 
+  /** Whether the rule's `if` is true now, or taken as true since the operator asked for the rule. */
+  ifHolds(r: RuleState): boolean {
+    const { s } = this.run;
+    return r.spec.if === undefined || r.isAsked(s.lap) || r.spec.if(s) === TRUE;
+  }
+
   /** Whether the rule's chance would come up for its next firing. */
   chanceComesUp(r: RuleState): boolean {
     const { chance, name } = r.spec;
@@ -208,7 +246,8 @@ export class Firing {
   }
 
   /** Counts a firing at this instant; `awaited` when it may yet be taken back. */
-  count(r: RuleState, serial: number, sham: boolean, awaited: boolean, announce = true): void {
+  count(r: RuleState, serial: number, how: Counted): void {
+    const { sham = false, awaited = false, byHand, announce = true } = how;
     const { run } = this;
     const { s } = run;
     const { spec } = r;
@@ -221,7 +260,7 @@ export class Firing {
     }
     if (awaited) {
       const at = s.stamp();
-      const usedChance = spec.chance !== undefined;
+      const usedChance = spec.chance !== undefined && !byHand;
       r.pending.push({
         serial,
         at,
@@ -233,7 +272,8 @@ export class Firing {
       });
       if (r.pending.length > MOST_PENDING) r.pending.shift();
     }
-    if (spec.chance !== undefined) r.chanceIndex++;
+    if (spec.chance !== undefined && !byHand) r.chanceIndex++;
+    if (spec.induces && !sham) run.plasticity.induced(spec.index, serial);
     s.tallies[sham ? spec.shamTally : spec.realTally]!.add(1, s.nowUs);
     r.lastUs = s.nowUs;
     r.lastLap = s.lap;
@@ -257,6 +297,7 @@ export class Firing {
     const tally = pending.sham ? r.spec.shamTally : r.spec.realTally;
     s.tallies[tally]!.withdraw(pending.at, s.stamp());
     if (pending.usedChance) r.chanceIndex--;
+    run.plasticity.withdraw(r.spec.index, pending.serial);
     const later = r.pending.find((p) => p.beforeUs === pending.at.timeUs && p !== pending);
     if (later) {
       later.beforeUs = pending.beforeUs;

@@ -75,8 +75,12 @@ export interface ChoiceSpec {
   readonly options: readonly ValueSpec[];
   readonly between?: { readonly from: Amount; readonly to: Amount };
   readonly first: { readonly value: number; readonly option: number };
+  /** A choice between bounds goes in steps from the lower one. */
+  readonly step: Amount | undefined;
   /** A place depends on it: a change waits for the next lap. */
   readonly movesPlace: boolean;
+  /** Rules that the board may start and that depend on it: a change arms them anew. */
+  readonly rearms: readonly number[];
 }
 
 export interface PhaseSpec {
@@ -85,7 +89,27 @@ export interface PhaseSpec {
   readonly over: Test | undefined;
   readonly atLapEnd: boolean;
   readonly why: string;
+  /** How far it is from being over; undefined where that cannot be told. */
+  readonly ahead: Ahead | undefined;
 }
+
+/** What is still lacking until one comparison comes true. */
+export interface GapSpec {
+  /** Not more than 0 once it is true. */
+  readonly lacking: Amount;
+  /** Laps are foreseen exactly; time by the pace of the laps; the rest by what a lap brings. */
+  readonly unit: 'laps' | 'time' | 'other';
+  /** For people: how far it has come, of how much, and what is counted. */
+  readonly done: Amount;
+  readonly goal: Amount;
+  readonly dimension: Dimension;
+  readonly what: string;
+}
+/** A condition as the gaps that are left to it; a test stands for what cannot be foreseen. */
+export type Ahead =
+  | { readonly kind: 'gap'; readonly gap: number }
+  | { readonly kind: 'test'; readonly test: Test }
+  | { readonly kind: 'all' | 'any'; readonly of: readonly Ahead[] };
 
 export type ActionSpec =
   | {
@@ -130,6 +154,8 @@ export interface RuleSpec {
         readonly lastingUs: Amount | undefined;
       };
   readonly if: Test | undefined;
+  /** What `and` joins in it; itself alone where it is no `and`. For whoever asks why. */
+  readonly ifTerms: readonly Test[];
   /** 0 to 1; undefined: always. */
   readonly chance: number | undefined;
   readonly sham: Test | undefined;
@@ -138,6 +164,8 @@ export interface RuleSpec {
   readonly amountsVary: boolean;
   readonly caps: readonly CapSpec[];
   /** Tallies of its real and of its sham firings. */
+  /** Each real firing is taken to induce a field, which is predicted. */
+  readonly induces: boolean;
   readonly realTally: number;
   readonly shamTally: number;
   readonly withinUs: Amount | undefined;
@@ -146,6 +174,8 @@ export interface RuleSpec {
   readonly tiedToPlace: boolean;
   /** May be started by the board: the place it waits for, else undefined. */
   readonly arming: Arming | undefined;
+  /** What the operator may ask of it: at once, and in so many of the next laps at most. */
+  readonly asked: { readonly now: boolean; readonly laps: Amount | undefined } | undefined;
   /** Rules that wait for this one to fire, marks that read it, draws that it renews. */
   readonly firesRules: number[];
   readonly firesDraws: number[];
@@ -174,6 +204,10 @@ export interface Program {
   readonly marks: number;
   readonly places: readonly PlaceView[];
   readonly end: Test | undefined;
+  /** What `or` joins in it; for whoever asks why a session ended. */
+  readonly endAlternatives: readonly Test[];
+  readonly endAhead: Ahead | undefined;
+  readonly gaps: readonly GapSpec[];
 
   readonly lickWaiters: readonly LickWaiter[];
   readonly lickMarks: readonly { readonly span: number; readonly mark: number }[];

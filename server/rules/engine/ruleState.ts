@@ -1,3 +1,4 @@
+import type { FieldPrediction } from '../../plasticity/fieldPrediction.js';
 import type { OutputOrder } from '../instant.js';
 import type { ActionSpec, RuleSpec } from './program.js';
 import type { RowTracker } from './reachTracker.js';
@@ -30,6 +31,8 @@ export interface OutstandingSlot {
   crossedUs: number;
   /** Whether `if` held on the last frame before that crossing. */
   heldAtCrossing: boolean;
+  /** Armed since the operator asked for it: no chance was thrown. */
+  readonly byHand: boolean;
 }
 
 /** What one rule remembers. */
@@ -59,6 +62,10 @@ export class RuleState {
   chanceUp = false;
   readonly pending: PendingFiring[] = [];
 
+  /** The field that its last firing is predicted to leave, and the cell that it was in. */
+  field: FieldPrediction | undefined;
+  fieldCell = -1;
+
   /** Arming: the slot now wanted, and every slot not yet accounted for. */
   wantedSerial = 0;
   /** Where its place lies ahead, as last looked up. */
@@ -75,6 +82,12 @@ export class RuleState {
   /** The place at which the board fired before the crossing was seen here. */
   firedTravel = Number.NaN;
 
+  /** The laps in which the operator has asked for it; none while `askedTo` is the lesser. */
+  askedFrom = 0;
+  askedTo = -1;
+  /** Asked for at once, and when; NaN otherwise. */
+  askedUs = Number.NaN;
+
   withheld = 0;
   missed = 0;
 
@@ -82,6 +95,11 @@ export class RuleState {
     readonly spec: RuleSpec,
     readonly rows: RowTracker | undefined,
   ) {}
+
+  /** The operator has asked for it in this lap: its `if` and `chance` are taken as true. */
+  isAsked(lap: number): boolean {
+    return lap >= this.askedFrom && lap <= this.askedTo;
+  }
 }
 
 /** An action that waits for its delay. */

@@ -1,4 +1,4 @@
-import type { Actuator, Instant, Journal, Settlement } from '../instant.js';
+import type { Actuator, Inquiry, Instant, Journal, Settlement } from '../instant.js';
 import { ArmingPass } from './arming.js';
 import { Asking } from './asking.js';
 import { Course } from './course.js';
@@ -27,12 +27,13 @@ export class RulesEngine {
     private readonly seed: string,
     private readonly actuator: Actuator,
     private readonly journal: Journal,
+    private readonly inquiry?: Inquiry,
   ) {}
 
   /** The session begins with this instant, and its rules are asked at it. */
   begin(instant: Instant): void {
     const state = new State(this.program, this.seed, instant);
-    this.parts = new Parts(new Run(state, this.actuator, this.journal));
+    this.parts = new Parts(new Run(state, this.actuator, this.journal, this.inquiry));
     this.parts.instant(instant, true);
   }
 
@@ -166,6 +167,7 @@ class Parts {
 
     this.movement.step(i, lapBegan);
     this.motion.step(i);
+    run.plasticity.step(i);
     if (i.lick) this.licking.lick();
     if ((i.rose | i.fell) !== 0) this.inputs(i);
     if (this.pressed.length > 0) this.takePresses();
@@ -247,6 +249,7 @@ class Parts {
 
   drop(volumeNl: number): void {
     const { s } = this.run;
+    s.dropUs = s.nowUs;
     for (const index of this.waterTallies) s.tallies[index]!.add(volumeNl, s.nowUs);
   }
 
@@ -265,12 +268,22 @@ class Parts {
     }
   }
 
+  private tellEnd(inquiry: Inquiry): void {
+    const { s } = this.run;
+    let alternatives = 0;
+    s.program.endAlternatives.forEach((test, n) => {
+      if (test(s) === TRUE) alternatives |= 1 << n;
+    });
+    inquiry.ended(alternatives);
+  }
+
   private end(): void {
     const { run } = this;
     run.over = true;
     this.arming.disarmAll();
     run.held.length = 0;
     run.delayed.length = 0;
+    if (run.inquiry !== undefined) this.tellEnd(run.inquiry);
     run.actuator.endSession(run.endReason);
   }
 }

@@ -1,4 +1,5 @@
-import type { Actuator, Journal } from '../instant.js';
+import type { Actuator, Inquiry, Journal } from '../instant.js';
+import { Plasticity } from './plasticity.js';
 import type { DelayedAction, Held } from './ruleState.js';
 import type { State } from './state.js';
 import { TRUE } from './truth.js';
@@ -35,11 +36,16 @@ export class Run {
   over = false;
   frame = 0;
 
+  readonly plasticity: Plasticity;
+
   constructor(
     readonly s: State,
     readonly actuator: Actuator,
     readonly journal: Journal,
-  ) {}
+    readonly inquiry?: Inquiry,
+  ) {
+    this.plasticity = new Plasticity(this);
+  }
 
   /** A moment for a rule: it is asked in its turn. */
   moment(rule: number, causeUs: number, placeTravel: number, serial = 0): void {
@@ -57,7 +63,7 @@ export class Run {
   /** A place that a correction jumped over: missed, if its rule would have been asked. */
   jumpedOver(rule: number): void {
     const r = this.s.rules[rule]!;
-    if (r.spec.if && r.spec.if(this.s) !== TRUE) return;
+    if (r.spec.if && r.spec.if(this.s) !== TRUE && !r.isAsked(this.s.lap)) return;
     r.missed++;
     this.journal.missed(rule, ++r.serial, 'a correction of the position jumped over the place');
   }

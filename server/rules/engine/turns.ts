@@ -102,7 +102,7 @@ export class Turns {
   }
 
   private ask(r: RuleState, causeUs: number, place: number): void {
-    this.firing.ask(r, causeUs, place, r.spec.if === undefined || r.spec.if(this.run.s) === TRUE);
+    this.firing.ask(r, causeUs, place, this.firing.ifHolds(r));
   }
 
   private after(r: RuleState, delayUs: (s: Run['s']) => number): void {

@@ -112,12 +112,15 @@ export function habit(p: Phrase): Habit {
   return { kind: 'steps', of: amountOrCount(p), at: p.since(mark) };
 }
 
-// operator = choices "," "at first" option .
-export function operator(p: Phrase): { choices: Choices; first: Option } {
+// operator = choices "," [ "in steps of" ( amount | NUMBER ) "," ] "at first" option .
+export function operator(p: Phrase): { choices: Choices; step?: Sum; first: Option } {
   const among = choices(p);
   p.expect(',');
+  const stepped = p.accept('in steps of');
+  const step = stepped ? { step: amountOrCount(p) } : {};
+  if (stepped) p.expect(',');
   p.expect('at first');
-  return { choices: among, first: option(p) };
+  return { choices: among, ...step, first: option(p) };
 }
 
 // phase = ( "for" length { "or" length } | "until" condition | "to the end" ) [ "," "at lap end" ] .

@@ -2,6 +2,7 @@
 import type {
   Action,
   ActionBody,
+  Asked,
   Cap,
   Moment,
   Quantity,
@@ -212,6 +213,25 @@ function apart(p: Phrase, mark: number): Cap {
   needUnit(p, least, 'a time such as `2 s`, or `laps`');
   p.expect('apart');
   return { kind: 'apart time', time: least, at: p.since(mark) };
+}
+
+// asked = "now" [ "or" next_laps ] | next_laps .
+// next_laps = "in the next" ( "lap" | count "laps" ) .
+export function asked(p: Phrase): Asked {
+  const mark = p.mark();
+  const now = p.accept('now');
+  if (now && !p.accept('or')) return { now, at: p.since(mark) };
+  p.expect('in the next');
+  if (p.accept('lap')) return { now, laps: one(p), at: p.since(mark) };
+  const laps = count(p);
+  p.expect('laps');
+  return { now, laps, at: p.since(mark) };
+}
+
+/** `the next lap` says one without a number. */
+function one(p: Phrase): Quantity {
+  const at = p.since(p.mark() - 1);
+  return { kind: 'quantity', value: 1, dimension: 'number', written: '1', at };
 }
 
 // within = amount .

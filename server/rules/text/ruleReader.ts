@@ -5,9 +5,9 @@ import { condition } from './conditions.js';
 import type { Entry, OutlineNode } from './outline.js';
 import type { Phrase } from './phrase.js';
 import { keysOf, readPhrase, spanOf } from './reading.js';
-import { action, chance, limit, when, within } from './rulePhrases.js';
+import { action, asked, chance, limit, when, within } from './rulePhrases.js';
 
-const RULE_KEYS = ['when', 'if', 'chance', 'sham', 'do', 'limit', 'within'] as const;
+const RULE_KEYS = ['when', 'if', 'chance', 'sham', 'do', 'limit', 'within', 'asked'] as const;
 
 /**
  * Reads one rule. A key that cannot be read is reported and left out, so that the rest is still
@@ -46,21 +46,23 @@ export function readRule(
   }
   const moment = read('when', when, 'a moment such as `reaches 90 cm`');
   const unread: When = { kind: 'begins', what: 'session', at: entry.keyAt };
-  const asked = read('if', condition, 'a condition such as `speed > 5 cm/s`');
+  const needed = read('if', condition, 'a condition such as `speed > 5 cm/s`');
   const odds = read('chance', chance, 'a share such as `50 %`');
   const pretended = read('sham', condition, 'a condition such as `kind is sham`');
   const caps = read('limit', limit, 'limits such as `1 per lap, 10 per session`');
   const window = read('within', within, 'a distance or a time, such as `1 cm` or `50 ms`');
+  const wishes = read('asked', asked, '`now`, `in the next 5 laps`, or both with `or`');
   const actions = keys.get('do');
   return {
     name,
     when: moment ?? unread,
-    ...(asked ? { if: asked } : {}),
+    ...(needed ? { if: needed } : {}),
     ...(odds ? { chance: odds } : {}),
     ...(pretended ? { sham: pretended } : {}),
     do: actions ? readActions(actions.value, sources, problems) : [],
     limits: caps ?? [],
     ...(window ? { within: window } : {}),
+    ...(wishes ? { asked: wishes } : {}),
     at: spanOf(entry),
   };
 }

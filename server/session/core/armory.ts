@@ -8,6 +8,8 @@ interface Slot {
   /** Its bit is set in the beat's mask. */
   wanted: boolean;
   lowByte: number;
+  /** When it was asked of the board, extended board time. */
+  readonly sinceUs: number;
 }
 
 /**
@@ -47,8 +49,8 @@ export class Armory {
     return clear;
   }
 
-  take(index: number, live: LiveId, request: ArmRequest, count: number): void {
-    this.#slots[index] = { live, request, wanted: true, lowByte: count & 0xff };
+  take(index: number, live: LiveId, request: ArmRequest, count: number, sinceUs: number): void {
+    this.#slots[index] = { live, request, wanted: true, lowByte: count & 0xff, sinceUs };
     this.#setWanted(index, true);
   }
 
@@ -63,6 +65,12 @@ export class Armory {
   /** The wanted slot of a rule. */
   ofRule(rule: number): LiveId | undefined {
     return this.#slots.find((slot) => slot?.wanted && slot.request.rule === rule)?.live;
+  }
+
+  /** Since when the rule's wanted slot has been asked of the board; NaN without one. */
+  sinceUs(rule: number): number {
+    const slot = this.#slots.find((one) => one?.wanted && one.request.rule === rule);
+    return slot?.sinceUs ?? Number.NaN;
   }
 
   /** The rule has a slot whose end has not been reported, wanted or not. */

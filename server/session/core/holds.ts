@@ -25,6 +25,10 @@ export class Holds {
     this.#tellGuard(what);
   }
 
+  isHeldBy(what: Holdable, holder: Holder): boolean {
+    return this.#reasons[what].has(holder);
+  }
+
   /** Why it is held now, or null. */
   reason(what: Holdable): string | null {
     return this.#guard.heldBecause(what) ?? null;

@@ -524,6 +524,8 @@ export class SessionCore {
       cellBegan: () => {},
       noted: (rule, serial) => this.#remark(`${name(rule)} ${serial}`),
       chosen: (choice, value) => this.changes.inForce(choice, value, this.instant.nowUs),
+      fieldPredicted: (rule, serial, field, curve) =>
+        this.#tell({ kind: 'field predicted', rule: name(rule), serial, ...field, curve }),
       endForeseen: (laps, us, exact, reason) =>
         this.#tell({
           ...{ kind: 'end foreseen', laps: Number.isNaN(laps) ? null : laps, exact, reason },

@@ -69,6 +69,7 @@ export const INPUT_CHANNEL: { readonly [K in RareInput['kind']]: number } = {
   'bad frame': notices,
   resume: notices,
   begin: notices,
+  alarm: notices,
 };
 
 export const COMMAND_CHANNEL = json('/commands', 'Command', OTHER_SCHEMAS.command);

@@ -77,6 +77,7 @@ interface OutputText {
   duty?: string;
   idle?: string;
   on_silence?: string;
+  evokes?: 'plateau';
   calibration?: string | { dead: string; per_uL: string; from: string; to: string };
 }
 
@@ -372,6 +373,7 @@ class RigBuilder {
       },
       idleHigh: output.idle === 'high',
       finishOnSilence: output.on_silence === 'finish',
+      evokesPlateau: output.evokes === 'plateau',
       valve,
     };
   }

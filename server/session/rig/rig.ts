@@ -110,6 +110,7 @@ export interface RigOutput {
   readonly duty: OutputFacts['duty'] | undefined;
   readonly idleHigh: boolean;
   readonly finishOnSilence: boolean;
+  readonly evokesPlateau: boolean;
   readonly valve: OutputFacts['valve'] | undefined;
 }
 
@@ -136,6 +137,7 @@ export function factsOf(rig: Rig): RigFacts {
       kind: output.kind,
       longestOnUs: output.longestOnUs,
       leastGapUs: output.leastGapUs,
+      evokesPlateau: output.evokesPlateau,
       ...(output.perSession === undefined ? {} : { perSession: output.perSession }),
       ...(output.duty === undefined ? {} : { duty: output.duty }),
       ...(output.valve === undefined ? {} : { valve: output.valve }),

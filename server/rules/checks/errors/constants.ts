@@ -6,7 +6,7 @@ export const constants: Check = ({ file, problems }) => {
   const sections = [
     ['values', file.values.map(({ value }) => value)],
     ['places', file.places.map(({ place }) => place)],
-    ['operator', file.operator.map(({ choices }) => choices)],
+    ['operator', file.operator.map(({ choices, step }) => ({ choices, step }))],
     ['draws', file.draws.map(({ choices, habits }) => ({ choices, habits }))],
   ] as const;
   for (const [section, pieces] of sections) {

@@ -1,4 +1,4 @@
-import type { Sum } from '../../ast.js';
+import type { Choices, Sum } from '../../ast.js';
 import type { Check, CheckContext } from '../check.js';
 import { intervalOf, intervalOfChoices } from '../interval.js';
 import { walk } from '../walk.js';
@@ -6,7 +6,7 @@ import { walk } from '../walk.js';
 /** Numbers that make no sense where they stand: no time at all, half a lap, a chance of 120 %. */
 export const ranges: Check = (context) => {
   const { file, problems } = context;
-  for (const { chance, limits, within } of file.rules) {
+  for (const { chance, limits, within, asked } of file.rules) {
     if (chance && (chance.value < 0 || chance.value > 1)) {
       problems.report('outOfRange', chance.at, `a chance of ${chance.written}`, {
         expected: '0 to 100 %',
@@ -20,6 +20,7 @@ export const ranges: Check = (context) => {
       else positive(context, cap.time, 'a gap');
     }
     if (within) positive(context, within, '`within`');
+    if (asked?.laps) whole(context, asked.laps, '`asked`');
   }
   walk(file.rules, (node) => {
     if (node.kind === 'every') positive(context, node.interval as Sum, 'an interval');
@@ -47,7 +48,7 @@ export const ranges: Check = (context) => {
       else positive(context, length.time, 'a phase');
     }
   }
-  for (const { choices, first } of file.operator) {
+  for (const { choices, step, first } of file.operator) {
     const { low, high } = intervalOfChoices(choices, context.symbols);
     if (
       choices.kind === 'between' &&
@@ -59,6 +60,7 @@ export const ranges: Check = (context) => {
         also: [{ at: choices.at, note: 'the bounds' }],
       });
     }
+    if (step) stepped(context, choices, step);
     if (choices.kind === 'options' && first.kind === 'quantity') {
       const same = choices.options.some((o) => o.kind === 'quantity' && o.value === first.value);
       if (!same)
@@ -68,6 +70,23 @@ export const ranges: Check = (context) => {
     }
   }
 };
+
+/** Steps need bounds to go between, and room for one at least. */
+function stepped({ symbols, problems }: CheckContext, choices: Choices, step: Sum): void {
+  if (choices.kind === 'options') {
+    problems.report('outOfRange', step.at, 'steps between choices that are all named', {
+      expected: 'bounds such as `20 to 140 cm`, or no steps',
+    });
+    return;
+  }
+  const bounds = intervalOfChoices(choices, symbols);
+  const { low, high } = intervalOf(step, symbols);
+  if (low > 0 && high <= bounds.high - bounds.low) return;
+  problems.report('outOfRange', step.at, 'a step that does not fit between the bounds', {
+    expected: 'more than 0, and no more than from bound to bound',
+    also: [{ at: choices.at, note: 'the bounds' }],
+  });
+}
 
 function positive({ symbols, problems }: CheckContext, sum: Sum, what: string): void {
   const { low } = intervalOf(sum, symbols);

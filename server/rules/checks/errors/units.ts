@@ -30,8 +30,9 @@ export const units: Check = (context) => {
       if (spot.to) check.needs(spot.to, 'length');
     }
   }
-  for (const { choices, first } of file.operator) {
+  for (const { choices, step, first } of file.operator) {
     check.choices(choices);
+    if (choices.kind === 'between' && step) check.same(choices.from, step);
     if (choices.kind === 'between' && first.kind === 'quantity') check.same(choices.from, first);
   }
   for (const { choices, habits } of file.draws) {
@@ -150,6 +151,7 @@ class UnitCheck {
         this.condition(condition.of);
         return;
       case 'in':
+      case 'learned':
         this.span(condition.span);
         return;
       case 'compare':
@@ -188,6 +190,7 @@ class UnitCheck {
     for (const action of rule.do) this.action(action);
     for (const cap of rule.limits) this.cap(cap);
     if (rule.within) this.within(rule.within, rule);
+    if (rule.asked?.laps) this.needs(rule.asked.laps, 'number');
   }
 
   private when(when: When): void {
