@@ -36,7 +36,7 @@ async function post(path: string, body: unknown, timeoutMs: number): Promise<Ans
 }
 
 export const api = {
-  begin: (session: Beginning) => post('/api/session', session, 15_000),
+  begin: (session: Beginning) => post('/api/session', session, 30_000),
   act: (act: OperatorAct) => post('/api/acts', { act }, 5000),
   end: (reason: string) => post('/api/end', { reason }, 15_000),
   quiet: () => post('/api/quiet', {}, 5000),

@@ -61,6 +61,10 @@ type Asking = ClientMessage extends infer M
     ? Omit<M, 'request'>
     : never
   : never;
+const ANSWER_MS = 3000;
+/** The animals folder is asked first, on a share that may be slow, and files are synced. */
+const BEGIN_MS = 25_000;
+
 export type Beginning = Omit<Extract<ClientMessage, { say: 'begin' }>, 'say' | 'request'>;
 
 /** The loop understood the request and said no; `code` and `remedy` are the loop's own. */
@@ -136,7 +140,7 @@ export class LocalClient {
   }
 
   begin(session: Beginning): Promise<void> {
-    return this.ask({ say: 'begin', ...session });
+    return this.ask({ say: 'begin', ...session }, BEGIN_MS);
   }
 
   act(act: OperatorAct, who: string, from: string): Promise<void> {
@@ -272,14 +276,14 @@ export class LocalClient {
     }
   }
 
-  private ask<T = void>(message: Asking): Promise<T> {
+  private ask<T = void>(message: Asking, usualMs = ANSWER_MS): Promise<T> {
     if (!this.hello) return Promise.reject(this.lastFailure ?? away('There is no connection yet.'));
     const request = this.nextRequest++;
     return new Promise((resolve, reject) => {
       const timer = setTimeout(() => {
         this.pending.delete(request);
         reject(new LapwingError('loopSilent', `The loop did not answer \`${message.say}\`.`));
-      }, this.options.requestTimeoutMs ?? 3000);
+      }, this.options.requestTimeoutMs ?? usualMs);
       this.pending.set(request, { resolve: (result) => resolve(result as T), reject, timer });
       this.send({ ...message, request, saidMs: Date.now() } as ClientMessage);
     });

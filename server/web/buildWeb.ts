@@ -15,6 +15,7 @@ import { Access } from './access/access.js';
 import type { AccessFiles } from './access/people.js';
 import { addAccessRoutes, youOf } from './access/routes.js';
 import type { Cost } from './access/secrets.js';
+import { addAnimalsRoutes } from './animals/routes.js';
 import { Door, guardRoutes } from './door.js';
 import { httpServer, SOCKET_LIMITS, type SocketLimits } from './httpServer.js';
 import { Jobs } from './jobs/jobs.js';
@@ -41,6 +42,8 @@ export interface WebOptions extends LoopPlace {
   readonly rehearsals?: Rehearsals;
   /** Where the sessions are; absolute. */
   readonly records?: string;
+  /** Where animals are kept, if not where the rig file says. */
+  readonly animals?: string;
   readonly jobs?: Jobs;
   /** Further host names that this service answers to, without port. */
   readonly allowedHosts?: readonly string[];
@@ -144,6 +147,7 @@ export function buildWeb(options: WebOptions): FastifyInstance {
 
   const jobs = options.jobs ?? new Jobs();
   addJobRoutes(app, jobs);
+  addAnimalsRoutes(app, options.animals ?? options.rig?.animalsFolder);
   addRecordsRoutes(app, { records: options.records, rules: rulesFolder, jobs });
 
   app.server.on('upgrade', (request, socket: Socket, head) => {

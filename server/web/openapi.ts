@@ -1,6 +1,8 @@
 /** The HTTP interface in OpenAPI 3.1, served at `/api/openapi.json`; made of the same schemas that check. */
 import { ERRORS } from '../errors/codes.js';
 import { accessPaths, accessSchemas, SECURITY_SCHEMES, securityOf } from './access/description.js';
+import { animalsPaths } from './animals/description.js';
+import { animalsSchemas } from './animals/schemas.js';
 import type { Needs } from './door.js';
 import { asks, json, problems, ref, shows } from './openapiParts.js';
 import { recordsPaths } from './records/description.js';
@@ -91,6 +93,7 @@ function describe(version: string) {
         },
       },
       ...recordsPaths,
+      ...animalsPaths,
       ...accessPaths,
       '/api/openapi.json': shows('This description.', ref('Object')),
       '/healthz': shows('Whether this process lives and has the loop.', ref('Object')),
@@ -108,6 +111,7 @@ function describe(version: string) {
         Rehearse: bodies.rehearse,
         ...rulesSchemas,
         ...recordsSchemas,
+        ...animalsSchemas,
         Object: { type: 'object' },
         Done: { type: 'object', required: ['done'], properties: { done: { const: true } } },
         Problem: {

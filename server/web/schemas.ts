@@ -52,6 +52,7 @@ export const bodies = {
     protocolNumber: text(64),
     sessionNumber: { type: 'integer', minimum: 1, maximum: 1_000_000 },
     seed: text(64),
+    despite: text(500),
   }),
   act: closed(['act'], { act: operatorAct, who }),
   end: closed([], { reason: text(200) }),

@@ -28,6 +28,7 @@ export async function runWeb(argv: readonly string[]): Promise<void> {
       'rig-file': { type: 'string' },
       'rules-folder': { type: 'string' },
       records: { type: 'string' },
+      'animals-folder': { type: 'string' },
       host: { type: 'string', default: '127.0.0.1' },
       port: { type: 'string', default: String(DEFAULT_PORT) },
       'sign-in': { type: 'boolean', default: false },
@@ -59,6 +60,7 @@ export async function runWeb(argv: readonly string[]): Promise<void> {
     proxies: values.proxy,
     ...(values['rules-folder'] === undefined ? {} : { rulesFolder: values['rules-folder'] }),
     ...(values.records === undefined ? {} : { records: resolve(values.records) }),
+    ...(values['animals-folder'] === undefined ? {} : { animals: values['animals-folder'] }),
     dashboard: values.dashboard ?? built,
     log: values.log === 'silent' ? false : values.log,
   });
@@ -75,7 +77,8 @@ export async function runWeb(argv: readonly string[]): Promise<void> {
   // Started by the launcher, it goes with the launcher.
   process.on('disconnect', stop);
   try {
-    const listening = await app.listen({ host: values.host, port: Number(values.port) });
+    const at = await app.listen({ host: values.host, port: Number(values.port) });
+    const listening = tls ? at.replace(/^http:/, 'https:') : at;
     process.stdout.write(JSON.stringify({ listening }) + '\n');
   } catch (error) {
     await app.close();

@@ -2,6 +2,7 @@ import { readFileSync } from 'node:fs';
 import { Ajv2020 } from 'ajv/dist/2020.js';
 import type { FastifyInstance } from 'fastify';
 import { describe, expect, test } from 'vitest';
+import { newFolder } from '../subjects/helpers.js';
 import { startWeb, until } from './webRig.js';
 
 interface Description {
@@ -89,11 +90,12 @@ describe('the page about it', () => {
   });
 
   test('every example of it works as written', async () => {
-    const { app, loop } = await startWeb();
+    const { app, loop } = await startWeb({ animals: newFolder() });
     const matches = checker(await describedBy(app));
     const schemas: Record<string, string> = {
       ...{ '/api/session': 'Begin', '/api/acts': 'Act', '/api/end': 'End', '/api/quiet': 'Quiet' },
       ...{ '/api/rules/check': 'CheckRules', '/api/rehearse': 'Rehearse' },
+      '/api/animals': 'AnimalEntry',
     };
     for (const [path, body] of EXAMPLES) {
       expect(matches(schemas[path]!)(JSON.parse(body))).toBe(true);
