@@ -26,7 +26,9 @@ export function checkSender(
   hosts: ReadonlySet<string>,
   secure: boolean,
 ): void {
-  const host = request.headers.host ?? '';
+  // Node keeps the first of several; a request with more than one is to be refused (RFC 9112, 3.2).
+  const hostsNamed = request.rawHeaders.filter((text, n) => n % 2 === 0 && /^host$/i.test(text));
+  const host = hostsNamed.length > 1 ? hostsNamed.join() : (request.headers.host ?? '');
   const bare = host.replace(/:\d+$/, '').toLowerCase();
   if (!LOOPBACK_NAMES.has(bare) && !hosts.has(bare) && !isWhereItCame(request, bare)) {
     throw new LapwingError(

@@ -24,18 +24,22 @@ afterEach(async () => {
 });
 
 /** A fake loop and a web process connected to it, both ended after the test. */
-export async function startWeb(options: Partial<WebOptions> = {}): Promise<WebRig> {
+export async function startWeb(
+  options: Partial<WebOptions> & { readonly host?: string } = {},
+): Promise<WebRig> {
+  const { host = '127.0.0.1', ...web } = options;
   const loop = await new FakeLoop().start();
   const { socketPath, tokenFile } = loop;
   const rig = readRig(join(packageRoot, 'hardware-sim/demo/rig.yaml'));
-  const app = buildWeb({ socketPath, tokenFile, rig, log: false, requestsPerS: 1000, ...options });
-  const url = await app.listen({ host: '127.0.0.1', port: 0 });
-  const web = { loop, app, url };
-  running.push(web);
+  const app = buildWeb({ socketPath, tokenFile, rig, log: false, requestsPerS: 1000, ...web });
+  const at = await app.listen({ host, port: 0 });
+  const url = web.tls ? at.replace(/^http:/, 'https:') : at;
+  const rigged = { loop, app, url };
+  running.push(rigged);
   // Once the loop's setup is there; who is not signed in is told that much and no more.
   await until(async () => [200, 401].includes((await app.inject('/api/setup')).statusCode));
   await until(async () => (await app.inject('/healthz')).json().loop === 'up');
-  return web;
+  return rigged;
 }
 
 /** Waits for something to become true, however slow the machine; fails after 20 s. */

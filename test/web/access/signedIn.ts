@@ -50,7 +50,9 @@ export interface Answer {
 }
 
 /** A web process where people sign in: `anna` and `ben` are operators, `vera` is a viewer. */
-export async function startGuarded(options: Partial<WebOptions> = {}): Promise<GuardedRig> {
+export async function startGuarded(
+  options: Partial<WebOptions> & { readonly host?: string } = {},
+): Promise<GuardedRig> {
   const files = options.access ?? newFiles();
   const people = new People(files.peopleFile, CHEAP);
   const secrets = new Map<string, string>();
