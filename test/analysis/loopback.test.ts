@@ -49,8 +49,8 @@ describe('an output that is wired back to an input', () => {
     );
     expect(found.unexplained).toEqual([strange]);
     const page = reportPage(other, wire);
-    expect(page).toContain('1 firings were not seen on the loopback input.');
-    expect(page).toContain('The loopback input rose 1 times without a firing.');
+    expect(page).toContain('1 firing not seen on the loopback input.');
+    expect(page).toContain('The loopback input rose 1 time without a firing.');
     expect(page).toContain('>not seen<');
   });
 

@@ -8,10 +8,10 @@ import {
   type Measure,
 } from '../../analysis/acrossAnimals.js';
 import type { LearningDay } from '../../analysis/learning.js';
+import { fixed, table } from './htmlTable.js';
 import { MEASURE_WORDS, MEASURES_EXPLAINED } from './measures.js';
 import { STYLE } from './page.js';
 import { escapeHtml, INK, Plot, type Point } from './plot.js';
-import { fixed, table } from './tables.js';
 
 /** Fewer animals than this say little of others: their interval is too narrow. */
 const FEW = 6;

@@ -39,7 +39,7 @@ export function raster(shown: Shown): string {
   const { laps, licking, firings, drops, stimuli } = shown;
   const inside = new Set(laps.map(({ lap }) => lap));
   const first = laps[0]!.lap - 0.8;
-  const height = Math.min(900, 70 + laps.length * 9);
+  const height = Math.min(560, 70 + laps.length * 9);
   const y = { label: 'lap', from: laps.at(-1)!.lap + 0.8, to: first, whole: true };
   const title = 'Licks, water and stimuli on each lap by position on the belt';
   const plot = onBelt(new Plot(title, belt(shown), y, height), shown);

@@ -1,9 +1,9 @@
 import { inOrder, MEASURES, type Measure } from '../../analysis/acrossAnimals.js';
 import type { LearningDay } from '../../analysis/learning.js';
+import { fixed, table } from './htmlTable.js';
 import { MEASURE_WORDS, MEASURES_EXPLAINED } from './measures.js';
 import { STYLE } from './page.js';
 import { escapeHtml, INK, Plot, type Point } from './plot.js';
-import { fixed, table } from './tables.js';
 
 /** Learning across the sessions of one subject, in order of their start: one HTML page. */
 export function learningPage(days: readonly LearningDay[]): string {

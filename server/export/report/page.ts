@@ -8,6 +8,7 @@ import { explain } from '../../rules/explain.js';
 import { factsOf } from '../../session/rig/rig.js';
 import type { Shown } from './figures.js';
 import * as figures from './figures.js';
+import { happened } from './happened.js';
 import { escapeHtml } from './plot.js';
 import { proofs } from './proofSheet.js';
 import { cautions, facts, health, notDone, statistics } from './tables.js';
@@ -15,14 +16,21 @@ import { cautions, facts, health, notDone, statistics } from './tables.js';
 /** For the screen and for paper. */
 export const STYLE = `
 body { font: 15px/1.45 Georgia, 'DejaVu Serif', serif; color: #111; background: #fff; max-width: 760px; margin: 24px auto; padding: 0 16px; }
-h1 { font-size: 24px; margin: 0 0 4px; } h2 { font-size: 18px; border-top: 1px solid #999; padding-top: 10px; margin-top: 26px; break-after: avoid; }
+h1 { font-size: 24px; margin: 0 0 4px; } h2 { font-size: 18px; border-top: 1px solid #999; padding-top: 10px; margin-top: 26px; }
+h3 { font-size: 15px; margin: 16px 0 4px; } h1, h2, h3 { break-after: avoid; }
 table { border-collapse: collapse; width: 100%; font-size: 13px; margin: 8px 0; font-variant-numeric: tabular-nums; }
-th, td { text-align: left; padding: 2px 8px 2px 0; border-bottom: 1px solid #ddd; vertical-align: top; } td.n, th.n { text-align: right; }
-.wide { font-size: 11px; } .wide th, .wide td { padding-right: 5px; }
+th, td { text-align: left; padding: 2px 10px 2px 0; border-bottom: 1px solid #ddd; vertical-align: top; } td.n, th.n { text-align: right; }
+.facts th { font-weight: normal; color: #333; width: 170px; } .facts td { overflow-wrap: anywhere; }
+.wide { font-size: 11px; } .wide th, .wide td { padding: 1px 7px 1px 0; } .wide td { white-space: nowrap; } .scroll { overflow-x: auto; }
 figure { margin: 8px 0 14px; break-inside: avoid; } figcaption { font-size: 13px; color: #333; }
 svg { width: 100%; height: auto; font: 12px Georgia, 'DejaVu Serif', serif; } .small { font-size: 10px; fill: #333; }
-pre { white-space: pre-wrap; font: 12px/1.4 'DejaVu Sans Mono', monospace; background: #f5f5f5; padding: 8px; } tr { break-inside: avoid; }
-.bad { font-weight: bold; } @media print { body { margin: 0; max-width: none; font-size: 12px; } @page { margin: 16mm; } }
+pre { white-space: pre-wrap; font: 11px/1.35 'DejaVu Sans Mono', monospace; background: #f5f5f5; padding: 8px; } tr { break-inside: avoid; }
+.bad { font-weight: bold; }
+@page { margin: 16mm 14mm; }
+@media print { .page { break-before: page; border: none; margin-top: 0; padding-top: 0; }
+  body { margin: 0; padding: 0; max-width: none; font-size: 12px; } table, figcaption { font-size: 11px; }
+  pre { font-size: 9px; columns: 2; column-gap: 16px; padding: 4px; } .wide { font-size: 8.5px; } .wide th, .wide td { padding-right: 4px; } .scroll { overflow: visible; }
+}
 `;
 
 /**
@@ -53,7 +61,8 @@ export function reportPage(session: SessionData, loopback?: Loopback): string {
     cautions(session, shown, proved?.measured),
     '<h2>What was planned</h2>',
     `<pre>${escapeHtml(explain(rules.file, factsOf(rig)).trimEnd())}</pre>`,
-    '<h2>What happened</h2>',
+    '<h2 class="page">What happened</h2>',
+    happened(session, laps),
     laps.length === 0 ? '<p>No complete lap: there is nothing to draw.</p>' : drawn(shown),
     '<h2>Licking on the belt</h2>',
     statistics(session, shown),

@@ -2,7 +2,7 @@ import { quantile } from '../../analysis/align/robustLine.js';
 import type { Firing } from '../../analysis/firings.js';
 import type { Loopback, MeasuredBack } from '../../analysis/loopback.js';
 import type { SessionData } from '../../analysis/readSession.js';
-import { fixed, table } from './tables.js';
+import { counted, fixed, table } from './htmlTable.js';
 
 /** What was measured back, and by which wire. */
 export interface Proved {
@@ -26,17 +26,15 @@ export function proofs(
     const lines = rows.map((f) => [
       ...[f.lap, fixed((f.boardUs - session.beganUs) / 1e6, 3), f.rule, f.output ?? 'sham'],
       fixed(f.placeCm, 2),
-      `${fixed(f.riseCm, 2)} ${plusMinus(f.decidedUncertaintyMm)}`,
+      plusMinus(f.riseCm, f.decidedUncertaintyMm),
       fixed(f.errorMm, 2),
-      f.correctedCm === null
-        ? ''
-        : `${fixed(f.correctedCm, 2)} ${plusMinus(f.correctedUncertaintyMm)}`,
+      plusMinus(f.correctedCm, f.correctedUncertaintyMm),
       fixed(f.latencyUs === null ? null : f.latencyUs / 1e3, 2),
       fixed(f.speedCmPerS, 1),
       fixed(f.onUs === null ? null : f.onUs / 1e3, 1),
       ...(proved === undefined ? [] : measuredCells(proved, f)),
     ]);
-    return `<h3>${title}</h3>${errorsInWords(rows)}${table(head, lines, 'wide')}`;
+    return `<h3>${title}</h3>${errorsInWords(rows)}<div class="scroll">${table(head, lines, 'wide')}</div>`;
   };
   return [
     proved === undefined ? '' : measuredInWords(proved),
@@ -68,7 +66,7 @@ function errorsInWords(rows: readonly Firing[]): string {
       ? ''
       : ` Latency: median ${fixed(quantile(latencies, 0.5), 2)} ms, at most ${fixed(Math.max(...latencies), 2)} ms.`;
   return (
-    `<p>${rows.length} firings; from the place intended: median ` +
+    `<p>${counted(rows.length, 'firing')}; from the place intended: median ` +
     `${fixed(quantile(errors, 0.5), 2)} mm, at most ${fixed(Math.max(...errors), 2)} mm.${late}</p>`
   );
 }
@@ -100,4 +98,6 @@ function measuredCells({ wire, measured }: Proved, firing: Firing): string[] {
   return [fixed(seen.placeCm, 2), fixed(seen.errorMm, 2), String(seen.laterUs)];
 }
 
-const plusMinus = (mm: number | null) => (mm === null ? '' : `\u00b1 ${(mm / 10).toFixed(2)}`);
+function plusMinus(cm: number | null, mm: number | null): string {
+  return mm === null ? fixed(cm, 2) : `${fixed(cm, 2)} \u00b1${(mm / 10).toFixed(2)}`;
+}
