@@ -59,6 +59,8 @@ export function eventWords(
       return say(`Drawn: ${event.draw} is ${event.value} (${event.scope} ${event.index})`, 'faint');
     case 'phase began':
       return say(`Phase ${event.phase} began${because(event.reason)}`, 'good');
+    case 'field predicted':
+      return say(fieldWords(event), 'stim');
     case 'cell began':
       return say(`Cell ${event.index} began`, 'good');
     case 'note':
@@ -103,6 +105,15 @@ function firedWords(
   const tone = event.output === null ? 'plain' : driven;
   const output = event.output === null ? '' : ` (${event.output})`;
   return say(`${event.rule} fired${output}${place}${error}, ${how}`, tone);
+}
+
+function fieldWords(event: Extract<StampedDecision, { kind: 'field predicted' }>): string {
+  const { rule, peakCm, widthCm, shiftCm } = event;
+  const side = shiftCm < 0 ? 'after' : 'before';
+  return (
+    `${rule} is predicted to leave a field ${fixed(widthCm, 0)} cm wide that peaks at ` +
+    `${fixed(peakCm, 0)} cm, ${fixed(Math.abs(shiftCm), 0)} cm ${side} the onset`
+  );
 }
 
 function pulseWords(event: Extract<StampedDecision, { kind: 'pulse done' }>): string {

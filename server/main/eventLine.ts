@@ -20,6 +20,11 @@ function words(event: StampedDecision): string | undefined {
     case 'refused':
     case 'uncertain':
       return `${event.rule} ${event.kind}: ${event.reason}`;
+    case 'field predicted':
+      return (
+        `${event.rule}: predicted field ${event.widthCm.toFixed(0)} cm wide, ` +
+        `peak at ${event.peakCm.toFixed(0)} cm`
+      );
     case 'phase began':
       return `phase ${event.phase} (${event.reason})`;
     case 'seam':

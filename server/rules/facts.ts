@@ -23,6 +23,8 @@ export interface OutputFacts {
   readonly longestOnUs: number;
   readonly leastGapUs: number;
   readonly perSession?: number;
+  /** What it drives evokes a plateau in the cell recorded: each firing is taken for an induction. */
+  readonly evokesPlateau?: boolean;
   /** At most `share` of any `windowUs` on. */
   readonly duty?: { readonly share: number; readonly windowUs: number };
   /** A valve's calibrated line: open for `deadUs + volumeNl * usPerNl`. */

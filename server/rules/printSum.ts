@@ -65,6 +65,8 @@ function printMeasure(measure: Measure): string {
       const which = measure.which === 'all' ? '' : `${measure.which} `;
       return `${which}firings of ${measure.of.name} ${printScope(measure.scope)}`;
     }
+    case 'predicted':
+      return `predicted ${measure.what} of ${measure.of.name}`;
     case 'scoped': {
       const place = measure.within ? ` in ${printSpan(measure.within)}` : '';
       return `${measure.measure}${place} ${printScope(measure.scope)}`;
@@ -94,6 +96,8 @@ export function printCondition(condition: Condition, inner = false): string {
       return `in ${printSpan(condition.span)}`;
     case 'still':
       return 'still';
+    case 'learned':
+      return `learned in ${printSpan(condition.span)}`;
     case 'compare':
       return `${printSum(condition.left)} ${condition.operator} ${printSum(condition.right)}`;
     case 'is': {

@@ -79,6 +79,8 @@ class Narrowing {
         return this.flag(keyOf(term.span), !negated) && (negated || this.mayBeIn(term));
       case 'still':
         return this.flag('still', !negated);
+      case 'learned':
+        return this.flag(`learned ${keyOf(term.span)}`, !negated);
       case 'compare':
         return this.compare(term, negated);
       case 'is':

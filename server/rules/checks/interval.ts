@@ -51,6 +51,10 @@ export function intervalOf(sum: Sum, symbols: Symbols, phase?: string, depth = 0
     case 'scoped':
       if (sum.measure === 'mean speed') return ANY;
       return sum.measure === 'share of licks' ? { low: 0, high: 1 } : FROM_ZERO;
+    case 'predicted':
+      if (sum.what === 'asymmetry') return { low: -1, high: 1 };
+      if (sum.what === 'shift') return ANY;
+      return { low: 0, high: symbols.file.beltLengthCm.value };
     default:
       return FROM_ZERO;
   }

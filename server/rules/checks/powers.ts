@@ -37,6 +37,7 @@ export function dimensionOfMeasure(
 ): 'number' | 'length' | 'time' | 'speed' | 'volume' {
   if (measure.kind === 'since') return measure.unit === 'time' ? 'time' : 'number';
   if (measure.kind === 'firings') return 'number';
+  if (measure.kind === 'predicted') return measure.what === 'asymmetry' ? 'number' : 'length';
   switch (measure.measure) {
     case 'position':
       return 'length';

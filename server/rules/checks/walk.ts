@@ -26,7 +26,7 @@ export function walk(
   visit(piece, '');
 }
 
-const MEASURES = new Set(['measure', 'scoped', 'firings', 'since']);
+const MEASURES = new Set(['measure', 'scoped', 'firings', 'since', 'predicted']);
 
 /** The measures in a piece of the tree. */
 export function measuresIn(piece: unknown): (Node & Located)[] {

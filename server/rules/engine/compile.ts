@@ -170,7 +170,8 @@ function tiedToPlace(b: Builder, decl: RuleDecl): boolean {
   visit(decl, (node) => {
     const { kind, what, measure, name, within } = node as Record<string, unknown>;
     if (kind === 'reaches' || kind === 'enters' || kind === 'leaves') tied = true;
-    if (kind === 'in' || kind === 'learned' || kind === 'edge' || kind === 'place mark') tied = true;
+    if (kind === 'in' || kind === 'learned' || kind === 'edge' || kind === 'place mark')
+      tied = true;
     if (kind === 'begins' && what === 'lap') tied = true;
     if (kind === 'measure' && measure === 'position') tied = true;
     if (

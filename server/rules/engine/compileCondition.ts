@@ -1,4 +1,5 @@
-import type { Condition, Option, Sum } from '../ast.js';
+import type { Condition, Option, SpanExpr, Sum } from '../ast.js';
+import { hasLearned, LEARNED } from '../learned.js';
 import type { Builder } from './builder.js';
 import { compileOption, compileSum, constantOf, spanOf } from './compileSum.js';
 import type { Amount, Test } from './program.js';
@@ -29,6 +30,8 @@ export function compileCondition(b: Builder, condition: Condition): Test {
         return speed < below && speed > -below ? TRUE : FALSE;
       };
     }
+    case 'learned':
+      return compileLearned(b, condition.span);
     case 'compare':
       return compare(
         condition.operator,
@@ -188,4 +191,28 @@ function compileIs(
 function sameOption(a: Option, b: Option): boolean {
   if (a.kind === 'quantity') return b.kind === 'quantity' && a.value === b.value;
   return b.kind === 'name' && a.name === b.name;
+}
+
+function compileLearned(b: Builder, of: SpanExpr): Test {
+  const span = spanOf(b, of);
+  const { laps } = LEARNED;
+  const tally = (what: 'waiting licks' | 'distance' | 'duration') => ({
+    all: b.tally(what, -1, { laps }),
+    inSpan: b.tally(what, span, { laps }),
+  });
+  const [licks, distance, duration] = [
+    tally('waiting licks'),
+    tally('distance'),
+    tally('duration'),
+  ];
+  return (s) => {
+    if (s.phaseLap() - 1 < laps) return UNKNOWN;
+    const over = (index: number) => s.tallies[index]!.overLaps(laps, s.lapOrdinal);
+    const learned = hasLearned({
+      ...{ licks: over(licks.all), licksInSpan: over(licks.inSpan) },
+      ...{ distance: over(distance.all), distanceInSpan: over(distance.inSpan) },
+      ...{ duration: over(duration.all), durationInSpan: over(duration.inSpan) },
+    });
+    return learned === undefined ? UNKNOWN : truth(learned);
+  };
 }

@@ -1,4 +1,5 @@
-import type { NameRef, Option, Scope, SpanExpr, Spot, Sum } from '../ast.js';
+import type { FieldPrediction } from '../../plasticity/fieldPrediction.js';
+import type { NameRef, Option, PredictedAmount, Scope, SpanExpr, Spot, Sum } from '../ast.js';
 import { boundsOf } from './bounds.js';
 import { type Builder, keyOf, readsMeasure } from './builder.js';
 import { markOf, placeMarkSince } from './compileMark.js';
@@ -50,6 +51,8 @@ export function compileSum(b: Builder, sum: Sum): Amount {
       return compileScoped(b, sum);
     case 'firings':
       return compileFirings(b, sum);
+    case 'predicted':
+      return compilePredicted(b, sum);
     case 'since': {
       if (sum.mark.kind === 'name mark' && sum.mark.event === 'fires') {
         const rule = b.names.need(sum.mark.name.name, 'rule').index;
@@ -320,3 +323,20 @@ function compileFirings(b: Builder, sum: Extract<Sum, { kind: 'firings' }>): Amo
   if (sum.which === 'sham') return (s) => read(s, s.tallies[sham]!);
   return (s) => read(s, s.tallies[real]!) + read(s, s.tallies[sham]!);
 }
+
+/** Of the last firing in this cell; unknown before the second after it has gone by. */
+function compilePredicted(b: Builder, sum: Extract<Sum, { kind: 'predicted' }>): Amount {
+  const rule = b.names.need(sum.of.name, 'rule').index;
+  const read = READ_FIELD[sum.what];
+  return (s) => {
+    const { field, fieldCell } = s.rules[rule]!;
+    return field === undefined || fieldCell !== s.cellOrdinal ? Number.NaN : read(field);
+  };
+}
+
+const READ_FIELD: Readonly<Record<PredictedAmount, (field: FieldPrediction) => number>> = {
+  width: (field) => field.widthCm,
+  centre: (field) => field.centreCm,
+  shift: (field) => field.shiftCm,
+  asymmetry: (field) => field.asymmetry,
+};

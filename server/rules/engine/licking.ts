@@ -1,9 +1,12 @@
+import { DRINKING_US } from '../learned.js';
 import type { LickWaiter } from './program.js';
 import type { Run } from './run.js';
 
 /** What a lick brings: counts, marks, and moments of the rules that wait for licks. */
 export class Licking {
   private readonly lickTallies: number[];
+  /** Of licks that do not drink a drop. */
+  private readonly waitingTallies: number[];
   /** Times of the last licks that a bout looks back over, per waiter. */
   private readonly bouts: (Float64Array | undefined)[];
   private readonly boutCounts: number[];
@@ -11,6 +14,9 @@ export class Licking {
   constructor(private readonly run: Run) {
     const { program } = run.s;
     this.lickTallies = program.tallies.flatMap((spec, n) => (spec.of === 'licks' ? [n] : []));
+    this.waitingTallies = program.tallies.flatMap((spec, n) =>
+      spec.of === 'waiting licks' ? [n] : [],
+    );
     this.bouts = program.lickWaiters.map((waiter) => {
       return waiter.bout ? new Float64Array(waiter.bout.most + 1) : undefined;
     });
@@ -24,6 +30,11 @@ export class Licking {
     const { program } = s;
     for (const index of this.lickTallies) {
       if (this.isIn(program.tallies[index]!.subject)) s.tallies[index]!.add(1, s.nowUs);
+    }
+    if (s.nowUs - s.dropUs >= DRINKING_US) {
+      for (const index of this.waitingTallies) {
+        if (this.isIn(program.tallies[index]!.subject)) s.tallies[index]!.add(1, s.nowUs);
+      }
     }
     for (const { span, mark } of program.lickMarks) if (this.isIn(span)) run.touch(mark);
     for (let n = 0; n < program.lickWaiters.length; n++) {

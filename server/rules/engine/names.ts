@@ -115,6 +115,8 @@ export class Names {
         return sum.measure === 'mean speed' ? 'speed' : 'number';
       case 'firings':
         return 'number';
+      case 'predicted':
+        return sum.what === 'asymmetry' ? 'number' : 'length';
       case 'since':
         return sum.unit === 'time' ? 'time' : 'number';
     }

@@ -53,6 +53,9 @@ export class State {
   /** Counts to a centimetre on this belt as measured: `lapCounts` over the belt's length. */
   countsPerCm = 1;
 
+  /** When the board last reported a drop done. */
+  dropUs = Number.NEGATIVE_INFINITY;
+
   readonly draws: Draw[];
   readonly choices: Choice[];
   readonly spans: SpanTracker[];

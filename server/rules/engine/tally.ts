@@ -5,6 +5,7 @@ export interface TallySpec {
   /** What is added up. */
   readonly of:
     | 'licks'
+    | 'waiting licks'
     | 'water'
     | 'laps'
     | 'distance'

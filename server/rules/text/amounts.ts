@@ -18,6 +18,7 @@ import type { Token } from './lexer.js';
 import type { Phrase } from './phrase.js';
 
 const STRETCHES = ['visit', 'lap', 'phase', 'cell', 'session'] as const;
+const PREDICTED = ['width', 'centre', 'shift', 'asymmetry'] as const;
 const AN_AMOUNT = 'an amount such as `4 uL` or `2 s`';
 const A_NAME = 'a name';
 
@@ -132,6 +133,11 @@ function measure(p: Phrase): Measure | undefined {
     return scoped(p, mark, 'water given');
   }
   if (p.take('laps done')) return scoped(p, mark, 'laps done');
+  if (p.take('predicted')) {
+    const what = p.oneOf(PREDICTED) ?? p.fail();
+    p.expect('of');
+    return { kind: 'predicted', what, of: p.name('a name of a rule'), at: p.since(mark) };
+  }
   return firings(p);
 }
 

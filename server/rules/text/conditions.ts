@@ -29,7 +29,7 @@ export function condition(p: Phrase): Condition {
   return { kind: word, terms, at: p.since(mark) };
 }
 
-// test = [ "not" ] ( "(" condition ")" | "in" span | "still" | comparison ) .
+// test = [ "not" ] ( "(" condition ")" | "in" span | "still" | "learned in" span | comparison ) .
 export function test(p: Phrase): Condition {
   const mark = p.mark();
   if (p.take('not')) {
@@ -52,6 +52,10 @@ function bare(p: Phrase): Condition {
     return { kind: 'in', span: within, at: p.since(mark) };
   }
   if (p.accept('still')) return { kind: 'still', at: p.since(mark) };
+  if (p.accept('learned in')) {
+    const within = span(p);
+    return { kind: 'learned', span: within, at: p.since(mark) };
+  }
   return comparison(p);
 }
 

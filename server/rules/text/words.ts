@@ -26,6 +26,10 @@ export const FREE_WORDS: readonly string[] = [
   'start',
   'end',
   'stop',
+  'width',
+  'centre',
+  'shift',
+  'asymmetry',
 ];
 
 export const NAME_PATTERN = /^[A-Za-z][A-Za-z0-9_]*$/;

@@ -36,6 +36,6 @@ function canEndMidLap({ course }: PhaseDecl): boolean {
 function changesAtSeam(measure: Node): boolean {
   if (measure.kind === 'measure')
     return measure.measure === 'lap' || measure.measure === 'phase lap';
-  if (measure.kind === 'since') return false;
+  if (measure.kind === 'since' || measure.kind === 'predicted') return false;
   return measure.measure === 'laps done' || (measure.scope as Node).kind === 'last laps';
 }

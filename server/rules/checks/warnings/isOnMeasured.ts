@@ -21,6 +21,7 @@ export const isOnMeasured: Check = ({ file, problems }) => {
     const smooth = measuresIn(subject).find(
       (measure) =>
         SMOOTH.has(measure.measure as string) ||
+        measure.kind === 'predicted' ||
         (measure.kind === 'since' && measure.unit === 'time'),
     );
     if (!smooth || !node.at) return;
