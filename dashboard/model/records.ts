@@ -97,7 +97,7 @@ export function standing(row: SessionRow): { readonly level: Level; readonly wor
   if (row.bad !== null) return { level: 'bad', words: 'bad description' };
   if (row.recording) return { level: 'off', words: 'recording' };
   if (row.ended === null) return { level: 'bad', words: 'left unfinished' };
-  if (row.check === 'different') return { level: 'bad', words: 'replays otherwise' };
+  if (row.check === 'different') return { level: 'bad', words: 'differs in replay' };
   if (row.record === 'damaged') return { level: 'bad', words: 'record damaged' };
   if (row.check === 'failed') return { level: 'warn', words: 'not checked' };
   if (row.record === 'torn' || row.record === 'open') {
@@ -105,7 +105,7 @@ export function standing(row: SessionRow): { readonly level: Level; readonly wor
   }
   if (row.record === null) return { level: 'warn', words: 'not closed yet' };
   if (row.check === null) return { level: 'warn', words: 'not checked' };
-  return { level: 'good', words: 'whole, replays' };
+  return { level: 'good', words: 'checked' };
 }
 
 /** The self-check in a sentence. */

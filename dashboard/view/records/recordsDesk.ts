@@ -132,24 +132,21 @@ export class RecordsDesk {
     await this.adopt(name);
     const { session } = this.state;
     const { recording, bad } = session.row;
-    const summing = isUnended(this.state.jobs.get('summary'));
-    if (!session.summary && !recording && bad === null && !summing) {
-      await this.work({ do: 'summary' });
-    }
+    // Asked for while it is on its way, it is the same job.
+    if (!session.summary && !recording && bad === null) await this.work({ do: 'summary' });
   }
 
   /** Work on this session that was begun before the page was loaded, or by somebody else. */
   private async adopt(name: string): Promise<void> {
     const told = await this.api.jobs();
     if (!told.done) return;
-    const { jobs } = this.state;
-    // The newest first.
-    for (const job of told.value.jobs) {
-      if (job.about.length !== 1 || job.about[0] !== name) continue;
-      const key = job.kind;
-      if (jobs.has(key) || !(isUnended(job) || job.state === 'done')) continue;
-      jobs.set(key, job);
-      void this.followFor(name, key, job.id);
+    const seen = new Set(this.state.jobs.keys());
+    // The newest first; what it came to is not in the list.
+    for (const { id, kind, about, state } of told.value.jobs) {
+      if (about.length !== 1 || about[0] !== name || seen.has(kind)) continue;
+      if (state === 'failed' || state === 'cancelled') continue;
+      seen.add(kind);
+      void this.followFor(name, kind, id, state === 'done');
     }
   }
 
@@ -161,13 +158,15 @@ export class RecordsDesk {
     this.touch();
   }
 
-  /** Follows a job of a session, and asks about the session again when it is done. */
-  private async followFor(name: string, key: string, id: string): Promise<void> {
-    const before = this.state.jobs.get(key)?.state;
+  /**
+   * Follows a job of a session, and asks about the session again when it is done.
+   * @param known it was done before the session was asked about
+   */
+  private async followFor(name: string, key: string, id: string, known = false): Promise<void> {
     await this.follow(id, (job) => {
       if (this.state.open === name) this.state.jobs.set(key, job);
     });
-    if (this.state.open !== name || before === 'done') return;
+    if (this.state.open !== name || known) return;
     await this.refresh(name);
     await this.list();
   }

@@ -25,6 +25,16 @@ export function SearchForm({ desk, state }: { desk: RecordsDesk; state: Records 
             onInput={(event) => desk.search({ text: event.currentTarget.value }, true)}
           />
         </label>
+        <button
+          type="button"
+          disabled={!isNarrowed(query)}
+          onClick={() => {
+            const { sort, order } = query;
+            desk.setQuery({ ...(sort ? { sort } : {}), ...(order ? { order } : {}) });
+          }}
+        >
+          Clear
+        </button>
         <label>
           Animal
           <select
@@ -82,16 +92,6 @@ export function SearchForm({ desk, state }: { desk: RecordsDesk; state: Records 
             ))}
           </select>
         </label>
-        <button
-          type="button"
-          disabled={!isNarrowed(query)}
-          onClick={() => {
-            const { sort, order } = query;
-            desk.setQuery({ ...(sort ? { sort } : {}), ...(order ? { order } : {}) });
-          }}
-        >
-          Clear
-        </button>
       </form>
     </search>
   );

@@ -108,9 +108,11 @@ function FactsPanel({ desk, state, session }: SessionProps) {
         <Fact name="Record">
           <LevelShape level={level} /> {words}, {bytesWords(recordBytes)}
         </Fact>
-        <Fact name="Self-check">{row.bad === null ? checkWords(session) : null}</Fact>
-        <Fact name="Folder">
-          <span class="folder">{row.name}</span>
+        <Fact name="Self-check" across>
+          {row.bad === null ? checkWords(session) : null}
+        </Fact>
+        <Fact name="Folder" across>
+          {row.name}
         </Fact>
       </dl>
       {missing.length > 0 ? (
@@ -140,9 +142,10 @@ function FactsPanel({ desk, state, session }: SessionProps) {
   );
 }
 
-function Fact({ name, children }: { name: string; children: ComponentChildren }) {
+function Fact(props: { name: string; across?: boolean; children: ComponentChildren }) {
+  const { name, across, children } = props;
   return (
-    <div class="fact">
+    <div class={`fact ${across ? 'across' : ''}`}>
       <dt>{name}</dt>
       <dd>{children || '–'}</dd>
     </div>

@@ -56,7 +56,9 @@ export function SessionTable(props: Props) {
             {COLUMNS.map(([name, words]) => (
               <SortHead key={name} {...props} name={name} words={words} />
             ))}
-            <th scope="col">Record</th>
+            <th scope="col" class="standing">
+              Record
+            </th>
           </tr>
         </thead>
         <tbody>
@@ -75,7 +77,11 @@ function SortHead({ desk, state, name, words }: Props & { name: SessionSort; wor
   const sorted = (query.sort ?? 'started') === name;
   const up = query.order === 'up';
   return (
-    <th scope="col" class={name} aria-sort={sorted ? (up ? 'ascending' : 'descending') : 'none'}>
+    <th
+      scope="col"
+      class={`by-${name}`}
+      aria-sort={sorted ? (up ? 'ascending' : 'descending') : 'none'}
+    >
       <button type="button" onClick={() => desk.setQuery(sortedBy(query, name))}>
         {words}
         <span class="turn" aria-hidden="true">
