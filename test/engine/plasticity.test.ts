@@ -25,7 +25,7 @@ function evenRun(speedCmPerS: number) {
 }
 
 describe('the field that a firing is predicted to leave', () => {
-  test.each([10, 20, 40])('is that of the run about it, here at %i cm/s', (speed) => {
+  test.each([12, 20, 40])('is that of the run about it, here at %i cm/s', (speed) => {
     const stage = new Stage(INDUCE).to(2, 170, speed);
     expect(stage.fields).toHaveLength(2);
     const [, field] = stage.fields;

@@ -57,6 +57,10 @@ const DECISIONS: { readonly [K in Decision['kind']]: Extract<Decision, { kind: K
   drawn: { kind: 'drawn', draw: 'kind', scope: 'induce', index: 0, value: 'sham' },
   'phase began': { kind: 'phase began', phase: 'baseline', index: 0, reason: 'start' },
   'cell began': { kind: 'cell began', index: 1, fields: { depth: '1.2 mm' } },
+  'field predicted': {
+    ...{ kind: 'field predicted', rule: 'induce', serial: 2, onsetCm: 45, peakCm: 38 },
+    ...{ centreCm: 34, widthCm: 102, asymmetry: 0.1, shiftCm: 7, curve: [0.1, 1, 0.2] },
+  },
   'end foreseen': { kind: 'end foreseen', laps: 5, s: null, exact: true, reason: 'lap' },
   choice: { kind: 'choice', name: 'gate_at', value: 52, state: 'in force' },
   alarm: {
