@@ -3,13 +3,15 @@
  * Machines differ and drift: read ratios and differences, and the figures for this machine alone.
  */
 import { arch, cpus, loadavg, release } from 'node:os';
+import { CYCLES_PER_US } from '../../hardware-sim/emulator/chip.js';
 import { benchEngine } from './engine.js';
-import { benchFirmware } from './firmware.js';
+import { benchFirmware, type WidthErrors } from './firmware.js';
 import { benchMemory } from './memory.js';
 import { benchRecord } from './record.js';
 import { benchRehearsal } from './rehearsal.js';
 import { benchRoundTrip, roundTripTable } from './roundTrip/benchRoundTrip.js';
 import { wholeLoop } from './roundTrip/wholeLoop.js';
+import { benchRuns } from './runs.js';
 import { median } from './statistics.js';
 import { benchWire } from './wire.js';
 
@@ -46,6 +48,14 @@ async function rehearsal(): Promise<void> {
     `${(perSecond / 1e6).toFixed(2)} million, median`,
     perSecond >= 1.5e6,
   );
+}
+
+async function runs(): Promise<void> {
+  const { runs: count, jobs, sessionMin, tookS, cpuS } = await benchRuns();
+  console.log(
+    `${count} sessions of ${sessionMin.toFixed(0)} min with ten rules on ${jobs} threads: ${tookS.toFixed(1)} s, ${cpuS.toFixed(1)} s of processor time`,
+  );
+  bar('rehearsing 500 sessions of 45 min (<= 60 s)', `${tookS.toFixed(1)} s`, tookS <= 60);
 }
 
 async function engine(): Promise<void> {
@@ -98,29 +108,40 @@ function memory(): void {
 }
 
 async function firmware(): Promise<void> {
-  const { board, counts, edgeToOutput, watchdogUs, stackLeftBytes } = await benchFirmware();
-  console.log(`the committed program for the ${board}, emulated`);
-  for (const { edgesPerS, edges, lost } of counts) {
-    console.log(`${edgesPerS} edges/s: ${lost} of ${edges} lost`);
-  }
-  for (const shots of edgeToOutput) {
-    const { minUs, medianUs, p99Us, maxUs, widthErrorUs, longestOffUs } = shots;
-    const figure = [minUs, medianUs, p99Us, maxUs].map((us) => us.toFixed(2)).join(' / ');
+  for (const board of ['atmega328p', 'atmega2560'] as const) {
+    const figures = await benchFirmware(board);
+    console.log(`the committed program for the ${board}, emulated`);
+    for (const { edgesPerS, edges, lost } of figures.counts) {
+      const figure = `${lost} of ${edges} lost`;
+      if (edgesPerS < 60_000) bar(`counts at ${edgesPerS} edges/s (none lost)`, figure, lost === 0);
+      else console.log(`        counts at ${edgesPerS} edges/s: ${figure}`);
+    }
+    for (const shots of figures.edgeToOutput) {
+      const { minUs, medianUs, p99Us, maxUs } = shots;
+      const figure = [minUs, medianUs, p99Us, maxUs].map((us) => us.toFixed(2)).join(' / ');
+      bar(
+        `edge to output at ${shots.edgesPerS} edges/s, min / median / p99 / max (<= 10 us)`,
+        `${figure} us, ${shots.missed} of ${shots.shots} missed`,
+        maxUs <= 10 && shots.missed === 0,
+      );
+      width('of one output', shots.widthErrorUs);
+    }
+    width('of outputs that end together', figures.widthErrorUs);
+    const { cycles, hits, edges } = figures.off;
     bar(
-      `edge to output at ${shots.edgesPerS} edges/s (<= 10 us)`,
-      `${figure} us, ${shots.missed} of ${shots.shots} missed`,
-      maxUs <= 10,
+      'interrupts off (< 100 cycles)',
+      `${cycles} cycles (${(cycles / CYCLES_PER_US).toFixed(1)} us) at most, over ${hits} hits and ${edges} edges`,
+      cycles < 100,
     );
-    bar(
-      'pulse width (within 20 us)',
-      `${widthErrorUs.least.toFixed(1)} to ${widthErrorUs.most.toFixed(1)} us`,
-      widthErrorUs.most <= 20,
+    console.log(
+      `        watchdog: ${(figures.watchdogUs / 1000).toFixed(1)} ms; ${figures.stackLeftBytes} bytes of stack never reached`,
     );
-    console.log(`  longest stretch with interrupts off: ${longestOffUs.toFixed(1)} us`);
   }
-  console.log(
-    `watchdog: ${(watchdogUs / 1000).toFixed(1)} ms; ${stackLeftBytes} bytes of stack never reached`,
-  );
+}
+
+function width(what: string, { pulses, least, most }: WidthErrors): void {
+  const figure = `${least.toFixed(1)} to ${most.toFixed(1)} us over ${pulses} pulses`;
+  bar(`pulse width ${what} (within 20 us)`, figure, least >= -20 && most <= 20);
 }
 
 const PARTS = {
@@ -128,6 +149,7 @@ const PARTS = {
   engine,
   record,
   rehearsal,
+  runs,
   memory,
   firmware,
   'round-trip': roundTrip,

@@ -9,7 +9,7 @@ import { replaySession } from '../../server/session/replay.js';
 import { readRig } from '../../server/session/rig/readRig.js';
 import { openSession } from '../../server/session/store.js';
 
-const TEN_RULES = `title: Ten rules for an hour
+export const TEN_RULES = `title: Ten rules for an hour
 belt: 180 cm
 places:
   zone: 85 to 95 cm
