@@ -165,9 +165,10 @@ export class Jobs {
   }
 
   #forgetOld(): void {
-    const ended = [...this.#jobs.values()].filter((job) => !unended(job) && !job.child);
-    for (const { id } of ended.slice(0, Math.max(0, ended.length - this.#limits.mostKept))) {
-      this.#jobs.delete(id);
+    const ended = [...this.#jobs.values()].filter((job) => !unended(job));
+    for (const { id, child } of ended.slice(0, Math.max(0, ended.length - this.#limits.mostKept))) {
+      // A cancelled one is counted until its process is gone.
+      if (!child) this.#jobs.delete(id);
     }
   }
 }
