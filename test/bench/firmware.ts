@@ -3,6 +3,7 @@
  * program, not of this machine. `benchFirmware` is the whole of it; the tests take less of each.
  */
 
+import { Dice } from '../../hardware-sim/animal/dice.js';
 import { ConformanceHost } from '../../hardware-sim/conformance/conformanceHost.js';
 import { emulatedLine } from '../../hardware-sim/conformance/lines.js';
 import { CYCLES_PER_US } from '../../hardware-sim/emulator/chip.js';
@@ -11,7 +12,8 @@ import {
   type EmulatedBoardName,
   fillMemory,
 } from '../../hardware-sim/emulator/emulatedBoard.js';
-import { FAULT } from '../../server/wire/messages.js';
+import { FAULT, OUTCOME } from '../../server/wire/messages.js';
+import { presetCount } from '../firmware/presets.js';
 import { quantile } from './statistics.js';
 
 /** Odd rates: round ones lock to the 1 kHz tick and hide losses. */
@@ -34,14 +36,31 @@ export interface LatencyFigures {
   readonly p99Us: number;
   readonly maxUs: number;
   /** Of pulses of `widthUs`: measured less asked for. */
-  readonly widthErrorUs: { readonly least: number; readonly most: number };
-  readonly longestOffUs: number;
+  readonly widthErrorUs: WidthErrors;
+}
+
+/** Measured less asked for, microseconds. */
+export interface WidthErrors {
+  readonly pulses: number;
+  readonly least: number;
+  readonly most: number;
+}
+
+export interface OffFigures {
+  /** The longest stretch with interrupts off, cycles of the chip. */
+  readonly cycles: number;
+  /** Slots that fired meanwhile, and changes of inputs. */
+  readonly hits: number;
+  readonly edges: number;
 }
 
 export interface FirmwareFigures {
   readonly board: string;
   readonly counts: readonly CountFigures[];
   readonly edgeToOutput: readonly LatencyFigures[];
+  /** Of outputs that end together, a little apart, and in trains that overlap. */
+  readonly widthErrorUs: WidthErrors;
+  readonly off: OffFigures;
   /** From the last finished stamp to idle outputs, microseconds. */
   readonly watchdogUs: number;
   /** Bytes of memory that the stack was never seen to reach. */
@@ -128,7 +147,6 @@ export async function measureEdgeToOutput(
   let next = board.cycle;
   let nextMs = next;
   let ms = 0;
-  board.chip.longestOffCycles = 0;
   for (let shot = 0; shot < shots; shot++) {
     target = count + apart;
     host.arm({ slot: shot % 8, output: 0, count: target, widthUs });
@@ -145,7 +163,6 @@ export async function measureEdgeToOutput(
       if (ms % 16 === 0) host.pulse({ output: 2, widthUs: 2_000 });
     }
   }
-  const longestOffUs = board.chip.longestOffCycles / CYCLES_PER_US;
   await host.live(20_000);
   latenciesUs.sort((a, b) => a - b);
   return {
@@ -156,9 +173,95 @@ export async function measureEdgeToOutput(
     medianUs: quantile(latenciesUs, 0.5),
     p99Us: quantile(latenciesUs, 0.99),
     maxUs: latenciesUs.at(-1)!,
-    widthErrorUs: { least: Math.min(...errorsUs), most: Math.max(...errorsUs) },
-    longestOffUs,
+    widthErrorUs: rangeOf(errorsUs),
   };
+}
+
+const rangeOf = (errorsUs: readonly number[]): WidthErrors => ({
+  pulses: errorsUs.length,
+  least: Math.min(...errorsUs),
+  most: Math.max(...errorsUs),
+});
+
+/** How far apart outputs are to end, microseconds: together, within one interrupt, and beyond it. */
+const APART_US = [0, 1, 2, 3, 5, 9, 20, 150];
+
+/**
+ * Widths on every output at once: ends that fall on one another or a little apart, by pulses and by
+ * trains whose falls and rises cross, while the belt runs and the host beats.
+ */
+export async function measureWidths(
+  name: EmulatedBoardName,
+  apartUs: readonly number[] = APART_US,
+): Promise<WidthErrors> {
+  const { host, board } = await bench(name);
+  const { outputs } = host.identity;
+  for (let output = 2; output < outputs; output++) host.configure({ output });
+  await host.live(10_000);
+  const roseCycle: number[] = [];
+  const widthsUs: number[] = [];
+  const errorsUs: number[] = [];
+  board.probe = (output, level, cycle) => {
+    if (level === 1) roseCycle[output] = cycle;
+    else errorsUs.push((cycle - roseCycle[output]!) / CYCLES_PER_US - widthsUs[output]!);
+  };
+  for (const apart of apartUs) {
+    const startUs = host.boardUs + 20_000;
+    for (let output = 0; output < outputs; output++) {
+      const at = startUs + output * 900;
+      widthsUs[output] = 10_000 - output * 900 + output * apart;
+      const expiryUs = at + 10_000;
+      host.pulse({ output, flags: 1, startUs: at, expiryUs, widthUs: widthsUs[output]! });
+      run(board, 5_021, 10, () => host.beat());
+    }
+    run(board, 20_011, 1_000, () => host.beat());
+  }
+  for (let output = 0; output < outputs; output++) {
+    const widthUs = 1_100 + output * 100;
+    widthsUs[output] = widthUs;
+    host.pulse({ output, widthUs, periodUs: 7_000 + output * 37, repeats: 20 });
+    run(board, 5_021, 10, () => host.beat());
+  }
+  run(board, 5_021, 900, () => host.beat());
+  return rangeOf(errorsUs);
+}
+
+/** The longest stretch with interrupts off, under everything that the board can be asked for at once. */
+export async function measureInterruptsOff(
+  name: EmulatedBoardName,
+  ms: number,
+): Promise<OffFigures> {
+  const { host, board } = await bench(name);
+  const { outputs, inputs, slots } = host.identity;
+  for (let output = 2; output < outputs; output++) host.configure({ output });
+  await host.live(10_000);
+  const last = outputs - 1;
+  const gaps = { leastGapUs: 2_000, mostGapUs: 6_000, seed: 3 };
+  host.send('sync', { output: last, running: 1, widthUs: 300, ...gaps });
+  const dice = new Dice(4);
+  const below = (n: number) => Math.floor(dice.unit() * n);
+  board.chip.longestOffCycles = 0;
+  for (let n = 0; n < ms; n++) {
+    if (n % 4 === 0) host.beat();
+    if (n % 10 === 0) host.pulse({ output: below(last), widthUs: 100 + below(3_000) });
+    if (n % 4 === 2) {
+      // Every other one where a byte or three of the count carry, which takes the interrupt longest.
+      const carries = (host.count + 0x200) & ~0xff;
+      const count = n % 8 === 2 ? carries : host.count + 60 + below(60);
+      host.arm({ slot: below(slots), output: below(last), count, widthUs: 200 + below(900) });
+    }
+    if (n % 20 === 0) board.setInput(below(inputs), below(2) as 0 | 1);
+    if (n === ms >> 1) presetCount(board, 0xff_ff80);
+    const from = board.cycle;
+    for (let edge = 1; edge <= 20; edge++) {
+      board.runToCycle(from + edge * 800);
+      board.step(n % 50 < 38 ? 1 : -1);
+    }
+  }
+  const cycles = board.chip.longestOffCycles;
+  await host.live(20_000);
+  const hits = host.outcomes.filter(({ kind }) => kind === OUTCOME.fired).length;
+  return { cycles, hits, edges: host.edges.filter(({ input }) => input < inputs).length };
 }
 
 /** How long after the last finished stamp a silent host's pulse is cut. */
@@ -219,6 +322,8 @@ export async function benchFirmware(
     board: name,
     counts,
     edgeToOutput,
+    widthErrorUs: await measureWidths(name),
+    off: await measureInterruptsOff(name, scale * 3_000),
     watchdogUs: await measureWatchdog(name),
     stackLeftBytes: await measureStack(name),
   };

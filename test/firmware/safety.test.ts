@@ -97,3 +97,21 @@ test('the monostable is fed while beats are fresh, and not 150 ms after the last
   await host.silent(50_000);
   expect(board.aliveChanges).toBe(last);
 });
+
+test('an input that chatters without end takes neither the chip nor the line', async () => {
+  const { board } = line;
+  const id = host.arm({ count: host.count + 40, widthUs: 2_000 });
+  for (let n = 0; n < 20_000; n++) {
+    board.setInput(0, n % 2 === 0 ? 1 : 0);
+    board.runToCycle(board.cycle + 160);
+    if (n % 400 === 0) host.beat();
+    if (n % 400 === 200) board.step(1);
+  }
+  host.expectTold(id, 'fired, done');
+  host.expectFaults('');
+  expect(host.identities).toHaveLength(1);
+  const gapsUs = host.samples.slice(1).map((one, n) => one.boardUs - host.samples[n]!.boardUs);
+  expect(Math.max(...gapsUs)).toBeLessThan(20_000);
+  await host.live(20_000);
+  expect(host.last(host.samples, 'sample')).toMatchObject({ inputs: 0, badFrames: 0, overruns: 0 });
+});

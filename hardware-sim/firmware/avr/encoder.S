@@ -1,6 +1,9 @@
 ; The encoder's interrupt, for either line: four counts a cycle, A before B is up. It moves the count,
-; compares it with the next target in its direction, raises the output of a slot that is hit, and
-; leaves the rest to the service. What limits the board is the longest stretch with interrupts off.
+; compares it with the next target in its direction, raises the output of a slot that is hit, takes
+; the slot out of its list, and leaves the rest to the service. What limits the board is the longest
+; stretch with interrupts off: a test holds every one to less than 100 cycles. So what it works with
+; is kept in registers of the chip that nothing else uses, and what it has to save goes into r2 to r6,
+; which the compiler is told to leave alone.
 #include "layer_board.h"
 #define IO(reg) _SFR_IO_ADDR(reg)
 #define SLOT_TARGET 0 /* the layout of slot_t in board.h */
@@ -8,29 +11,33 @@
 #define SLOT_ROSE 5
 #define SLOT_HIT_TICKS 6
 #define SLOT_NEXT 8
-#define SLOT_STATE 10
-#define HIT 2
+#define SLOT_BYTES 10
+#define LINES (3 << ENCODER_SHIFT)
+#define LINE_B (ENCODER_SHIFT + 1)
 
-; Compares the whole count with the target of the head of list `dir`, whose low byte it has already
-; matched. A hit raises the slot's output if it has the permit, takes that, and takes the slot out.
+; All slots lie in one page, so that one byte says which: the high one is always the same. This file
+; is linked first, so the page is the memory's first; build.sh looks whether it is.
+.data
+.global slots
+slots: .space SLOT_BYTES * (N_SLOTS + 1)
+
+; Compares the count's high bytes with the target of the head of list `dir`, whose low byte has been
+; matched already. A hit raises the slot's output if it has the permit, takes that, and takes the
+; slot out. At the end of a list stands a slot that raises nothing and is followed by itself.
 ; Written out for each direction: calls would cost ten cycles between the edge and the output.
 .macro fire_head dir
-  push r25
+  mov r6, r25
   lds r30, slot_heads + 2 * \dir
-  lds r31, slot_heads + 2 * \dir + 1
-  tst r31                       ; no slot: memory begins above that
-  breq 3f
+  ldi r31, hi8(slots)
   ldd r24, Z + SLOT_TARGET + 1
-  lds r25, count_high
+  in r25, IO(COUNT_1)
   cp r24, r25
-  brne 3f
   ldd r24, Z + SLOT_TARGET + 2
-  lds r25, count_high + 1
-  cp r24, r25
-  brne 3f
+  in r25, IO(COUNT_2)
+  cpc r24, r25
   ldd r24, Z + SLOT_TARGET + 3
-  lds r25, count_high + 2
-  cp r24, r25
+  in r25, IO(COUNT_3)
+  cpc r24, r25
   brne 3f
   ldd r24, Z + SLOT_FAST
   in r25, IO(hal_permits)
@@ -44,128 +51,93 @@
   std Z + SLOT_HIT_TICKS, r24
   std Z + SLOT_HIT_TICKS + 1, r25
   sbi IO(EECR), EERIE           ; the service comes as soon as this is over
-  ldi r24, HIT
-  std Z + SLOT_STATE, r24
-  lds r24, slot_hits
-  inc r24
-  sts slot_hits, r24
-  ldd r24, Z + SLOT_NEXT
-  ldd r25, Z + SLOT_NEXT + 1
-  sts slot_heads + 2 * \dir + 1, r25
-  sts slot_heads + 2 * \dir, r24
-  mov r30, r24
-  mov r31, r25
-  ld r24, Z                     ; with an empty list this reads a register: no head, no match
+  ldd r30, Z + SLOT_NEXT
+  sts slot_heads + 2 * \dir, r30
+  ld r24, Z
   sts slot_head_lows + \dir, r24
 3:
-  pop r25
+  mov r25, r6
+  leave
 .endm
 
-.data
-.balign 16
-steps:                          ; by now << 2 | before, lines as B << 1 | A; 2: both changed
-  .byte 0, -1, 1, 2,  1, 0, 2, -1,  -1, 2, 0, 1,  2, 1, -1, 0
+.macro leave
+  movw r30, r4
+  mov r24, r3
+  out IO(SREG), r2
+  reti
+.endm
 
 .text
 .global ENCODER_VECTOR_A
 .global ENCODER_VECTOR_B
 ENCODER_VECTOR_A:
 ENCODER_VECTOR_B:
-  push r24
-  in r24, IO(SREG)
-  push r24
-  push r30
-  push r31
+  in r2, IO(SREG)
+  mov r3, r24
+  movw r4, r30
   in r30, IO(ENCODER_PIN)
-#if ENCODER_SHIFT == 4
-  lsr r30
-  lsr r30
-#endif
-  andi r30, 0x0c
-  in r24, IO(LEVELS_BEFORE)
-  or r24, r30
-  lsr r30
-  lsr r30
+  in r31, IO(LEVELS_BEFORE)
   out IO(LEVELS_BEFORE), r30
-  mov r30, r24
-  ori r30, lo8(steps)
-  ldi r31, hi8(steps)
-  ld r24, Z
-  in r30, IO(COUNT_LOW)
-  tst r24
-  breq leave
-  brpl 5f
+  mov r24, r30
+  eor r24, r31
+  andi r24, LINES
+  breq none
+  cpi r24, LINES
+  breq illegal                  ; both have changed: no direction
+  lsl r30                       ; up: A as it is and B as it was differ
+  eor r30, r31
+  in r31, IO(COUNT_LOW)
+  sbrs r30, LINE_B
   rjmp down
-5:
-  sbrc r24, 1                   ; 2: no direction
-  rjmp illegal
-  inc r30
-  out IO(COUNT_LOW), r30
-  brne up
-  rjmp carry
+  subi r31, 0xff
+  out IO(COUNT_LOW), r31
+  breq carry
 up:
-  lds r31, slot_head_lows + 1
+  lds r30, slot_head_lows + 1
   cp r30, r31
-  breq 4f
-leave:
-  pop r31
-  pop r30
-  pop r24
-  out IO(SREG), r24
-  pop r24
-  reti
-4:
-  fire_head 1
-  rjmp leave
-
-down:
-  subi r30, 1
-  out IO(COUNT_LOW), r30
-  brcc 1f
-  rjmp borrow
-1:
-  lds r31, slot_head_lows
-  cp r30, r31
-  breq 2f
-  rjmp leave
-2:
-  fire_head 0
-  rjmp leave
-
-carry:
-  lds r31, count_high
-  inc r31
-  sts count_high, r31
-  brne 6f
-  lds r31, count_high + 1
-  inc r31
-  sts count_high + 1, r31
-  brne 6f
-  lds r31, count_high + 2
-  inc r31
-  sts count_high + 2, r31
-6:
+  breq hit_up
+none:
+  leave
+carry:                          ; 0xff taken away without a borrow is one more
+  in r30, IO(COUNT_1)
+  sbci r30, 0xff
+  out IO(COUNT_1), r30
+  in r30, IO(COUNT_2)
+  sbci r30, 0xff
+  out IO(COUNT_2), r30
+  in r30, IO(COUNT_3)
+  sbci r30, 0xff
+  out IO(COUNT_3), r30
   rjmp up
-
-borrow:
-  lds r31, count_high
-  subi r31, 1
-  sts count_high, r31
-  brcc 7f
-  lds r31, count_high + 1
-  subi r31, 1
-  sts count_high + 1, r31
-  brcc 7f
-  lds r31, count_high + 2
-  subi r31, 1
-  sts count_high + 2, r31
-7:
-  rjmp 1b
-
 illegal:
   lds r30, illegal_steps
   lds r31, illegal_steps + 1
   adiw r30, 1
   sts illegal_steps + 1, r31
   sts illegal_steps, r30
-  rjmp leave
+  leave
+hit_up:
+  fire_head 1
+
+down:
+  subi r31, 1
+  out IO(COUNT_LOW), r31
+  brcs borrow
+1:
+  lds r30, slot_head_lows
+  cp r30, r31
+  breq hit_down
+  leave
+borrow:
+  in r30, IO(COUNT_1)
+  sbci r30, 0
+  out IO(COUNT_1), r30
+  in r30, IO(COUNT_2)
+  sbci r30, 0
+  out IO(COUNT_2), r30
+  in r30, IO(COUNT_3)
+  sbci r30, 0
+  out IO(COUNT_3), r30
+  rjmp 1b
+hit_down:
+  fire_head 0

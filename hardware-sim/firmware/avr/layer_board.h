@@ -76,17 +76,18 @@
 #endif
 
 #define OUT_MASK ((uint8_t)((1u << N_OUTPUTS) - 1))
-#define LEVELS_BEFORE GPIOR0 /* the encoder's lines as they were, B then A */
-#define COUNT_LOW GPIOR1     /* the count's low byte */
+#define LEVELS_BEFORE GPIOR0 /* the encoder's port as it was */
+#define COUNT_LOW GPIOR1     /* the count, byte by byte: the last three in a timer that stands still */
+#define COUNT_1 OCR0A
+#define COUNT_2 OCR0B
+#define COUNT_3 TCNT0
 #define hal_permits GPIOR2
 #define SERVICE_VECTOR SPM_READY_vect /* jumped to by service.S; the chip never comes to it */
 
 #ifndef __ASSEMBLER__
 typedef __uint24 cut_ms_t; /* 4.6 hours */
-extern volatile uint8_t count_high[3], idle_levels;
+extern volatile uint8_t idle_levels;
 extern volatile uint16_t illegal_steps;
-extern volatile uint8_t hal_dropped;
-extern volatile uint16_t hal_dropped_ticks;
 
 #define hal_irq_off() cli()
 #define hal_irq_on() sei()
@@ -95,9 +96,9 @@ extern volatile uint16_t hal_dropped_ticks;
 static inline int32_t hal_count(void) {
   union { uint8_t byte[4]; int32_t whole; } count;
   count.byte[0] = COUNT_LOW;
-  count.byte[1] = count_high[0];
-  count.byte[2] = count_high[1];
-  count.byte[3] = count_high[2];
+  count.byte[1] = COUNT_1;
+  count.byte[2] = COUNT_2;
+  count.byte[3] = COUNT_3;
   return count.whole;
 }
 #define hal_illegal() illegal_steps
@@ -114,14 +115,10 @@ static inline void hal_set_idle(uint8_t mask, bool high) {
   idle_levels ^= mask;
   OUT_PIN = mask; /* writing PINx toggles: idle or on, it stays what it was */
 }
-extern volatile uint8_t fall_mask;
-extern volatile uint16_t fall_ticks;
-/* Interrupts off. A time that is past, or nearly, is soon. */
-static inline void hal_schedule(uint16_t ticks, uint8_t falls) {
+#define HAL_FALL_TICKS 4 /* service.S: from the compare to the pin, at least 38 cycles */
+static inline void hal_schedule(uint16_t ticks) {
   uint16_t soonest = TCNT1 + 8;
   if ((int16_t)(ticks - soonest) < 0) ticks = soonest;
-  fall_ticks = ticks;
-  fall_mask = falls;
   OCR1B = ticks;
 }
 static inline void hal_poke(void) { EECR |= _BV(EERIE); }

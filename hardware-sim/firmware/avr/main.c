@@ -6,12 +6,8 @@
 
 #define BAUD 500000UL
 
-volatile uint8_t count_high[3] __attribute__((used)), idle_levels __attribute__((used));
+volatile uint8_t idle_levels __attribute__((used));
 volatile uint16_t illegal_steps __attribute__((used));
-volatile uint8_t hal_dropped __attribute__((used));
-volatile uint16_t hal_dropped_ticks __attribute__((used));
-volatile uint8_t fall_mask __attribute__((used));
-volatile uint16_t fall_ticks __attribute__((used));
 static volatile uint32_t overflows; /* of the 16-bit clock, each 32.768 ms */
 static volatile uint8_t rx_ring[RX_BYTES], rx_head, rx_tail;
 static volatile uint8_t woken; /* an interrupt has left work to the main loop */
@@ -90,15 +86,17 @@ ISR(IN_VECTOR) {
   sei();
   board_inputs(levels, hal_extend_ticks(ticks), count);
   cli();
-  PCICR = _BV(IN_CHANGE_ENABLE);
+  /* Else there was no room: an input that chatters must take neither the chip nor the line. */
+  if (levels == hal_input_levels) PCICR = _BV(IN_CHANGE_ENABLE);
 }
 
-/* A thousand times a second: changes that found no room to be told when they happened. */
+/*
+ * A thousand times a second: changes that found no room to be told when they happened. They wait
+ * until all before them is told, and a sample after it.
+ */
 static void look_again(void) {
-  uint8_t levels = (uint8_t)~IN_PIN & IN_MASK;
-  if (levels == hal_input_levels) return;
+  if (PCICR || !voice_caught_up()) return;
   cli();
-  PCICR = 0;
   int32_t count = hal_count();
   sei();
   board_inputs((uint8_t)~IN_PIN & IN_MASK, hal_now_us(), count);
@@ -222,7 +220,7 @@ int main(void) {
   TCCR1B = _BV(CS11);
   TIFR1 = _BV(OCF1A) | _BV(OCF1B) | _BV(TOV1);
   TIMSK1 = _BV(OCIE1A) | _BV(OCIE1B) | _BV(TOIE1);
-  LEVELS_BEFORE = (uint8_t)(ENCODER_PIN >> ENCODER_SHIFT) & 3;
+  LEVELS_BEFORE = ENCODER_PIN;
   ENCODER_SENSE();
   hal_input_levels = (uint8_t)~IN_PIN & IN_MASK;
   IN_CHANGES = IN_MASK;

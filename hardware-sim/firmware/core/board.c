@@ -32,8 +32,12 @@ void board_tick(void) {
   if (hal_cut) hal_poke();
 }
 
-/* Call once, interrupts still off or on, after the layer's own beginning. */
-void board_begin(void) { voice_boot(); }
+/* Call once, interrupts still off, after the layer's own beginning. */
+void board_begin(void) {
+  slots_begin();
+  falls_begin();
+  voice_boot();
+}
 
 /* One round of the main loop. False: nothing to do until an interrupt comes. */
 bool board_round(void) {

@@ -17,39 +17,59 @@ typedef uint8_t mask_t; /* a bit for each output */
 #define BIT(n) ((mask_t)(1u << (n)))
 
 /* ---- slots.c: what is armed, two lists in the order in which the count will come to them. */
-enum { SLOT_FREE, SLOT_ARMED, SLOT_HIT };
 typedef struct slot {
-  /* avr/encoder.S knows the offsets of the first six. */
+  /* What the encoder's interrupt works with: avr/encoder.S knows this layout. */
   int32_t target;
-  mask_t fast;         /* the output's bit while this slot would pass every check; else 0 */
+  mask_t fast;          /* the output's bit while this slot would pass every check; else 0 */
   volatile mask_t rose; /* set at the hit: the interrupt has raised the output */
   volatile uint16_t hit_ticks;
   struct slot *volatile next;
-  volatile uint8_t state;
-  uint8_t output;
-  uint8_t rising;
+} slot_t;
+typedef struct {
   uint32_t id;
   shape_t shape;
-} slot_t;
-extern slot_t slots[N_SLOTS];
+  uint8_t output : 4, rising : 1, armed : 1;
+} order_t;
+extern slot_t slots[N_SLOTS + 1]; /* the last stands at the end of both lists */
+extern order_t orders[N_SLOTS];   /* what each is to do */
 extern slot_t *volatile slot_heads[2];     /* falling, rising: the next target in each direction */
 extern volatile uint8_t slot_head_lows[2]; /* the low byte of its target */
-extern volatile uint8_t slot_hits;         /* counts hits: changes whenever a list's head was taken */
+extern slot_t *slot_heads_known[2];        /* what was hit lies between these and the heads */
 
-extern uint8_t slot_hits_seen;
+void slots_begin(void);
 void slots_book_hits(void);
-static inline bool slots_hit_waiting(void) { return slot_hits_seen != slot_hits; }
+static inline bool slots_hit_waiting(void) {
+  return slot_heads_known[0] != slot_heads[0] || slot_heads_known[1] != slot_heads[1];
+}
 static inline void slots_take_hits(void) {
   if (slots_hit_waiting()) slots_book_hits();
 }
-bool slot_arm(slot_t *slot);
-void slot_disarm(slot_t *slot, uint8_t kind, uint8_t reason);
+bool slot_arm(uint8_t n);
+void slot_disarm(uint8_t n, uint8_t kind, uint8_t reason);
 void slots_end(uint32_t keep, uint16_t outputs, uint8_t reason);
 void slots_sweep(void);
 bool slots_share_low_byte(int32_t target);
 mask_t slots_armed_outputs(void);
 void slots_refresh_fast(uint8_t output);
 bool slots_have(uint32_t id);
+
+/* ---- falls.c: the falls ahead, which the timer's interrupt makes by itself. */
+typedef struct fall {
+  /* avr/service.S knows this layout. */
+  volatile uint16_t ticks; /* when; once it is made, when that was */
+  mask_t mask;             /* which outputs; 0: this one is free */
+  volatile uint8_t made;   /* set by the interrupt, which has taken it out of the list */
+  struct fall *next;
+  uint8_t spread; /* how much earlier the first of them would have been due */
+} fall_t;
+extern fall_t falls[N_OUTPUTS + 1];
+extern fall_t *volatile falls_head;
+extern mask_t falls_known; /* outputs whose fall is in the list, or made and not taken back */
+void falls_begin(void);
+void falls_add(uint8_t n, uint16_t ticks);
+void falls_cancel(uint8_t n);
+mask_t falls_take(uint16_t *ticks);
+void falls_wake(uint16_t ticks);
 
 /* ---- outputs.c: owners, limits, pulses, trains, sync trains. Times are board microseconds. */
 enum { ON = 1, COMMAND = 2, SYNC = 4, FINISH = 8, FELL = 16, ROSE = 32, TAKEN = 64 };
@@ -79,11 +99,11 @@ void bank_hold(void);
 void bank_release(void);
 void bank_release_unchanged(void);
 uint8_t output_shape_reason(const output_t *line, const shape_t *shape);
-bool output_slot_fast(const slot_t *slot);
+bool output_slot_fast(int32_t target, const order_t *order);
 /* When and where a pulse may first rise: the part of it that is looked at again then. */
 typedef struct PACKED { uint8_t flags; uint32_t start_us; int32_t count_from, count_to; } window_t;
 void bank_rise(uint32_t id, uint8_t n, const shape_t *shape, const window_t *window);
-void bank_rise_hit(slot_t *slot, uint32_t us);
+void bank_rise_hit(const slot_t *slot, const order_t *order);
 void bank_stop(uint8_t n, uint8_t reason);
 void bank_end_all(uint16_t mask, uint8_t reason);
 void bank_end_for_silence(uint8_t reason);
@@ -149,6 +169,7 @@ void voice_refuse_identify(uint32_t nonce, uint16_t asker, uint8_t protocol);
 void voice_boot(void);
 void voice_tick(void);
 bool voice_speak(void);
+bool voice_caught_up(void);
 extern volatile uint8_t bad_frames, overruns;
 
 /* ---- frames.c: COBS and CRC, both ways. */

@@ -158,26 +158,28 @@ static void obey_arm(const arm_t *message) {
   uint32_t id = message->id;
   uint8_t output = message->output;
   if (!id_is_new(id, output)) return;
-  slot_t *slot = &slots[message->slot];
-  uint8_t reason = message->slot < N_SLOTS ? arriving_reason(output, &message->shape) : R_BAD_SLOT;
+  uint8_t n = message->slot;
+  uint8_t reason = n < N_SLOTS ? arriving_reason(output, &message->shape) : R_BAD_SLOT;
   if (reason == R_NONE) {
     slots_take_hits();
     if (hal_now_us() - heard_us >= SLOT_SILENCE_US) reason = R_SILENCE;
-    else if (slot->state != SLOT_FREE) reason = R_SLOT_TAKEN;
+    else if (orders[n].armed) reason = R_SLOT_TAKEN;
     else if (slots_share_low_byte(message->count)) reason = R_SHARED_LOW_BYTE;
   }
   if (reason != R_NONE) {
     refuse(id, output, reason);
     return;
   }
-  slot->id = id;
-  slot->output = output;
-  slot->rising = message->rising != 0;
+  order_t *order = &orders[n];
+  order->id = id;
+  order->output = output;
+  order->rising = message->rising != 0;
+  order->shape = message->shape;
+  slot_t *slot = &slots[n];
   slot->target = message->count;
-  slot->shape = message->shape;
   slot->rose = 0;
-  slot->fast = output_slot_fast(slot) ? BIT(output) : 0;
-  if (!slot_arm(slot)) voice_outcome_now(id, PASSED, R_NONE, output);
+  slot->fast = output_slot_fast(slot->target, order) ? BIT(output) : 0;
+  if (!slot_arm(n)) voice_outcome_now(id, PASSED, R_NONE, output);
 }
 
 /* Frames of another tag, told at once and then at most ten times a second. */

@@ -5,14 +5,12 @@ volatile uint8_t tx_ring[TX_BYTES], tx_head, tx_tail;
 static uint8_t tx_at, tx_code_at, tx_run, tx_sequence;
 static uint16_t tx_crc;
 
-/* CRC-16/CCITT-FALSE, one byte on, without a table. */
+/* CRC-16/CCITT-FALSE, one byte on, without a table: all eight bits at once, in steps of 8 bits. */
 static inline uint16_t crc_step(uint16_t crc, uint8_t byte) {
-  crc = (uint16_t)(crc << 8 | crc >> 8);
-  crc ^= byte;
-  crc ^= (uint8_t)(crc & 0xff) >> 4;
-  crc ^= (uint16_t)(crc << 12);
-  crc ^= (uint16_t)((crc & 0xff) << 5);
-  return crc;
+  uint8_t x = (uint8_t)(crc >> 8) ^ byte;
+  x ^= x >> 4;
+  uint8_t high = (uint8_t)crc ^ (uint8_t)(x << 4) ^ (x >> 3), low = (uint8_t)(x << 5) ^ x;
+  return (uint16_t)(high << 8 | low);
 }
 
 static void stuff(uint8_t byte) {
@@ -70,7 +68,8 @@ void frame_close(void) {
   hal_send();
 }
 
-#define STUFFED_MOST (FRAME_MOST + 1)
+/* The longest that a host sends, stuffed. A longer one is none of ours, and counted as damaged. */
+#define STUFFED_MOST (sizeof(pulse_t) + 6 + 1)
 static uint8_t rx[STUFFED_MOST], rx_length;
 static bool rx_overlong;
 

@@ -11,9 +11,10 @@
  *   hal_out_on(m) hal_out_idle(m)     moves pins (interrupts off)
  *   hal_idles_high(m) hal_set_idle(m, high)   idle levels; the pin follows while it is idle
  *   hal_permits                       a byte that the encoder's interrupt clears bits of
- *   hal_schedule(ticks, falls)        call the service then, outputs `falls` idle before (interrupts off)
+ *   hal_schedule(ticks)               then make the head of `falls` idle if it is due, and call the
+ *                                     service; soon, if that is past (interrupts off)
+ *   HAL_FALL_TICKS                    so much later than asked for is a fall at least
  *   hal_poke()                        call the service soon
- *   hal_dropped hal_dropped_ticks     what the timer has made idle since, and when
  *   hal_receive() hal_send()          a byte or -1; there is something in `tx_ring`
  *   hal_alive(fresh)                  a thousand times a second: feed the chip's watchdog, and the
  *                                     monostable while `fresh`

@@ -1,6 +1,6 @@
 /*
  * The outputs: who owns each, its limits, and when it changes next. Falls are set up ahead in the
- * timer, so that their time does not depend on what the board is doing; this file keeps the books.
+ * timer (falls.c); this file keeps the books.
  *
  * `bank_service` runs in the timer's interrupt, with interrupts on, or in the main loop. Whoever
  * runs it has `bank_held` set; an interrupt that finds it set leaves `bank_wanted` and goes.
@@ -12,7 +12,8 @@
 #include "board.h"
 
 #define NEVER UINT32_MAX
-#define LOOK_AGAIN_US 16000 /* half of what the 16-bit timer reaches */
+#define LOOK_AGAIN_US 8000  /* the service comes that often, */
+#define FALL_REACH_US 15000 /* to set up falls that are so near: half of what 16 bits reach, less a bit */
 /* The service comes this long before a rise and waits for it, so that it is not late by its own work; */
 #define EARLY_US 200
 /* and then begins with this much to go, which the checks before it take at least. */
@@ -67,10 +68,10 @@ static uint8_t rise_reason(const output_t *line, const shape_t *shape, uint32_t 
 }
 
 /* Would this slot pass every check that time does not change? */
-bool output_slot_fast(const slot_t *slot) {
-  const output_t *line = &outputs[slot->output];
-  return output_shape_reason(line, &slot->shape) == R_NONE && far_enough(line, slot->target) &&
-         allowed(line, &slot->shape);
+bool output_slot_fast(int32_t target, const order_t *order) {
+  const output_t *line = &outputs[order->output];
+  return output_shape_reason(line, &order->shape) == R_NONE && far_enough(line, target) &&
+         allowed(line, &order->shape);
 }
 
 /* ---- The pin */
@@ -83,8 +84,14 @@ static void withdraw_permit(uint8_t n) {
   slots_take_hits();
 }
 
+/* Gives the fall of an output that rose at `ticks` to the timer at once, if its 16 bits reach so far. */
+static void set_fall(uint8_t n, uint16_t ticks, uint32_t width_us) {
+  if (width_us > FALL_REACH_US) return;
+  falls_add(n, (uint16_t)(ticks + ((uint16_t)width_us << 1) - HAL_FALL_TICKS));
+}
+
 /* False: the interrupt has just raised it for a slot that is not booked yet. */
-static bool raise_pin(uint8_t n, uint32_t *us) {
+static bool raise_pin(uint8_t n, uint32_t width_us, uint32_t *us) {
   hal_irq_off();
   if (hal_outputs_on() & BIT(n)) {
     hal_irq_on();
@@ -94,6 +101,7 @@ static bool raise_pin(uint8_t n, uint32_t *us) {
   hal_out_on(BIT(n));
   uint16_t ticks = hal_ticks();
   hal_irq_on();
+  set_fall(n, ticks, width_us);
   *us = hal_extend_ticks(ticks);
   return true;
 }
@@ -153,7 +161,7 @@ static int32_t count_now(void) {
 /* Raises what passed every check at `us` and `count`, or refuses it. */
 static inline __attribute__((always_inline)) void rise_or_refuse(uint32_t id, uint8_t n,
     const shape_t *shape, uint8_t reason, uint32_t us, int32_t count) {
-  if (reason == R_NONE && !raise_pin(n, &us)) reason = R_BUSY;
+  if (reason == R_NONE && !raise_pin(n, shape->width_us, &us)) reason = R_BUSY;
   if (reason != R_NONE) voice_outcome(id, REFUSED, reason, n, us, count, 0);
   else output_begin(n, id, shape, us, count);
 }
@@ -172,13 +180,15 @@ void bank_rise(uint32_t id, uint8_t n, const shape_t *shape, const window_t *win
 }
 
 /* A slot that the count has come to: the interrupt has raised it, or left the question to us. */
-void bank_rise_hit(slot_t *slot, uint32_t us) {
-  uint8_t n = slot->output;
+void bank_rise_hit(const slot_t *slot, const order_t *order) {
+  uint8_t n = order->output;
+  if (slot->rose) set_fall(n, slot->hit_ticks, order->shape.width_us);
+  uint32_t us = hal_extend_ticks(slot->hit_ticks);
   if (slot->rose) {
-    output_begin(n, slot->id, &slot->shape, us, slot->target);
+    output_begin(n, order->id, &order->shape, us, slot->target);
   } else {
-    uint8_t reason = rise_reason(&outputs[n], &slot->shape, us, slot->target);
-    rise_or_refuse(slot->id, n, &slot->shape, reason, us, slot->target);
+    uint8_t reason = rise_reason(&outputs[n], &order->shape, us, slot->target);
+    rise_or_refuse(order->id, n, &order->shape, reason, us, slot->target);
   }
 }
 
@@ -197,7 +207,7 @@ static void rise_again(uint8_t n) {
   output_t *line = &outputs[n];
   uint32_t us = hal_now_us();
   if (line->flags & SYNC) {
-    raise_pin(n, &us); /* it is owned: no slot has raised it */
+    raise_pin(n, line->width_us, &us); /* it is owned: no slot has raised it */
     turned_on(n, us, line->width_us);
     voice_edge(SYNC_EDGE | n, 1, us, count_now());
     return;
@@ -212,7 +222,7 @@ static void rise_again(uint8_t n) {
     done(n, reason, hal_now_us(), count_now());
     return;
   }
-  raise_pin(n, &us);
+  raise_pin(n, line->width_us, &us);
   line->late_us = (int32_t)(us - due_us) > 0 ? (uint16_t)(us - due_us) : 0;
   book_rise(n, us);
 }
@@ -250,27 +260,30 @@ static void fall(uint8_t n) {
   hal_out_idle(BIT(n));
   uint16_t ticks = hal_ticks();
   hal_irq_on();
+  falls_cancel(n);
   fell(n, hal_extend_ticks(ticks));
 }
 
 /* Falls that the timer has made, and those that the tick's own cut-off has. */
 static void book_falls(void) {
+  uint16_t ticks;
+  for (mask_t made; (made = falls_take(&ticks)) != 0;) {
+    uint32_t us = hal_extend_ticks(ticks);
+    for (uint8_t n = 0; made; n++, made >>= 1) {
+      if ((made & 1) && (outputs[n].flags & ON)) fell(n, us);
+    }
+  }
+  if (!hal_cut) return;
   hal_irq_off();
-  mask_t dropped = hal_dropped, cut = hal_cut;
-  uint16_t ticks = hal_dropped_ticks;
-  hal_dropped = 0;
+  mask_t cut = hal_cut;
   hal_cut = 0;
   hal_irq_on();
-  for (uint8_t n = 0; n < N_OUTPUTS; n++) {
+  for (uint8_t n = 0; cut; n++, cut >>= 1) {
     output_t *line = &outputs[n];
-    if (!(line->flags & ON)) continue;
-    if (dropped & BIT(n)) {
-      fell(n, hal_extend_ticks(ticks));
-    } else if (cut & BIT(n)) {
-      if (line->ending == R_NONE) line->ending = R_LONGEST_ON;
-      line->left = 0;
-      fall(n);
-    }
+    if (!(cut & 1) || !(line->flags & ON)) continue;
+    if (line->ending == R_NONE) line->ending = R_LONGEST_ON;
+    line->left = 0;
+    fall(n);
   }
 }
 
@@ -344,6 +357,7 @@ void output_configure(const configure_t *message) {
   if (line->flags & ON) {
     line->span_us = line->longest_on_us;
     set_cut(n, line->span_us);
+    falls_cancel(n); /* the service, which comes next, sets it up anew */
   }
 }
 
@@ -429,16 +443,29 @@ static uint32_t give_permits(uint32_t now_us) {
 /* Falls before rises, trains before waiting pulses: WIRE.md, rule 23. */
 static void run_due(void) {
   uint32_t now_us = hal_now_us();
-  mask_t left = active;
+  mask_t left = active & (mask_t)~falls_known; /* the timer sees to the others */
   for (uint8_t n = 0; left; n++, left >>= 1) {
     if ((left & 1) && (outputs[n].flags & ON) && due_in(&outputs[n], now_us) == 0) fall(n);
   }
-  left = active;
+  left = active & (mask_t)~falls_known;
   for (uint8_t n = 0; left; n++, left >>= 1) {
     if (!(left & 1) || (outputs[n].flags & ON)) continue;
     if (due_in(&outputs[n], now_us) <= NEXT_RISE_TAKES_US) rise_again(n);
   }
   while (waiting_rise_due(now_us + FIRST_RISE_TAKES_US)) continue;
+}
+
+/* Falls that were too far ahead when their outputs rose. */
+static void __attribute__((noinline)) set_falls(void) {
+  mask_t left = active & (mask_t)~falls_known;
+  if (!left) return;
+  uint32_t now_us = hal_now_us();
+  for (uint8_t n = 0; left; n++, left >>= 1) {
+    if (!(left & 1) || !(outputs[n].flags & ON)) continue;
+    uint32_t due_us = due_in(&outputs[n], now_us);
+    if (due_us > FALL_REACH_US) continue;
+    falls_add(n, ((uint16_t)(now_us + due_us) << 1) - HAL_FALL_TICKS);
+  }
 }
 
 /* For whoever holds the bank: he lets go of it after, unless it is wanted again. */
@@ -448,36 +475,28 @@ void bank_service(void) {
     bank_wanted = 0;
     book_falls();
     run_due();
+    set_falls();
     uint32_t now_us = hal_now_us();
-    uint32_t rise_us = waiting_next_us(now_us), fall_us = give_permits(now_us);
+    uint32_t rise_us = waiting_next_us(now_us), wake_us = give_permits(now_us);
     rise_us = rise_us > FIRST_RISE_TAKES_US ? rise_us - FIRST_RISE_TAKES_US : 0;
-    if (fall_us > LOOK_AGAIN_US) fall_us = LOOK_AGAIN_US;
-    mask_t falls = 0, left = active;
+    if (wake_us > LOOK_AGAIN_US) wake_us = LOOK_AGAIN_US;
+    mask_t left = active & (mask_t)~falls_known;
     for (uint8_t n = 0; left; n++, left >>= 1) {
-      if (!(left & 1)) continue;
+      if (!(left & 1) || (outputs[n].flags & ON)) continue;
       uint32_t due_us = due_in(&outputs[n], now_us);
-      if (!(outputs[n].flags & ON)) {
-        due_us = due_us > NEXT_RISE_TAKES_US ? due_us - NEXT_RISE_TAKES_US : 0;
-        if (due_us < rise_us) rise_us = due_us;
-      } else if (due_us <= fall_us) {
-        if (due_us < fall_us) falls = 0;
-        fall_us = due_us;
-        falls |= BIT(n);
-      }
+      due_us = due_us > NEXT_RISE_TAKES_US ? due_us - NEXT_RISE_TAKES_US : 0;
+      if (due_us < rise_us) rise_us = due_us;
     }
-    if (rise_us <= EARLY_US && rise_us < fall_us) {
+    if (rise_us <= EARLY_US && rise_us < wake_us) {
       uint32_t until_us = now_us + rise_us;
       while ((int32_t)(until_us - hal_now_us()) > 0 && !bank_wanted && !slots_hit_waiting()) continue;
       continue;
     }
-    if (rise_us < fall_us) {
-      fall_us = rise_us - EARLY_US;
-      falls = 0;
-    }
-    uint16_t ticks = (uint16_t)(now_us + fall_us) << 1;
+    if (rise_us < wake_us) wake_us = rise_us - EARLY_US;
+    uint16_t ticks = (uint16_t)(now_us + wake_us) << 1;
     hal_irq_off();
     bool again = bank_wanted || slots_hit_waiting();
-    if (!again) hal_schedule(ticks, falls);
+    if (!again) falls_wake(ticks);
     hal_irq_on();
     if (!again) return;
   }

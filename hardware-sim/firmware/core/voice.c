@@ -311,6 +311,9 @@ bool voice_speak(void) {
   return sample_may && say_sample();
 }
 
+/* Every edge is told, and the sample that was due after them. */
+bool voice_caught_up(void) { return edges_in == edges_out && !sample_may; }
+
 /* After a reset the board speaks first; the levels it finds are no edges. */
 void voice_boot(void) {
   levels_told = hal_input_levels;

@@ -2,6 +2,7 @@
 
 static waiting_t places[N_WAITING]; /* `id` 0: this place is free */
 static uint16_t next_order;
+static uint8_t waiting; /* how many places are taken: most often none, and that is quickly seen */
 
 /* False when every place is taken. */
 bool waiting_add(const pulse_t *pulse, uint32_t start_us) {
@@ -15,6 +16,7 @@ bool waiting_add(const pulse_t *pulse, uint32_t start_us) {
     place->window.count_from = pulse->count_from;
     place->window.count_to = pulse->count_to;
     place->order = next_order++;
+    waiting++;
     return true;
   }
   return false;
@@ -23,6 +25,7 @@ bool waiting_add(const pulse_t *pulse, uint32_t start_us) {
 /* Lets the earliest pulse that is due rise, or be refused. False: none is due. */
 bool waiting_rise_due(uint32_t now_us) {
   waiting_t *due = 0;
+  if (!waiting) return false;
   for (waiting_t *place = places; place < places + N_WAITING; place++) {
     if (place->id == 0 || (int32_t)(place->window.start_us - now_us) > 0) continue;
     if (due) {
@@ -34,6 +37,7 @@ bool waiting_rise_due(uint32_t now_us) {
   if (!due) return false;
   uint32_t id = due->id;
   due->id = 0;
+  waiting--;
   bank_rise(id, due->output, &due->shape, &due->window);
   return true;
 }
@@ -41,6 +45,7 @@ bool waiting_rise_due(uint32_t now_us) {
 /* Microseconds to the next start; all ones when none waits. */
 uint32_t waiting_next_us(uint32_t now_us) {
   uint32_t next = UINT32_MAX;
+  if (!waiting) return next;
   for (waiting_t *place = places; place < places + N_WAITING; place++) {
     if (place->id == 0) continue;
     int32_t left = (int32_t)(place->window.start_us - now_us);
@@ -55,6 +60,7 @@ void waiting_end(uint16_t mask, uint8_t reason) {
     if (place->id == 0 || !(mask & 1u << place->output)) continue;
     voice_outcome_now(place->id, DISARMED, reason, place->output);
     place->id = 0;
+    waiting--;
   }
 }
 
