@@ -18,16 +18,18 @@ export function replayCommand(): Command {
     .option('--rules <file>', 'what this rules file would have done, firing by firing')
     .option('--json', 'print the result as JSON')
     .action(async (folder: string, flags: { json?: boolean; rules?: string }) => {
+      const bar = progressBar('replaying');
+      const { setup, description } = loadSession(folder);
+      const most = description.record?.lastInput ?? Number.POSITIVE_INFINITY;
+      const show = (inputs: number) => bar.show(Math.min(1, inputs / most));
       if (flags.rules !== undefined) {
         const other = loadSession(folder, resolve(flags.rules));
-        const found = await whatIf(other, (hear) => new SimulatedLedBoard(hear));
+        const found = await whatIf(other, (hear) => new SimulatedLedBoard(hear), show);
+        bar.clear();
         print(flags.json ? JSON.stringify(found, null, 2) : whatIfInWords(found));
         return;
       }
-      const { setup, description } = loadSession(folder);
-      const bar = progressBar('replaying');
-      const most = description.record?.lastInput ?? Number.POSITIVE_INFINITY;
-      const result = await replaySession(folder, setup, (n) => bar.show(Math.min(1, n / most)));
+      const result = await replaySession(folder, setup, show);
       bar.clear();
       print(flags.json ? JSON.stringify(result, null, 2) : inWords(result));
       if (result.difference !== null || result.state.state === 'damaged') process.exitCode = 1;

@@ -2,9 +2,11 @@ import type { Beat, HostMessageName, MessageOf } from '../wire/messages.js';
 import type { SessionSetup } from './core/sessionCore.js';
 import { SessionCore } from './core/sessionCore.js';
 import type { StampedDecision } from './decisions.js';
+import type { SessionDescription } from './description.js';
 import { onTheWire } from './record/onTheWire.js';
 import { readRecord } from './record/readRecord.js';
 import type { RecordState } from './record/recordState.js';
+import { waterOf } from './store.js';
 
 /** The first place where a replay and its record say different things. */
 export interface Difference {
@@ -19,6 +21,8 @@ export interface ReplayResult {
   readonly commands: number;
   readonly difference: Difference | null;
   readonly state: RecordState;
+  /** What the session gave; what was under way where it never ended is uncertain. */
+  readonly water: NonNullable<SessionDescription['water']>;
 }
 
 /**
@@ -80,7 +84,16 @@ export async function replaySession(
       compare({ input: decision.input, text: JSON.stringify(decision) });
     },
   });
-  return { inputs, decisions, commands, difference, state };
+  return { inputs, decisions, commands, difference, state, water: waterAtEnd(core) };
+}
+
+/** Of a session that its record leaves running too: nobody will say what became of its last drops. */
+function waterAtEnd(core: SessionCore): ReplayResult['water'] {
+  const reason = 'the record ends here';
+  if (core.state === 'running' || core.state === 'ending') core.take({ kind: 'link down', reason });
+  if (core.state === 'running')
+    core.take({ kind: 'operator', act: { act: 'end', reason }, by: { who: 'replay', from: '' } });
+  return waterOf(core);
 }
 
 /** One command or decision. A beat comes forty times a second and is kept as its numbers. */

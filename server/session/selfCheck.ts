@@ -1,6 +1,6 @@
 import fs from 'node:fs';
 import path from 'node:path';
-import { type SessionDescription, updateDescription } from './description.js';
+import { readDescription, type SessionDescription, updateDescription } from './description.js';
 import { loadSession } from './loadSession.js';
 import { replaySession } from './replay.js';
 
@@ -8,28 +8,39 @@ type ReplayNote = NonNullable<SessionDescription['replay']>;
 
 /**
  * Replays a session that has ended and notes in `session.json` whether every decision came out the
- * same. A folder that holds no copies of its files (a bare record) is left as it is: undefined.
+ * same; and the water it gave, where its program died before it could say. A folder that holds no copies of its files (a bare record) is left as it is: undefined.
  */
-export async function noteReplay(folder: string): Promise<ReplayNote | undefined> {
+export async function noteReplay(
+  folder: string,
+  progress: (done: number) => void = () => {},
+): Promise<ReplayNote | undefined> {
   const needed = ['session.json', 'rig.yaml', 'rules.yaml'];
   if (!needed.every((name) => fs.existsSync(path.join(folder, name)))) return undefined;
-  const replay = await check(folder);
-  updateDescription(folder, { replay });
+  const { replay, water } = await check(folder, progress);
+  const known = water === undefined || readDescription(folder).water !== undefined;
+  updateDescription(folder, known ? { replay } : { replay, water });
   return replay;
 }
 
 /** A check that could not be made is noted as such: it must not look like one that was passed. */
-async function check(folder: string): Promise<ReplayNote> {
+async function check(folder: string, progress: (done: number) => void) {
   try {
-    const { inputs, decisions, commands, difference } = await replaySession(
+    const { setup, description } = loadSession(folder);
+    const most = description.record?.lastInput ?? Number.POSITIVE_INFINITY;
+    const { inputs, decisions, commands, difference, water } = await replaySession(
       folder,
-      loadSession(folder).setup,
+      setup,
+      (done) => progress(Math.min(1, done / most)),
     );
     const counts = { inputs, decisions, commands };
-    if (difference === null) return { identical: true, ...counts };
-    return { identical: false, ...counts, difference };
+    const replay: ReplayNote =
+      difference === null
+        ? { identical: true, ...counts }
+        : { identical: false, ...counts, difference };
+    return { replay, water };
   } catch (error) {
     const failed = (error as Error).message;
-    return { identical: false, inputs: 0, decisions: 0, commands: 0, failed };
+    const counts = { inputs: 0, decisions: 0, commands: 0 };
+    return { replay: { identical: false, ...counts, failed } satisfies ReplayNote };
   }
 }

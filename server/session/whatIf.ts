@@ -46,10 +46,12 @@ const SAME_US = 20_000;
  * operator acts are fed to the engine with the other rules, and a board led along the recorded belt
  * answers what those rules command. What the animal would have done otherwise nobody can know.
  * @param other the session loaded with the other rules file
+ * @param progress called now and then with the number of inputs fed
  */
 export async function whatIf(
   other: LoadedSession,
   makeBoard: (hear: Hear) => LedBoard,
+  progress?: (inputs: number) => void,
 ): Promise<WhatIf> {
   const reader = await readRecord(other.folder);
   const recorded = new Gathered();
@@ -69,7 +71,8 @@ export async function whatIf(
     answers.length = 0;
   };
   reader.visit({
-    sample: (_, sample) => {
+    sample: (number, sample) => {
+      if ((number & 0x3fff) === 0) progress?.(number);
       if (over) return;
       board.follow(sample.boardUs, sample.count);
       answer();

@@ -4,8 +4,7 @@
  */
 import os from 'node:os';
 import { LapwingError } from '../../errors/codes.js';
-import { noteReplay } from '../selfCheck.js';
-import { mend } from './mend.js';
+import { closeRecord } from '../closeRecord.js';
 
 try {
   // Another session may be running by now.
@@ -15,8 +14,7 @@ try {
 }
 try {
   const folder = process.argv[2] ?? '';
-  const finished = await mend(folder);
-  await noteReplay(folder);
+  const { finished } = await closeRecord(folder);
   process.stdout.write(JSON.stringify({ finished }) + '\n');
 } catch (error) {
   const { message } = error as Error;

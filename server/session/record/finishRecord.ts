@@ -31,10 +31,13 @@ const ID_OF = new Map(CHANNELS.map(({ topic, id }) => [topic, id]));
  * message, and only then puts it in their place. Interrupted anywhere, it leaves a record that can
  * be read and finished again. A file that was not whole is kept beside it, as `original-N.mcap`.
  *
- * Throws `RECORD_BUSY` while it is being recorded, `RECORD_UNFINISHED` where the result could not be
+ * `progress` is called with the share done, 0 to 1. Throws `RECORD_BUSY` while it is being recorded, `RECORD_UNFINISHED` where the result could not be
  * written or is not the same.
  */
-export async function finishRecord(folder: string): Promise<Finished> {
+export async function finishRecord(
+  folder: string,
+  progress: (done: number) => void = () => {},
+): Promise<Finished> {
   refuseWhileRecording(folder);
   const temporary = path.join(folder, TEMPORARY);
   fs.rmSync(temporary, { force: true });
@@ -42,8 +45,8 @@ export async function finishRecord(folder: string): Promise<Finished> {
   const before = reader.visit({});
   if (before.finished && before.found === 0) return settle(folder, before);
   try {
-    const copied = await copy(reader, before, temporary);
-    const read = await digestOf(temporary);
+    const copied = await copy(reader, before, temporary, (done) => progress(0.8 * done));
+    const read = await digestOf(temporary, (done) => progress(0.8 + 0.2 * done));
     if (read !== copied) throw new Error('the finished file is not the same as the live record');
     return settle(folder, before, temporary);
   } catch (error) {
@@ -56,14 +59,21 @@ export async function finishRecord(folder: string): Promise<Finished> {
 }
 
 /** Copies every message into the new file, and returns a digest of all of them in order. */
-async function copy(reader: RecordReader, state: RecordState, file: string): Promise<string> {
+async function copy(
+  reader: RecordReader,
+  state: RecordState,
+  file: string,
+  progress: (done: number) => void,
+): Promise<string> {
   const digest = createHash('sha256');
   const writer = new IndexedWriter(file);
   let lastTime = 0n;
+  let copied = 0;
   const put = (channelId: number, sequence: number, logTime: bigint, data: Uint8Array) => {
     digestMessage(digest, channelId, sequence, logTime, data);
     writer.add({ channelId, sequence, logTime, publishTime: logTime, data });
     lastTime = logTime;
+    if ((++copied & 0x3ff) === 0) progress(Math.min(1, copied / state.messages));
   };
   try {
     reader.visitMessages((topic, sequence, timeUs, data) => {
@@ -102,14 +112,18 @@ function closingMessage(reader: RecordReader, state: RecordState): Uint8Array {
 }
 
 /** Reads the file with the public reader, all CRCs checked, and digests its messages in order. */
-async function digestOf(file: string): Promise<string> {
+async function digestOf(file: string, progress: (done: number) => void): Promise<string> {
   const digest = createHash('sha256');
   const reader = new McapStreamReader({
     validateCrcs: true,
     decompressHandlers: { zstd: (bytes, size) => zstd.decompress(bytes, Number(size)) },
   });
+  const { size } = fs.statSync(file);
+  let bytes = 0;
   for await (const piece of fs.createReadStream(file, { highWaterMark: 1 << 20 })) {
     reader.append(piece as Uint8Array);
+    bytes += (piece as Uint8Array).length;
+    progress(bytes / size);
     for (let record = reader.nextRecord(); record !== undefined; record = reader.nextRecord())
       if (record.type === 'Message')
         digestMessage(digest, record.channelId, record.sequence, record.logTime, record.data);

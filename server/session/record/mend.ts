@@ -10,8 +10,8 @@ import { describeTroubles } from './recordState.js';
  * was never ended is ended here, as `mended`, at the time of the last thing recorded. Throws as
  * `finishRecord` does; a folder without a description is finished all the same.
  */
-export async function mend(folder: string): Promise<Finished> {
-  const finished = await finishRecord(folder);
+export async function mend(folder: string, progress?: (done: number) => void): Promise<Finished> {
+  const finished = await finishRecord(folder, progress);
   if (!fs.existsSync(path.join(folder, 'session.json'))) return finished;
   const { state, bytes } = finished;
   const { messages, lastInput } = state;
