@@ -1,5 +1,6 @@
 import { median } from './align/robustLine.js';
 import { dropsOf, lapsOf } from './happenings.js';
+import { learnedOf } from './learned.js';
 import { lickingOf } from './licking.js';
 import { profileOf } from './profile.js';
 import type { SessionData } from './readSession.js';
@@ -19,13 +20,16 @@ export interface LearningDay {
   /** Median over laps of speed in the approach over speed elsewhere. */
   readonly slowing: number;
   readonly waterUl: number;
+  /** The lap at whose end the criterion of having learned was first met; NaN: on none. */
+  readonly learnedAtLap: number;
 }
 
 /** Complete laps that nobody excluded count; water counts whenever it was given. */
 export function learningDay(session: SessionData): LearningDay {
   const { description, beganUs, endedUs } = session;
   const laps = lapsOf(session).filter(({ complete, excluded }) => complete && !excluded);
-  const licking = lickingOf(session, laps, profileOf(session, laps));
+  const profile = profileOf(session, laps);
+  const licking = lickingOf(session, laps, profile);
   const minutes = (endedUs - beganUs) / 60e6;
   const sum = (of: (row: (typeof licking.laps)[number]) => number) =>
     licking.laps.reduce((total, row) => total + of(row), 0);
@@ -36,5 +40,6 @@ export function learningDay(session: SessionData): LearningDay {
     lickShare: sum((row) => row.inSpout + row.inApproach) / sum((row) => row.licks),
     slowing: median(licking.laps.map((row) => row.slowing).filter(Number.isFinite)),
     waterUl: dropsOf(session).reduce((total, { volumeUl }) => total + volumeUl, 0),
+    learnedAtLap: learnedOf(laps, profile, licking)?.firstLap ?? Number.NaN,
   };
 }

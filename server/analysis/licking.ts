@@ -1,10 +1,9 @@
+import { DRINKING_US } from '../rules/learned.js';
 import { median } from './align/robustLine.js';
 import { dropsOf, type Lap, type Lick, licksOf } from './happenings.js';
 import { isBetween, type Profile, speedBetween } from './profile.js';
 import type { SessionData } from './readSession.js';
 
-/** Licks this soon after the valve opened drink the drop (common practice, no source). */
-export const DRINKING_US = 2_000_000;
 /** The spout's place reaches this far on both sides of where water comes; the approach before it. */
 export const SPOUT_HALF_CM = 5;
 export const APPROACH_CM = 20;

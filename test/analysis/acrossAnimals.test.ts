@@ -8,6 +8,7 @@ const day = (subject: string, number: number, lickShare: number, laps = 40): Lea
   ...{ name: `${subject} ${number}`, subject, title: 'Water at a place' },
   startedAt: `2026-03-${String(number).padStart(2, '0')}T09:00:00.000+00:00`,
   ...{ minutes: 20, laps, lapsPerMinute: laps / 20, lickShare, slowing: 0.8, waterUl: 4 * laps },
+  learnedAtLap: 14,
 });
 
 describe('across animals', () => {

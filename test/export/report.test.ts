@@ -78,7 +78,7 @@ describe('the page', () => {
   it('stands by itself: no script, no network, and well-formed figures', () => {
     expect(page).not.toMatch(/<script|https?:|url\(|@import|<link|<img/);
     const figures = page.match(/<svg[\s\S]*?<\/svg>/g)!;
-    expect(figures).toHaveLength(9);
+    expect(figures).toHaveLength(10);
     for (const figure of figures) {
       expect(figure).toContain('<title>');
       expect(figure).not.toMatch(/NaN|Infinity|undefined/);

@@ -1,7 +1,7 @@
 import { inOrder, MEASURES, type Measure } from '../../analysis/acrossAnimals.js';
 import type { LearningDay } from '../../analysis/learning.js';
 import { fixed, table } from './htmlTable.js';
-import { MEASURE_WORDS, MEASURES_EXPLAINED } from './measures.js';
+import { LEARNED_EXPLAINED, MEASURE_WORDS, MEASURES_EXPLAINED } from './measures.js';
 import { STYLE } from './page.js';
 import { escapeHtml, INK, Plot, type Point } from './plot.js';
 
@@ -13,15 +13,16 @@ export function learningPage(days: readonly LearningDay[]): string {
   const rows = ordered.map((day, i) => [
     ...[i + 1, day.startedAt.slice(0, 16).replace('T', ' '), fixed(day.minutes, 1), day.laps],
     ...MEASURES.map((measure) => fixed(day[measure], MEASURE_WORDS[measure].digits)),
+    fixed(day.learnedAtLap, 0) || '-',
   ]);
   const measures = MEASURES.map((measure) => MEASURE_WORDS[measure].short);
-  const head = ['', 'started', 'min', 'laps', ...measures];
+  const head = ['', 'started', 'min', 'laps', ...measures, 'learned at lap'];
   return [
     `<!doctype html>\n<html lang="en"><head><meta charset="utf-8"><title>${escapeHtml(title)}</title>`,
     `<style>${STYLE}</style></head><body><h1>${escapeHtml(title)}</h1>`,
     table(head, rows),
     ...MEASURES.map((measure) => figure(ordered, measure)),
-    `<p>${MEASURES_EXPLAINED} One animal: across animals the unit is the animal, not the lap or the ` +
+    `<p>${MEASURES_EXPLAINED} ${LEARNED_EXPLAINED} One animal: across animals the unit is the animal, not the lap or the ` +
       'session, and `lapwing report` over sessions of several compares them so.</p></body></html>\n',
   ].join('\n');
 }

@@ -9,7 +9,9 @@ import { factsOf } from '../../session/rig/rig.js';
 import type { Shown } from './figures.js';
 import * as figures from './figures.js';
 import { happened } from './happened.js';
+import { learned } from './learned.js';
 import { escapeHtml } from './plot.js';
+import { predictedFields } from './predictedFields.js';
 import { proofs } from './proofSheet.js';
 import { cautions, facts, health, notDone, statistics } from './tables.js';
 
@@ -66,6 +68,9 @@ export function reportPage(session: SessionData, loopback?: Loopback): string {
     laps.length === 0 ? '<p>No complete lap: there is nothing to draw.</p>' : drawn(shown),
     '<h2>Licking on the belt</h2>',
     statistics(session, shown),
+    '<h2>Learning</h2>',
+    learned(shown),
+    predictedFields(session),
     '<h2>Proof sheet: every firing</h2>',
     proofs(session, shown.firings, proved),
     '<h2>Withheld, missed, refused, uncertain</h2>',
