@@ -1,7 +1,7 @@
 import { median } from '../analysis/align/robustLine.js';
 import { APPROACH_CM, SPOUT_HALF_CM } from '../analysis/licking.js';
 import { isBetween } from '../analysis/profile.js';
-import { DRINKING_US, DRINKING_US } from '../rules/learned.js';
+import { DRINKING_US } from '../rules/learned.js';
 import type { StampedDecision } from '../session/decisions.js';
 
 /** Licks of one complete lap that drink no drop: those at the spout or in the approach, and all. */
