@@ -1,4 +1,7 @@
 import { LapwingError } from '../errors/codes.js';
+import { MOST_PUT_OFF_LAPS, MOST_PUT_OFF_MIN } from '../rules/engine/ending.js';
+import type { Program } from '../rules/engine/program.js';
+import { isOnStep } from '../rules/steps.js';
 import type { SessionCore } from '../session/core/sessionCore.js';
 import type { OperatorAct } from '../session/inputs.js';
 import type { PreparedRules } from '../session/prepare.js';
@@ -18,6 +21,10 @@ export function checkAct(
 ): void {
   const { act: name } = (act ?? {}) as { act?: unknown };
   if (name === 'stop everything') return;
+  if (act?.act === 'acknowledge') {
+    text('alarm', act.alarm);
+    return;
+  }
   if (rules === undefined) throw new LapwingError('loopNoSession', 'There is nothing to act on.');
   const { program, choices } = rules;
   switch (act.act) {
@@ -36,7 +43,10 @@ export function checkAct(
       oneOf('phase', act.to, ['next', 'previous', 'repeat', ...program.phases.map((p) => p.name)]);
       return;
     case 'new cell':
-      for (const [key, value] of Object.entries(act.fields ?? {})) text(key, value);
+      for (const [key, value] of Object.entries(act.fields ?? {})) {
+        oneOf('field', key, core.rig.cellFields);
+        text(key, value);
+      }
       return;
     case 'exclude lap':
       if (!Number.isInteger(act.lap) || act.lap < 0 || act.lap > core.instant.lap) {
@@ -45,6 +55,21 @@ export function checkAct(
       return;
     case 'note':
       text('note', act.text);
+      if (act.mark !== undefined) {
+        const open = core.marks.open.map(({ mark }) => mark);
+        oneOf('mark', act.mark, open);
+      }
+      return;
+    case 'mark':
+      return;
+    case 'ask':
+      checkAsk(act.rule, act.laps, core, program);
+      return;
+    case 'withdraw':
+      oneOf('rule', act.rule, askable(program));
+      return;
+    case 'put off':
+      checkPutOff(act.laps, act.minutes, core);
       return;
     case 'allow stimulation':
       return;
@@ -62,6 +87,32 @@ export function checkAct(
   }
 }
 
+function askable({ rules }: Program): string[] {
+  return rules.filter(({ asked }) => asked !== undefined).map(({ name }) => name);
+}
+
+function checkAsk(rule: string, laps: number, core: SessionCore, program: Program): void {
+  oneOf('rule to ask for', rule, askable(program));
+  const { asked, mostAsked } = program.rules.find(({ name }) => name === rule)!;
+  if (laps === 0) {
+    if (core.handOnBelt) throw bad('a hand is on the belt: take it off first');
+    if (!asked!.now) throw bad(`${rule} may not be asked for at once, says the rules file`);
+    return;
+  }
+  if (Number.isInteger(laps) && laps > 0 && laps <= mostAsked) return;
+  throw bad(`${rule} may be asked for in the next ${mostAsked} laps at most; ${laps} were asked`);
+}
+
+function checkPutOff(laps: number, minutes: number, core: SessionCore): void {
+  const { putOff } = core.engine.view();
+  const whole = Number.isInteger(laps) && Number.isInteger(minutes) && laps >= 0 && minutes >= 0;
+  if (!whole || laps + minutes === 0) throw bad('the end is put off by whole laps or minutes');
+  const left = MOST_PUT_OFF_LAPS - putOff.laps;
+  const leftMin = MOST_PUT_OFF_MIN - putOff.minutes;
+  if (laps <= left && minutes <= leftMin) return;
+  throw bad(`the end may be put off by ${left} laps and ${leftMin} min more in this session`);
+}
+
 function checkChoice(name: unknown, value: unknown, choices: PreparedRules['choices']): void {
   const choice = choices.find((one) => one.name === name);
   if (choice === undefined) {
@@ -73,9 +124,12 @@ function checkChoice(name: unknown, value: unknown, choices: PreparedRules['choi
     oneOf(choice.name, value, choice.options);
     return;
   }
-  const { least, most, unit } = choice;
+  const { least, most, unit, step } = choice;
   if (typeof value !== 'number' || !(value >= least! && value <= most!)) {
     throw bad(`${choice.name} ${String(value)} is not within ${least} to ${most} ${unit}`);
+  }
+  if (step !== undefined && !isOnStep(value, least!, step)) {
+    throw bad(`${choice.name} ${value} is not a step of ${step} ${unit} from ${least}`);
   }
 }
 

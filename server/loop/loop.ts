@@ -21,6 +21,8 @@ import type { Rig } from '../session/rig/rig.js';
 import { SessionRunner } from '../session/runner.js';
 import { describeEnd, openSession, recordHeaderOf } from '../session/store.js';
 import { CAPABILITY, type Sample } from '../wire/messages.js';
+import { ALARMS } from './alarms/alarms.js';
+import { AlarmWatch } from './alarms/alarmWatch.js';
 import { Bench } from './bench.js';
 import { BookTalk } from './bookTalk.js';
 import { checkAct } from './checkAct.js';
@@ -35,6 +37,9 @@ import { type RunningSession, setupOf, snapshotOf } from './view.js';
 
 const EVENTS_KEPT = 20_000;
 const TICK_MS = 20;
+const LOOK_MS = 250;
+/** A stall is remembered so long. */
+const STALL_KEPT_MS = 60_000;
 const HANDSHAKE_MS = 3_000;
 /** Ids of a loop that was killed, which the board may know and has not told. */
 const ID_MARGIN = 1_000;
@@ -52,6 +57,7 @@ export class Loop implements LinkHandler, LoopService {
   readonly events = new EventRing(EVENTS_KEPT);
   readonly bench = new Bench({
     rig: () => this.#rigFile,
+    board: () => this.#link.identity,
     send: (name, message) => this.#send(name, message),
     begin: (runner) => {
       this.#runner = runner;
@@ -87,6 +93,10 @@ export class Loop implements LinkHandler, LoopService {
   #framesBefore = 0;
   #framesAtMs = performance.now();
   #framesPerS = 0;
+  readonly #alarms: AlarmWatch;
+  #tickedMs = Number.NaN;
+  #lookedMs = 0;
+  #stall = { ms: 0, atMs: 0 };
   #closing: Promise<void> = Promise.resolve();
 
   constructor(
@@ -114,6 +124,7 @@ export class Loop implements LinkHandler, LoopService {
     this.#address = rigAddress(rig.name);
     this.#server = new LocalServer(this, this.#address);
     this.#record = new LiveRecord(this.#recordFolder, (kind, error) => this.#trouble(kind, error));
+    this.#alarms = new AlarmWatch(rig);
     this.#runner = this.#idleRunner();
     const { baudRate, boardId } = rig;
     this.#link = new BoardLink({
@@ -227,6 +238,7 @@ export class Loop implements LinkHandler, LoopService {
       this.#record.view(),
       this.#framesPerS,
       this.#ended,
+      this.#alarms.on,
     );
   }
 
@@ -343,6 +355,9 @@ export class Loop implements LinkHandler, LoopService {
     this.#record.recorder = recorder;
     this.#session = session;
     this.#ended = null;
+    // What it took to begin is no stall of the session.
+    this.#tickedMs = Number.NaN;
+    this.#stall = { ms: 0, atMs: 0 };
     this.#runner = new SessionRunner(
       setupFor(this.#rigFile, session),
       this.#send,
@@ -434,6 +449,8 @@ export class Loop implements LinkHandler, LoopService {
     return new SessionRunner(
       { rig: this.#rigFile, program: rules, title: '', seed: '', waterTodayNl: 0 },
       this.#send,
+      undefined,
+      (decision) => this.#alarms.hear(decision),
     );
   }
 
@@ -444,7 +461,10 @@ export class Loop implements LinkHandler, LoopService {
     if ('id' in message) this.#highestId = Math.max(this.#highestId, message.id);
   };
 
-  readonly #onDecision = (decision: StampedDecision): void => this.events.push(decision);
+  readonly #onDecision = (decision: StampedDecision): void => {
+    this.events.push(decision);
+    this.#alarms.hear(decision);
+  };
 
   #take(input: RareInput): void {
     this.#runner.take(input);
@@ -480,12 +500,33 @@ export class Loop implements LinkHandler, LoopService {
   #everyTick(): void {
     const nowMs = performance.now();
     this.#record.tick(nowMs);
+    this.#minds(nowMs);
     const seconds = (nowMs - this.#framesAtMs) / 1000;
     if (seconds < 1) return;
     const { frames } = this.#link.counters;
     this.#framesPerS = (frames - this.#framesBefore) / seconds;
     this.#framesBefore = frames;
     this.#framesAtMs = nowMs;
+  }
+
+  /** How long this computer held the loop up; and, now and then, every alarm. */
+  #minds(nowMs: number): void {
+    const lateMs = nowMs - this.#tickedMs - TICK_MS;
+    this.#tickedMs = nowMs;
+    const old = nowMs - this.#stall.atMs > STALL_KEPT_MS;
+    if (lateMs > this.#stall.ms || old) this.#stall = { ms: Math.max(0, lateMs), atMs: nowMs };
+    if (nowMs - this.#lookedMs < LOOK_MS) return;
+    this.#lookedMs = nowMs;
+    const behindMs = this.#record.recorder?.behindMs ?? 0;
+    const measured = { stallMs: this.#stall.ms, behindMs };
+    const changes = this.#alarms.look(this.snapshot(), measured, nowMs);
+    for (const { alarm, raised, text } of changes) {
+      const { level, remedy } = ALARMS[alarm];
+      this.#log.warn({ alarm }, `${raised ? 'alarm' : 'alarm over'}: ${text}`);
+      if (this.#session !== undefined)
+        this.#take({ kind: 'alarm', alarm, raised, level, text, remedy });
+    }
+    if (changes.length > 0) this.batchEnd();
   }
 
   #fail(error: unknown): void {

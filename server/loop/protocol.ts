@@ -5,10 +5,13 @@
  * `hello`, `quiet` and `end` never change across versions, so that an old client can always stop a
  * new loop.
  */
+
 import type { EngineView } from '../rules/engine/view.js';
 import type { Trust } from '../rules/instant.js';
+import type { MarkMade } from '../session/core/marks.js';
 import type { StampedDecision } from '../session/decisions.js';
 import type { OperatorAct } from '../session/inputs.js';
+import type { AlarmView } from './alarms/alarms.js';
 
 export const LOCAL_PROTOCOL = 1;
 
@@ -111,6 +114,13 @@ export type BenchItem =
 export interface BenchNow {
   readonly atUs: number;
   readonly count: number;
+  /** The board that answered; null before one has. */
+  readonly board: {
+    readonly model: string;
+    readonly boardId: number;
+    readonly firmware: number;
+    readonly simulated: boolean;
+  } | null;
 }
 
 export interface NumberedEvent {
@@ -128,6 +138,10 @@ export interface Setup {
     readonly kind: 'valve' | 'stimulus' | 'mark';
   }[];
   readonly inputs: readonly string[];
+  /** What the rig file asks for at each new cell. */
+  readonly cellFields: readonly string[];
+  /** Inputs that are buttons, and what they do. */
+  readonly buttonBox: readonly { readonly input: string; readonly does: string }[];
   /** Rules files that can be begun, as paths below the rules folder. */
   readonly rulesFiles: readonly string[];
   readonly session: null | {
@@ -141,11 +155,20 @@ export interface Setup {
     readonly rules: readonly string[];
     readonly phases: readonly string[];
     readonly buttons: readonly string[];
+    /** Rules that drive a stimulus. */
+    readonly stimuli: readonly string[];
+    /** What may be asked for: at once, and in so many of the next laps at most (0: not). */
+    readonly asks: readonly {
+      readonly rule: string;
+      readonly now: boolean;
+      readonly laps: number;
+    }[];
     readonly choices: readonly {
       readonly name: string;
       readonly unit: string;
       readonly least?: number;
       readonly most?: number;
+      readonly step?: number;
       readonly options?: readonly (number | string)[];
     }[];
   };
@@ -179,8 +202,16 @@ export interface Snapshot {
   readonly licks: number;
   readonly phase: string | null;
   readonly phaseLap: number;
+  readonly progress: EngineView['progress'];
+  readonly cell: number;
+  /** The end, as far as it can be foreseen, and by how much it was put off. */
+  readonly end: EngineView['end'];
+  readonly putOff: EngineView['putOff'];
   readonly places: EngineView['places'];
-  readonly choices: EngineView['choices'];
+  readonly choices: readonly (EngineView['choices'][number] & {
+    /** A change is in force and the board has yet to be armed by it. */
+    readonly waits: boolean;
+  })[];
   readonly rules: EngineView['rules'];
   /** Bit n for output n. */
   readonly outputs: number;
@@ -191,6 +222,9 @@ export interface Snapshot {
   readonly waterLimitUl: number;
   readonly waterTodayUl: number;
   readonly waterDayLimitUl: number;
+  readonly alarms: readonly AlarmView[];
+  /** Marks without words, oldest first. */
+  readonly marks: readonly MarkMade[];
   readonly held: { readonly stimulus: string | null; readonly water: string | null };
   /** A hand turns the belt: nothing counts. */
   readonly handOnBelt: boolean;

@@ -1,10 +1,12 @@
 import { readdirSync } from 'node:fs';
 import { join, relative, sep } from 'node:path';
 import type { BoardLink } from '../link/boardLink.js';
+import type { Program } from '../rules/engine/program.js';
 import type { SessionCore } from '../session/core/sessionCore.js';
 import type { PreparedRules } from '../session/prepare.js';
 import type { Rig } from '../session/rig/rig.js';
 import { CAPABILITY } from '../wire/messages.js';
+import type { AlarmView } from './alarms/alarms.js';
 import type { Setup, Snapshot } from './protocol.js';
 
 /** What a session's card and files say, for the setup. */
@@ -39,6 +41,8 @@ export function setupOf(
     beltLengthCm: rig.belt.lengthCm,
     outputs: rig.outputs.map(({ name, kind }) => ({ name, kind })),
     inputs: rig.inputs.map(({ name }) => name),
+    cellFields: rig.cellFields,
+    buttonBox: rig.buttons.map(({ name, does }) => ({ input: name, does })),
     rulesFiles: rulesFilesBelow(rulesFolder),
     session: session === undefined ? null : describe(session),
   };
@@ -58,8 +62,25 @@ function describe(session: RunningSession): NonNullable<Setup['session']> {
     rules: file.rules.map(({ name }) => name.name),
     phases: file.phases.map(({ name }) => name.name),
     buttons: program.buttons,
+    stimuli: stimuliOf(program),
+    asks: asksOf(program),
     choices,
   };
+}
+
+function stimuliOf({ rules }: Program): string[] {
+  return rules
+    .filter(({ actions }) =>
+      actions.some((action) => action.kind === 'order' && action.outputKind === 'stimulus'),
+    )
+    .map(({ name }) => name);
+}
+
+/** What may be asked for; how many laps is a choice's bound or a number, as the file says. */
+function asksOf(program: Program): NonNullable<Setup['session']>['asks'] {
+  return program.rules.flatMap(({ name, asked, mostAsked }) =>
+    asked === undefined ? [] : [{ rule: name, now: asked.now, laps: mostAsked }],
+  );
 }
 
 /** Every rules file below the folder, at most a few levels down, as paths with `/`. */
@@ -84,6 +105,7 @@ export function snapshotOf(
   record: RecordView,
   framesPerS: number,
   ended: string | null,
+  alarms: readonly AlarmView[],
 ): Snapshot {
   const { instant, tracker, guard, holds, engine, firings, rig } = core;
   const view = engine.view();
@@ -114,7 +136,11 @@ export function snapshotOf(
     phase: view.phase,
     phaseLap: view.phaseLap,
     places: view.places,
-    choices: view.choices,
+    progress: view.progress,
+    cell: view.cell,
+    end: view.end,
+    putOff: view.putOff,
+    choices: view.choices.map((one, n) => ({ ...one, waits: core.changes.isOpen(n) })),
     rules: view.rules.map((rule, index) => ({ ...rule, armed: firings.isArmed(index) })),
     outputs: inOrder(tracker.outputs, rig.outputs),
     inputs: inOrder(instant.inputs, rig.inputs),
@@ -123,6 +149,8 @@ export function snapshotOf(
     waterLimitUl: rig.water.perSessionNl / 1_000,
     waterTodayUl: (core.waterEarlierNl + guard.waterGivenNl) / 1_000,
     waterDayLimitUl: rig.water.perDayNl / 1_000,
+    alarms,
+    marks: core.marks.open,
     held: { stimulus: holds.reason('stimulus'), water: holds.reason('water') },
     handOnBelt: core.handOnBelt,
     record,

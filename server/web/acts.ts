@@ -10,6 +10,8 @@ const PHASE_WORDS = new Set(['next', 'previous', 'repeat']);
  */
 export function checkAct(act: OperatorAct, setup: Setup | undefined): void {
   const session = setup?.session;
+  // An alarm can be there without a session.
+  if (act.act === 'acknowledge') return;
   if (!session) throw new LapwingError('webActUnknown', 'No session is running.');
   if (act.act === 'press' && !session.buttons.includes(act.button)) {
     throw unknown('button', act.button, session.buttons);

@@ -36,7 +36,21 @@ const operatorAct = {
       },
     }),
     act('exclude lap', { lap: { type: 'integer', minimum: 0, maximum: 1_000_000 } }),
-    act('note', { text: text(2000, 1) }),
+    {
+      ...act('note', { text: text(2000, 1) }),
+      properties: {
+        ...act('note', { text: text(2000, 1) }).properties,
+        mark: { type: 'integer', minimum: 1 },
+      },
+    },
+    act('mark'),
+    act('ask', { rule: name, laps: { type: 'integer', minimum: 0, maximum: 1000 } }),
+    act('withdraw', { rule: name }),
+    act('put off', {
+      laps: { type: 'integer', minimum: 0, maximum: 25 },
+      minutes: { type: 'integer', minimum: 0, maximum: 25 },
+    }),
+    act('acknowledge', { alarm: name }),
     act('stop everything'),
     act('allow stimulation'),
     act('hand on belt', { on: { type: 'boolean' } }),

@@ -31,6 +31,8 @@ export class ScriptedAnimal {
   private targetCm = 45;
   private queuedTarget: number | null = null;
   private stimUntilS = 0;
+  /** A place that was moved is armed anew once the animal nears it. */
+  private waits = false;
 
   constructor() {
     this.setup = idleSetup();
@@ -112,6 +114,10 @@ export class ScriptedAnimal {
     this.lick(before, near, learned);
     if (after >= BELT_CM) this.nextLap(after - BELT_CM);
     else state.positionCm = after;
+    if (this.waits && after > this.targetCm - 20 && after < this.targetCm) {
+      this.waits = false;
+      this.showChoices();
+    }
     if (before < this.targetCm && after >= this.targetCm) this.induce();
     if (before < SPOUT_CM && after >= SPOUT_CM) this.water();
     if (state.sessionS > this.stimUntilS) state.outputs &= ~2;
@@ -145,6 +151,7 @@ export class ScriptedAnimal {
     if (this.queuedTarget !== null) {
       this.targetCm = this.queuedTarget;
       this.queuedTarget = null;
+      this.waits = true;
     }
     this.showChoices();
     const next = state.lap === 8 ? 'induction' : state.lap === 28 ? 'probe' : undefined;
@@ -219,9 +226,15 @@ export class ScriptedAnimal {
   private showChoices(): void {
     const { targetCm: value, queuedTarget: queued } = this;
     this.state.choices = [
-      { name: 'target', value, queued, fromLap: queued === null ? null : this.state.lap + 1 },
-      { name: 'volume', value: 4000, queued: null, fromLap: null },
-      { name: 'train', value: 'short', queued: null, fromLap: null },
+      {
+        name: 'target',
+        value,
+        queued,
+        fromLap: queued === null ? null : this.state.lap + 1,
+        waits: this.waits,
+      },
+      { name: 'volume', value: 4000, queued: null, fromLap: null, waits: false },
+      { name: 'train', value: 'short', queued: null, fromLap: null, waits: false },
     ];
     this.state.places = [
       { name: 'zone', fromCm: 80, toCm: 98 },
@@ -245,7 +258,9 @@ function idleSetup(): Setup {
       { name: 'gate', kind: 'stimulus' },
       { name: 'sync', kind: 'mark' },
     ],
-    inputs: ['lick', 'seam', 'shutter'],
+    inputs: ['lick', 'seam', 'shutter', 'pedal'],
+    cellFields: ['depth (um)', 'access resistance (MOhm)', 'file name'],
+    buttonBox: [{ input: 'pedal', does: 'hold stimulus' }],
     rulesFiles: ['induction.yaml', 'water-only.yaml'],
     session: null,
   };
@@ -268,6 +283,8 @@ function session(
     rules: ['water', 'induce'],
     phases: ['baseline', 'induction', 'probe'],
     buttons: ['induce_now', 'drop'],
+    stimuli: ['induce'],
+    asks: [{ rule: 'induce', now: true, laps: 5 }],
     choices: [
       { name: 'target', unit: 'cm', least: 20, most: 160 },
       { name: 'volume', unit: 'nL', least: 1000, most: 8000 },
@@ -311,6 +328,10 @@ function idleState(): Writable<Snapshot> {
     licks: 0,
     phase: null,
     phaseLap: 0,
+    progress: null,
+    cell: 0,
+    end: null,
+    putOff: { laps: 0, minutes: 0 },
     places: [],
     choices: [],
     rules: [rule('water'), rule('induce')],
@@ -321,6 +342,8 @@ function idleState(): Writable<Snapshot> {
     waterLimitUl: 400,
     waterTodayUl: 120,
     waterDayLimitUl: 1500,
+    alarms: [],
+    marks: [],
     held: { stimulus: null, water: null },
     handOnBelt: false,
     record: { state: 'off', bytes: 0, reason: '', diskFreeGb: 212 },

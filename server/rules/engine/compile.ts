@@ -103,6 +103,7 @@ function compileRule(b: Builder, decl: RuleDecl, index: number, waiters: Waiters
       now: decl.asked.now,
       laps: decl.asked.laps && compileSum(b, decl.asked.laps),
     },
+    mostAsked: decl.asked?.laps ? boundsOf(decl.asked.laps, b.names).most : 0,
     firesRules: waiters.fires[index]!,
     firesDraws: b.file.draws.flatMap((draw, n) =>
       draw.every.kind === 'firing' && draw.every.of.name === decl.name.name ? [n] : [],

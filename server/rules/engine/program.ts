@@ -176,6 +176,8 @@ export interface RuleSpec {
   readonly arming: Arming | undefined;
   /** What the operator may ask of it: at once, and in so many of the next laps at most. */
   readonly asked: { readonly now: boolean; readonly laps: Amount | undefined } | undefined;
+  /** The most laps that may be asked for, whatever a choice in it is set to. */
+  readonly mostAsked: number;
   /** Rules that wait for this one to fire, marks that read it, draws that it renews. */
   readonly firesRules: number[];
   readonly firesDraws: number[];

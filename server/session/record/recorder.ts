@@ -135,6 +135,10 @@ export class Recorder {
   get reason(): string {
     return this.#log.reason;
   }
+  /** How far the disk is behind with what it was given, milliseconds; about 0 on a healthy one. */
+  get behindMs(): number {
+    return this.#log.syncingMs(this.#nowMs());
+  }
   /** Sequence number of the newest input recorded; -1 before any. */
   get lastInput(): number {
     return this.#lastInput;

@@ -58,6 +58,7 @@ export class SegmentLog {
   #retryAt = 0;
   #syncAt: number;
   #syncing = false;
+  #syncBeganAt = 0;
   #syncFailures = 0;
 
   /** Creates the first file; this alone throws, before a session begins. */
@@ -66,6 +67,11 @@ export class SegmentLog {
     this.segment = options.segment;
     this.#syncAt = now + SYNC_MS;
     this.#open('begun');
+  }
+
+  /** How long the disk has been at a sync that has not come back, milliseconds. */
+  syncingMs(now: number): number {
+    return this.#syncing ? now - this.#syncBeganAt : 0;
   }
 
   /** Adds one whole chunk, written at once if the disk takes it. */
@@ -217,6 +223,7 @@ export class SegmentLog {
     if (file === undefined) return;
     const upTo = this.#written;
     this.#syncing = true;
+    this.#syncBeganAt = now;
     this.#syncAt = now + SYNC_MS;
     file.sync((error) => {
       this.#syncing = false;
