@@ -7,6 +7,7 @@ import { Charts } from './draw/charts.js';
 import { freshness, noteAwake } from './model/freshness.js';
 import { emptyLive, take } from './model/live.js';
 import { STOP_RETRY_MS, stopAsked, stopConfirmed, stopFailed, stopIdle } from './model/stop.js';
+import { accessApi, leaveIfSignedOut } from './stream/accessApi.js';
 import { type Answer, api } from './stream/api.js';
 import { Connection } from './stream/connection.js';
 import type { Actions, Theme } from './view/actions.js';
@@ -82,6 +83,10 @@ async function asked(what: string, request: Promise<Answer>): Promise<Answer> {
 
 /** Over HTTP and over the stream at once; then again every second until the loop confirms. */
 function stopEverything(): void {
+  if (live.access.you?.role === 'viewer') {
+    void stopAsViewer(live.access.you.mayHold);
+    return;
+  }
   live.stop = stopAsked(live.stop, performance.now());
   touch();
   connection.askQuiet();
@@ -90,6 +95,19 @@ function stopEverything(): void {
     else live.stop = stopFailed(live.stop, answer.text);
     touch();
   });
+}
+
+/** A viewer cannot stop everything; what a viewer may do towards it is done. */
+async function stopAsViewer(mayHold: boolean): Promise<void> {
+  const held = mayHold && (await actions.act({ act: 'hold', what: 'stimulus', on: true })).done;
+  live.notice = {
+    kind: 'bad',
+    text: held
+      ? 'The stimulus is held, and nothing else: only an operator can stop everything from here.'
+      : 'Nothing was stopped: only an operator can stop everything from here.',
+    remedy: 'Call who is at the rig: the manual switch is there.',
+  };
+  touch();
 }
 
 function stopDone(): void {
@@ -111,6 +129,12 @@ const actions: Actions = {
   begin: (session) => asked('Not begun', api.begin(session)),
   end: (reason) => asked('Not ended', api.end(reason)),
   act: (act) => asked('Not done', api.act(act)),
+  takeControls: (seen) => asked('The controls were not taken', accessApi.take(seen)),
+  giveUpControls: () => asked('The controls were not given up', accessApi.giveUp()),
+  signOut: async () => {
+    await asked('Not signed out', accessApi.signOut());
+    await leaveIfSignedOut();
+  },
   setTheme: (name) => {
     theme = name;
     document.documentElement.dataset.theme = name;
@@ -139,6 +163,7 @@ const connection = new Connection(stream, {
   after: () => ({ number: live.lastEvent, life: live.life }),
   status: (status) => {
     live.stream = status;
+    if (status === 'lost') void leaveIfSignedOut();
     touch();
   },
   message: (message) => {

@@ -1,6 +1,7 @@
 /** Everything the page knows, and how each message changes it. Nothing here touches the screen. */
 import type { NumberedEvent, Setup, Snapshot } from '../../server/loop/protocol.js';
 import type { StreamMessage } from '../../server/web/streamMessages.js';
+import { type Access, noAccess } from './access.js';
 import { type AlarmWatch, forgetAlarms, newAlarmWatch, watchEvent, watchState } from './alarms.js';
 import { LapStore, MARK, type Mark } from './laps.js';
 import { Profile } from './profile.js';
@@ -10,6 +11,7 @@ import { SpeedTrace } from './trace.js';
 export const EVENTS_KEPT = 200;
 
 export interface Live {
+  access: Access;
   stream: 'opening' | 'open' | 'lost';
   loop: { state: 'up' | 'away'; reason: string; remedy: string } | undefined;
   /** Which life of the loop the events shown are of; empty before any. */
@@ -39,6 +41,7 @@ export interface Live {
 
 export function emptyLive(): Live {
   return {
+    access: noAccess,
     stream: 'opening',
     loop: undefined,
     life: '',
@@ -62,6 +65,12 @@ export function emptyLive(): Live {
 /** Takes one message of the stream; `nowMs` is page time. */
 export function take(live: Live, message: StreamMessage, nowMs: number): void {
   switch (message.tell) {
+    case 'welcome':
+      live.access = { you: message.you, controls: undefined };
+      return;
+    case 'controls':
+      live.access = { ...live.access, controls: message.controls };
+      return;
     case 'loop':
       live.loop = { state: message.state, reason: message.reason, remedy: message.remedy };
       // Empty: a web process that has not met the loop yet; what is shown stays, as stale.

@@ -11,9 +11,11 @@ export interface Beginning {
   readonly subject: string;
   readonly experimenter?: string;
   readonly seed?: string;
+  /** Why it is to begin whatever speaks against it. */
+  readonly despite?: string;
 }
 
-async function post(path: string, body: unknown, timeoutMs: number): Promise<Answer> {
+export async function post(path: string, body: unknown, timeoutMs: number): Promise<Answer> {
   try {
     const response = await fetch(path, {
       method: 'POST',

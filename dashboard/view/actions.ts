@@ -10,6 +10,10 @@ export interface Actions {
   begin(session: Beginning): Promise<Answer>;
   end(reason: string): Promise<Answer>;
   act(act: OperatorAct): Promise<Answer>;
+  /** From nobody, or from whoever had them at the change that is on the screen. */
+  takeControls(seen: number): Promise<Answer>;
+  giveUpControls(): Promise<Answer>;
+  signOut(): Promise<void>;
   setTheme(theme: Theme): void;
   setKeys(on: boolean): void;
   dismissNotice(): void;

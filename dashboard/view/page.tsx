@@ -1,11 +1,13 @@
 import type { ComponentChild } from 'preact';
 import type { Charts } from '../draw/charts.js';
+import { hasControls } from '../model/access.js';
 import { freshness } from '../model/freshness.js';
 import type { Live } from '../model/live.js';
 import type { Actions, Theme } from './actions.js';
 import { AlarmsPanel } from './alarmsPanel.js';
 import { Banners } from './banners.js';
 import { BeltPanel, SpeedPanel } from './beltPanel.js';
+import { ControlsBar } from './controlsBar.js';
 import { EventsPanel } from './eventsPanel.js';
 import { HealthPanel } from './healthPanel.js';
 import { RulesPanel } from './rulesPanel.js';
@@ -36,6 +38,7 @@ export function Page(props: PageProps) {
   return (
     <>
       <TopBar {...props} freshness={fresh} />
+      <ControlsBar access={live.access} actions={actions} />
       <Banners live={live} freshness={fresh} nowMs={nowMs} actions={actions} />
       {other === undefined ? <Run {...props} stale={stale} /> : other}
       <footer>
@@ -57,9 +60,11 @@ function Run({ live, actions, charts, stale }: PageProps & { stale: string }) {
         <SpeedPanel charts={charts} />
       </div>
       <div class="side">
-        <AlarmsPanel live={live} actions={actions} />
-        <SessionPanel live={live} actions={actions} />
-        <SteerPanel live={live} actions={actions} />
+        <fieldset class="acting" disabled={!hasControls(live.access)}>
+          <AlarmsPanel live={live} actions={actions} />
+          <SessionPanel live={live} actions={actions} />
+          <SteerPanel live={live} actions={actions} />
+        </fieldset>
         <div class={`shown ${stale}`}>
           <RulesPanel live={live} />
         </div>

@@ -149,7 +149,8 @@ describe('being signed in', () => {
     const { ask, signIn } = await startGuarded();
     const used = await signIn('anna');
     const rested = await signIn('anna');
-    const status = async (browser: object) => (await ask('GET', '/api/me', browser)).status;
+    const status = async (browser: { cookie: string }) =>
+      (await ask('GET', '/api/me', browser)).status;
     laterBy(IDLE_MS - 1000);
     expect(await status(used)).toBe(200);
     laterBy(2000);
