@@ -1,8 +1,6 @@
 import { blank, FrameEncoder } from '../../server/wire/codec.js';
 import { FrameDecoder } from '../../server/wire/frameDecoder.js';
 import {
-  type Arm,
-  type Configure,
   type Edge,
   FAULT,
   type Fault,
@@ -10,40 +8,30 @@ import {
   type Identity,
   type MessageOf,
   nameOf,
-  OUTCOME,
   type Outcome,
   PROTOCOL_VERSION,
-  type Pulse,
-  REASON,
   type Sample,
   WIRE_TIMES,
 } from '../../server/wire/messages.js';
 import type { BoardLine } from './boardLine.js';
+import { FrameHost, NotConforming, type Tagged } from './frameHost.js';
 
-export type Heard<T> = T & { readonly tag: number; readonly sequence: number };
-
-/** What a script expected and the board did not do. */
-export class NotConforming extends Error {}
+type Heard<T> = Tagged<T> & { readonly sequence: number };
 
 /** The host of the conformance scripts: speaks in frames alone, and keeps all that it hears. */
-export class ConformanceHost {
+export class ConformanceHost extends FrameHost {
   readonly line: BoardLine;
-  readonly identities: Heard<Identity>[] = [];
-  readonly samples: Heard<Sample>[] = [];
-  readonly edges: Heard<Edge>[] = [];
-  readonly outcomes: Heard<Outcome>[] = [];
-  readonly faults: Heard<Fault>[] = [];
+  override readonly identities: Heard<Identity>[] = [];
+  override readonly samples: Heard<Sample>[] = [];
   readonly clocks: number[] = [];
-  tag = 0;
-  wanted = 0xffff_ffff;
   /** The newest board stamp heard. */
   boardUs = 0;
   badFrames = 0;
   #nonce = 1000;
-  #nextId = 1;
   readonly #encoder = new FrameEncoder();
 
   constructor(line: BoardLine) {
+    super();
     this.line = line;
     const decoder = new FrameDecoder({
       frame: (frame) => {
@@ -99,52 +87,6 @@ export class ConformanceHost {
     await this.wait(3_000);
   }
 
-  beat(finishedUs = this.boardUs): void {
-    this.send('beat', { finishedUs, wanted: this.wanted });
-  }
-
-  configure(changes: Partial<Configure>): void {
-    this.send('configure', {
-      output: 0,
-      flags: 0,
-      longestOnUs: 1_000_000,
-      leastGapUs: 0,
-      allowanceUs: 100_000_000,
-      allowanceRises: 10_000,
-      leastCounts: 0,
-      ...changes,
-    });
-  }
-
-  newId(): number {
-    return this.#nextId++;
-  }
-
-  pulseMessage(changes: Partial<Pulse> = {}): Pulse {
-    return {
-      ...blank('pulse'),
-      widthUs: 10_000,
-      repeats: 1,
-      expiryUs: this.boardUs + 100_000,
-      ...changes,
-      id: changes.id ?? this.newId(),
-    };
-  }
-
-  /** Asks for a pulse of 10 ms on output 0, now. @returns its id */
-  pulse(changes: Partial<Pulse> = {}): number {
-    const pulse = this.pulseMessage(changes);
-    this.send('pulse', pulse);
-    return pulse.id;
-  }
-
-  /** Arms slot 0 to pulse output 0 for 10 ms. @returns its id */
-  arm(changes: Partial<Arm> = {}): number {
-    const id = changes.id ?? this.newId();
-    this.send('arm', { ...blank('arm'), rising: 1, widthUs: 10_000, repeats: 1, ...changes, id });
-    return id;
-  }
-
   /** Lets time pass while the host is alive and beats. */
   async live(us: number): Promise<void> {
     for (let left = us; left > 0; left -= WIRE_TIMES.beatUs) {
@@ -177,28 +119,14 @@ export class ConformanceHost {
     return this.last(this.samples, 'sample').count;
   }
 
-  /** What was told of an id, in words: `fired`, `done`, `refused busy`, `done silence again`. */
+  /** Everything told of an id: `fired, done`. */
   told(id: number): string {
-    return this.outcomes
-      .filter((outcome) => outcome.id === id)
-      .map((outcome) => {
-        const words = [nameOf(OUTCOME, outcome.kind)];
-        if (outcome.reason !== REASON.none) words.push(nameOf(REASON, outcome.reason));
-        if (outcome.repeated === 1) words.push('again');
-        return words.join(' ');
-      })
-      .join(', ');
+    return this.words(id).join(', ');
   }
 
   expectTold(id: number, expected: string, about = `id ${id}`): void {
     const told = this.told(id);
     this.check(told === expected, `${about}: expected "${expected}", was told "${told}"`);
-  }
-
-  outcome(id: number, kind: keyof typeof OUTCOME): Heard<Outcome> {
-    const found = this.outcomes.find((one) => one.id === id && one.kind === OUTCOME[kind]);
-    if (!found) throw new NotConforming(`id ${id} was never ${kind}; told "${this.told(id)}"`);
-    return found;
   }
 
   expectFaults(expected: string): void {
@@ -224,14 +152,14 @@ export class ConformanceHost {
   #hear(name: string, message: object): void {
     if (name === 'identity') this.identities.push(message as Heard<Identity>);
     else if (name === 'sample') this.#keepSample(message as Heard<Sample>);
-    else if (name === 'edge') this.edges.push(message as Heard<Edge>);
-    else if (name === 'fault') this.faults.push(message as Heard<Fault>);
+    else if (name === 'edge') this.edges.push(message as Tagged<Edge>);
+    else if (name === 'fault') this.faults.push(message as Tagged<Fault>);
     else if (name === 'clock') this.clocks.push((message as Sample).boardUs);
     else if (name === 'outcome') {
-      const outcome = message as Heard<Outcome>;
+      const outcome = message as Tagged<Outcome>;
       this.outcomes.push(outcome);
       // A board that is not fresh from a reset has ids of its own past: rule 15.
-      if (outcome.repeated === 1 && outcome.id >= this.#nextId) this.#nextId = outcome.id + 1;
+      if (outcome.repeated === 1 && outcome.id >= this.nextId) this.nextId = outcome.id + 1;
     }
     const { boardUs } = message as { boardUs?: number };
     if (boardUs !== undefined && name !== 'outcome') this.boardUs = boardUs;

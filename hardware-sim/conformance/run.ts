@@ -1,5 +1,6 @@
 import type { BoardLine } from './boardLine.js';
-import { ConformanceHost, NotConforming } from './conformanceHost.js';
+import { ConformanceHost } from './conformanceHost.js';
+import { NotConforming } from './frameHost.js';
 import { SCRIPTS, type Script } from './scripts.js';
 
 export interface ScriptResult {

@@ -1,6 +1,7 @@
 import { Command, InvalidArgumentError } from 'commander';
 import type { BoardLine } from '../../hardware-sim/conformance/boardLine.js';
-import { ConformanceHost, NotConforming } from '../../hardware-sim/conformance/conformanceHost.js';
+import { ConformanceHost } from '../../hardware-sim/conformance/conformanceHost.js';
+import { NotConforming } from '../../hardware-sim/conformance/frameHost.js';
 import {
   measureDrift,
   measureLoopback,
