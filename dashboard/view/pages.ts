@@ -48,4 +48,5 @@ export const PAGES: readonly [PageEntry, ...PageEntry[]] = [
   { name: 'run', title: 'Run' },
   { name: 'rehearse', title: 'Rehearse', load: () => import('./rehearse/whole.js') },
   { name: 'records', title: 'Records', load: () => import('./records/whole.js') },
+  { name: 'animals', title: 'Animals', load: () => import('./animals/whole.js') },
 ];

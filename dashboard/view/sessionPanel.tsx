@@ -1,6 +1,7 @@
 import { useState } from 'preact/hooks';
 import type { Live } from '../model/live.js';
 import type { Actions } from './actions.js';
+import { AnimalField } from './animals/animalField.js';
 import { HoldButton } from './holdButton.js';
 import { LONG_PRESS_MS } from './keys.js';
 
@@ -24,6 +25,7 @@ function BeginPanel({ live, actions }: { live: Live; actions: Actions }) {
       subject: text('subject'),
       ...(text('experimenter') === '' ? {} : { experimenter: text('experimenter') }),
       ...(text('seed') === '' ? {} : { seed: text('seed') }),
+      ...(text('despite') === '' ? {} : { despite: text('despite') }),
     });
     setBusy(false);
   };
@@ -51,10 +53,7 @@ function BeginPanel({ live, actions }: { live: Live; actions: Actions }) {
             ))}
           </select>
         </label>
-        <label>
-          Animal
-          <input name="subject" required maxLength={64} autocomplete="off" spellcheck={false} />
-        </label>
+        <AnimalField />
         <div class="pair">
           <label>
             Experimenter

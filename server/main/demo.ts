@@ -1,13 +1,22 @@
 import { type ChildProcess, fork } from 'node:child_process';
 import { homedir } from 'node:os';
-import { join } from 'node:path';
+import { join, resolve } from 'node:path';
 import { Command } from 'commander';
 import { compiledScript } from '../askChild.js';
 import { packageRoot } from '../packageRoot.js';
 import { readRig } from '../session/rig/readRig.js';
+import { keepDemoAnimals } from './animals/demoAnimals.js';
 import { portOption } from './arguments.js';
 import { wantsDemoSessions } from './demoSessions.js';
 import { runLive } from './live.js';
+
+interface DemoFlags {
+  readonly port: number;
+  readonly records: string;
+  readonly animals?: string;
+  readonly seed: string;
+  readonly earlier: boolean;
+}
 
 /** `lapwing demo`: the simulated rig, a trained animal and the demo's rules, with the page. */
 export function demoCommand(): Command {
@@ -15,19 +24,23 @@ export function demoCommand(): Command {
     .description('run the simulated rig with the demo rules and serve its page')
     .addOption(portOption())
     .option('--records <folder>', 'where the record goes', join(homedir(), 'lapwing-demo-records'))
+    .option('--animals <folder>', 'where its animals are kept; beside the records')
     .option('--seed <number>', 'of the simulated animal', '1')
     .option('--no-earlier', 'make no earlier sessions for an empty records folder')
-    .action(async (flags: { port: number; records: string; seed: string; earlier: boolean }) => {
+    .action(async (flags: DemoFlags) => {
       const folder = join(packageRoot, 'hardware-sim/demo');
       const rigPath = join(folder, 'rig.yaml');
       // Looked at before the demo's own session has a folder.
       const newcomer = flags.earlier && wantsDemoSessions(flags.records);
+      const animalsFolder = resolve(flags.animals ?? `${flags.records}-animals`);
+      await keepDemoAnimals(animalsFolder);
       let making: ChildProcess | undefined;
       await runLive({
         rig: readRig(rigPath),
         rigPath,
         exitWhenEnded: false,
         recordFolder: flags.records,
+        animalsFolder,
         begin: {
           rulesPath: join(folder, 'sessions/demo.yaml'),
           subject: 'sim1',

@@ -8,7 +8,8 @@ import { takePictures } from './screenshot.js';
 
 const LAPS = 9;
 
-const records = mkdtempSync(join(tmpdir(), 'lapwing-pictures-'));
+const folder = mkdtempSync(join(tmpdir(), 'lapwing-pictures-'));
+const records = join(folder, 'records');
 const demo = lapwing('demo', '--port', '0', '--records', records);
 try {
   const url = await new Promise<string>((resolve, reject) => {
@@ -25,5 +26,5 @@ try {
 } finally {
   demo.kill('SIGINT');
   await new Promise((resolve) => demo.once('exit', resolve));
-  rmSync(records, { recursive: true, force: true });
+  rmSync(folder, { recursive: true, force: true });
 }

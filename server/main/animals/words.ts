@@ -20,6 +20,7 @@ export function columns(rows: readonly (readonly string[])[]): string {
 }
 
 export function millilitres(ul: number): string {
+  if (ul > 0 && ul < 100) return `${Number(ul.toFixed(1))} uL`;
   return `${(ul / 1_000).toFixed(2)} mL`;
 }
 
