@@ -177,6 +177,42 @@ describe('frames of a periodic clock', () => {
       expect.stringContaining('2 runs'),
     );
   });
+  it('are counted past edges that are none, at either side, at the beginning too', () => {
+    const ref = [...frames(5, 300), ...frames(30, 450)];
+    const spurious = (times: number[], at: readonly number[]) =>
+      [...times, ...at].sort((a, b) => a - b);
+    const theirs = onTheirs(spurious(frames(30, 450), [29.985, 31.012, 33.3133, 40.0217]));
+    const ours = spurious(ref, [4.99, 7.0123, 20, 32.611]);
+    const [found] = align(ours, [theirs]) as [Alignment];
+    expect(found.matched).toBe(450);
+    expect(found.driftPpm).toBeCloseTo(50, 3);
+    expect(convert(found, 35)).toBeCloseTo(40 + 35 * 1.00005, 9);
+  });
+  it('are counted from the end when a recording began while they ran', () => {
+    const whole = frames(0, 900);
+    // Ours began late: the first frame that it has is at its own beginning.
+    const late = whole.slice(333).map((t) => t - 11.1);
+    const [ours] = align(late, [onTheirs(whole)], { fromS: 0, toS: 60 }) as [Alignment];
+    expect(convert(ours, late.at(-1)!)).toBeCloseTo(40 + whole.at(-1)! * 1.00005, 9);
+    // Theirs did: its times count from its own beginning.
+    const theirs = whole.slice(200).map((t) => t - whole[200]! + 0.01);
+    const [other] = align(whole, [theirs], { fromS: -5, toS: 60 }) as [Alignment];
+    expect(convert(other, whole.at(-1)!)).toBeCloseTo(theirs.at(-1)!, 9);
+    // Not known to be cut, or at both ends: no frame is certain.
+    expect(align(late, [onTheirs(whole)])[0]).toHaveProperty('refused');
+    const toS = late.at(-1)! + 0.01;
+    expect(align(late, [onTheirs(whole)], { fromS: 0, toS })[0]).toHaveProperty('refused');
+  });
+  it('are held by the pauses between runs when the first and last run were cut', () => {
+    const ref = [...frames(5, 300), ...frames(30, 450), ...frames(61, 450), ...frames(95, 200)];
+    const theirs = onTheirs([...frames(30, 450).slice(77), ...frames(61, 450).slice(0, 401)]);
+    const [found] = align(ref, [theirs]) as [Alignment];
+    expect(found.matched).toBe(450 - 77 + 401);
+    expect(convert(found, 35)).toBeCloseTo(40 + 35 * 1.00005, 9);
+    // A pause of another length is another pause.
+    const other = onTheirs([...frames(30, 450).slice(77), ...frames(62, 401)]);
+    expect(align(ref, [other])[0]).toHaveProperty('refused');
+  });
   it('are matched in order when there are as many acquisitions as runs', () => {
     const ref = [...frames(5, 300), ...frames(30, 300)];
     const results = align(ref, [frames(0, 300), frames(0, 300)]) as Alignment[];

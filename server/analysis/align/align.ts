@@ -1,4 +1,4 @@
-import { countRuns, isPeriodic, matchPeriodic } from './matchPeriodic.js';
+import { countRuns, isPeriodic, matchPeriodic, type Window } from './matchPeriodic.js';
 import { matchRandom, type Pair } from './matchRandom.js';
 import { type Line, median, quantile, robustLine, valueAt } from './robustLine.js';
 
@@ -41,10 +41,12 @@ const SIDE = 4;
  * Matches the edges of each acquisition with ours and fits offset and drift, or says why not.
  * @param ref times of our edges, seconds since the session began, rising
  * @param acquisitions times of theirs, in seconds of their clock, rising in each
+ * @param window from when to when ours were recorded
  */
 export function align(
   ref: readonly number[],
   acquisitions: readonly (readonly number[])[],
+  window?: Window,
 ): (Alignment | Refused)[] {
   const periodic = isPeriodic(ref);
   // As many acquisitions as runs of the frame clock: each is compared with its own.
@@ -52,7 +54,7 @@ export function align(
   return acquisitions.map((other, index) => {
     const acquisition = index + 1;
     const pairs = periodic
-      ? matchPeriodic(ref, other, inOrder ? index : undefined)
+      ? matchPeriodic(ref, other, { only: inOrder ? index : undefined, window })
       : matchRandom(ref, other);
     if (typeof pairs === 'string') return { acquisition, refused: pairs };
     const method = periodic ? 'counted frames' : 'random intervals';

@@ -54,7 +54,8 @@ export function alignSession(
   name?: string,
 ) {
   const { line, times } = ownEdges(session, name);
-  const results = align(times, acquisitions);
+  const toS = (session.endedUs - session.beganUs) / 1e6;
+  const results = align(times, acquisitions, { fromS: 0, toS });
   const good = results.filter((result): result is Alignment => !('refused' in result));
   const refused = results.filter((result): result is Refused => 'refused' in result);
   if (good.length === 0) {
