@@ -10,7 +10,7 @@ import fastifyStatic from '@fastify/static';
 import Fastify, { type FastifyInstance, LogController } from 'fastify';
 import { LapwingError } from '../errors/codes.js';
 import { packageVersion } from '../packageRoot.js';
-import type { Rig } from '../session/rig/rig.js';
+import type { Rig, RigNotify } from '../session/rig/rig.js';
 import { Access } from './access/access.js';
 import type { AccessFiles } from './access/people.js';
 import { addAccessRoutes, youOf } from './access/routes.js';
@@ -22,6 +22,7 @@ import { Jobs } from './jobs/jobs.js';
 import { addJobRoutes } from './jobs/routes.js';
 import { type LoopPlace, LoopSide } from './loopSide.js';
 import { Mirror } from './mirror.js';
+import { Notices } from './notices/notices.js';
 import { openapi } from './openapi.js';
 import { PROBLEM_TYPE, problem, problemFrom, sendProblem } from './problems.js';
 import { addRecordsRoutes } from './records/routes.js';
@@ -39,6 +40,8 @@ export interface WebOptions extends LoopPlace {
   /** For editing and rehearsing rules: the rig that the loop runs, and its rules folder if another. */
   readonly rig?: Rig | undefined;
   readonly rulesFolder?: string;
+  /** Where alarms are pushed to. */
+  readonly notify?: RigNotify | undefined;
   readonly rehearsals?: Rehearsals;
   /** Where the sessions are; absolute. */
   readonly records?: string;
@@ -73,6 +76,8 @@ export function buildWeb(options: WebOptions): FastifyInstance {
   const version = options.version ?? packageVersion;
   const app = Fastify({
     bodyLimit: BODY_BYTES,
+    // A session's folder has a name of some hundred characters.
+    routerOptions: { maxParamLength: 200 },
     logger:
       options.log === false
         ? false
@@ -105,7 +110,8 @@ export function buildWeb(options: WebOptions): FastifyInstance {
       seen: (signIn) => access.signIns.seen(signIn),
     },
   );
-  const loop = new LoopSide(options, mirror, stream, app.log, () => access.tellSession());
+  const notices = options.notify && new Notices(options.notify, app.log);
+  const loop = new LoopSide(options, mirror, stream, app.log, () => access.tellSession(), notices);
   const access = new Access({
     files: options.access,
     ...(options.hashCost ? { cost: options.hashCost } : {}),
@@ -129,6 +135,7 @@ export function buildWeb(options: WebOptions): FastifyInstance {
     dropped: stream.dropped,
     uptimeS: Math.floor(process.uptime()),
     memoryMb: Math.round(process.memoryUsage.rss() / 1e6),
+    cpuS: cpuS(),
   }));
   const description = openapi(version, needs);
   app.get('/api/openapi.json', async () => description());
@@ -169,11 +176,18 @@ export function buildWeb(options: WebOptions): FastifyInstance {
   if (options.dashboard !== undefined) serveDashboard(app, options.dashboard);
   app.addHook('preClose', () => stream.close());
   app.addHook('onClose', async () => {
+    notices?.close();
     access.close();
     loop.client.close();
   });
   loop.start();
   return app;
+}
+
+/** What this process has used of a core since it began, s. */
+function cpuS(): number {
+  const { user, system } = process.cpuUsage();
+  return (user + system) / 1e6;
 }
 
 function answerProblems(app: FastifyInstance): void {

@@ -4,6 +4,7 @@ import { LocalClient, type LocalClientOptions, quietOnce } from '../loop/localCl
 import type { AskedBy, Setup } from '../loop/protocol.js';
 import type { Actor, OperatorAct } from '../session/inputs.js';
 import type { Mirror } from './mirror.js';
+import type { Notices } from './notices/notices.js';
 import type { Stream } from './stream.js';
 
 export interface LoopPlace {
@@ -27,6 +28,7 @@ export class LoopSide {
     private readonly stream: Stream,
     log: FastifyBaseLogger,
     private readonly sessionBegan: () => void,
+    notices?: Notices,
   ) {
     this.place = {
       socketPath,
@@ -48,10 +50,12 @@ export class LoopSide {
           log.warn({ code: why.code }, `the loop is away: ${why.message}`);
           mirror.loseLoop(why.message, why.remedy);
           stream.announce(mirror.loop);
+          notices?.loopAway(why.message, why.remedy);
         },
         setup: (setup) => this.setUp(setup),
         state: (state) => {
           mirror.takeState(state);
+          notices?.see(state, mirror.setup);
           stream.changed();
         },
         events: (events) => {

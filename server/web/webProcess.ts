@@ -11,6 +11,7 @@ import { readRig } from '../session/rig/readRig.js';
 import { accessFiles } from './access/people.js';
 import { buildWeb } from './buildWeb.js';
 import { isLoopback } from './gates.js';
+import { notifyOf } from './notices/notices.js';
 import { certificateWarning, readTls } from './tls.js';
 
 export const DEFAULT_PORT = 8711;
@@ -53,7 +54,7 @@ export async function runWeb(argv: readonly string[]): Promise<void> {
   const app = buildWeb({
     socketPath: values.socket,
     ...(values['token-file'] === undefined ? {} : { tokenFile: values['token-file'] }),
-    ...(rig === undefined ? {} : { rig }),
+    ...(rig === undefined ? {} : { rig, notify: notifyOf(rig) }),
     ...(signIn ? { access: accessFiles(rig?.name ?? '') } : {}),
     ...(tls ? { tls } : {}),
     allowedHosts: values.name,
