@@ -3,6 +3,7 @@ import { Ajv2020 } from 'ajv/dist/2020.js';
 import type { FastifyInstance } from 'fastify';
 import { describe, expect, test } from 'vitest';
 import { newFolder } from '../subjects/helpers.js';
+import { describedSession } from './records/folders.js';
 import { startWeb, until } from './webRig.js';
 
 interface Description {
@@ -51,7 +52,8 @@ describe('the description', () => {
     expect(described.openapi).toBe('3.1.0');
     for (const [path, methods] of Object.entries(described.paths)) {
       for (const method of Object.keys(methods)) {
-        expect(app.hasRoute({ method: method.toUpperCase(), url: path })).toBe(true);
+        const url = path.replace(/\{(\w+)\}/g, ':$1');
+        expect(app.hasRoute({ method: method.toUpperCase(), url })).toBe(true);
       }
     }
     const routes = routesOf(app);
@@ -60,7 +62,8 @@ describe('the description', () => {
       if (path === '/*') continue;
       for (const method of methods.split(', ')) {
         if (method === 'HEAD' || method === 'OPTIONS') continue;
-        expect(described.paths[path]?.[method.toLowerCase()], `${method} ${path}`).toBeDefined();
+        const told = described.paths[path.replace(/:(\w+)/g, '{$1}')];
+        expect(told?.[method.toLowerCase()], `${method} ${path}`).toBeDefined();
       }
     }
   });
@@ -90,17 +93,22 @@ describe('the page about it', () => {
   });
 
   test('every example of it works as written', async () => {
-    const { app, loop } = await startWeb({ animals: newFolder() });
+    const records = newFolder();
+    const sessions = ['2026-03-04_09-30-00_M12_Induction', '2026-03-05_09-28-00_M12_Induction'];
+    for (const name of sessions) describedSession(records, name);
+    const { app, loop } = await startWeb({ animals: newFolder(), records });
     const matches = checker(await describedBy(app));
     const schemas: Record<string, string> = {
       ...{ '/api/session': 'Begin', '/api/acts': 'Act', '/api/end': 'End', '/api/quiet': 'Quiet' },
       ...{ '/api/rules/check': 'CheckRules', '/api/rehearse': 'Rehearse' },
-      '/api/animals': 'AnimalEntry',
+      ...{ '/api/animals': 'AnimalEntry', '/api/records/{name}/work': 'Work' },
+      '/api/comparisons': 'Compare',
     };
     for (const [path, body] of EXAMPLES) {
       expect(matches(schemas[path]!)(JSON.parse(body))).toBe(true);
       const headers = { 'content-type': 'application/json' };
-      const answer = await app.inject({ method: 'POST', url: path, payload: body, headers });
+      const url = path.replace('{name}', sessions[0]!);
+      const answer = await app.inject({ method: 'POST', url, payload: body, headers });
       expect([path, body, answer.statusCode]).toEqual([path, body, 200]);
       if (path === '/api/session') {
         await until(async () => (await app.inject('/api/setup')).json().session !== null);
