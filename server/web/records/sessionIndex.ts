@@ -1,6 +1,6 @@
-import type { Dirent } from 'node:fs';
 import fs from 'node:fs/promises';
 import path from 'node:path';
+import { setTimeout } from 'node:timers/promises';
 import { LapwingError } from '../../errors/codes.js';
 import { recordingProcess } from '../../session/record/recordLock.js';
 import type { SessionRow } from './recordsMessages.js';
@@ -8,6 +8,8 @@ import { badRow, rowOf } from './sessionRow.js';
 
 /** A folder is looked through this often at most; what is asked in between is told the same. */
 const FRESH_MS = 1_000;
+/** Who asks waits so long for a look at a folder that was looked at before. */
+const WAIT_MS = 150;
 /** Files looked at together: libuv has four threads, and others need them too. */
 const AT_ONCE = 3;
 /** A description has some kilobytes. */
@@ -29,21 +31,33 @@ export class SessionIndex {
   #known = new Map<string, Known>();
   #rows: readonly SessionRow[] = [];
   #lookedMs = Number.NEGATIVE_INFINITY;
+  #looked = false;
   #looking: Promise<void> | undefined;
 
   /** @param folder absolute; it need not exist yet */
   constructor(readonly folder: string) {}
 
-  /** All sessions as they are, or were a second ago. */
+  /**
+   * All sessions as they are, or were a second ago; of a folder so large that looking it through takes
+   * longer than anybody wants to wait, as they were the last time.
+   */
   async rows(): Promise<readonly SessionRow[]> {
-    if (performance.now() - this.#lookedMs > FRESH_MS) await this.look();
+    if (performance.now() - this.#lookedMs > FRESH_MS) {
+      const look = this.look();
+      await (this.#looked ? Promise.race([look, setTimeout(WAIT_MS)]) : look);
+    }
     return this.#rows;
   }
 
-  /** @throws LapwingError WEB_SESSION_UNKNOWN */
+  /**
+   * One session as it is now.
+   * @throws LapwingError WEB_SESSION_UNKNOWN
+   */
   async find(name: string): Promise<{ readonly row: SessionRow; readonly folder: string }> {
-    const here = (await this.rows()).find((row) => row.name === name);
-    if (here) return { row: here, folder: path.join(this.folder, here.name) };
+    if (!this.#known.has(name)) await this.look();
+    // Only a name that the folder itself was seen to hold becomes part of a path.
+    const { row } = this.#known.has(name) ? await this.#lookAt(name) : {};
+    if (row) return { row: this.#now(row), folder: path.join(this.folder, name) };
     throw new LapwingError('webSessionUnknown', `There is no session ${JSON.stringify(name)}.`);
   }
 
@@ -51,6 +65,7 @@ export class SessionIndex {
   look(): Promise<void> {
     this.#looking ??= this.#look().finally(() => {
       this.#looking = undefined;
+      this.#looked = true;
       this.#lookedMs = performance.now();
     });
     return this.#looking;
@@ -64,7 +79,7 @@ export class SessionIndex {
     let next = 0;
     const lookOn = async (): Promise<void> => {
       for (let entry = folders[next++]; entry; entry = folders[next++]) {
-        known.set(entry.name, await this.#lookAt(entry));
+        known.set(entry.name, await this.#lookAt(entry.name));
       }
     };
     await Promise.all(Array.from({ length: AT_ONCE }, lookOn));
@@ -80,7 +95,7 @@ export class SessionIndex {
     return recording === row.recording ? row : { ...row, recording };
   }
 
-  async #lookAt({ name }: Dirent): Promise<Known> {
+  async #lookAt(name: string): Promise<Known> {
     const folder = path.join(this.folder, name);
     const file = path.join(folder, 'session.json');
     const before = this.#known.get(name);
