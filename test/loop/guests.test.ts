@@ -7,7 +7,7 @@ import { afterEach, describe, expect, it } from 'vitest';
 import { WebSocket } from 'ws';
 import { quietOnce } from '../../server/loop/localClient.js';
 import { readDescription } from '../../server/session/description.js';
-import { finished, LiveRig, lapwing, until } from '../tools/liveRig.js';
+import { finished, LiveRig, type LiveRigOptions, lapwing, until } from '../tools/liveRig.js';
 
 const RULES = `title: Guests
 belt: 30 cm
@@ -29,8 +29,11 @@ afterEach(async () => {
   rig = undefined;
 });
 
-async function started(more: readonly string[] = [], recordFolder?: string): Promise<LiveRig> {
-  rig = await LiveRig.start({ rules: RULES, ...(recordFolder ? { recordFolder } : {}) });
+async function started(
+  more: readonly string[] = [],
+  options: Partial<LiveRigOptions> = {},
+): Promise<LiveRig> {
+  rig = await LiveRig.start({ rules: RULES, ...options });
   rig.watch();
   const child = rig.run(...more);
   const on = () => child.exitCode !== null || (rig!.state?.lap ?? 0) >= 1;
@@ -184,43 +187,60 @@ describe('a second loop on the same rig', { timeout: 120_000 }, () => {
 });
 
 describe('a full disk', { timeout: 120_000 }, () => {
-  it('ends stimulation and keeps the loop, with the reason on screen', async () => {
-    // A small file system of its own needs root, which CI has.
-    expect(process.getuid?.(), 'this test mounts a small disk: run it as root').toBe(0);
-    const disk = join('/tmp', `lapwing-small-disk-${process.pid}`);
-    mkdirSync(disk, { recursive: true });
-    execFileSync('mount', ['-t', 'tmpfs', '-o', 'size=2m', 'tmpfs', disk]);
-    try {
-      const live = await started([], join(disk, 'records'));
-      writeFileSync(join(disk, 'filler'), Buffer.alloc(1_000_000));
-      let filled = 1_000_000;
-      for (let n = 0; filled < 2_000_000; n++) {
-        try {
-          writeFileSync(join(disk, `filler-${n}`), Buffer.alloc(16_384));
-          filled += 16_384;
-        } catch {
-          break;
+  it.each(['water goes on', 'water stops'])(
+    'is warned of early, ends stimulation and keeps the loop; %s',
+    async (whenFull) => {
+      // A small file system of its own needs root, which CI has.
+      expect(process.getuid?.(), 'this test mounts a small disk: run it as root').toBe(0);
+      const disk = join('/tmp', `lapwing-small-disk-${process.pid}`);
+      mkdirSync(disk, { recursive: true });
+      execFileSync('mount', ['-t', 'tmpfs', '-o', 'size=2m', 'tmpfs', disk]);
+      try {
+        const live = await started([], {
+          recordFolder: join(disk, 'records'),
+          rigMore: `record:\n  when_full: ${whenFull}\n`,
+        });
+        await until('the warning', () => live.output.includes('MB left on the disk'));
+        expect(live.state!.held.stimulus).toBeNull();
+        writeFileSync(join(disk, 'filler'), Buffer.alloc(1_000_000));
+        let filled = 1_000_000;
+        for (let n = 0; filled < 2_000_000; n++) {
+          try {
+            writeFileSync(join(disk, `filler-${n}`), Buffer.alloc(16_384));
+            filled += 16_384;
+          } catch {
+            break;
+          }
         }
+        await until(
+          'the hold',
+          () => live.state?.held.stimulus != null,
+          60_000,
+          () => live.output,
+        );
+        expect(live.state!.held.stimulus).toMatch(/disk/);
+        // What had begun is over.
+      await delay(200);
+      const [valve, gate] = [await live.rises(0), await live.rises(1)];
+        const lap = live.state!.lap;
+        await until('more laps', () => live.state!.lap >= lap + 3);
+        expect(await live.rises(1)).toBe(gate);
+        if (whenFull === 'water goes on') {
+          expect(live.state!.held.water).toBeNull();
+          expect(await live.rises(0)).toBeGreaterThan(valve!);
+        } else {
+          expect(live.state!.held.water).toMatch(/disk/);
+          expect(await live.rises(0)).toBe(valve);
+        }
+        expect(live.state!.link.state).toBe('up');
+        await delay(50);
+        await live.end('SIGINT');
+        expect(await live.outputs()).toBe(0);
+      } finally {
+        await rig?.stop();
+        rig = undefined;
+        execFileSync('umount', ['-l', disk]);
       }
-      await until(
-        'the hold',
-        () => live.state?.held.stimulus != null,
-        60_000,
-        () => live.output,
-      );
-      expect(live.state!.held.stimulus).toMatch(/disk/);
-      const gate = await live.rises(1);
-      const lap = live.state!.lap;
-      await until('more laps', () => live.state!.lap >= lap + 3);
-      expect(await live.rises(1)).toBe(gate);
-      expect(live.state!.link.state).toBe('up');
-      await delay(50);
-      await live.end('SIGINT');
-      expect(await live.outputs()).toBe(0);
-    } finally {
-      await rig?.stop();
-      rig = undefined;
-      execFileSync('umount', ['-l', disk]);
-    }
-  });
+    },
+  );
 });
