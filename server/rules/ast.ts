@@ -202,7 +202,9 @@ export type Habit =
   | (Located & { readonly kind: 'blocks'; readonly size: number })
   | (Located & { readonly kind: 'run'; readonly most: number })
   | (Located & { readonly kind: 'apart'; readonly least: Sum })
-  | (Located & { readonly kind: 'steps'; readonly of: Sum });
+  | (Located & { readonly kind: 'steps'; readonly of: Sum })
+  /** Not drawn here: it is in a sealed allocation, and nobody at the rig may see it. */
+  | (Located & { readonly kind: 'sealed' });
 export interface DrawDecl extends Located {
   readonly name: NameRef;
   readonly choices: Choices;

@@ -118,6 +118,8 @@ export function printHabit(habit: Habit): string {
       return `at most ${habit.most} in a row`;
     case 'apart':
       return `at least ${printSum(habit.least)} from the last`;
+    case 'sealed':
+      return 'sealed';
     case 'steps':
       return `in steps of ${printSum(habit.of)}`;
   }

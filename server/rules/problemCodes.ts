@@ -59,6 +59,8 @@ export const PROBLEMS = {
   weightsMismatch: error('Weights that do not match the choices.'),
   blockMismatch: error('A block that the choices or weights do not divide.'),
   drawImpossible: error('A least distance, run or step that cannot be kept.'),
+  sealedForm: error('A sealed draw that is not one plain choice of words for the whole session.'),
+  sealedSeen: error('A sealed draw where it could be seen, or drunk.'),
   offBelt: error('A place off the belt.'),
   mixedChoices: error('Choices of different kinds.'),
   // Warnings: it can never happen.

@@ -14,6 +14,7 @@ import { onBelt } from './errors/onBelt.js';
 import { onTimes } from './errors/onTimes.js';
 import { ranges } from './errors/ranges.js';
 import { rigNames } from './errors/rigNames.js';
+import { sealedDraws } from './errors/sealedDraws.js';
 import { units } from './errors/units.js';
 import { visits } from './errors/visits.js';
 import { words } from './errors/words.js';
@@ -56,6 +57,7 @@ const ERRORS: readonly Check[] = [
   onTimes,
   drawChoices,
   drawHabits,
+  sealedDraws,
   onBelt,
 ];
 

@@ -1,6 +1,7 @@
 import { isArmable } from '../armable.js';
 import { alternativesOf, type PhaseDecl, type RuleDecl, type RulesFile, termsOf } from '../ast.js';
 import type { RigFacts } from '../facts.js';
+import { sealedOf } from '../sealed.js';
 import { boundsOf } from './bounds.js';
 import { Builder } from './builder.js';
 import { compileAction, compileCap } from './compileAction.js';
@@ -57,6 +58,7 @@ export function compile(file: RulesFile, facts: RigFacts): Program {
     endAhead,
     gaps: b.gaps,
     lickWaiters: waiters.licks,
+    sealed: sealedOf(b.file),
     lickMarks: b.lickMarks,
     risesRules: waiters.rises,
     fallsRules: waiters.falls,

@@ -1,5 +1,6 @@
 import type { Dimension } from '../ast.js';
 import type { RigFacts } from '../facts.js';
+import type { Sealed } from '../sealed.js';
 import type { State } from './state.js';
 import type { TallySpec } from './tally.js';
 import type { Truth } from './truth.js';
@@ -194,6 +195,8 @@ export interface PlaceView {
 }
 
 export interface Program {
+  /** What is hidden while an allocation is sealed. */
+  readonly sealed: Sealed | undefined;
   readonly title: string;
   readonly facts: RigFacts;
   readonly rules: readonly RuleSpec[];

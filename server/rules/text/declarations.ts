@@ -84,7 +84,7 @@ export function occasion(p: Phrase): Occasion {
 
 // habit = "weighted" NUMBER "to" NUMBER { "to" NUMBER } | "in shuffled blocks of" NUMBER
 //       | "at most" NUMBER "in a row" | "at least" ( amount | NUMBER ) "from the last"
-//       | "in steps of" ( amount | NUMBER ) .
+//       | "in steps of" ( amount | NUMBER ) | "sealed" .
 export function habit(p: Phrase): Habit {
   const mark = p.mark();
   if (p.accept('weighted')) {
@@ -98,6 +98,7 @@ export function habit(p: Phrase): Habit {
   if (p.accept('in shuffled blocks of')) {
     return { kind: 'blocks', size: number(p), at: p.since(mark) };
   }
+  if (p.accept('sealed')) return { kind: 'sealed', at: p.since(mark) };
   if (p.accept('at most')) {
     const most = number(p);
     p.expect('in a row');

@@ -5,7 +5,7 @@ const GRAMMAR_WORDS =
   'to but in or every lap laps phase cell session visit firing of weighted shuffled blocks at most ' +
   'a row least from the steps for until after reaches enters leaves begins fires rises falls lick ' +
   'licks this within operator presses give times hold go while up per apart and not still is ' +
-  'multiple position speed time share mean given done firings since over predicted learned';
+  'multiple position speed time share mean given done firings since over predicted learned sealed';
 
 export const RESERVED: ReadonlySet<string> = new Set([
   ...GRAMMAR_WORDS.split(' '),

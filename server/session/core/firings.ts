@@ -92,18 +92,25 @@ export class Firings {
   }
 
   #start(request: FiringRequest, settled: boolean): Withheld {
-    const { guard, tracker } = this.#context;
+    const { guard } = this.#context;
     const refusal = this.#refusal(request.orders, request.expiryUs);
     if (refusal !== undefined) return refusal;
     const leftOut = guard.leftOut.slice();
     const orders = request.orders.filter((_, index) => !leftOut.includes(index));
     if (orders.length === 0 && request.orders.length > 0) return 'its mark is busy';
     if (request.sham) {
-      for (const order of orders) this.#sham(order);
+      const { outputs } = this.#context;
+      const masking = orders.filter((order) => outputs[order.output]?.masking);
+      for (const order of orders) if (!masking.includes(order)) this.#sham(order);
       if (orders.length > 0) this.#tellSham(request);
-      return undefined;
-    }
-    if (orders.length === 0) return undefined;
+      // What masks the stimulus runs whether there is one or not; it settles nothing.
+      if (masking.length > 0) this.#pulse({ ...request, sham: false }, masking, true);
+    } else if (orders.length > 0) this.#pulse(request, orders, settled);
+    return undefined;
+  }
+
+  #pulse(request: FiringRequest, orders: readonly OutputOrder[], settled: boolean): void {
+    const { tracker } = this.#context;
     const firing: LiveFiring = { request, armed: false, ids: [], settled };
     for (const order of orders) {
       const id = this.#ledger.takeId();
@@ -119,7 +126,6 @@ export class Firings {
       });
     }
     this.#tellSent('asked', firing);
-    return undefined;
   }
 
   /** Takes a slot of the board for a place ahead, unless the rule has it already. */

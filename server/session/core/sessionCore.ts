@@ -2,6 +2,7 @@
 import { Guard } from '../../guard/guard.js';
 import type { Program } from '../../rules/engine/program.js';
 import { RulesEngine } from '../../rules/engine/rulesEngine.js';
+import { withArm } from '../../rules/engine/withArm.js';
 import type { Actuator, Inquiry, Instant, Journal } from '../../rules/instant.js';
 import type { TrackEvent } from '../../track/events.js';
 import { blankInstant, Tracker } from '../../track/tracker.js';
@@ -33,6 +34,8 @@ export interface SessionSetup {
   readonly seed: string;
   /** Given to this animal earlier today, by the records of its sessions. */
   readonly waterTodayNl: number;
+  /** What a sealed draw is; by chance where nothing is said, as in a rehearsal. */
+  readonly arm?: string;
   /** Told why rules were not tried; a rehearsal asks. */
   readonly inquiry?: Inquiry;
 }
@@ -95,7 +98,7 @@ export class SessionCore {
     );
     this.#buttons = this.#buttonBox();
     this.engine = new RulesEngine(
-      setup.program,
+      withArm(setup.program, setup.arm),
       setup.seed,
       this.#actuator(),
       this.#journal(),
@@ -517,8 +520,10 @@ export class SessionCore {
         this.#tell({ kind: 'withheld', rule: name(rule), serial, reason }),
       missed: (rule, serial, reason) =>
         this.#tell({ kind: 'missed', rule: name(rule), serial, reason }),
-      drawn: (draw, scope, index, value) =>
-        this.#tell({ kind: 'drawn', draw, scope, index, value }),
+      drawn: (draw, scope, index, value) => {
+        const hidden = this.#setup.arm !== undefined && draw === this.#setup.program.sealed?.draw;
+        this.#tell({ kind: 'drawn', draw, scope, index, value: hidden ? 'sealed' : value });
+      },
       phaseBegan: (phase, index, reason) =>
         this.#tell({ kind: 'phase began', phase, index, reason }),
       cellBegan: () => {},

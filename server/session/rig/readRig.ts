@@ -45,6 +45,7 @@ interface RigText {
   record?: { folder?: string; when_full?: Rig['whenFull'] };
   rules_folder?: string;
   animals?: string;
+  blinding?: { allocation: string; key: string };
   cell_fields?: string[];
   notify?: {
     url: string;
@@ -77,6 +78,7 @@ interface OutputText {
   duty?: string;
   idle?: string;
   on_silence?: string;
+  masking?: 'yes';
   evokes?: 'plateau';
   calibration?: string | { dead: string; per_uL: string; from: string; to: string };
 }
@@ -237,6 +239,12 @@ class RigBuilder {
       recordFolder: resolve(base, file.record?.folder ?? 'records'),
       rulesFolder: resolve(base, file.rules_folder ?? '.'),
       ...(file.animals === undefined ? {} : { animalsFolder: resolve(base, file.animals) }),
+      ...(file.blinding && {
+        blinding: {
+          allocation: resolve(base, file.blinding.allocation),
+          key: resolve(base, file.blinding.key),
+        },
+      }),
       cellFields: file.cell_fields ?? [],
       notify: this.notify(),
       viewersMayHold: file.viewers_may === 'hold stimulus',
@@ -356,6 +364,9 @@ class RigBuilder {
     if (calibration !== undefined && output.kind !== 'valve') {
       this.report([...where, 'calibration'], 'only a valve has a calibration');
     }
+    if (output.masking && output.kind !== 'mark') {
+      this.report([...where, 'masking'], 'only an output of kind mark can run in shams too');
+    }
     if (valve && valve.deadUs + valve.mostNl * valve.usPerNl > longestOnUs) {
       this.report([...where, 'longest_on'], 'shorter than the largest calibrated drop takes');
     }
@@ -373,6 +384,7 @@ class RigBuilder {
       },
       idleHigh: output.idle === 'high',
       finishOnSilence: output.on_silence === 'finish',
+      ...(output.masking === 'yes' ? { masking: true } : {}),
       evokesPlateau: output.evokes === 'plateau',
       valve,
     };

@@ -31,6 +31,8 @@ export interface Rig {
   /** Absolute. */
   readonly recordFolder: string;
   readonly rulesFolder: string;
+  /** Where a sealed allocation and its key are. */
+  readonly blinding?: { readonly allocation: string; readonly key: string };
   /** Where animals, weights and water are kept, for all rigs; nothing is asked of it where unsaid. */
   readonly animalsFolder?: string;
   /** Over the network, viewers may hold the stimulus back (and never let go of it). */
@@ -110,6 +112,8 @@ export interface RigOutput {
   readonly duty: OutputFacts['duty'] | undefined;
   readonly idleHigh: boolean;
   readonly finishOnSilence: boolean;
+  /** A mark that runs in shams too: a masking light or sound. */
+  readonly masking?: boolean;
   readonly evokesPlateau: boolean;
   readonly valve: OutputFacts['valve'] | undefined;
 }

@@ -1,0 +1,42 @@
+import type { DrawDecl, RuleDecl, RulesFile } from './ast.js';
+import { namesIn } from './checks/walk.js';
+
+/** What a blinded session hides: its draw, and what its arm decides about. */
+export interface Sealed {
+  readonly draw: string;
+  /** The words that it chooses among. */
+  readonly arms: readonly string[];
+  /** Rules that are real in some arms and sham in others. */
+  readonly rules: readonly string[];
+  /** What those rules drive. */
+  readonly outputs: readonly string[];
+}
+
+export function isSealed({ habits }: DrawDecl): boolean {
+  return habits.some(({ kind }) => kind === 'sealed');
+}
+
+/** Rules whose `sham` turns on the sealed draw. */
+export function blindedIn(file: RulesFile): RuleDecl[] {
+  const draw = file.draws.find(isSealed);
+  if (draw === undefined) return [];
+  return file.rules.filter(({ sham }) =>
+    namesIn(sham ?? []).some(({ name }) => name === draw.name.name),
+  );
+}
+
+/** What must be hidden while the allocation is sealed; undefined for a file without a sealed draw. */
+export function sealedOf(file: RulesFile): Sealed | undefined {
+  const draw = file.draws.find(isSealed);
+  if (draw === undefined || draw.choices.kind !== 'options') return undefined;
+  const rules = blindedIn(file);
+  const outputs = rules.flatMap((rule) =>
+    rule.do.flatMap(({ body }) => ('output' in body ? [body.output.name] : [])),
+  );
+  return {
+    draw: draw.name.name,
+    arms: draw.choices.options.flatMap((one) => (one.kind === 'name' ? [one.name] : [])),
+    rules: rules.map(({ name }) => name.name),
+    outputs: [...new Set(outputs)],
+  };
+}
