@@ -98,7 +98,8 @@ describe('a session on a real pseudo-terminal', { timeout: 120_000 }, () => {
     );
     for (const seed of ['one', 'two']) {
       rig.events.length = 0;
-      await client.begin({ rules: 'rules.yaml', subject: 'm1', seed });
+      const numbers = seed === 'one' ? { protocolNumber: 'P-2026-014', sessionNumber: 12 } : {};
+      await client.begin({ rules: 'rules.yaml', subject: 'm1', seed, ...numbers });
       const firings = () => fired(rig!.events, 'water').length + fired(rig!.events, 'gate').length;
       await until(
         'four firings',
@@ -122,6 +123,9 @@ describe('a session on a real pseudo-terminal', { timeout: 120_000 }, () => {
       readDescription(join(rig!.recordFolder, name)),
     );
     expect(day.map(({ seed }) => seed).sort()).toEqual(['one', 'two']);
+    // The lab counts this animal's sessions from 12; the second goes on from there.
+    expect(day.map(({ sessionNumber }) => sessionNumber).sort()).toEqual([12, 13]);
+    expect(day.find(({ seed }) => seed === 'one')!.protocolNumber).toBe('P-2026-014');
     // What the first gave counts against the day's limit of the second.
     const second = day.find(({ seed }) => seed === 'two')!;
     expect(second.waterEarlierUl).toBeCloseTo(
@@ -132,11 +136,13 @@ describe('a session on a real pseudo-terminal', { timeout: 120_000 }, () => {
   });
 
   it('ends in order on Ctrl-C: outputs idle, the record closed, status 0', async () => {
-    const live = await started(EACH_LAP);
+    const live = await started(EACH_LAP, '--protocol', 'P-2026-014');
     await live.end('SIGINT');
     expect(live.status, live.output).toBe(0);
     expect(await live.outputs()).toBe(0);
-    expect(readDescription(live.session).ended?.how).toBe('operator');
+    expect(readDescription(live.session)).toMatchObject({
+      ...{ ended: { how: 'operator' }, protocolNumber: 'P-2026-014', sessionNumber: 1 },
+    });
     await replayed(live.session);
   });
 
