@@ -51,6 +51,7 @@ export interface SimulatedRigOptions {
 const WIRE_US = 3;
 /** One drop differs from the next by this share (standard deviation), where it is weighed. */
 const DROP_SPREAD = 0.03;
+const TAP_US = 60_000;
 
 /** The shortest stretch in which the belt runs at one speed, and the grid of the board's looks. */
 const GRID_US = 1000;
@@ -157,6 +158,17 @@ export class SimulatedRig<B extends RigBoard = Board> {
   turn(cm: number, cmPerS: number): void {
     this.#handToCm = this.belt.travelCm + cm;
     this.#handCmPerS = Math.abs(cmPerS);
+  }
+
+  /** An input is touched for a moment, as one presses a button. */
+  tap(input: number): void {
+    this.board.setInput(input, 1);
+    this.#pending.add(this.nowUs + TAP_US, input, 0);
+  }
+
+  /** The hand has not come to where it turns the belt. */
+  get turning(): boolean {
+    return !Number.isNaN(this.#handToCm);
   }
 
   /** As much of the hand's way as the coming stride has room for. */

@@ -41,7 +41,7 @@ const HELP = `Options:
   --tcp PORT          serve TCP on this machine instead of a pseudo-terminal (0: any free port)
 Commands on standard input, a line each:
   unplug   replug   reset   stall MS   speed CM_S   speed off   noise P   state   quit
-  turn CM [CM_S]   touch TIMES   vial on   vial off   weigh
+  turn CM [CM_S]   tap INPUT   touch TIMES   vial on   vial off   weigh
 `;
 
 const { values } = parseArgs({

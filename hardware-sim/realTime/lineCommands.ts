@@ -1,3 +1,4 @@
+import { setTimeout as delay } from 'node:timers/promises';
 import type { ByteLine } from './byteLine.js';
 import type { PacedRig } from './pacedRig.js';
 
@@ -37,6 +38,12 @@ export async function runCommand(
     case 'turn':
       if (bad) break;
       paced.rig.turn(value, Number(speed) || TURN_CM_PER_S);
+      // Answered when the hand is there; another turn meanwhile takes this one's place.
+      while (paced.rig.turning) await delay(20);
+      return { did: name };
+    case 'tap':
+      if (!Number.isInteger(value) || value < 0 || value > 15) break;
+      paced.rig.tap(value);
       return { did: name };
     case 'touch':
       if (bad || value < 1) break;

@@ -113,6 +113,31 @@ export const ERRORS = {
     'A stored calibration cannot be read, or is none.',
     'Check the name in the rig file and the folder it names; `server/session/rig/calibration.schema.json` says what is in a file. A calibration is made with `lapwing calibrate`.',
   ),
+  calibrationUnstored: entry(
+    'CALIBRATION_UNSTORED',
+    'A calibration could not be kept, or not be put in force.',
+    'Check that the folder of the rig file can be written, then measure again or put the name into the rig file by hand.',
+  ),
+  calibrateCannot: entry(
+    'CALIBRATE_CANNOT',
+    'This part of the rig cannot be calibrated.',
+    'Look at what the rig file says of it: its kind, its `use`, its seam mark.',
+  ),
+  calibrateNoLine: entry(
+    'CALIBRATE_NO_LINE',
+    'The weighings make no calibration.',
+    'Flush the line until no air comes, use open times that differ more, and weigh again.',
+  ),
+  calibrateAnswer: entry(
+    'CALIBRATE_ANSWER',
+    'A guide was given an answer that it cannot use.',
+    'Give what was expected; `lapwing calibrate --help` lists the answers that can be given in advance.',
+  ),
+  calibrateStopped: entry(
+    'CALIBRATE_STOPPED',
+    'The guide was stopped before its end; nothing was kept.',
+    'Outputs are idle. Begin again when the rig is ready.',
+  ),
   benchInSession: entry(
     'BENCH_IN_SESSION',
     'Outputs are tried between sessions only.',
@@ -418,6 +443,31 @@ export const ERRORS = {
     'Something speaks against a session with this animal, so none was begun.',
     'Weigh it (`lapwing weigh NAME GRAMS`) or mend what is named. To begin in spite of it, give the reason: `--despite REASON`, or the field on the page; it is kept. The protocol and the veterinarian decide.',
   ),
+  blindingNone: entry(
+    'BLINDING_NONE',
+    'There is no sealed allocation for this.',
+    'Make one with `lapwing seal`, and name it and its key in the rig file: `blinding:` with `allocation:` and `key:`.',
+  ),
+  blindingBad: entry(
+    'BLINDING_BAD',
+    'The allocation cannot be sealed, read or used.',
+    'Correct what is named. An allocation is never edited: seal a new one.',
+  ),
+  blindingKey: entry(
+    'BLINDING_KEY',
+    'The key of the allocation is missing, or not the right one.',
+    'Ask whoever keeps the key to put it where the rig file says, or give it with `--key FILE`.',
+  ),
+  blindingNoSlot: entry(
+    'BLINDING_NO_SLOT',
+    'The allocation has no arm for this session.',
+    'Check the name of the animal and `--session-number`; whoever keeps the key seals an allocation that has it.',
+  ),
+  blindingSealed: entry(
+    'BLINDING_SEALED',
+    'The arm of this session is sealed.',
+    'Ask whoever keeps the key. `lapwing unblind SESSION --reason ...` opens it, and is logged.',
+  ),
   rulesInvalid: entry(
     'RULES_INVALID',
     'The rules file has mistakes.',
@@ -445,8 +495,8 @@ export const ERRORS = {
   ),
   planTooFew: entry(
     'PLAN_TOO_FEW',
-    'What was given does not suffice for a plan.',
-    'Rehearse more runs, or sessions long enough to have complete laps with licks.',
+    'What was given is too little to reckon from.',
+    'Give more or longer sessions: complete laps with licks and water are what counts.',
   ),
   loopFailed: entry(
     'LOOP_FAILED',

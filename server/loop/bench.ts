@@ -1,10 +1,11 @@
 import { LapwingError } from '../errors/codes.js';
 import { BY_HAND } from '../session/core/firings.js';
 import type { StampedDecision } from '../session/decisions.js';
+import { describeBoard } from '../session/description.js';
 import { idleRules } from '../session/prepare.js';
 import type { Rig } from '../session/rig/rig.js';
 import { type SendCommand, SessionRunner } from '../session/runner.js';
-import type { Edge, Outcome, Sample } from '../wire/messages.js';
+import type { Edge, Identity, Outcome, Sample } from '../wire/messages.js';
 import { OUTCOME } from '../wire/messages.js';
 import { EventRing } from './eventRing.js';
 import type { BenchItem, BenchNow, Tried, TryRequest } from './protocol.js';
@@ -30,6 +31,8 @@ interface Pending {
 /** What the loop is to its bench. */
 export interface BenchHost {
   rig(): Rig;
+  /** The board that answered last. */
+  board(): Identity | undefined;
   readonly send: SendCommand;
   /** The bench's runner takes the board's frames from now on. */
   begin(runner: SessionRunner): void;
@@ -55,6 +58,8 @@ export class Bench {
   #frames: number[] = [];
   #pending: Pending | undefined;
   #serial = 0;
+  /** Told at the next frame, or when the bench is closed. */
+  #onFrame: (() => void) | undefined;
 
   constructor(host: BenchHost) {
     this.#host = host;
@@ -62,7 +67,8 @@ export class Bench {
 
   /** Where the newest frame found the belt. */
   get now(): BenchNow {
-    return { atUs: this.#atUs, count: this.#count };
+    const board = this.#host.board();
+    return { atUs: this.#atUs, count: this.#count, board: board ? describeBoard(board) : null };
   }
 
   watch(watched: boolean, timed: boolean): void {
@@ -76,6 +82,7 @@ export class Bench {
     if (!this.#watched) return;
     this.#atUs = atUs;
     this.#count = message.count;
+    this.#onFrame?.();
     if (!this.#timed) return;
     this.#frames.push(atUs, performance.now() * 1_000);
     if (this.#frames.length < 2 * FRAMES_A_PARCEL) return;
@@ -98,9 +105,10 @@ export class Bench {
    * One pulse, now. Resolves when the board has said what became of it.
    * @throws LapwingError BENCH_WITHHELD with the guard's reason, BENCH_BUSY, BENCH_STOPPED
    */
-  attempt({ output: name, widthUs, into }: TryRequest): Promise<Tried> {
-    if (this.#pending !== undefined) {
-      throw new LapwingError('benchBusy', `${this.#pending.output} is still under way.`);
+  async attempt({ output: name, widthUs, into }: TryRequest): Promise<Tried> {
+    if (this.#pending !== undefined || this.#onFrame !== undefined) {
+      const busy = this.#pending?.output ?? 'another output';
+      throw new LapwingError('benchBusy', `${busy} is still under way.`);
     }
     const { outputs } = this.#host.rig();
     const output = outputs.find((one) => one.name === name);
@@ -111,7 +119,7 @@ export class Bench {
     if (!Number.isInteger(widthUs) || (into !== 'vial' && into !== 'spout')) {
       throw new LapwingError('benchWithheld', 'Expected whole microseconds, into vial or spout.');
     }
-    const { core } = this.#openFor(into);
+    const { core } = await this.#openFor(into);
     const serial = ++this.#serial;
     const { nowUs } = core.instant;
     const withheld = core.firings.fire({
@@ -138,7 +146,7 @@ export class Bench {
   }
 
   /** Only now does the board get limits: what is not configured never fires. */
-  #openFor(into: TryRequest['into']): SessionRunner {
+  async #openFor(into: TryRequest['into']): Promise<SessionRunner> {
     if (this.#open?.into === into) return this.#open.runner;
     const rig = this.#host.rig();
     const runner = new SessionRunner(
@@ -152,7 +160,13 @@ export class Bench {
     );
     this.#open = { runner, into };
     this.#host.begin(runner);
-    return runner;
+    // A pulse is asked by the time of a frame, and the runner has had none yet.
+    await new Promise<void>((resolve) => {
+      this.#onFrame = resolve;
+    });
+    this.#onFrame = undefined;
+    if (this.#open?.runner === runner) return runner;
+    throw new LapwingError('benchStopped', 'The bench was closed meanwhile.');
   }
 
   /** What was decided of the pulse that is under way. */
@@ -189,6 +203,7 @@ export class Bench {
   close(why: string): void {
     if (this.#open === undefined) return;
     this.#open = undefined;
+    this.#onFrame?.();
     this.#pending?.reject(new LapwingError('benchStopped', `${why}.`));
     this.#pending = undefined;
     this.#host.ended();

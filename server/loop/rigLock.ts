@@ -12,6 +12,8 @@ export interface RigAddress {
   readonly tokenFile: string;
   /** The session that runs, so that a restarted loop finds it. */
   readonly currentFile: string;
+  /** Where the simulated rig takes orders for its hands; nobody listens there on a real one. */
+  readonly handsPath: string;
 }
 
 /**
@@ -22,8 +24,12 @@ export function rigAddress(rigName: string, folder = runtimeFolder()): RigAddres
   // A socket's path may not pass about 100 bytes, so the name goes in as a hash.
   const key = createHash('sha256').update(rigName).digest('hex').slice(0, 12);
   const base = join(folder, `rig-${key}`);
-  const socketPath = process.platform === 'win32' ? `\\\\.\\pipe\\lapwing-${key}` : `${base}.sock`;
-  return { socketPath, tokenFile: `${base}.token`, currentFile: `${base}.json` };
+  const pipe = (name: string) =>
+    process.platform === 'win32' ? `\\\\.\\pipe\\lapwing-${key}${name}` : `${base}${name}.sock`;
+  return {
+    ...{ socketPath: pipe(''), tokenFile: `${base}.token`, currentFile: `${base}.json` },
+    handsPath: pipe('-hands'),
+  };
 }
 
 function runtimeFolder(): string {

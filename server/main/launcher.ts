@@ -99,6 +99,7 @@ export class Launcher {
       ...tcp,
       ...board,
       ...simulatedRigArguments(this.#plan.rig),
+      ...['--hands', rigAddress(this.#plan.rig.name).handsPath],
       ...(this.#plan.simulatedRig ?? []),
     ]);
     this.#rig = child;

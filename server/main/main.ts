@@ -3,10 +3,12 @@
 import { Command } from 'commander';
 import { packageVersion } from '../packageRoot.js';
 import { alignCommand } from './align.js';
+import { animalCommand } from './animal.js';
 import { animalsCommand } from './animals/animals.js';
 import { correctCommand } from './animals/correct.js';
 import { waterCommand } from './animals/water.js';
 import { weighCommand } from './animals/weigh.js';
+import { calibrateCommand } from './calibrate.js';
 import { checkCommand } from './check.js';
 import { demoCommand } from './demo.js';
 import { explainCommand } from './explain.js';
@@ -14,6 +16,7 @@ import { exportCommand } from './export.js';
 import { flashCommand } from './flash.js';
 import { mendCommand } from './mend.js';
 import { peopleCommand } from './people.js';
+import { planCommand } from './plan.js';
 import { portsCommand } from './ports.js';
 import { quietCommand } from './quiet.js';
 import { rehearseCommand } from './rehearse.js';
@@ -43,10 +46,13 @@ const program = new Command('lapwing')
   .addCommand(exportCommand())
   .addCommand(alignCommand())
   .addCommand(reportCommand())
+  .addCommand(animalCommand())
+  .addCommand(planCommand())
   .addCommand(animalsCommand())
   .addCommand(weighCommand())
   .addCommand(waterCommand())
   .addCommand(correctCommand())
+  .addCommand(calibrateCommand())
   .addCommand(portsCommand())
   .addCommand(selftestCommand())
   .addCommand(flashCommand())

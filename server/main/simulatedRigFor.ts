@@ -64,5 +64,12 @@ export function simulatedRigArguments(rig: Rig): string[] {
     'valve-us-per-ul': valve?.valve && valve.valve.usPerNl * 1_000,
   };
   const given = Object.entries(options).filter(([, value]) => value !== undefined);
-  return given.flatMap(([name, value]) => [`--${name}`, String(value)]);
+  return [...given.flatMap(([name, value]) => [`--${name}`, String(value)]), ...loopback(rig)];
+}
+
+function loopback({ loopback, outputs, inputs }: Rig): string[] {
+  if (loopback === undefined) return [];
+  const output = outputs.find(({ name }) => name === loopback.output);
+  const input = inputs.find(({ name }) => name === loopback.input);
+  return ['--loopback', `${output?.line}:${input?.line}`];
 }
