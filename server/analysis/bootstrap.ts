@@ -50,7 +50,7 @@ export function seedOf(text: string): number {
 }
 
 /** Shifts 13, 17, 5 (G. Marsaglia, Journal of Statistical Software 8(14), 2003); [0, 1). */
-function xorshift(seed: number): () => number {
+export function xorshift(seed: number): () => number {
   let state = seed | 0 || 1;
   return () => {
     state ^= state << 13;

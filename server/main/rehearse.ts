@@ -1,10 +1,7 @@
 import { mkdtempSync } from 'node:fs';
 import { tmpdir } from 'node:os';
 import { join, resolve } from 'node:path';
-import { Command } from 'commander';
-import { ANIMAL } from '../../hardware-sim/animal/parameters.js';
-import { type AnimalFile, readAnimal } from '../rehearse/animalFile.js';
-import { DEFAULT_LATENCY, readLatency } from '../rehearse/latency.js';
+import { Command, Option } from 'commander';
 import { reportLines } from '../rehearse/reportLines.js';
 import { newSeed, type PreparedRules, prepareRules } from '../session/prepare.js';
 import { rehearse } from '../session/rehearsal.js';
@@ -14,21 +11,14 @@ import { openSession } from '../session/store.js';
 import { type SessionSummary, Summariser, summaryLines } from '../session/summary.js';
 import { rigOption, wholeNumber } from './arguments.js';
 import { eventLine } from './eventLine.js';
-import { rehearseManyHere } from './rehearseRuns.js';
+import { addRunsOptions, animalOf, type RunsFlags, rehearseManyHere } from './rehearseRuns.js';
 import { simulatedRigFor } from './simulatedRigFor.js';
 import { tellWarnings } from './tellWarnings.js';
 
-interface RehearseFlags {
+interface RehearseFlags extends RunsFlags {
   rig: string;
-  seed?: string;
-  animal?: string;
   animalSeed: number;
   runs?: number;
-  jobs?: number;
-  latency?: string;
-  everyFrame?: boolean;
-  naive?: boolean;
-  most: number;
   events?: boolean;
   json?: boolean;
   record?: string | true;
@@ -41,35 +31,37 @@ position, balance of draws. The same --seed gives the same table on any number o
 
 /** `lapwing rehearse RULES --rig RIG`: a whole session in virtual time, as fast as it goes. */
 export function rehearseCommand(): Command {
-  return new Command('rehearse')
+  const command = new Command('rehearse')
     .description('run a session on the simulated rig in virtual time, and tell what fired where')
     .argument('<rules>', 'the rules file')
     .addOption(rigOption())
-    .option('--seed <text>', 'the seed of every draw')
-    .option('--animal <file>', 'how the simulated animal behaves; see `lapwing animal`')
     .option('--animal-seed <number>', 'which one of its kind', wholeNumber(0, 2 ** 31), 1)
-    .option('--naive', 'an animal that has not learned where water comes')
-    .option('--most <minutes>', 'end after this long at most', wholeNumber(1, 24 * 60), 180)
     .option('--events', 'print every event')
     .option('--json', 'print the summary as JSON')
     .option('--record [folder]', 'write the record too, below this folder')
-    .option('--runs <number>', 'this many sessions, and how they differ', wholeNumber(1, 100_000))
-    .option('--jobs <number>', 'on so many cores; all of them unless said', wholeNumber(1, 256))
-    .option('--latency <file>', 'with --runs: latencies as measured, for errors of position')
-    .option('--every-frame', 'with --runs: every frame of a board at 1 kHz, five times slower')
+    .addOption(
+      new Option('--runs <number>', 'this many sessions, and how they differ')
+        .argParser(wholeNumber(1, 100_000))
+        .conflicts(['events', 'record', 'animalSeed']),
+    )
     .addHelpText('after', HELP)
     .action(async (path: string, flags: RehearseFlags) => {
       const rig = readRig(flags.rig);
       const rules = prepareRules(resolve(path), rig);
       if (!flags.json) tellWarnings(rules);
       if (flags.runs !== undefined) {
-        await rehearseRuns(rig, rules, flags, flags.runs);
+        const done = await rehearseManyHere(rig, rules, flags, flags.runs);
+        if (done === undefined) return;
+        const { report } = done;
+        const text = flags.json ? JSON.stringify(report, null, 2) : reportLines(report).join('\n');
+        process.stdout.write(`${text}\n`);
         return;
       }
       const summary = rehearseOnce(rig, rules, flags);
       if (flags.json) process.stdout.write(`${JSON.stringify(plain(summary), null, 2)}\n`);
       else process.stdout.write(`${summaryLines(summary).join('\n')}\n`);
     });
+  return addRunsOptions(command);
 }
 
 function rehearseOnce(rig: Rig, rules: PreparedRules, flags: RehearseFlags): SessionSummary {
@@ -96,31 +88,6 @@ function rehearseOnce(rig: Rig, rules: PreparedRules, flags: RehearseFlags): Ses
   }
   if (!flags.json) process.stdout.write(`seed ${seed}, animal ${flags.animalSeed}\n`);
   return summariser.summary;
-}
-
-async function rehearseRuns(
-  rig: Rig,
-  rules: PreparedRules,
-  flags: RehearseFlags,
-  runs: number,
-): Promise<void> {
-  const { name, parameters } = animalOf(flags);
-  const latency = flags.latency === undefined ? DEFAULT_LATENCY : readLatency(flags.latency);
-  const setting = {
-    ...{ rig, file: rules.file, seed: flags.seed ?? newSeed(), animal: parameters },
-    ...{ trained: flags.naive !== true, minutes: flags.most, latency },
-    everyFrame: flags.everyFrame === true,
-  };
-  const done = await rehearseManyHere(setting, runs, name, flags.jobs);
-  if (done === undefined) return;
-  const text = flags.json
-    ? JSON.stringify(done.report, null, 2)
-    : reportLines(done.report).join('\n');
-  process.stdout.write(`${text}\n`);
-}
-
-function animalOf({ animal }: RehearseFlags): AnimalFile {
-  return animal === undefined ? { name: 'usual', parameters: ANIMAL } : readAnimal(animal);
 }
 
 function openFor(rig: Rig, rules: PreparedRules, seed: string, where: string | true) {
