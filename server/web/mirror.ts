@@ -20,6 +20,8 @@ export class Mirror {
   /** Counts states, so that a client knows whether it has this one. */
   stateCount = 0;
   private stateText: Buffer | undefined;
+  /** The newest message of events that was made, and of which: most clients lack the same. */
+  private eventsText = { first: -1, until: -1, message: Buffer.alloc(0) };
   private stateTextOf = -1;
   private readonly texts: (string | undefined)[];
   private readonly numbers: Float64Array;
@@ -79,7 +81,7 @@ export class Mirror {
    * The messages that bring a client that has events up to `after` further on, `most` events at a
    * time, and where it then is. A gap comes first when what follows `after` is no longer kept.
    */
-  eventsAfter(after: number, most: number): { messages: string[]; upTo: number } {
+  eventsAfter(after: number, most: number): { messages: Buffer[]; upTo: number } {
     // A client ahead of us cannot be of this life of the loop.
     const from = after > this.lastNumber ? 0 : after;
     let index = this.oldest;
@@ -92,16 +94,27 @@ export class Mirror {
     }
     index = low;
     if (index >= this.newest) return { messages: [], upTo: Math.min(after, this.lastNumber) };
-    const messages: string[] = [];
+    const messages: Buffer[] = [];
     const first = this.numbers[index % this.keepEvents]!;
     if (from > 0 && index === this.oldest && first > from + 1) {
       const gap: StreamMessage = { tell: 'gap', from: from + 1, to: first - 1 };
-      messages.push(JSON.stringify(gap));
+      messages.push(Buffer.from(JSON.stringify(gap)));
     }
     const until = Math.min(this.newest, index + most);
-    const parts: string[] = [];
-    for (; index < until; index++) parts.push(this.texts[index % this.keepEvents]!);
-    messages.push(`{"tell":"events","events":[${parts.join(',')}]}`);
+    messages.push(this.eventsMessage(index, until));
     return { messages, upTo: this.numbers[(until - 1) % this.keepEvents]! };
+  }
+
+  /** Of the events kept from `first` up to `until`, counted since the beginning. */
+  private eventsMessage(first: number, until: number): Buffer {
+    const made = this.eventsText;
+    if (made.first === first && made.until === until) return made.message;
+    const parts: string[] = [];
+    for (let index = first; index < until; index++) {
+      parts.push(this.texts[index % this.keepEvents]!);
+    }
+    const message = Buffer.from(`{"tell":"events","events":[${parts.join(',')}]}`);
+    this.eventsText = { first, until, message };
+    return message;
   }
 }

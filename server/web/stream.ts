@@ -56,6 +56,9 @@ export interface StreamPort {
 /** Close codes of our own (RFC 6455, 7.4.2: 4000 and up are for applications). */
 export const CLOSED = { signedOut: 4401 } as const;
 
+/** What is sent to many is made a buffer once, and is text all the same. */
+const AS_TEXT = { binary: false };
+
 /** Events in one message: about 60 kB, well below `softBytes`. */
 const EVENTS_A_MESSAGE = 250;
 
@@ -138,8 +141,8 @@ export class Stream {
 
   /** A message for every client, outside the latest-only order: setup, loop up or away. */
   announce(message: StreamMessage): void {
-    const text = JSON.stringify(message);
-    for (const viewer of this.viewers) viewer.socket.send(text);
+    const text = Buffer.from(JSON.stringify(message));
+    for (const viewer of this.viewers) viewer.socket.send(text, AS_TEXT);
   }
 
   /** Sign-ins have ended: their pages see nothing more. */
@@ -237,13 +240,13 @@ export class Stream {
     for (;;) {
       const { messages, upTo } = this.mirror.eventsAfter(viewer.after, EVENTS_A_MESSAGE);
       viewer.after = upTo;
-      for (const message of messages) socket.send(message);
+      for (const message of messages) socket.send(message, AS_TEXT);
       if (messages.length === 0 || socket.bufferedAmount > this.limits.softBytes) break;
     }
     const state = this.mirror.stateMessage();
     if (state && viewer.stateCount !== this.mirror.stateCount) {
       viewer.stateCount = this.mirror.stateCount;
-      socket.send(state, { binary: false });
+      socket.send(state, AS_TEXT);
     }
   }
 

@@ -13,6 +13,7 @@ import { benchRoundTrip, roundTripTable } from './roundTrip/benchRoundTrip.js';
 import { wholeLoop } from './roundTrip/wholeLoop.js';
 import { benchRuns } from './runs.js';
 import { median } from './statistics.js';
+import { benchViewers } from './viewers.js';
 import { benchWire } from './wire.js';
 
 /** A bar of the design, and whether this run met it. */
@@ -144,6 +145,34 @@ function width(what: string, { pulses, least, most }: WidthErrors): void {
   bar(`pulse width ${what} (within 20 us)`, figure, least >= -20 && most <= 20);
 }
 
+async function viewers(): Promise<void> {
+  const r = await benchViewers();
+  const line = (what: string, { n, p50, p99, p999, max }: typeof r.alone) =>
+    console.log(
+      `${what}: ${n} round trips, us: p50 ${p50.toFixed(0)}, p99 ${p99.toFixed(0)}, p99.9 ${p999.toFixed(0)}, max ${max.toFixed(0)}`,
+    );
+  line('watched by nobody', r.alone);
+  line(`watched by ${r.viewers}`, r.watched);
+  console.log(
+    `each viewer got ${r.messagesPerS.toFixed(1)} messages and ${(r.bytesPerS / 1000).toFixed(1)} kB a second; ${r.lost} lost their socket, ${r.unanswered} causes unanswered`,
+  );
+  const ratios = r.p99Ratios.map((ratio) => ratio.toFixed(2)).join(' ');
+  const pooled = r.watched.p99 / r.alone.p99;
+  console.log(`p99 watched over alone, pair by pair: ${ratios}; all together ${pooled.toFixed(2)}`);
+  bar(
+    `the loop's p99 with ${r.viewers} viewers (within 10 % of none)`,
+    `${((r.medianP99Ratio - 1) * 100).toFixed(0)} %, median of the pairs`,
+    r.medianP99Ratio <= 1.1,
+  );
+  bar('the web process (within one core)', `${(r.coreShare * 100).toFixed(0)} %`, r.coreShare < 1);
+  const [first, last] = [r.memoryMb[0]!, r.memoryMb.at(-1)!];
+  bar(
+    'its memory (bounded)',
+    `${first} MB in the first watched turn, ${last} MB in the last, ${Math.max(...r.memoryMb)} MB at most`,
+    last < first * 1.5,
+  );
+}
+
 const PARTS = {
   wire,
   engine,
@@ -153,6 +182,7 @@ const PARTS = {
   memory,
   firmware,
   'round-trip': roundTrip,
+  viewers,
 } as const;
 
 const asked = process.argv.slice(2);

@@ -230,7 +230,7 @@ describe('the mirror of events', () => {
           for (let round = 0; round <= numbers.length; round++) {
             const { messages, upTo } = mirror.eventsAfter(after, most);
             for (const text of messages) {
-              const message = JSON.parse(text) as StreamMessage;
+              const message = JSON.parse(String(text)) as StreamMessage;
               if (message.tell === 'events') got.push(...message.events.map((one) => one.number));
               if (message.tell === 'gap') expect(message.from).toBe(after + 1);
             }

@@ -4,8 +4,9 @@ import net from 'node:net';
 import os from 'node:os';
 import path from 'node:path';
 import { fileURLToPath } from 'node:url';
-import { type Contestant, forked, type RunningContestant, running } from './contestants.js';
+import { type Contestant, type RunningContestant, running } from './contestants.js';
 import { PROBE_INPUT } from './peer.js';
+import { Viewers } from './viewers.js';
 
 const MAIN = fileURLToPath(new URL('../../../server/main/main.js', import.meta.url));
 
@@ -83,19 +84,37 @@ export function wholeLoop(dashboards: number): Contestant {
   return {
     name: `Lapwing, ${dashboards} dashboards`,
     kind: 'board',
-    start: (pty) => startLapwing(pty, dashboards),
+    start: async (pty) => {
+      const lapwing = await startLapwing(pty, dashboards > 0);
+      if (dashboards === 0) return lapwing;
+      const pages = await Viewers.start(lapwing.stream);
+      await pages.watch(dashboards);
+      return {
+        async stop() {
+          await pages.stop();
+          await lapwing.stop();
+        },
+      };
+    },
   };
 }
 
-async function startLapwing(pty: string, dashboards: number): Promise<RunningContestant> {
+export interface RunningLapwing extends RunningContestant {
+  /** Of the page; nothing is there without it. */
+  readonly url: string;
+  readonly stream: string;
+}
+
+/** A session on this pseudo-terminal, recording; with the page, or with no web process at all. */
+export async function startLapwing(pty: string, web: boolean): Promise<RunningLapwing> {
   const folder = fs.mkdtempSync(path.join(os.tmpdir(), 'lapwing-bench-'));
   const rig = path.join(folder, 'rig.yaml');
   const rules = path.join(folder, 'rules.yaml');
   fs.writeFileSync(rig, rigWith(pty));
   fs.writeFileSync(rules, RULES);
   const args = ['run', rules, '--rig', rig, '--records', path.join(folder, 'records')];
-  const port = dashboards > 0 ? await freePort() : 0;
-  if (dashboards > 0) args.push('--web', '--port', String(port));
+  const port = web ? await freePort() : 0;
+  if (web) args.push('--web', '--port', String(port));
   const child = spawn(process.execPath, [MAIN, ...args], { stdio: ['ignore', 'pipe', 'pipe'] });
   let said = '';
   for (const stream of [child.stdout, child.stderr]) {
@@ -107,13 +126,12 @@ async function startLapwing(pty: string, dashboards: number): Promise<RunningCon
     console.error(`bench: lapwing ended with ${code}; it said:\n${said}`);
   };
   child.once('exit', early);
-  const url = `ws://127.0.0.1:${port}/api/stream`;
-  const pages = dashboards > 0 ? await forked('./viewers.js', url, String(dashboards)) : undefined;
   const lapwing = running(child, 'SIGINT');
   return {
+    url: `http://127.0.0.1:${port}`,
+    stream: `ws://127.0.0.1:${port}/api/stream`,
     async stop() {
       child.off('exit', early);
-      await pages?.stop();
       await lapwing.stop();
       fs.rmSync(folder, { recursive: true, force: true });
     },
