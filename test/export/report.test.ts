@@ -1,6 +1,6 @@
 import { afterAll, beforeAll, describe, expect, it } from 'vitest';
 import { firingsOf } from '../../server/analysis/firings.js';
-import { lapsOf, licksOf } from '../../server/analysis/happenings.js';
+import { lapsOf, licksOf, phasesOf } from '../../server/analysis/happenings.js';
 import { lickingOf } from '../../server/analysis/licking.js';
 import { profileOf } from '../../server/analysis/profile.js';
 import { readSession, type SessionData } from '../../server/analysis/readSession.js';
@@ -94,6 +94,42 @@ describe('the page', () => {
     expect(shown).toBe(firingsOf(session).length);
     expect(page).toContain('Started by the board at the place');
     expect(page).toContain('Decided in the host');
+  });
+
+  it('sets what came of each rule and each phase beside the plan', () => {
+    const { decisions } = session;
+    const row = (first: string, ...cells: (string | number)[]) =>
+      `<tr><td>${first}</td>${cells.map((cell) => `<td class="n">${cell}</td>`).join('')}</tr>`;
+    const firedBy = (rule: string, sham: boolean) =>
+      new Set(
+        decisions.flatMap((d) =>
+          d.kind === 'fired' && d.rule === rule && d.sham === sham ? [d.serial] : [],
+        ),
+      ).size;
+    for (const rule of ['water', 'induce', 'treat'])
+      expect(page).toContain(row(rule, firedBy(rule, false), firedBy(rule, true), 0, 0, 0, 0));
+    const laps = lapsOf(session).filter((lap) => lap.complete && !lap.excluded);
+    const [first, second] = phasesOf(session);
+    const during = laps.filter(({ startUs }) => startUs < second!.startUs);
+    const minutes = ((second!.startUs - first!.startUs) / 60e6).toFixed(1);
+    expect(page).toContain(
+      `<tr><td>baseline</td><td class="n">0</td><td class="n">${minutes}</td><td class="n">${during.length}</td>`,
+    );
+  });
+
+  it("says what the animal's book said before it began, and that it was begun all the same", () => {
+    const animal = {
+      ...{ folder: '/animals', rig: 'demo', kept: true, weightG: 19.4, percent: 78.25 },
+      ...{ leastPercent: 80, protocol: 'P-2026-014', targetUl: 1_000 },
+      ...{ against: ['it is too light'], despite: 'the vet said so' },
+    };
+    const description = { ...session.description, animal, waterEarlierUl: 120 };
+    const told = reportPage({ ...session, description });
+    expect(told).toContain('19.4 g, 78.3 % of its baseline (at least 80 %)');
+    expect(told).toContain('120.0 uL earlier that day, 1000 uL a day is its target');
+    expect(told).toContain('<li>Before it began: it is too light.</li>');
+    expect(told).toContain('<li>It was begun all the same: the vet said so</li>');
+    expect(page).not.toContain('<th>weight</th>');
   });
 
   it('names the lap that the operator left out, and leaves it out of the figures', () => {

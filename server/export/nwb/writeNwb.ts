@@ -142,4 +142,6 @@ function putGeneral(nb: NwbBuilder, general: Group, { description, rig }: Sessio
   treadmill.create_soft_link('/general/devices/models/belt_rig', 'model');
   const animal = nb.group(general, 'subject', 'Subject');
   nb.text(animal, 'subject_id', subject);
+  const weightG = description.animal?.weightG ?? null;
+  if (weightG !== null) nb.text(animal, 'weight', `${(weightG / 1_000).toFixed(5)} kg`);
 }

@@ -6,14 +6,15 @@ import { profileOf } from '../../analysis/profile.js';
 import type { SessionData } from '../../analysis/readSession.js';
 import { explain } from '../../rules/explain.js';
 import { factsOf } from '../../session/rig/rig.js';
+import { cautions, facts } from './facts.js';
 import type { Shown } from './figures.js';
 import * as figures from './figures.js';
+import { health, notDone, statistics } from './findings.js';
 import { happened } from './happened.js';
 import { learned } from './learned.js';
 import { escapeHtml } from './plot.js';
 import { predictedFields } from './predictedFields.js';
 import { proofs } from './proofSheet.js';
-import { cautions, facts, health, notDone, statistics } from './tables.js';
 
 /** For the screen and for paper. */
 export const STYLE = `
