@@ -118,6 +118,11 @@ export const ERRORS = {
     'A calibration could not be kept, or not be put in force.',
     'Check that the folder of the rig file can be written, then measure again or put the name into the rig file by hand.',
   ),
+  preflightUnstored: entry(
+    'PREFLIGHT_UNSTORED',
+    'The result of the pre-flight could not be kept.',
+    'Check that the folder of the rig file can be written; what was found is on the screen.',
+  ),
   calibrateCannot: entry(
     'CALIBRATE_CANNOT',
     'This part of the rig cannot be calibrated.',

@@ -16,6 +16,17 @@ export function wholeNumber(least: number, most: number): (text: string) => numb
   };
 }
 
+/** `--answer name=value ...`: answers to a guide's questions, in advance. */
+export function answersOption(example: string): Option {
+  return new Option('--answer <name=value...>', `answer a question in advance: ${example}`)
+    .argParser((text: string, before: Record<string, string>) => {
+      const at = text.indexOf('=');
+      if (at < 1) throw new InvalidArgumentError('expected NAME=VALUE');
+      return { ...before, [text.slice(0, at)]: text.slice(at + 1) };
+    })
+    .default({}, 'none');
+}
+
 /** The name of whoever is logged in, where the system knows it. */
 export function loginName(): string {
   try {

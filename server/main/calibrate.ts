@@ -1,5 +1,5 @@
 import { resolve } from 'node:path';
-import { Command, InvalidArgumentError, Option } from 'commander';
+import { Command } from 'commander';
 import type { Draft } from '../calibrate/guides/guide.js';
 import { type GuideName, runGuide } from '../calibrate/guides/runGuide.js';
 import { lickFromSession } from '../calibrate/lick/fromSession.js';
@@ -8,7 +8,7 @@ import { LapwingError } from '../errors/codes.js';
 import { readDescription } from '../session/description.js';
 import { ageDays, type Calibration, isOld, listCalibrations } from '../session/rig/calibration.js';
 import { readRig } from '../session/rig/readRig.js';
-import { loginName, rigOption } from './arguments.js';
+import { answersOption, loginName, rigOption } from './arguments.js';
 import { TerminalDesk } from './terminalDesk.js';
 import { textPicture } from './textPictures.js';
 import { withBench } from './withBench.js';
@@ -76,11 +76,7 @@ function guide(name: string, description: string): Command {
     .description(description)
     .addOption(rigOption())
     .option('--by <name>', 'who measures', loginName())
-    .addOption(
-      new Option('--answer <name=value...>', 'answer a question in advance: laps=20 celsius=22.5')
-        .argParser(answers)
-        .default({}, 'none'),
-    )
+    .addOption(answersOption('laps=20 celsius=22.5'))
     .option('--yes', 'ask nothing and take what is offered, as on the simulated rig')
     .option('--use', 'put the result in force in the rig file')
     .option('--json', 'print the result as JSON');
@@ -185,10 +181,4 @@ function use(name: string, flags: { rig: string }): void {
   process.stdout.write(
     `${flags.rig} refers to ${name} now; the file as it was is beside it as .bak\nA loop that runs reads it when it is started again, or from the Rig page.\n`,
   );
-}
-
-function answers(text: string, before: Record<string, string>): Record<string, string> {
-  const at = text.indexOf('=');
-  if (at < 1) throw new InvalidArgumentError('expected NAME=VALUE');
-  return { ...before, [text.slice(0, at)]: text.slice(at + 1) };
 }

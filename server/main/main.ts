@@ -8,6 +8,8 @@ import { animalsCommand } from './animals/animals.js';
 import { correctCommand } from './animals/correct.js';
 import { waterCommand } from './animals/water.js';
 import { weighCommand } from './animals/weigh.js';
+import { sealCommand } from './blinding/seal.js';
+import { unblindCommand } from './blinding/unblind.js';
 import { calibrateCommand } from './calibrate.js';
 import { checkCommand } from './check.js';
 import { demoCommand } from './demo.js';
@@ -18,6 +20,7 @@ import { mendCommand } from './mend.js';
 import { peopleCommand } from './people.js';
 import { planCommand } from './plan.js';
 import { portsCommand } from './ports.js';
+import { preflightCommand } from './preflight.js';
 import { quietCommand } from './quiet.js';
 import { rehearseCommand } from './rehearse.js';
 import { replayCommand } from './replay.js';
@@ -52,7 +55,10 @@ const program = new Command('lapwing')
   .addCommand(weighCommand())
   .addCommand(waterCommand())
   .addCommand(correctCommand())
+  .addCommand(sealCommand())
+  .addCommand(unblindCommand())
   .addCommand(calibrateCommand())
+  .addCommand(preflightCommand())
   .addCommand(portsCommand())
   .addCommand(selftestCommand())
   .addCommand(flashCommand())

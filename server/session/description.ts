@@ -3,6 +3,8 @@ import path from 'node:path';
 import { LapwingError } from '../errors/codes.js';
 import { packageRoot } from '../packageRoot.js';
 import { CAPABILITY, type Identity } from '../wire/messages.js';
+import type { Blinding } from './blinding/arms.js';
+import type { Preflight } from './preflight.js';
 import { writeFileWhole } from './writeFileWhole.js';
 
 const NAME = 'session.json';
@@ -33,6 +35,8 @@ export interface SessionDescription {
     readonly madeAt?: string;
     readonly values: Readonly<Record<string, number | string>>;
   }[];
+  /** The newest pre-flight of the rig, if one was made in the twelve hours before. */
+  readonly preflight?: Preflight;
   readonly files: readonly StoredFile[];
   readonly ended: SessionEnd | null;
   /** Given earlier that day, which the day's limit counts. */
@@ -40,6 +44,8 @@ export interface SessionDescription {
   /** What was given, by the board's word; uncertain: drops that nobody can account for. */
   readonly water?: { readonly givenUl: number; readonly uncertainUl: number };
   readonly animal?: AnimalBefore;
+  /** The arm of a sealed draw, sealed; and who opened it. */
+  readonly blinding?: Blinding;
   readonly record?: {
     readonly state: 'whole' | 'open' | 'torn' | 'damaged';
     readonly messages: number;

@@ -2,6 +2,7 @@ import { readdirSync } from 'node:fs';
 import { basename, dirname, join, relative } from 'node:path';
 import { packageVersion } from '../packageRoot.js';
 import type { Identity } from '../wire/messages.js';
+import type { Blinding } from './blinding/arms.js';
 import type { SessionCore } from './core/sessionCore.js';
 import {
   type AnimalBefore,
@@ -14,6 +15,7 @@ import {
   writeDescription,
 } from './description.js';
 import { createSessionFolder, type InputFile, storeInputFiles, subjectInName } from './folder.js';
+import { latestPreflight } from './preflight.js';
 import type { PreparedRules } from './prepare.js';
 import { Recorder, type RecorderOptions, type RecordHeader } from './record/recorder.js';
 import type { Rig } from './rig/rig.js';
@@ -32,6 +34,8 @@ export interface SessionCard {
   readonly waterTodayNl: number;
   /** What the animals folder says; undefined where none is kept for the rig. */
   readonly animal?: AnimalBefore;
+  /** Of a session whose arm is sealed. */
+  readonly blinding?: Blinding;
 }
 
 /** Makes a session's folder: copies of its files, its description, and a recorder ready to write. */
@@ -48,6 +52,7 @@ export function openSession(
   const live = options.mode !== 'bulk';
   const sessionNumber = card.sessionNumber ?? (live ? nextSessionNumber(root, subject) : null);
   const folder = createSessionFolder(root, { subject, title, startedAt }, { live });
+  const preflight = live ? latestPreflight(rig, startedAt) : undefined;
   const files = storeInputFiles(folder, inputFiles(rig, rules));
   writeDescription(folder, {
     format: 1,
@@ -67,10 +72,12 @@ export function openSession(
     board: board && describeBoard(board),
     seed,
     calibrations: calibrationsOf(rig),
+    ...(preflight === undefined ? {} : { preflight }),
     files,
     ended: null,
     waterEarlierUl: card.waterTodayNl / 1_000,
     ...(card.animal === undefined ? {} : { animal: card.animal }),
+    ...(card.blinding === undefined ? {} : { blinding: card.blinding }),
   });
   return { folder, recorder: Recorder.create(folder, recordHeaderOf(folder), options) };
 }

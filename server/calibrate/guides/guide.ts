@@ -1,4 +1,5 @@
 import type { BenchItem, BenchNow, Tried, TryRequest } from '../../loop/protocol.js';
+import type { CheckedItem } from '../../session/preflight.js';
 import type { CalibrationKind } from '../../session/rig/calibration.js';
 import type { Rig } from '../../session/rig/rig.js';
 
@@ -29,6 +30,8 @@ export interface GuideView {
   /** 0 to 1; null where there is nothing to count. */
   readonly done: number | null;
   readonly pictures: readonly Picture[];
+  /** Of a pre-flight: what was checked so far. */
+  readonly checks?: readonly CheckedItem[];
   /** What must be read before going on. */
   readonly caution?: string;
 }
