@@ -86,11 +86,13 @@ function textOf(file: string): string {
 }
 
 function eventTable(events: ReturnType<typeof alignSession>['events']): string {
-  const head = ['kind', 'name', 'session_s', 'other_s', 'acquisition', 'lap', 'position_cm'];
+  const places = ['lap', 'position_cm', 'input'];
+  const head = ['kind', 'name', 'session_s', 'other_s', 'acquisition', ...places];
   const rows = events.map((event) =>
     csvLine([
       ...[event.kind, event.name, fixed(event.sessionS, 6), fixed(event.otherS, 6)],
       ...[String(event.acquisition ?? ''), String(event.lap), fixed(event.positionCm, 4)],
+      String(event.input),
     ]),
   );
   return csvLine(head) + rows.join('');

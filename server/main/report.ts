@@ -52,10 +52,11 @@ export function reportCommand(): Command {
         return;
       }
       const bar = progressBar('reading');
-      const session = await readSession(folder, (done) => bar.show(done));
+      const data = await readSession(folder, (done) => bar.show(done));
       bar.clear();
-      const page = reportPage(session, flags.loopback);
-      write(flags.into ?? join(derivedFolder(folder), 'report.html'), page, flags);
+      const page = reportPage(data, flags.loopback);
+      const session = learningDay(data);
+      write(flags.into ?? join(derivedFolder(folder), 'report.html'), page, flags, { session });
     });
 }
 

@@ -2,6 +2,7 @@ import { writeFileSync } from 'node:fs';
 import { join } from 'node:path';
 import type { SimulatedRigOptions } from '../../hardware-sim/simulatedRig.js';
 import { packageRoot } from '../../server/packageRoot.js';
+import type { Blinding } from '../../server/session/blinding/arms.js';
 import { rfc3339, updateDescription } from '../../server/session/description.js';
 import type { OperatorAct } from '../../server/session/inputs.js';
 import { prepareRules } from '../../server/session/prepare.js';
@@ -21,6 +22,9 @@ export interface RecordedOptions {
   readonly rigExtra?: string;
   /** What an operator does at the end of each minute of session. */
   readonly acts?: readonly OperatorAct[];
+  /** Of rules with a sealed draw: what is kept of it, and what it is. */
+  readonly blinding?: Blinding;
+  readonly arm?: string;
 }
 
 const demoFolder = join(packageRoot, 'hardware-sim/demo');
@@ -40,13 +44,18 @@ export function recordedSession(options: RecordedOptions = {}) {
   }
   const prepared = prepareRules(file, ownRig);
   const startedAt = new Date('2026-03-04T09:30:00.250Z');
-  const card = { subject: 'm07', experimenter: 'A. Person', seed, startedAt, waterTodayNl: 0 };
+  const sealed = options.blinding === undefined ? {} : { blinding: options.blinding };
+  const card = {
+    ...{ subject: 'm07', experimenter: 'A. Person', seed, startedAt, waterTodayNl: 0 },
+    ...sealed,
+  };
   const { folder, recorder } = openSession(where.folder, ownRig, prepared, card, null, {
     mode: 'bulk',
   });
   const setup = {
     ...{ rig: ownRig, program: prepared.program, title: prepared.file.title },
     ...{ seed, waterTodayNl: 0 },
+    ...(options.arm === undefined ? {} : { arm: options.arm }),
   };
   let minute = 0;
   const acting: { runner?: SessionRunner } = {};

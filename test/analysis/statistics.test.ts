@@ -23,6 +23,19 @@ describe('places on a closed belt', () => {
     expect(spread.meanCm).toBeCloseTo(46.1015166244438, 9);
     expect(spread.resultantLength).toBeCloseTo(0.0858614635946332, 12);
     expect(spread.pValue).toBeCloseTo(0.925338480584557, 12);
+    // Beyond 50 places p is found otherwise.
+    const many = (of: (i: number) => number) =>
+      circularSummary(
+        Array.from({ length: 64 }, (_, i) => of(i)),
+        360,
+      );
+    const gathered = many((i) => ((i * 37) % 360) * 0.4 + i);
+    expect(gathered.meanCm).toBeCloseTo(99.568275622498, 9);
+    expect(gathered.resultantLength).toBeCloseTo(0.706878200148142, 12);
+    expect(gathered.pValue / 1.29288577116948e-14).toBeCloseTo(1, 9);
+    const loose = many((i) => ((i * 73.7) % 360) * 0.85);
+    expect(loose.meanCm).toBeCloseTo(147.271914695436, 9);
+    expect(loose.pValue).toBeCloseTo(0.18445998038856, 12);
   });
 
   it('turn with the belt: only the mean place changes', () => {

@@ -49,7 +49,7 @@ describe('what a script would call', { timeout: 120_000 }, () => {
 
   it('reports on a session, and across animals, a session named twice counting once', async () => {
     const one = await json('report', folder, '--into', path('one.html'));
-    expect(one).toEqual({ path: path('one.html') });
+    expect(one).toMatchObject({ path: path('one.html'), session: { subject: 'm07' } });
     const into = path('both.html');
     const both = await json('report', folder, other, `${folder}/.`, '--into', into);
     expect(both).toMatchObject({

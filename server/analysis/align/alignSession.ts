@@ -6,6 +6,8 @@ import { type Alignment, align, convert, type Refused } from './align.js';
 
 /** One thing that happened, on both clocks. */
 export interface AlignedEvent {
+  /** Number of the input of the record that it came from. */
+  readonly input: number;
   readonly kind: 'lap' | 'lick' | 'firing' | 'sham' | 'water' | 'phase';
   readonly name: string;
   readonly sessionS: number;
@@ -79,23 +81,22 @@ function eventsOf(session: SessionData, good: readonly Alignment[]): AlignedEven
     kind: AlignedEvent['kind'],
     label: string,
     boardUs: number,
-    lap: number,
+    { input, lap }: { readonly input: number; readonly lap: number },
     positionCm: number | null,
   ) => {
     const sessionS = (boardUs - session.beganUs) / 1e6;
     const found = good.find((a) => sessionS >= a.fromS - BEYOND_S && sessionS <= a.toS + BEYOND_S);
     const otherS = found === undefined ? null : convert(found, sessionS);
     const acquisition = found?.acquisition ?? null;
-    events.push({ kind, name: label, sessionS, otherS, acquisition, lap, positionCm });
+    events.push({ input, kind, name: label, sessionS, otherS, acquisition, lap, positionCm });
   };
-  for (const { lap, startUs } of lapsOf(session)) put('lap', `lap ${lap}`, startUs, lap, null);
-  for (const l of licksOf(session))
-    if (!l.artefact) put('lick', '', l.boardUs, l.lap, l.positionCm);
+  for (const lap of lapsOf(session)) put('lap', `lap ${lap.lap}`, lap.startUs, lap, null);
+  for (const l of licksOf(session)) if (!l.artefact) put('lick', '', l.boardUs, l, l.positionCm);
   for (const f of firingsOf(session)) {
     const label = f.output === null ? f.rule : `${f.rule} ${f.output}`;
-    put(f.sham ? 'sham' : 'firing', label, f.boardUs, f.lap, f.riseCm);
+    put(f.sham ? 'sham' : 'firing', label, f.boardUs, f, f.riseCm);
   }
-  for (const d of dropsOf(session)) put('water', d.rule ?? '', d.boardUs, d.lap, d.positionCm);
-  for (const p of phasesOf(session)) put('phase', p.phase, p.startUs, p.lap, null);
+  for (const d of dropsOf(session)) put('water', d.rule ?? '', d.boardUs, d, d.positionCm);
+  for (const p of phasesOf(session)) put('phase', p.phase, p.startUs, p, null);
   return events.sort((a, b) => a.sessionS - b.sessionS);
 }
