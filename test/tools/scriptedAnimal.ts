@@ -3,6 +3,8 @@
  * that fills every field of the loop's messages. Deterministic, in steps of 50 ms.
  */
 import type { NumberedEvent, Setup, Snapshot } from '../../server/loop/protocol.js';
+import { FieldPredictor } from '../../server/plasticity/fieldPrediction.js';
+import { WINDOW_STEPS } from '../../server/plasticity/positionTrail.js';
 import type { Decision } from '../../server/session/decisions.js';
 
 export const BELT_CM = 180;
@@ -30,6 +32,7 @@ export class ScriptedAnimal {
   private serial = 0;
   private targetCm = 45;
   private queuedTarget: number | null = null;
+  private marksMade = 0;
   private stimUntilS = 0;
   /** A place that was moved is armed anew once the animal nears it. */
   private waits = false;
@@ -69,6 +72,37 @@ export class ScriptedAnimal {
 
   hold(what: 'stimulus' | 'water', on: boolean): void {
     this.state.held = { ...this.state.held, [what]: on ? 'held by the operator' : null };
+  }
+
+  mark(): void {
+    const { boardUs, lap, positionCm } = this.state;
+    const mark = ++this.marksMade;
+    this.state.marks = [...this.state.marks, { mark, boardUs, lap, positionCm }];
+    this.tell({ kind: 'note', text: '', mark, markedUs: boardUs });
+  }
+
+  note(text: string, mark?: number): void {
+    this.state.marks = this.state.marks.filter((one) => one.mark !== mark);
+    this.tell({ kind: 'note', text, mark: mark ?? null, markedUs: null });
+  }
+
+  /** In the next so many laps, 0 at once; undefined takes it back. */
+  ask(rule: string, laps: number | undefined): void {
+    const { lap } = this.state;
+    const asked = laps ? { fromLap: lap + 1, toLap: lap + laps } : null;
+    this.state.rules = this.state.rules.map((one) => (one.name === rule ? { ...one, asked } : one));
+  }
+
+  putOff(laps: number, minutes: number): void {
+    const { putOff, end } = this.state;
+    this.state.putOff = { laps: putOff.laps + laps, minutes: putOff.minutes + minutes };
+    if (end?.laps) this.state.end = { ...end, laps: end.laps + laps };
+  }
+
+  acknowledge(alarm: string, who: string, from: string): void {
+    this.state.alarms = this.state.alarms.map((one) =>
+      alarm === 'all' || one.alarm === alarm ? { ...one, seenBy: { who, from } } : one,
+    );
   }
 
   choose(value: number): void {
@@ -120,8 +154,21 @@ export class ScriptedAnimal {
     }
     if (before < this.targetCm && after >= this.targetCm) this.induce();
     if (before < SPOUT_CM && after >= SPOUT_CM) this.water();
+    this.showProgress();
     if (state.sessionS > this.stimUntilS) state.outputs &= ~2;
     if (state.sessionS > this.stimUntilS - 0.2) state.outputs &= ~1;
+  }
+
+  private showProgress(): void {
+    const { state } = this;
+    const induced = state.rules.find(({ name }) => name === 'induce')!;
+    const done = state.phase === 'induction' ? induced.firings + induced.shams : state.phaseLap;
+    const what =
+      state.phase === 'induction' ? 'firings of induce this phase' : 'laps of this phase';
+    const of = state.phase === 'induction' ? 20 : 7;
+    state.progress = state.phase === 'probe' ? null : { done, of, unit: '', what };
+    const ends = 60 + state.putOff.laps;
+    state.end = { laps: ends - state.lap, s: null, exact: true, what: 'laps done this session' };
   }
 
   private lick(positionCm: number, near: boolean, learned: number): void {
@@ -183,6 +230,20 @@ export class ScriptedAnimal {
       this.stimUntilS = state.sessionS + 0.3;
     }
     this.fired('induce', serial, sham, sham ? null : 'gate', this.targetCm);
+    if (!sham) this.predict(serial);
+  }
+
+  /** As if it had run at this speed throughout. */
+  private predict(serial: number): void {
+    const { speedCmPerS } = this.state;
+    const moved = Float64Array.from({ length: WINDOW_STEPS }, (_, n) => {
+      return speedCmPerS * (-3 + (n + 0.5) / 100);
+    });
+    const predictor = new FieldPredictor(BELT_CM);
+    const field = predictor.predict(moved, this.targetCm)!;
+    const top = Math.max(...predictor.curve);
+    const curve = [...predictor.curve].map((value) => value / top);
+    this.tell({ kind: 'field predicted', rule: 'induce', serial, ...field, curve });
   }
 
   private water(): void {
