@@ -13,6 +13,9 @@ export interface OnSpan {
   readonly toUs: number;
 }
 
+/** A board may time a pulse this much longer than it was told: its interrupts wait for each other. */
+const LONG_US = 50;
+
 /**
  * When an output was on: the board's first rise and its total time on, shared out over the train that
  * was commanded. A train that ended early lacks its last pulses, and the last it has is cut.
@@ -21,15 +24,14 @@ export interface OnSpan {
 export function onSpans(riseUs: number, onUs: number, shape: PulseShape | undefined): OnSpan[] {
   if (shape === undefined || shape.repeats < 2)
     return onUs > 0 ? [{ fromUs: riseUs, toUs: riseUs + onUs }] : [];
-  const spans: OnSpan[] = [];
-  let left = onUs;
-  for (let k = 0; k < shape.repeats && left > 0; k++) {
-    const fromUs = riseUs + k * shape.periodUs;
-    // The board times each pulse a little long: what is over is the last one's.
-    const last = k === shape.repeats - 1;
-    const width = last ? left : Math.min(left, shape.widthUs);
-    spans.push({ fromUs, toUs: fromUs + width });
-    left -= width;
-  }
-  return spans;
+  const { widthUs, periodUs, repeats } = shape;
+  const full = Math.floor(onUs / widthUs);
+  const rest = onUs - full * widthUs;
+  const cut = full < repeats && rest > full * LONG_US;
+  const count = cut ? full + 1 : Math.min(full, repeats);
+  const eachUs = cut ? widthUs : Math.floor(onUs / count);
+  return Array.from({ length: count }, (_, k) => {
+    const fromUs = riseUs + k * periodUs;
+    return { fromUs, toUs: fromUs + (k === count - 1 ? onUs - k * eachUs : eachUs) };
+  });
 }
