@@ -6,6 +6,7 @@ import { readRecord } from '../session/record/readRecord.js';
 import type { RecordState } from '../session/record/recordState.js';
 import { type Arm, type Edge, type Pulse, SYNC_EDGE } from '../wire/messages.js';
 import { extend32 } from '../wire/time.js';
+import { hideArmIn } from './hideArm.js';
 import type { PulseShape } from './pulses.js';
 import { SampleColumns } from './sampleColumns.js';
 
@@ -35,7 +36,8 @@ export interface SessionData extends LoadedSession {
 
 /**
  * Reads a record and feeds its inputs through the engine again, which gives position, speed and lap
- * at each sample; decisions and edges are those that were recorded.
+ * at each sample; decisions and edges are those that were recorded,
+ * without what would show the arm of a session that is sealed still.
  * @param progress called with the share read, 0 to 1, of a record that has been finished
  * @throws LapwingError RECORD_NO_SESSION where the record holds no beginning of a session
  */
@@ -84,6 +86,7 @@ export async function readSession(
     },
     decision: (decision) => decisions.push(decision),
   });
+  const shown = hideArmIn(loaded, { samples, edges, shapes, decisions });
   const began = decisions.find(({ kind }) => kind === 'session began');
   if (began === undefined)
     throw new LapwingError('recordNoSession', `${folder}: no session begins in its record.`);
@@ -91,6 +94,6 @@ export async function readSession(
   const endedUs = ended?.boardUs ?? core.instant.nowUs;
   return {
     ...{ ...loaded, state, beganUs: began.boardUs, endedUs },
-    ...{ samples, edges, shapes, decisions },
+    ...shown,
   };
 }

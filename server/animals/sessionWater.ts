@@ -1,3 +1,4 @@
+import { needArm } from '../session/blinding/arms.js';
 import { SessionCore } from '../session/core/sessionCore.js';
 import type { StampedDecision } from '../session/decisions.js';
 import { readDescription } from '../session/description.js';
@@ -86,7 +87,8 @@ async function fromDecisions(
 
 async function fromInputs(folder: string): Promise<SessionWater> {
   const count = new DropCount();
-  const { setup } = loadSession(folder);
+  const { setup, description } = loadSession(folder);
+  needArm(description.blinding, setup.arm);
   const decision = (what: StampedDecision) => count.take(what);
   const core = new SessionCore(setup, { command: () => {}, decision });
   const reader = await readRecord(folder);

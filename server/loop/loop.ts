@@ -8,8 +8,11 @@ import { BoardLink } from '../link/boardLink.js';
 import type { LinkHandler, LinkUp } from '../link/linkHandler.js';
 import { portOpener } from '../link/resolvePort.js';
 import { packageVersion } from '../packageRoot.js';
+import { armFor, armOf, needArm } from '../session/blinding/arms.js';
+import { LiveMask } from '../session/blinding/liveMask.js';
 import type { SessionSetup } from '../session/core/sessionCore.js';
 import type { StampedDecision } from '../session/decisions.js';
+import { readDescription } from '../session/description.js';
 import type { Actor, OperatorAct, RareInput } from '../session/inputs.js';
 import { idleRules, newSeed, type PreparedRules, prepareRules } from '../session/prepare.js';
 import { finish } from '../session/record/finish.js';
@@ -19,7 +22,7 @@ import type { TroubleKind } from '../session/record/segmentLog.js';
 import { readRig } from '../session/rig/readRig.js';
 import type { Rig } from '../session/rig/rig.js';
 import { SessionRunner } from '../session/runner.js';
-import { describeEnd, openSession, recordHeaderOf } from '../session/store.js';
+import { describeEnd, nextSessionNumber, openSession, recordHeaderOf } from '../session/store.js';
 import { CAPABILITY, type Sample } from '../wire/messages.js';
 import { ALARMS } from './alarms/alarms.js';
 import { AlarmWatch } from './alarms/alarmWatch.js';
@@ -28,6 +31,7 @@ import { BookTalk } from './bookTalk.js';
 import { checkAct } from './checkAct.js';
 import { type CurrentSession, keepCurrent, leftOver } from './currentSession.js';
 import { EventRing } from './eventRing.js';
+import { hideArm } from './hideArm.js';
 import { LiveRecord } from './liveRecord.js';
 import { LocalServer, type LoopService } from './localServer.js';
 import type { BeginOptions, LoopOptions, LoopReport } from './options.js';
@@ -82,6 +86,8 @@ export class Loop implements LinkHandler, LoopService {
   readonly #rulesFolder: string;
   readonly #book: BookTalk;
   #runner: SessionRunner;
+  /** While a blinded session runs: what may be shown of it. */
+  #mask: LiveMask | undefined;
   #session: RunningSession | undefined;
   #ended: string | null = null;
   #lastUp: LinkUp | undefined;
@@ -179,6 +185,8 @@ export class Loop implements LinkHandler, LoopService {
   outcome(message: Extract<RareInput, { kind: 'outcome' }>['message']): void {
     this.#highestId = Math.max(this.#highestId, message.id);
     this.#take({ kind: 'outcome', message });
+    // What the board did tells the arm of a blinded session.
+    if (this.#mask !== undefined) return;
     this.bench.outcome(message, this.#runner.core.tracker.extend(message.boardUs));
   }
   fault(message: Extract<RareInput, { kind: 'fault' }>['message']): void {
@@ -231,7 +239,7 @@ export class Loop implements LinkHandler, LoopService {
   }
 
   snapshot(): Snapshot {
-    return snapshotOf(
+    const state = snapshotOf(
       this.#runner.core,
       this.#link,
       this.#session,
@@ -240,6 +248,7 @@ export class Loop implements LinkHandler, LoopService {
       this.#ended,
       this.#alarms.on,
     );
+    return this.#mask === undefined ? state : hideArm(state, this.#mask, this.#rigFile);
   }
 
   quiet(by: AskedBy): void {
@@ -322,8 +331,9 @@ export class Loop implements LinkHandler, LoopService {
       const { rulesPath: _, ...who } = begin;
       const seed = begin.seed ?? newSeed();
       const known = await this.#book.before(who.subject, begin.despite);
+      const arm = this.#armFor(rules, who);
       const startedAt = new Date();
-      const card = { ...who, seed, startedAt, ...known };
+      const card = { ...who, seed, startedAt, ...known, ...arm };
       await frames();
       const board = this.#link.identity ?? null;
       const opened = openSession(this.#recordFolder, this.#rigFile, rules, card, board, {
@@ -335,6 +345,18 @@ export class Loop implements LinkHandler, LoopService {
     } finally {
       this.#beginning = false;
     }
+  }
+
+  /** The arm of a blinded session; nothing where the rules have no sealed draw. */
+  #armFor({ program }: PreparedRules, { subject, sessionNumber }: Omit<BeginOptions, 'rulesPath'>) {
+    if (program.sealed === undefined) return {};
+    const number = sessionNumber ?? nextSessionNumber(this.#recordFolder, subject);
+    const found = armFor(program.sealed, this.#rigFile.blinding, subject, number);
+    return { sessionNumber: number, ...found };
+  }
+
+  #maskFor({ program }: PreparedRules): LiveMask | undefined {
+    return program.sealed && new LiveMask(program.sealed, (decision) => this.events.push(decision));
   }
 
   /** A board that lost us meanwhile is given the time of a handshake. */
@@ -354,6 +376,7 @@ export class Loop implements LinkHandler, LoopService {
     keepCurrent(this.#address.currentFile, session);
     this.#record.recorder = recorder;
     this.#session = session;
+    this.#mask = this.#maskFor(session.rules);
     this.#ended = null;
     // What it took to begin is no stall of the session.
     this.#tickedMs = Number.NaN;
@@ -376,7 +399,12 @@ export class Loop implements LinkHandler, LoopService {
   async #resume(current: CurrentSession): Promise<void> {
     const { folder } = current;
     const rules = prepareRules(join(folder, 'rules.yaml'), this.#rigFile);
-    const session = { ...current, rules, startedAt: new Date(current.startedAt) };
+    const { blinding } = readDescription(folder);
+    const arm = armOf(blinding);
+    needArm(blinding, arm);
+    const sealed = arm === undefined ? {} : { arm };
+    const session = { ...current, rules, ...sealed, startedAt: new Date(current.startedAt) };
+    this.#mask = this.#maskFor(rules);
     const reader = await readRecord(folder);
     const setup = setupFor(this.#rigFile, session);
     const runner = new SessionRunner(setup, this.#send, undefined, this.#onDecision);
@@ -409,6 +437,8 @@ export class Loop implements LinkHandler, LoopService {
     const { core } = this.#runner;
     const { folder } = session;
     this.#session = undefined;
+    this.#mask?.flush();
+    this.#mask = undefined;
     this.#ended = core.endReason;
     const whole = this.#record.recorder?.close(core.endReason) ?? false;
     this.#record.recorder = undefined;
@@ -462,7 +492,8 @@ export class Loop implements LinkHandler, LoopService {
   };
 
   readonly #onDecision = (decision: StampedDecision): void => {
-    this.events.push(decision);
+    if (this.#mask === undefined) this.events.push(decision);
+    else this.#mask.take(decision);
     this.#alarms.hear(decision);
   };
 
@@ -500,6 +531,7 @@ export class Loop implements LinkHandler, LoopService {
   #everyTick(): void {
     const nowMs = performance.now();
     this.#record.tick(nowMs);
+    this.#mask?.tick(this.#runner.core.instant.nowUs);
     this.#minds(nowMs);
     const seconds = (nowMs - this.#framesAtMs) / 1000;
     if (seconds < 1) return;
@@ -554,8 +586,10 @@ function linkUpInput({ identity, tag, sameBoot, transport }: LinkUp): RareInput 
   };
 }
 
-function setupFor(rig: Rig, { rules, seed, waterTodayNl }: RunningSession): SessionSetup {
-  return { rig, program: rules.program, title: rules.file.title, seed, waterTodayNl };
+function setupFor(rig: Rig, { rules, seed, waterTodayNl, arm }: RunningSession): SessionSetup {
+  const { program, file } = rules;
+  const sealed = arm === undefined ? {} : { arm };
+  return { rig, program, title: file.title, seed, waterTodayNl, ...sealed };
 }
 
 /** Lets everything that has come from the board in the meantime be taken. */

@@ -19,6 +19,8 @@ export interface RunningSession {
   readonly startedAt: Date;
   /** Given to this animal earlier today. */
   readonly waterTodayNl: number;
+  /** Of a blinded session; never shown. */
+  readonly arm?: string;
 }
 
 export interface RecordView {

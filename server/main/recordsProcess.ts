@@ -3,6 +3,7 @@
  * gone when it is done. Reading a record takes a whole core for seconds; neither the loop nor the
  * web process may wait for that.
  */
+
 import { fileURLToPath } from 'node:url';
 import { type LearningDay, learningDay } from '../analysis/learning.js';
 import { readSession } from '../analysis/readSession.js';
@@ -11,6 +12,7 @@ import { writeNwb } from '../export/nwb/writeNwb.js';
 import { reportPage } from '../export/report/page.js';
 import { writeParquet } from '../export/writeParquet.js';
 import { writeTables } from '../export/writeTables.js';
+import { needArm, refuseSealed } from '../session/blinding/arms.js';
 import { rfc3339 } from '../session/description.js';
 import { loadSession } from '../session/loadSession.js';
 import { mend } from '../session/record/mend.js';
@@ -86,9 +88,11 @@ async function learning(folders: readonly string[], tell: Tell): Promise<Learnin
 
 async function replay(folder: string, tell: Tell): Promise<ReplayTold> {
   const { setup, description } = loadSession(folder);
+  needArm(description.blinding, setup.arm);
   const most = description.record?.lastInput ?? 0;
   const share = (inputs: number) => tell(most > 0 ? inputs / most : 0, 'replaying');
   const { state, ...found } = await replaySession(folder, setup, share);
+  if (found.difference !== null) refuseSealed(description.blinding, 'The first difference');
   return { ...found, missing: describeTroubles(state) };
 }
 
@@ -122,6 +126,7 @@ async function whatIfWith(
 ): Promise<WhatIfTold> {
   tell(0, 'reading the rules');
   const other = loadSession(folder, rulesPath);
+  refuseSealed(other.description.blinding, 'Another rules file compared with this one');
   tell(0.1, 'running the other rules');
   const { counts, rows } = await whatIf(other, (hear) => new SimulatedLedBoard(hear));
   const rowsLeftOut = Math.max(0, rows.length - MOST_ROWS);

@@ -1,5 +1,6 @@
 import { resolve } from 'node:path';
 import { Command } from 'commander';
+import { needArm, refuseSealed } from '../session/blinding/arms.js';
 import { loadSession } from '../session/loadSession.js';
 import { describeTroubles } from '../session/record/recordState.js';
 import { type ReplayResult, replaySession } from '../session/replay.js';
@@ -20,9 +21,12 @@ export function replayCommand(): Command {
     .action(async (folder: string, flags: { json?: boolean; rules?: string }) => {
       const bar = progressBar('replaying');
       const { setup, description } = loadSession(folder);
+      const { blinding } = description;
+      needArm(blinding, setup.arm);
       const most = description.record?.lastInput ?? Number.POSITIVE_INFINITY;
       const show = (inputs: number) => bar.show(Math.min(1, inputs / most));
       if (flags.rules !== undefined) {
+        refuseSealed(blinding, 'Another rules file compared with this one');
         const other = loadSession(folder, resolve(flags.rules));
         const found = await whatIf(other, (hear) => new SimulatedLedBoard(hear), show);
         bar.clear();
@@ -31,6 +35,7 @@ export function replayCommand(): Command {
       }
       const result = await replaySession(folder, setup, show);
       bar.clear();
+      if (result.difference !== null) refuseSealed(blinding, 'The first difference');
       print(flags.json ? JSON.stringify(result, null, 2) : inWords(result));
       if (result.difference !== null || result.state.state === 'damaged') process.exitCode = 1;
     });

@@ -6,8 +6,8 @@ export interface Sealed {
   readonly draw: string;
   /** The words that it chooses among. */
   readonly arms: readonly string[];
-  /** Rules that are real in some arms and sham in others. */
-  readonly rules: readonly string[];
+  /** Rules that are real in some arms and sham in others, and what each drives first. */
+  readonly rules: readonly { readonly name: string; readonly drives: string | null }[];
   /** What those rules drive. */
   readonly outputs: readonly string[];
 }
@@ -30,13 +30,13 @@ export function sealedOf(file: RulesFile): Sealed | undefined {
   const draw = file.draws.find(isSealed);
   if (draw === undefined || draw.choices.kind !== 'options') return undefined;
   const rules = blindedIn(file);
-  const outputs = rules.flatMap((rule) =>
+  const driven = rules.map((rule) =>
     rule.do.flatMap(({ body }) => ('output' in body ? [body.output.name] : [])),
   );
   return {
     draw: draw.name.name,
     arms: draw.choices.options.flatMap((one) => (one.kind === 'name' ? [one.name] : [])),
-    rules: rules.map(({ name }) => name.name),
-    outputs: [...new Set(outputs)],
+    rules: rules.map(({ name }, n) => ({ name: name.name, drives: driven[n]![0] ?? null })),
+    outputs: [...new Set(driven.flat())],
   };
 }

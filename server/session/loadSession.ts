@@ -1,4 +1,5 @@
 import path from 'node:path';
+import { armOf } from './blinding/arms.js';
 import type { SessionSetup } from './core/sessionCore.js';
 import { readDescription, type SessionDescription } from './description.js';
 import { type PreparedRules, prepareRules } from './prepare.js';
@@ -25,6 +26,10 @@ export function loadSession(folder: string, rulesPath?: string): LoadedSession {
   const rules = prepareRules(rulesPath ?? path.join(folder, 'rules.yaml'), rig);
   const { seed, waterEarlierUl } = description;
   const waterTodayNl = Math.round((waterEarlierUl ?? 0) * 1_000);
-  const setup = { rig, program: rules.program, title: rules.file.title, seed, waterTodayNl };
+  const arm = armOf(description.blinding);
+  const setup = {
+    ...{ rig, program: rules.program, title: rules.file.title, seed, waterTodayNl },
+    ...(arm === undefined ? {} : { arm }),
+  };
   return { folder, description, rig, rules, setup };
 }

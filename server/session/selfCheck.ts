@@ -1,8 +1,9 @@
 import fs from 'node:fs';
 import path from 'node:path';
+import { needArm } from './blinding/arms.js';
 import { readDescription, type SessionDescription, updateDescription } from './description.js';
 import { loadSession } from './loadSession.js';
-import { replaySession } from './replay.js';
+import { type Difference, replaySession } from './replay.js';
 
 type ReplayNote = NonNullable<SessionDescription['replay']>;
 
@@ -26,6 +27,7 @@ export async function noteReplay(
 async function check(folder: string, progress: (done: number) => void) {
   try {
     const { setup, description } = loadSession(folder);
+    needArm(description.blinding, setup.arm);
     const most = description.record?.lastInput ?? Number.POSITIVE_INFINITY;
     const { inputs, decisions, commands, difference, water } = await replaySession(
       folder,
@@ -36,11 +38,17 @@ async function check(folder: string, progress: (done: number) => void) {
     const replay: ReplayNote =
       difference === null
         ? { identical: true, ...counts }
-        : { identical: false, ...counts, difference };
+        : { identical: false, ...counts, difference: told(difference, description) };
     return { replay, water };
   } catch (error) {
     const failed = (error as Error).message;
     const counts = { inputs: 0, decisions: 0, commands: 0 };
     return { replay: { identical: false, ...counts, failed } satisfies ReplayNote };
   }
+}
+
+/** The place alone while an arm is sealed: the words might tell it. */
+function told(difference: Difference, { blinding }: SessionDescription): Difference {
+  if (blinding === undefined || blinding.opened !== undefined) return difference;
+  return { input: difference.input, recorded: null, replayed: null };
 }

@@ -19,6 +19,11 @@ const lengths = (phrase: string): string =>
   sections({ draws: `d: ${phrase}`, rules: w('reaches d') });
 const phases = (text: string, more: Record<string, string> = {}): string =>
   sections({ phases: text, rules: w('reaches 45 cm'), ...more });
+const sealed = (phrase: string, more = ''): string =>
+  sections({
+    draws: `arm: ${phrase}`,
+    rules: `r:\n  when: reaches 45 cm\n  sham: arm is sham\n  do: pulse laser for 5 ms${more}`,
+  });
 const PLAIN = rule('reaches 45 cm');
 const onLick = '\n  limit: 1 per lap';
 
@@ -251,6 +256,18 @@ const CASES: readonly Case[] = [
     wrong: lengths('20 to 60 cm, every lap, at least 40 cm from the last'),
     words: 'at least 40 cm from the last',
     right: lengths('20 to 60 cm, every lap, at least 10 cm from the last'),
+  },
+  {
+    code: 'sealedForm',
+    wrong: sealed('stim or sham, every lap, sealed'),
+    words: 'lap',
+    right: sealed('stim or sham, every session, sealed'),
+  },
+  {
+    code: 'sealedSeen',
+    wrong: sealed('stim or sham, every session, sealed', '\n  if: arm is stim'),
+    words: 'arm',
+    right: sealed('stim or sham, every session, sealed'),
   },
   { code: 'offBelt', wrong: rule('reaches 190 cm'), words: '190 cm', right: PLAIN },
   {

@@ -4,20 +4,8 @@ import type { Entry } from '../../animals/entry.js';
 import type { AnimalRow, Overview } from '../../animals/overview.js';
 import type { DayWater } from '../../animals/waterBook.js';
 import type { WeighedOn } from '../../animals/weight.js';
+import { columns } from '../columns.js';
 import { CAUTION } from './options.js';
-
-/** Rows of cells in columns as wide as they need. */
-export function columns(rows: readonly (readonly string[])[]): string {
-  const widths = rows[0]!.map((_, n) => Math.max(...rows.map((row) => row[n]!.length)));
-  return rows
-    .map((row) =>
-      row
-        .map((cell, n) => cell.padEnd(widths[n]!))
-        .join('  ')
-        .trimEnd(),
-    )
-    .join('\n');
-}
 
 export function millilitres(ul: number): string {
   if (ul > 0 && ul < 100) return `${Number(ul.toFixed(1))} uL`;

@@ -5,6 +5,7 @@ import { compiledScript } from '../../askChild.js';
 import { LapwingError } from '../../errors/codes.js';
 import { learningPage } from '../../export/report/learningPage.js';
 import { packageVersion } from '../../packageRoot.js';
+import { refuseSealed } from '../../session/blinding/arms.js';
 import { readDescription } from '../../session/description.js';
 import type { Jobs } from '../jobs/jobs.js';
 import type { RulesFolder } from '../rules/rulesFolder.js';
@@ -117,6 +118,9 @@ export function addRecordsRoutes(app: FastifyInstance, options: RecordsRouteOpti
     async (request, reply) => {
       const { row, folder } = await need().find(request.params.name);
       refuseRecording(row);
+      if (request.query.what === 'session' && row.bad === null) {
+        refuseSealed(readDescription(folder).blinding, 'The raw record');
+      }
       return send(reply, row, folder, request.query.what);
     },
   );

@@ -1,6 +1,8 @@
+import { maskOf } from '../../analysis/hideArm.js';
 import { LapwingError } from '../../errors/codes.js';
 import { derivedFolder } from '../../export/exportFolder.js';
 import { packageVersion } from '../../packageRoot.js';
+import type { Mask } from '../../session/blinding/mask.js';
 import type { StampedDecision } from '../../session/decisions.js';
 import { loadSession } from '../../session/loadSession.js';
 import { readRecord } from '../../session/record/readRecord.js';
@@ -23,12 +25,13 @@ export async function summarise(
   progress: (done: number) => void,
 ): Promise<SummaryTold> {
   const stamp = await summaryStamp(folder, packageVersion);
-  const { names, inputs } = plannedIn(folder);
+  const { names, inputs, mask } = plannedIn(folder);
   const gathered = new Gathered(names);
   const reader = await readRecord(folder);
   reader.visit({
     decision: (decision) => {
-      gathered.take(decision);
+      const shown = mask ? mask.shown(decision) : decision;
+      if (shown !== undefined) gathered.take(shown);
       if (inputs > 0) progress(Math.min(1, decision.input / inputs));
     },
   });
@@ -47,11 +50,16 @@ export async function summarise(
 }
 
 /** The rules in the order of their file, and how many inputs there are, where that can be read. */
-function plannedIn(folder: string): { names: readonly string[]; inputs: number } {
+function plannedIn(folder: string): {
+  names: readonly string[];
+  inputs: number;
+  mask?: Mask | undefined;
+} {
   try {
-    const { rules, description } = loadSession(folder);
+    const loaded = loadSession(folder);
+    const { rules, description } = loaded;
     const names = rules.file.rules.map(({ name }) => name.name);
-    return { names, inputs: description.record?.lastInput ?? 0 };
+    return { names, inputs: description.record?.lastInput ?? 0, mask: maskOf(loaded) };
   } catch {
     return { names: [], inputs: 0 };
   }
