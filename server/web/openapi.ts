@@ -7,8 +7,10 @@ import type { Needs } from './door.js';
 import { asks, json, problems, ref, shows } from './openapiParts.js';
 import { recordsPaths } from './records/description.js';
 import { recordsSchemas } from './records/schemas.js';
+import { rigPaths, rigSchemas } from './rig/description.js';
 import { rulesSchemas } from './rules/answerSchemas.js';
 import { bodies } from './schemas.js';
+import { STREAM_SCHEMA } from './streamSchema.js';
 
 /**
  * Makes the description once every route is there, with the program's version.
@@ -94,6 +96,7 @@ function describe(version: string) {
       },
       ...recordsPaths,
       ...animalsPaths,
+      ...rigPaths,
       ...accessPaths,
       '/api/openapi.json': shows('This description.', ref('Object')),
       '/healthz': shows('Whether this process lives and has the loop.', ref('Object')),
@@ -102,6 +105,7 @@ function describe(version: string) {
       securitySchemes: SECURITY_SCHEMES,
       schemas: {
         ...accessSchemas,
+        StreamMessage: STREAM_SCHEMA,
         Begin: bodies.begin,
         Act: bodies.act,
         End: bodies.end,
@@ -112,6 +116,7 @@ function describe(version: string) {
         ...rulesSchemas,
         ...recordsSchemas,
         ...animalsSchemas,
+        ...rigSchemas,
         Object: { type: 'object' },
         Done: { type: 'object', required: ['done'], properties: { done: { const: true } } },
         Problem: {

@@ -10,6 +10,7 @@ import fs from 'node:fs';
 import os from 'node:os';
 import path from 'node:path';
 import { fileURLToPath } from 'node:url';
+import { auditPackages } from './auditPackages.mjs';
 
 const root = fileURLToPath(new URL('../..', import.meta.url));
 const BROWSERS = ['chromium', 'chromium-browser', 'google-chrome-stable', 'google-chrome'];
@@ -61,6 +62,15 @@ function ensureCompiler() {
   console.log(
     'test: no avr-gcc found, so the test that builds the firmware again will fail. Install it ' +
       `with \`sudo apt-get install ${COMPILER.join(' ')}\` (Debian, Ubuntu).`,
+  );
+}
+
+/** What the examples for a shell are written with. */
+function ensureCurl() {
+  ensureDebian(
+    ['curl', 'ca-certificates'],
+    () => onPath('curl') !== undefined,
+    'no curl found, so the test of the HTTP examples for a shell will fail',
   );
 }
 
@@ -142,6 +152,12 @@ function step(name, good) {
   console.error(`test: ${name} failed`);
 }
 
+function auditStep() {
+  const { good, words } = auditPackages(root);
+  console.log(`test: ${words}`);
+  step('the audit of the packages that ship', good);
+}
+
 function main() {
   if (!ensurePackages()) {
     console.error('test: `npm ci` failed');
@@ -150,11 +166,14 @@ function main() {
   const browser = ensureBrowser();
   ensureNwbReaders();
   ensureLanguages();
+  ensureCurl();
   ensureCompiler();
   step('lint (biome check)', tool('@biomejs/biome/bin/biome', ['check', '.']));
   step('the type check (tsc)', tool('typescript/bin/tsc', ['--noEmit']));
+  const filters = process.argv.slice(2);
+  if (filters.length === 0) auditStep();
   step('the build', run(process.execPath, ['test/tools/build.mjs']));
-  const tests = runTests(process.argv.slice(2), browser);
+  const tests = runTests(filters, browser);
   if (tests.skipped > 0) console.log(`test: ${tests.skipped} skipped`);
   // vitest also fails on an error outside any test, and when there is no test at all.
   const counted = tests.failed > 0;

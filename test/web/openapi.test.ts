@@ -3,6 +3,7 @@ import { Ajv2020 } from 'ajv/dist/2020.js';
 import type { FastifyInstance } from 'fastify';
 import { describe, expect, test } from 'vitest';
 import { newFolder } from '../subjects/helpers.js';
+import { cookieOf, startGuarded } from './access/signedIn.js';
 import { describedSession } from './records/folders.js';
 import { startWeb, until } from './webRig.js';
 
@@ -84,6 +85,13 @@ describe('the description', () => {
   });
 });
 
+/** Their examples want a service that people sign in to. */
+const ACCESS: Readonly<Record<string, string>> = {
+  '/api/sign-in': 'SignIn',
+  '/api/sign-out': 'SignOut',
+  '/api/controls': 'TakeControls',
+};
+
 describe('the page about it', () => {
   test('has an example of every request that changes something', async () => {
     const { app } = await startWeb();
@@ -103,10 +111,13 @@ describe('the page about it', () => {
       ...{ '/api/rules/check': 'CheckRules', '/api/rehearse': 'Rehearse' },
       ...{ '/api/animals': 'AnimalEntry', '/api/records/{name}/work': 'Work' },
       '/api/comparisons': 'Compare',
+      ...ACCESS,
     };
     for (const [path, body] of EXAMPLES) {
       expect(matches(schemas[path]!)(JSON.parse(body))).toBe(true);
       const headers = { 'content-type': 'application/json' };
+      // Only where people sign in: below.
+      if (path in ACCESS) continue;
       const url = path.replace('{name}', sessions[0]!);
       const answer = await app.inject({ method: 'POST', url, payload: body, headers });
       expect([path, body, answer.statusCode]).toEqual([path, body, 200]);
@@ -118,6 +129,20 @@ describe('the page about it', () => {
       ...['choose', 'press', 'hold', 'phase', 'note', 'exclude lap', 'new cell'],
       'allow stimulation',
     ]);
+  });
+
+  test('and every example of signing in, one after the other', async () => {
+    const { ask, signIn, secrets } = await startGuarded();
+    let browser = await signIn('anna');
+    const tried: number[] = [];
+    for (const [path, body] of EXAMPLES.filter(([one]) => one in ACCESS)) {
+      const payload = JSON.parse(body) as { secret?: string };
+      if (payload.secret) payload.secret = secrets.get('anna')!;
+      const answer = await ask('POST', path, browser, payload);
+      if (path === '/api/sign-in') browser = { cookie: cookieOf(answer) };
+      tried.push(answer.status);
+    }
+    expect(tried).toEqual([200, 200, 200, 200]);
   });
 
   test('names every kind of message of the stream', () => {

@@ -287,10 +287,24 @@ describe('a rehearsal', () => {
     expect(await ended(app)).toMatchObject({ state: 'failed', number: 2, code: 'RULES_INVALID' });
   });
 
+  test('of many sessions tells how they differ, and how far it is', async () => {
+    const app = await start();
+    await begin(app, { text: RULES, seed: 'x', minutes: 2, runs: 3 });
+    expect(await state(app)).toMatchObject({ state: 'running', runs: 3, runsDone: 0 });
+    const many = await ended(app);
+    if (many.state !== 'many done') throw new Error(JSON.stringify(many));
+    const { report } = many.result;
+    expect(report).toMatchObject({ runs: 3, seed: 'x', animal: 'usual, trained' });
+    expect(report.minutes.most).toBeLessThanOrEqual(2.1);
+    expect(report.rules.find(({ name }) => name === 'water')!.fired.median).toBeGreaterThan(0);
+    await begin(app, { text: 'nonsense', runs: 3 });
+    expect(await ended(app)).toMatchObject({ state: 'failed', code: 'RULES_INVALID' });
+  });
+
   test('refuses seeds and lengths that are none', async () => {
     const app = await start();
-    const bad = [{ minutes: 0 }, { minutes: 241 }, { animalSeed: -1 }, { trained: 'yes' }];
-    for (const one of [...bad, { seed: 'x'.repeat(65) }]) {
+    const bad = [{ minutes: 0 }, { minutes: 241 }, { runs: 0 }, { runs: 1001 }, { animalSeed: -1 }];
+    for (const one of [...bad, { trained: 'yes' }, { seed: 'x'.repeat(65) }]) {
       expect((await begin(app, { text: RULES, ...one })).statusCode).toBe(400);
     }
     expect(await state(app)).toEqual({ state: 'none' });
