@@ -2,7 +2,7 @@ import { execFileSync, spawnSync } from 'node:child_process';
 import { createHash } from 'node:crypto';
 import { existsSync, readdirSync, readFileSync } from 'node:fs';
 import { join } from 'node:path';
-import { afterAll, beforeAll, describe, expect, it } from 'vitest';
+import { afterAll, beforeAll, describe, expect, it, onTestFinished } from 'vitest';
 import { firingsOf } from '../../server/analysis/firings.js';
 import { dropsOf, lapsOf, licksOf, phasesOf } from '../../server/analysis/happenings.js';
 import { countsByLap } from '../../server/analysis/lapCounts.js';
@@ -11,6 +11,7 @@ import { toldOf } from '../../server/analysis/told.js';
 import { exportNwb } from '../../server/export/nwb/exportNwb.js';
 import { writeNwb } from '../../server/export/nwb/writeNwb.js';
 import { packageRoot } from '../../server/packageRoot.js';
+import { updateDescription } from '../../server/session/description.js';
 import { recordedSession } from '../analysis/recorded.js';
 
 // Debian's Python has the readers; another python3 on the path may not.
@@ -84,7 +85,8 @@ const sha = (bytes: ArrayBufferView) =>
     .update(new Uint8Array(bytes.buffer, bytes.byteOffset, bytes.byteLength))
     .digest('hex');
 
-describe('an NWB file', () => {
+// Python and a process of its own take seconds on a busy machine.
+describe('an NWB file', { timeout: 120_000 }, () => {
   it("has no error by the standard's own schema", () => {
     if (!readers) {
       console.log(NOTICE);
@@ -190,6 +192,32 @@ describe('an NWB file', () => {
     await expect(exportNwb(join(recorded.root, 'none'), path)).rejects.toMatchObject({
       code: 'RECORD_DESCRIPTION_BAD',
     });
+  });
+
+  it('holds what the rules file brought in, and what the animal weighed', async () => {
+    const yoked = recordedSession({ rules: '11-yoked-control.yaml', minutes: 1 });
+    const animal = {
+      ...{ folder: '/animals', rig: 'demo', kept: true, weightG: 21.45, percent: 91 },
+      ...{ leastPercent: 80, protocol: 'P-2026-014', targetUl: 1_000, against: [] },
+    };
+    updateDescription(yoked.folder, { animal, sessionNumber: 12, protocolNumber: 'P-2026-014' });
+    const path = join(yoked.root, 'yoked.nwb');
+    await writeNwb(await readSession(yoked.folder), path, CREATED);
+    const table = readFileSync(join(yoked.folder, 'm12-earned.csv'), 'utf8');
+    onTestFinished(() => yoked.remove());
+    if (!readers) {
+      console.log(NOTICE);
+      return;
+    }
+    const code = `
+import sys, json, h5py
+f = h5py.File(sys.argv[1], "r")
+t = lambda p: f[p][()].decode()
+print(json.dumps({"table": t("scratch/included_file_1"), "weight": t("general/subject/weight"),
+  "protocol": t("general/protocol"), "notes": t("general/notes")}))`;
+    const found = JSON.parse(execFileSync(PYTHON, ['-B', '-c', code, path], { encoding: 'utf8' }));
+    expect(found).toMatchObject({ table, weight: '0.02145 kg', protocol: 'P-2026-014' });
+    expect(found.notes).toContain('Session 12 of this subject.');
   });
 
   it('of a session in which nothing happened is valid too', async () => {

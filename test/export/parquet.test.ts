@@ -45,7 +45,7 @@ async function same(read: (bytes: Buffer) => ArrayBuffer): Promise<number> {
   return rows;
 }
 
-describe('the tables as Parquet', () => {
+describe('the tables as Parquet', { timeout: 120_000 }, () => {
   it('hold every cell of the tables, as hyparquet reads them', async () => {
     expect(await same(bufferOf)).toBeGreaterThan(session.samples.length);
   });

@@ -161,7 +161,7 @@ function run(program: string, args: string[], stdin?: string): string | undefine
   return execFileSync(program, args, { input: stdin ?? '', encoding: 'utf8', cwd: into });
 }
 
-describe('the loaders that stand beside the tables', () => {
+describe('the loaders that stand beside the tables', { timeout: 120_000 }, () => {
   it('read them in Python with its standard library alone', () => {
     const code = `
 import json

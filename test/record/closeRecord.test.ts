@@ -34,7 +34,7 @@ async function givenUl(folder: string): Promise<number> {
   return nl / 1_000;
 }
 
-describe('a session whose program died', () => {
+describe('a session whose program died', { timeout: 120_000 }, () => {
   it('is closed, replayed, and its water derived from what is left, so that the day counts it', async () => {
     for (const share of [0.15, 0.45, 0.999]) {
       const folder = crashed(share);

@@ -7,6 +7,7 @@ import { packageVersion } from '../../packageRoot.js';
 import { syncFile, syncFolder } from '../../session/writeFileWhole.js';
 import { loadHdf5, NwbBuilder, text } from './hdf5.js';
 import { putDecisions, putFirings, putLicksAndWater, putLines } from './nwbEvents.js';
+import { putFiles } from './nwbFiles.js';
 import { putIntervals } from './nwbIntervals.js';
 import { putBelt, putStimuli } from './nwbSeries.js';
 import { putSpecifications } from './specifications.js';
@@ -96,16 +97,7 @@ function fill(
   putLines(nb, events, session);
   progress(0.95);
   putSpecifications(nb, nwb);
-  for (const [name, file, notes] of [
-    ['rig_file', 'rig.yaml', 'The rig file that the session ran on, as it was'],
-    ['rules_file', 'rules.yaml', 'The rules file that the session ran, as it was'],
-    ['session_description', 'session.json', 'The description of the session: see its schema'],
-  ] as const) {
-    const content = fs.readFileSync(path.join(session.folder, file), 'utf8');
-    const set = nb.text(scratch, name, content === '' ? ' ' : content);
-    nb.typed(set, `/scratch/${name}`, 'ScratchData');
-    text(set, 'notes', notes);
-  }
+  putFiles(nb, scratch, session);
 }
 
 function putGeneral(nb: NwbBuilder, general: Group, { description, rig }: SessionData): void {
