@@ -49,4 +49,5 @@ export const PAGES: readonly [PageEntry, ...PageEntry[]] = [
   { name: 'rehearse', title: 'Rehearse', load: () => import('./rehearse/whole.js') },
   { name: 'records', title: 'Records', load: () => import('./records/whole.js') },
   { name: 'animals', title: 'Animals', load: () => import('./animals/whole.js') },
+  { name: 'rig', title: 'Rig', load: () => import('./rig/whole.js') },
 ];

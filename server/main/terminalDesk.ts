@@ -1,13 +1,14 @@
 import { createInterface } from 'node:readline/promises';
 import { setTimeout as delay } from 'node:timers/promises';
-import type {
-  Answers,
-  Desk,
-  Field,
-  GuideBench,
-  GuideView,
-  Hands,
-  Question,
+import {
+  type Answers,
+  checkedAnswer,
+  type Desk,
+  type Field,
+  type GuideBench,
+  type GuideView,
+  type Hands,
+  type Question,
 } from '../calibrate/guides/guide.js';
 import { LapwingError } from '../errors/codes.js';
 import type { Rig } from '../session/rig/rig.js';
@@ -89,7 +90,7 @@ export class TerminalDesk implements Desk {
 
   async #answer(field: Field): Promise<number | string> {
     const given = this.#options.given[field.name];
-    if (given !== undefined) return checked(field, given);
+    if (given !== undefined) return checkedAnswer(field, given);
     if (this.#options.yes) {
       if (field.value !== undefined) return field.value;
       throw new LapwingError(
@@ -101,7 +102,7 @@ export class TerminalDesk implements Desk {
       const text = await this.#line(`${promptOf(field)}: `);
       if (text === '' && field.value !== undefined) return field.value;
       try {
-        return checked(field, text);
+        return checkedAnswer(field, text);
       } catch (error) {
         process.stderr.write(`  ${(error as Error).message}\n`);
       }
@@ -134,24 +135,4 @@ function promptOf(field: Field): string {
   const options = field.kind === 'choice' ? ` (${field.options.join(' / ')})` : '';
   const offered = field.value === undefined || field.value === '' ? '' : ` [${field.value}]`;
   return `${field.label}${unit}${options}${offered}`;
-}
-
-/** An answer in the field's kind. @throws LapwingError CALIBRATE_ANSWER with what was expected */
-export function checked(field: Field, text: string | number): number | string {
-  if (field.kind === 'text') return String(text);
-  if (field.kind === 'choice') {
-    if (field.options.includes(String(text))) return text;
-    const begins = field.options.filter((option) => option.startsWith(String(text)));
-    if (begins.length === 1 && text !== '') return begins[0]!;
-    throw new LapwingError(
-      'calibrateAnswer',
-      `${field.label}: expected ${field.options.join(' or ')}, found \`${text}\`.`,
-    );
-  }
-  const value = typeof text === 'number' ? text : Number(text);
-  if (text !== '' && value >= field.least && value <= field.most) return value;
-  throw new LapwingError(
-    'calibrateAnswer',
-    `${field.label}: expected ${field.least} to ${field.most} ${field.unit}, found \`${text}\`.`,
-  );
 }

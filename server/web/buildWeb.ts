@@ -27,6 +27,7 @@ import { openapi } from './openapi.js';
 import { PROBLEM_TYPE, problem, problemFrom, sendProblem } from './problems.js';
 import { addRecordsRoutes } from './records/routes.js';
 import type { Rehearsals } from './rehearsal/rehearsals.js';
+import { addRigRoutes } from './rig/routes.js';
 import { addRulesRoutes } from './rules/routes.js';
 import { Senders } from './senders.js';
 import { addSessionRoutes } from './sessionRoutes.js';
@@ -154,6 +155,7 @@ export function buildWeb(options: WebOptions): FastifyInstance {
 
   const jobs = options.jobs ?? new Jobs();
   addJobRoutes(app, jobs);
+  addRigRoutes(app, { rig: options.rig, loop: options, records: options.records });
   addAnimalsRoutes(app, options.animals ?? options.rig?.animalsFolder);
   addRecordsRoutes(app, { records: options.records, rules: rulesFolder, jobs });
 

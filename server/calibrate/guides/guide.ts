@@ -1,3 +1,4 @@
+import { LapwingError } from '../../errors/codes.js';
 import type { BenchItem, BenchNow, Tried, TryRequest } from '../../loop/protocol.js';
 import type { CheckedItem } from '../../session/preflight.js';
 import type { CalibrationKind } from '../../session/rig/calibration.js';
@@ -160,4 +161,24 @@ export function figures(value: number, digits = 3): string {
   const text = Number(value.toPrecision(digits));
   const places = Math.max(0, digits - 1 - Math.floor(Math.log10(Math.abs(text) || 1)));
   return text.toFixed(Math.min(places, 6));
+}
+
+/** An answer in the field's kind. @throws LapwingError CALIBRATE_ANSWER with what was expected */
+export function checkedAnswer(field: Field, text: string | number): number | string {
+  if (field.kind === 'text') return String(text);
+  if (field.kind === 'choice') {
+    if (field.options.includes(String(text))) return text;
+    const begins = field.options.filter((option) => option.startsWith(String(text)));
+    if (begins.length === 1 && text !== '') return begins[0]!;
+    throw new LapwingError(
+      'calibrateAnswer',
+      `${field.label}: expected ${field.options.join(' or ')}, found \`${text}\`.`,
+    );
+  }
+  const value = typeof text === 'number' ? text : Number(text);
+  if (text !== '' && value >= field.least && value <= field.most) return value;
+  throw new LapwingError(
+    'calibrateAnswer',
+    `${field.label}: expected ${field.least} to ${field.most} ${field.unit}, found \`${text}\`.`,
+  );
 }
