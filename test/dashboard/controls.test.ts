@@ -63,8 +63,17 @@ describe('the sign-in page', () => {
     await page.keyboard.type('not the secret');
     await page.keyboard.press('Enter');
     await page.getByRole('alert').filter({ hasText: 'The name or the secret is wrong' }).waitFor();
+    const secret = page.getByLabel('Secret', { exact: true });
+    expect(await secret.getAttribute('type')).toBe('password');
+    await page.getByLabel('Show the secret').check();
+    expect(await secret.getAttribute('type')).toBe('text');
+    expect(await secret.getAttribute('autocomplete')).toBe('current-password');
     const signedIn = await another('anna');
     expect(new URL(signedIn.url()).pathname).toBe('/');
+    // Nothing of it lies where a script could find it.
+    const kept = await signedIn.evaluate(() => [document.cookie, ...Object.keys(localStorage)]);
+    expect(kept.filter((one) => one !== '' && !one.startsWith('lapwing.'))).toEqual([]);
+    expect(await signedIn.evaluate(() => sessionStorage.length)).toBe(0);
     // Who is signed in has nothing to do there.
     await signedIn.goto(`${url}/sign-in.html`);
     await signedIn.locator('.controls-bar').waitFor();

@@ -61,7 +61,7 @@ describe('the page itself', () => {
 });
 
 describe('the web process', () => {
-  test('is not opened to the network: there is no sign-in', async () => {
+  test('is not opened to the network without sign-in', async () => {
     for (const host of ['0.0.0.0', '::', '192.168.1.5']) {
       const started = runWeb(['--socket', '/nowhere', '--host', host, '--log', 'silent']);
       await expect(started).rejects.toMatchObject({ code: 'WEB_HOST_NOT_LOOPBACK' });

@@ -110,19 +110,14 @@ describe('lapwing serve --listen', { timeout: 120_000 }, () => {
   });
 
   test('says what is wrong with what it is told before anything starts', async () => {
-    const wrong: [string[], string][] = [
-      [['--listen', '8711'], 'WEB_LISTEN'],
-      [['--listen', '0.0.0.0:99999'], 'WEB_LISTEN'],
-      [['--behind-proxy', 'proxy.example'], 'WEB_LISTEN'],
-      [['--tls-cert', 'cert.pem'], 'WEB_TLS'],
-      [['--tls-cert', 'none.pem', '--tls-key', 'none.pem'], 'WEB_TLS'],
-    ];
-    for (const [flags, code] of wrong) {
-      const { status, said } = await run('serve', '--rig', rigPath, ...flags);
-      expect([flags, status]).toEqual([flags, 1]);
-      expect(said).toContain(code);
-    }
-    const nobody = await run('people', 'renew', 'nobody', '--rig', rigPath);
+    const serve = (...flags: string[]) => run('serve', '--rig', rigPath, ...flags);
+    const [listen, tls, nobody] = await Promise.all([
+      serve('--listen', '8711'),
+      serve('--tls-cert', 'cert.pem'),
+      run('people', 'renew', 'nobody', '--rig', rigPath),
+    ]);
+    expect([listen.status, listen.said]).toEqual([1, expect.stringContaining('WEB_LISTEN')]);
+    expect([tls.status, tls.said]).toEqual([1, expect.stringContaining('WEB_TLS')]);
     expect([nobody.status, nobody.said]).toEqual([1, expect.stringContaining('WEB_PERSON')]);
   });
 });
