@@ -1,6 +1,7 @@
 import { hasLearned, LEARNED } from '../rules/learned.js';
 import type { Drop, Lap } from './happenings.js';
 import { APPROACH_CM, type Licking, SPOUT_HALF_CM } from './licking.js';
+import { lickShareOf } from './lickingIntervals.js';
 import { isBetween, type Profile } from './profile.js';
 
 /** Where and when a session met the criterion of `learned in`, lap by lap. */
@@ -81,7 +82,7 @@ export function omissionsOf(licking: Licking, drops: readonly Drop[]): OmissionR
   return [true, false].map((water) => {
     const rows = licking.laps.filter(({ lap }) => watered.has(lap) === water);
     const licks = rows.reduce((sum, row) => sum + row.licks, 0);
-    const near = rows.reduce((sum, row) => sum + row.inSpout + row.inApproach, 0);
-    return { water, laps: rows.length, licksPerLap: licks / rows.length, share: near / licks };
+    const share = lickShareOf(rows);
+    return { water, laps: rows.length, licksPerLap: licks / rows.length, share };
   });
 }

@@ -1,7 +1,8 @@
-import { median } from './align/robustLine.js';
+import { type Interval, seedOf } from './bootstrap.js';
 import { dropsOf, lapsOf } from './happenings.js';
 import { learnedOf } from './learned.js';
 import { lickingOf } from './licking.js';
+import { lickingIntervals } from './lickingIntervals.js';
 import { profileOf } from './profile.js';
 import type { SessionData } from './readSession.js';
 
@@ -19,6 +20,8 @@ export interface LearningDay {
   readonly lickShare: number;
   /** Median over laps of speed in the approach over speed elsewhere. */
   readonly slowing: number;
+  /** The same with their 95 % intervals over the laps of this session alone. */
+  readonly overLaps: { readonly lickShare: Interval; readonly slowing: Interval };
   readonly waterUl: number;
   /** The lap at whose end the criterion of having learned was first met; NaN: on none. */
   readonly learnedAtLap: number;
@@ -31,14 +34,13 @@ export function learningDay(session: SessionData): LearningDay {
   const profile = profileOf(session, laps);
   const licking = lickingOf(session, laps, profile);
   const minutes = (endedUs - beganUs) / 60e6;
-  const sum = (of: (row: (typeof licking.laps)[number]) => number) =>
-    licking.laps.reduce((total, row) => total + of(row), 0);
+  const { lickShare, slowing } = lickingIntervals(licking, seedOf(description.seed));
   return {
     ...{ name: description.name, subject: description.subject, startedAt: description.startedAt },
     title: description.title,
     ...{ minutes, laps: laps.length, lapsPerMinute: laps.length / minutes },
-    lickShare: sum((row) => row.inSpout + row.inApproach) / sum((row) => row.licks),
-    slowing: median(licking.laps.map((row) => row.slowing).filter(Number.isFinite)),
+    ...{ lickShare: lickShare.estimate, slowing: slowing.estimate },
+    overLaps: { lickShare, slowing },
     waterUl: dropsOf(session).reduce((total, { volumeUl }) => total + volumeUl, 0),
     learnedAtLap: learnedOf(laps, profile, licking)?.firstLap ?? Number.NaN,
   };

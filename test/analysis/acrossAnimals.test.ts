@@ -4,10 +4,14 @@ import { acrossAnimals, animalsOf, bySession } from '../../server/analysis/acros
 import type { LearningDay } from '../../server/analysis/learning.js';
 import { animalsPage, animalsSummary } from '../../server/export/report/animalsPage.js';
 
+const exact = (estimate: number) => ({
+  ...{ estimate, low: estimate, high: estimate, standardError: 0 },
+});
 const day = (subject: string, number: number, lickShare: number, laps = 40): LearningDay => ({
   ...{ name: `${subject} ${number}`, subject, title: 'Water at a place' },
   startedAt: `2026-03-${String(number).padStart(2, '0')}T09:00:00.000+00:00`,
   ...{ minutes: 20, laps, lapsPerMinute: laps / 20, lickShare, slowing: 0.8, waterUl: 4 * laps },
+  overLaps: { lickShare: exact(lickShare), slowing: exact(0.8) },
   learnedAtLap: 14,
 });
 

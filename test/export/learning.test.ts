@@ -23,6 +23,12 @@ describe('learning across sessions', () => {
       expect(day.laps).toBe(core.instant.lap - 1);
       expect(day.waterUl).toBeCloseTo(core.guard.waterGivenNl / 1_000, 9);
       expect(day.lapsPerMinute).toBeCloseTo(day.laps / day.minutes, 12);
+      for (const measure of ['lickShare', 'slowing'] as const) {
+        const { estimate, low, high } = day.overLaps[measure];
+        expect(estimate).toBe(day[measure]);
+        expect(low).toBeLessThan(estimate);
+        expect(high).toBeGreaterThan(estimate);
+      }
     }
     const page = learningPage([{ ...after, startedAt: '2026-03-05T09:00:00.000+00:00' }, before]);
     expect(page.indexOf('2026-03-04')).toBeLessThan(page.indexOf('2026-03-05'));

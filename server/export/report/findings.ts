@@ -1,6 +1,6 @@
-import { quantile } from '../../analysis/align/robustLine.js';
-import { bootstrap, seedOf } from '../../analysis/bootstrap.js';
+import { seedOf } from '../../analysis/bootstrap.js';
 import { circularSummary } from '../../analysis/circular.js';
+import { lickingIntervals } from '../../analysis/lickingIntervals.js';
 import type { SessionData } from '../../analysis/readSession.js';
 import type { Shown } from './figures.js';
 import { factsTable, fixed, table } from './htmlTable.js';
@@ -17,25 +17,8 @@ export function statistics(session: SessionData, { licking, laps, lengthCm }: Sh
     licking.laps.flatMap(({ firstCm }) => (firstCm === null ? [] : [firstCm])),
     lengthCm,
   );
-  const seed = seedOf(session.description.seed);
-  const rows = licking.laps.filter(({ licks }) => licks > 0);
-  const share = bootstrap(
-    rows,
-    (drawn) =>
-      drawn.reduce((sum, r) => sum + r.inSpout + r.inApproach, 0) /
-      drawn.reduce((sum, r) => sum + r.licks, 0),
-    seed,
-  );
-  const slow = bootstrap(
-    licking.laps.filter((r) => Number.isFinite(r.slowing)),
-    (drawn) =>
-      quantile(
-        drawn.map((r) => r.slowing),
-        0.5,
-      ),
-    seed,
-  );
-  const between = (i: typeof share) =>
+  const { lickShare, slowing } = lickingIntervals(licking, seedOf(session.description.seed));
+  const between = (i: typeof lickShare) =>
     `${fixed(i.estimate, 2)} (${fixed(i.low, 2)} to ${fixed(i.high, 2)})`;
   const circular = (c: typeof all) => [
     c.n,
@@ -54,8 +37,8 @@ export function statistics(session: SessionData, { licking, laps, lengthCm }: Sh
     table(
       ['', 'estimate (95 % interval)'],
       [
-        ['share of waiting licks at the spout or in the 20 cm before it', between(share)],
-        ['speed before the spout over speed elsewhere, median of laps', between(slow)],
+        ['share of waiting licks at the spout or in the 20 cm before it', between(lickShare)],
+        ['speed before the spout over speed elsewhere, median of laps', between(slowing)],
       ],
     ),
     '<p>Circular mean, mean resultant length and Rayleigh test: Fisher, Statistical Analysis of ' +

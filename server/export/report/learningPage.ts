@@ -22,7 +22,8 @@ export function learningPage(days: readonly LearningDay[]): string {
     `<style>${STYLE}</style></head><body><h1>${escapeHtml(title)}</h1>`,
     table(head, rows),
     ...MEASURES.map((measure) => figure(ordered, measure)),
-    `<p>${MEASURES_EXPLAINED} ${LEARNED_EXPLAINED} One animal: across animals the unit is the animal, not the lap or the ` +
+    `<p>${MEASURES_EXPLAINED} ${LEARNED_EXPLAINED} Shaded: the 95 % interval over the laps of that session, by ` +
+      `bootstrap (Efron and Tibshirani 1993). One animal: across animals the unit is the animal, not the lap or the ` +
       'session, and `lapwing report` over sessions of several compares them so.</p></body></html>\n',
   ].join('\n');
 }
@@ -30,8 +31,15 @@ export function learningPage(days: readonly LearningDay[]): string {
 function figure(days: readonly LearningDay[], measure: Measure): string {
   const { label, most } = MEASURE_WORDS[measure];
   const points = days.map((day, i): Point => [i + 1, day[measure]]);
-  const top = most ?? Math.max(1e-9, ...points.map(([, y]) => y).filter(Number.isFinite)) * 1.1;
+  const shaded = measure === 'lickShare' || measure === 'slowing' ? measure : undefined;
+  const bounds = shaded === undefined ? [] : days.map(({ overLaps }) => overLaps[shaded]);
+  const values = [...days.map((day) => day[measure]), ...bounds.map(({ high }) => high)];
+  const top = most ?? Math.max(1e-9, ...values.filter(Number.isFinite)) * 1.1;
   const x = { label: 'session', from: 0.5, to: days.length + 0.5, whole: true };
   const plot = new Plot(`${label} by session`, x, { label, from: 0, to: top }, 180);
+  plot.band(
+    bounds.map(({ low, high }, i) => [i + 1, low, high]),
+    INK.blue,
+  );
   return `<figure>${plot.curve(points, INK.blue).marks(points, 'dot', INK.blue)}</figure>`;
 }
