@@ -42,6 +42,7 @@ export function TopBar(props: {
         {setup?.simulated ? <span class="tag">simulated</span> : null}
         {session ? <span class="subject">{session.subject}</span> : null}
         {session ? <span class="title">{session.title}</span> : null}
+        {session?.blinded ? <span class="tag">arm sealed</span> : null}
       </p>
       <p class="session-state" role="status">
         <span class={`tag session-${freshness.fresh ? (state?.session ?? 'idle') : 'stale'}`}>

@@ -152,6 +152,8 @@ export interface Setup {
     readonly seed: string;
     readonly startedAt: string;
     readonly rulesText: string;
+    /** Its arm is sealed: what would show it is hidden. */
+    readonly blinded: boolean;
     readonly rules: readonly string[];
     readonly phases: readonly string[];
     readonly buttons: readonly string[];

@@ -61,6 +61,7 @@ function describe(session: RunningSession): NonNullable<Setup['session']> {
     seed,
     startedAt: startedAt.toISOString(),
     rulesText: file.sources[0]!.text,
+    blinded: program.sealed !== undefined,
     rules: file.rules.map(({ name }) => name.name),
     phases: file.phases.map(({ name }) => name.name),
     buttons: program.buttons,

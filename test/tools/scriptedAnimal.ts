@@ -340,6 +340,7 @@ function session(
     experimenter,
     seed,
     startedAt: '2026-12-01T09:30:00Z',
+    blinded: false,
     rulesText: `# ${rules}\ntitle: Induction with sham laps\n`,
     rules: ['water', 'induce'],
     phases: ['baseline', 'induction', 'probe'],
