@@ -25,6 +25,8 @@ export interface RehearsalForm {
   animalSeed: number;
   trained: boolean;
   minutes: number;
+  /** More than one: how so many sessions differ. */
+  runs: number;
 }
 
 export interface Rehearse {
@@ -72,7 +74,7 @@ export function emptyRehearse(): Rehearse {
     cursor: 0,
     rehearsal: { state: 'none' },
     rehearsedText: '',
-    form: { seed: '1', animalSeed: 1, trained: true, minutes: 30 },
+    form: { seed: '1', animalSeed: 1, trained: true, minutes: 30, runs: 1 },
     topLap: undefined,
     notice: undefined,
   };

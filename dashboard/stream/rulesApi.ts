@@ -13,6 +13,7 @@ export interface RehearsalWish {
   readonly animalSeed: number;
   readonly trained: boolean;
   readonly minutes: number;
+  readonly runs: number;
 }
 
 export const rulesApi = {

@@ -3,9 +3,12 @@
  * when it is done. A rehearsal takes a whole core for seconds; neither the loop nor the web process
  * may wait for that.
  */
-import { setPriority } from 'node:os';
+import { availableParallelism, setPriority } from 'node:os';
 import { fileURLToPath } from 'node:url';
+import { ANIMAL } from '../../hardware-sim/animal/parameters.js';
 import { LapwingError } from '../errors/codes.js';
+import { DEFAULT_LATENCY } from '../rehearse/latency.js';
+import type { RulesFile } from '../rules/ast.js';
 import { compile } from '../rules/engine/compile.js';
 import { formatProblems } from '../rules/problems.js';
 import type { StampedDecision } from '../session/decisions.js';
@@ -18,8 +21,28 @@ import { RasterCollector } from '../web/rehearsal/raster.js';
 import type { RehearsalReport, RehearsalTask } from '../web/rehearsal/rehearsalMessages.js';
 import { checkRulesText } from '../web/rules/checkAnswer.js';
 import { RulesFolder } from '../web/rules/rulesFolder.js';
-import type { RehearsalResult, RehearsedRule } from '../web/rules/rulesMessages.js';
+import type { ManyResult, RehearsalResult, RehearsedRule } from '../web/rules/rulesMessages.js';
+import { rehearseMany } from './rehearseRuns.js';
 import { simulatedRigFor } from './simulatedRigFor.js';
+
+interface Prepared {
+  readonly rig: Rig;
+  readonly file: RulesFile;
+  readonly seed: string;
+}
+
+/** @throws LapwingError RULES_INVALID, RIG_INVALID */
+function prepare(task: RehearsalTask): Prepared {
+  const rig = readRig(task.rigPath);
+  const folder = new RulesFolder(task.rulesFolder);
+  const checked = checkRulesText(folder, task.path, task.text, factsOf(rig));
+  const { file, problems, sources } = checked;
+  if (file === undefined) {
+    const errors = problems.filter(({ severity }) => severity === 'error');
+    throw new LapwingError('rulesInvalid', formatProblems(errors, sources));
+  }
+  return { rig, file, seed: task.seed === '' ? newSeed() : task.seed };
+}
 
 /**
  * Rehearses a text on the simulated rig.
@@ -31,17 +54,9 @@ export function rehearseText(
   progress: (sessionS: number) => void = () => {},
 ): RehearsalResult {
   const beganMs = performance.now();
-  const rig = readRig(task.rigPath);
-  const facts = factsOf(rig);
-  const folder = new RulesFolder(task.rulesFolder);
-  const { file, problems, sources } = checkRulesText(folder, task.path, task.text, facts);
-  if (file === undefined) {
-    const errors = problems.filter(({ severity }) => severity === 'error');
-    throw new LapwingError('rulesInvalid', formatProblems(errors, sources));
-  }
-  const seed = task.seed === '' ? newSeed() : task.seed;
+  const { rig, file, seed } = prepare(task);
   const setup = {
-    ...{ rig, program: compile(file, facts), title: file.title, seed, waterTodayNl: 0 },
+    ...{ rig, program: compile(file, factsOf(rig)), title: file.title, seed, waterTodayNl: 0 },
   };
   const summariser = new Summariser(file.rules.map(({ name }) => name.name));
   const raster = new RasterCollector(rig.outputs);
@@ -71,12 +86,28 @@ export function rehearseText(
     waterUl: waterNl / 1_000,
     tookS: (performance.now() - beganMs) / 1_000,
     rules: [...rules].map(([name, rule]) => told(name, rule)),
-    beltCm: beltOf(rig),
+    beltCm: rig.belt.lengthCm,
     marksLeftOut: raster.leftOut,
   };
 }
 
-const beltOf = (rig: Rig): number => rig.belt.lengthCm;
+/** Rehearses a text many times, on all cores but one. @param progress called with the runs done */
+async function rehearseOften(
+  task: RehearsalTask,
+  progress: (runs: number) => void,
+): Promise<ManyResult> {
+  const beganMs = performance.now();
+  const { runs, trained, minutes } = task;
+  const setting = {
+    ...{ ...prepare(task), animal: ANIMAL, trained, minutes },
+    ...{ everyFrame: false, latency: DEFAULT_LATENCY },
+  };
+  const { report } = await rehearseMany(setting, runs, 'usual', {
+    jobs: Math.max(1, availableParallelism() - 1),
+    progress: (share) => progress(Math.round(share * runs)),
+  });
+  return { report, tookS: (performance.now() - beganMs) / 1_000 };
+}
 
 function told(name: string, rule: RuleSummary): RehearsedRule {
   const errors = [...rule.armedErrorsMm, ...rule.hostErrorsMm].map(Math.abs).sort((a, b) => a - b);
@@ -90,16 +121,21 @@ function told(name: string, rule: RuleSummary): RehearsedRule {
   };
 }
 
-function serveOne(task: RehearsalTask): void {
+async function serveOne(task: RehearsalTask): Promise<void> {
   const parent = process.ppid;
-  const say = (report: RehearsalReport): void => void process.send!(report);
+  const say = (report: RehearsalReport): void => {
+    // Whoever asked is gone: nobody would read the result.
+    if (process.ppid !== parent) process.exit(1);
+    process.send!(report);
+  };
   try {
-    const result = rehearseText(task, (sessionS) => {
-      // Whoever asked is gone: nobody would read the result.
-      if (process.ppid !== parent) process.exit(1);
-      say({ report: 'progress', sessionS });
-    });
-    say({ report: 'done', result });
+    if (task.runs > 1) {
+      const result = await rehearseOften(task, (done) => say({ report: 'runs', done }));
+      say({ report: 'many done', result });
+    } else {
+      const result = rehearseText(task, (sessionS) => say({ report: 'progress', sessionS }));
+      say({ report: 'done', result });
+    }
   } catch (error) {
     const { code = 'WEB_INTERNAL', message, remedy = '' } = error as Partial<LapwingError> & Error;
     say({ report: 'failed', code, detail: message, remedy });
@@ -110,5 +146,5 @@ function serveOne(task: RehearsalTask): void {
 if (process.argv[1] === fileURLToPath(import.meta.url) && process.send) {
   // A live session on the same machine comes first.
   setPriority(10);
-  process.once('message', (task) => serveOne(task as RehearsalTask));
+  process.once('message', (task) => void serveOne(task as RehearsalTask));
 }

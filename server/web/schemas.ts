@@ -90,6 +90,7 @@ export const bodies = {
     animalSeed: { type: 'integer', minimum: 0, maximum: 2 ** 31 - 1 },
     trained: { type: 'boolean' },
     minutes: { type: 'integer', minimum: 1, maximum: 240 },
+    runs: { type: 'integer', minimum: 1, maximum: 1000 },
   }),
 } as const;
 

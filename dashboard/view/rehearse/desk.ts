@@ -105,7 +105,9 @@ export class Desk {
     state.topLap = undefined;
     state.rehearsedText = text;
     const { number } = told.value;
-    state.rehearsal = { state: 'running', number, sessionS: 0, mostS: form.minutes * 60 };
+    const { runs } = form;
+    const mostS = form.minutes * 60;
+    state.rehearsal = { state: 'running', number, sessionS: 0, mostS, runs, runsDone: 0 };
     this.touch();
     await this.poll();
   }

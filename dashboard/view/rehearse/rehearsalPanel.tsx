@@ -9,6 +9,7 @@ import { lapsInto, lastLap, minutesWords, placesOf, type Rehearse } from '../../
 import type { Theme } from '../actions.js';
 import { Legend } from '../beltPanel.js';
 import type { Desk } from './desk.js';
+import { ManyResults } from './manyResults.js';
 
 interface Props {
   readonly desk: Desk;
@@ -44,6 +45,17 @@ export function RehearsalPanel(props: Props) {
           />
         </label>
         <label>
+          Sessions
+          <input
+            type="number"
+            min={1}
+            max={1000}
+            required
+            value={form.runs}
+            onInput={(event) => set({ runs: event.currentTarget.valueAsNumber })}
+          />
+        </label>
+        <label>
           Animal
           <input
             type="number"
@@ -51,6 +63,8 @@ export function RehearsalPanel(props: Props) {
             max={2147483647}
             required
             value={form.animalSeed}
+            disabled={form.runs > 1}
+            title={form.runs > 1 ? 'Each session has another one' : undefined}
             onInput={(event) => set({ animalSeed: event.currentTarget.valueAsNumber })}
           />
         </label>
@@ -96,11 +110,19 @@ function Outcome(props: Props) {
         <p class="empty">
           {check?.right === false
             ? 'A file with errors cannot be rehearsed.'
-            : 'A whole session runs in seconds, with the code of a live one and no board.'}
+            : 'A whole session runs in seconds, with the code of a live one and no board. Ask for many, and see how they differ.'}
         </p>
       );
     case 'running': {
-      const { sessionS, mostS } = rehearsal;
+      const { sessionS, mostS, runs, runsDone } = rehearsal;
+      if (runs > 1) {
+        return (
+          <p class="progress" role="status">
+            <progress max={runs} value={runsDone} aria-label="Sessions rehearsed" />
+            {runsDone} of {runs} sessions
+          </p>
+        );
+      }
       return (
         <p class="progress" role="status">
           <progress max={mostS} value={sessionS} aria-label="Session rehearsed" />
@@ -122,6 +144,8 @@ function Outcome(props: Props) {
           <p>{rehearsal.remedy}</p>
         </div>
       );
+    case 'many done':
+      return <ManyResults {...props} result={rehearsal.result} />;
     case 'done':
       return <Result {...props} result={rehearsal.result} />;
   }

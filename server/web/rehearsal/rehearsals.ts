@@ -7,6 +7,8 @@ import type { RehearsalReport, RehearsalTask } from './rehearsalMessages.js';
 
 const PROCESS = join(packageRoot, 'dist/server/main/rehearsalProcess.js');
 const MOST_REAL_MS = 120_000;
+/** A thousand sessions of an hour on two busy cores. */
+const MOST_REAL_MANY_MS = 900_000;
 /** A rehearsal needs some tens of megabytes; a file that makes it need more is stopped. */
 const MOST_MEMORY_MB = 512;
 
@@ -31,13 +33,19 @@ export class Rehearsals {
    */
   begin(task: RehearsalTask): number {
     if (this.#state.state === 'running') {
-      const { sessionS } = this.#state;
-      const done = `${Math.round(sessionS / 60)} minutes of its session are done`;
+      const { sessionS, runs, runsDone } = this.#state;
+      const done =
+        runs > 1
+          ? `${runsDone} of its ${runs} sessions are done`
+          : `${Math.round(sessionS / 60)} minutes of its session are done`;
       throw new LapwingError('webRehearsalBusy', `${done}.`);
     }
     const number = ++this.#number;
+    const { runs } = task;
     const mostS = task.minutes * 60;
-    this.#state = { state: 'running', number, sessionS: 0, mostS };
+    const running = { state: 'running', number, sessionS: 0, mostS, runs, runsDone: 0 } as const;
+    const mostRealMs = runs > 1 ? Math.max(this.mostRealMs, MOST_REAL_MANY_MS) : this.mostRealMs;
+    this.#state = running;
     const child = fork(this.script, [], {
       // Nothing of this process's own: no debugger port, no loader.
       execArgv: [`--max-old-space-size=${MOST_MEMORY_MB}`],
@@ -45,11 +53,11 @@ export class Rehearsals {
     });
     this.#child = child;
     const late = setTimeout(() => {
-      this.#fail(number, `It had not ended after ${this.mostRealMs / 1000} s of real time.`);
+      this.#fail(number, `It had not ended after ${mostRealMs / 1000} s of real time.`);
       child.kill('SIGKILL');
-    }, this.mostRealMs);
+    }, mostRealMs);
     child.on('message', (report: RehearsalReport) => {
-      if (this.#runs(number)) this.#state = stateAfter(report, number, mostS);
+      if (this.#runs(number)) this.#state = stateAfter(report, running);
     });
     child.once('error', (error) => this.#fail(number, error.message));
     child.once('exit', (code, signal) => {
@@ -80,12 +88,20 @@ export class Rehearsals {
   }
 }
 
-function stateAfter(report: RehearsalReport, number: number, mostS: number): RehearsalState {
+function stateAfter(
+  report: RehearsalReport,
+  running: Extract<RehearsalState, { state: 'running' }>,
+): RehearsalState {
+  const { number } = running;
   switch (report.report) {
     case 'progress':
-      return { state: 'running', number, sessionS: report.sessionS, mostS };
+      return { ...running, sessionS: report.sessionS };
+    case 'runs':
+      return { ...running, runsDone: report.done };
     case 'done':
       return { state: 'done', number, result: report.result };
+    case 'many done':
+      return { state: 'many done', number, result: report.result };
     case 'failed':
       return { state: 'failed', number, ...failure(report) };
   }

@@ -48,6 +48,46 @@ const result = shape({
   ),
 });
 
+const spread = shape({
+  ...{ least: number, low: number, median: number, high: number, most: number },
+  bins: list(integer),
+});
+const many = shape({
+  tookS: number,
+  report: shape({
+    ...{ title: string, runs: integer, seed: string, animal: string, latency: string },
+    ...{ minutes: spread, laps: spread, licks: spread, waterUl: spread, lickShare: orNull(spread) },
+    ends: list(shape({ reason: string, runs: integer })),
+    endAlternatives: list(shape({ words: string, runs: integer })),
+    rules: list(
+      shape({
+        ...{ name: string, when: string, fired: spread, shams: spread },
+        byPhase: list(shape({ phase: string, fired: spread })),
+        ...{ runsFired: integer, moments: integer },
+        why: list(
+          shape({
+            kind: { enum: ['if', 'chance', 'limit', 'guard'] },
+            ...{ words: string, times: integer, unknown: integer, runs: integer },
+          }),
+        ),
+        ...{ boardMm: orNull(spread), hostMm: orNull(spread) },
+      }),
+    ),
+    phases: list(
+      shape({
+        ...{ name: string, runsEntered: integer, runsNotLeft: integer, minutes: orNull(spread) },
+      }),
+    ),
+    draws: list(
+      shape({
+        name: string,
+        values: list(shape({ value: string, times: integer, share: number, perRun: spread })),
+      }),
+    ),
+    notes: list(string),
+  }),
+});
+
 export const rulesSchemas = {
   RulesList: shape({
     files: list(string),
@@ -92,6 +132,7 @@ export const rulesSchemas = {
       shape({ state: { const: 'none' } }),
       shape({
         ...{ state: { const: 'running' }, number: integer, sessionS: number, mostS: number },
+        ...{ runs: integer, runsDone: integer },
       }),
       shape({
         ...{ state: { const: 'failed' }, number: integer },
@@ -99,6 +140,7 @@ export const rulesSchemas = {
       }),
       shape({ state: { const: 'cancelled' }, number: integer }),
       shape({ state: { const: 'done' }, number: integer, result }),
+      shape({ state: { const: 'many done' }, number: integer, result: many }),
     ],
   },
 } as const;

@@ -37,6 +37,7 @@ interface RehearseBody extends CheckBody {
   readonly animalSeed?: number;
   readonly trained?: boolean;
   readonly minutes?: number;
+  readonly runs?: number;
 }
 
 /** Adds the routes, and returns the folder that they serve. */
@@ -96,9 +97,10 @@ export function addRulesRoutes(
     { ...OPERATOR, bodyLimit, schema: { body: bodies.rehearse } },
     async (request) => {
       const { rig, folder } = need();
-      const { text, path, seed = '', animalSeed = 1, trained = true, minutes = 60 } = request.body;
+      const { text, path, seed = '', animalSeed = 1, trained = true } = request.body;
+      const { minutes = 60, runs = 1 } = request.body;
       const number = rehearsals.begin({
-        ...{ text, path: placeFor(path), seed, animalSeed, trained, minutes },
+        ...{ text, path: placeFor(path), seed, animalSeed, trained, minutes, runs },
         ...{ rigPath: rig.path, rulesFolder: folder.folder },
       });
       return { done: true, number };

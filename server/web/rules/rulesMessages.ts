@@ -1,4 +1,5 @@
 /** What the rules editor is told; types only, for the page. */
+import type { RunsReport } from '../../rehearse/runsReport.js';
 
 /** Where something stands: in the text being edited, or in a file that it brings in. */
 export interface TextPlace {
@@ -120,6 +121,13 @@ export interface RehearsalResult {
   readonly marksLeftOut: number;
 }
 
+/** How many sessions differ. */
+export interface ManyResult {
+  readonly report: RunsReport;
+  /** How long it took, seconds of real time. */
+  readonly tookS: number;
+}
+
 export type RehearsalState =
   | { readonly state: 'none' }
   | {
@@ -127,6 +135,9 @@ export type RehearsalState =
       readonly number: number;
       readonly sessionS: number;
       readonly mostS: number;
+      /** Of many sessions: how many there are to be, and how many there are. */
+      readonly runs: number;
+      readonly runsDone: number;
     }
   | {
       readonly state: 'failed';
@@ -136,4 +147,5 @@ export type RehearsalState =
       readonly remedy: string;
     }
   | { readonly state: 'cancelled'; readonly number: number }
-  | { readonly state: 'done'; readonly number: number; readonly result: RehearsalResult };
+  | { readonly state: 'done'; readonly number: number; readonly result: RehearsalResult }
+  | { readonly state: 'many done'; readonly number: number; readonly result: ManyResult };
