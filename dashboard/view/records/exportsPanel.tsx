@@ -30,8 +30,12 @@ export function ExportsPanel({
               what was made of it
             </span>
           </div>
-          <a href={downloadAddress(row.name, 'session')} download>
-            Download<span class="unseen"> the whole session</span>
+          <a
+            href={downloadAddress(row.name, 'session')}
+            aria-label="Download: Whole session"
+            download
+          >
+            Download
           </a>
         </li>
       </ul>
@@ -63,8 +67,8 @@ function ExportRow({ desk, state, session, to }: SessionProps & { to: ExportForm
         {made ? 'Make anew' : 'Make'}
       </button>
       {made ? (
-        <a href={downloadAddress(session.row.name, to)} download>
-          Download<span class="unseen">: {name}</span>
+        <a href={downloadAddress(session.row.name, to)} aria-label={`Download: ${name}`} download>
+          Download
         </a>
       ) : null}
       <JobLine desk={desk} job={job} what={`Exporting: ${name}`} />
