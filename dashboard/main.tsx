@@ -6,14 +6,17 @@ import { render } from 'preact';
 import { Charts } from './draw/charts.js';
 import { freshness, noteAwake } from './model/freshness.js';
 import { emptyLive, take } from './model/live.js';
+import { SoundWatch } from './model/sounds.js';
 import { STOP_RETRY_MS, stopAsked, stopConfirmed, stopFailed, stopIdle } from './model/stop.js';
 import { accessApi, leaveIfSignedOut } from './stream/accessApi.js';
 import { type Answer, api } from './stream/api.js';
 import { Connection } from './stream/connection.js';
 import type { Actions, Theme } from './view/actions.js';
-import { listenForKeys, setSingleKeys } from './view/keys.js';
+import { type BrowserSettings, recallSettings, setLamp } from './view/browserSettings.js';
+import { listenForKeys, setKeymap, setSingleKeys } from './view/keys.js';
 import { Page } from './view/page.js';
 import { PageBook } from './view/pageBook.js';
+import { Speaker } from './view/speaker.js';
 
 const live = emptyLive();
 const root = document.getElementById('page')!;
@@ -23,6 +26,9 @@ const still = matchMedia('(prefers-reduced-motion: reduce)');
 const charts = new Charts(() => schedule());
 let theme = (document.documentElement.dataset.theme ?? 'dark') as Theme;
 const book = new PageBook({ touch, recall, keep });
+let settings = recallSettings(recall);
+const speaker = new Speaker();
+const soundWatch = new SoundWatch();
 let keys = recall('lapwing.keys') !== 'off';
 let escapeHeld = false;
 let changed = true;
@@ -46,7 +52,7 @@ function paint(): void {
     changed = false;
     const page = book.current.name;
     const other = book.view({ live, nowMs, theme, actions });
-    const shown = { live, nowMs, page, other, theme, keys, escapeHeld, actions, charts };
+    const shown = { live, nowMs, page, other, theme, keys, settings, escapeHeld, actions, charts };
     render(<Page {...shown} />, root);
     showTitle(nowMs);
   }
@@ -70,6 +76,28 @@ function showTitle(nowMs: number): void {
   if (title === titleShown) return;
   titleShown = title;
   document.title = title;
+}
+
+function changeSettings(part: Partial<BrowserSettings>): void {
+  settings = { ...settings, ...part };
+  touch();
+}
+
+/** Within a key or a click; a browser lets a page sound only after one. */
+async function wakeSpeaker(): Promise<void> {
+  await speaker.wake();
+  changeSettings({ soundBlocked: speaker.blocked });
+}
+
+for (const kind of ['pointerdown', 'keydown']) {
+  window.addEventListener(kind, () => {
+    if (settings.sounds.on && settings.soundBlocked) void wakeSpeaker();
+  });
+}
+
+function soundAlarms(): void {
+  const level = soundWatch.next(live.state?.alarms ?? [], settings.sounds, performance.now());
+  if (level !== undefined) speaker.play(level, settings.sounds.volume);
 }
 
 async function asked(what: string, request: Promise<Answer>): Promise<Answer> {
@@ -148,9 +176,23 @@ const actions: Actions = {
     keep('lapwing.keys', on ? 'on' : 'off');
     touch();
   },
-  acknowledge: (alarm) => {
-    live.alarms.acknowledged.add(alarm);
-    touch();
+  setLamp: (lamp) => {
+    changeSettings({ lamp });
+    setLamp(lamp);
+    keep('lapwing.lamp', String(lamp));
+  },
+  setSounds: (sounds) => {
+    changeSettings({ sounds });
+    keep('lapwing.sounds', JSON.stringify(sounds));
+    if (sounds.on) void wakeSpeaker();
+  },
+  trySound: (level) => {
+    void wakeSpeaker().then(() => speaker.play(level, settings.sounds.volume));
+  },
+  setKeymap: (keymap) => {
+    changeSettings({ keymap });
+    setKeymap(keymap);
+    keep('lapwing.keymap', JSON.stringify(keymap));
   },
   dismissNotice: () => {
     live.notice = undefined;
@@ -172,6 +214,7 @@ const connection = new Connection(stream, {
       else live.stop = stopFailed(live.stop, message.detail);
     } else {
       take(live, message, performance.now());
+      if (message.tell === 'state') soundAlarms();
     }
     touch();
   },
@@ -201,6 +244,9 @@ function keep(name: string, value: string): void {
 }
 
 setSingleKeys(keys);
+setKeymap(settings.keymap);
+setLamp(settings.lamp);
+if (settings.sounds.on) void wakeSpeaker();
 listenForKeys(stopEverything, (is) => {
   escapeHeld = is;
   touch();

@@ -2,12 +2,12 @@
 import type { Live } from '../model/live.js';
 import { drawAnimal, drawBelt } from './belt.js';
 import { type Palette, readPalette } from './palette.js';
-import { drawProfile } from './profile.js';
+import { drawLicking, drawProfile } from './profile.js';
 import { drawRaster, drawRunning } from './raster.js';
 import { SpeedPlot } from './speedPlot.js';
 import { Surface } from './surface.js';
 
-const CANVASES = ['belt', 'animal', 'raster', 'running', 'profile'] as const;
+const CANVASES = ['belt', 'animal', 'raster', 'running', 'profile', 'licking'] as const;
 export type ChartName = (typeof CANVASES)[number];
 
 /** The marker runs on between two states, 50 ms apart, at the speed last told; no further. */
@@ -86,6 +86,9 @@ export class Charts {
       this.profileMs = nowMs;
       this.paint('profile', String(live.profile.version), (surface) =>
         drawProfile(surface, this.palette, live.profile),
+      );
+      this.paint('licking', String(live.profile.version), (surface) =>
+        drawLicking(surface, this.palette, live.profile),
       );
     }
     if (live.trace.version !== this.traceVersion && nowMs - this.traceMs >= TRACE_MS) {

@@ -22,11 +22,6 @@ export function bytesWords(bytes: number): string {
   return `${(bytes / 1e9).toFixed(2)} GB`;
 }
 
-/** The rules file says uL; the page writes it as people do. */
-export function unitWords(unit: string): string {
-  return unit === 'uL' ? 'µL' : unit;
-}
-
 export function plural(count: number, one: string, many = one + 's'): string {
   return `${count} ${count === 1 ? one : many}`;
 }

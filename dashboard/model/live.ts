@@ -1,14 +1,16 @@
 /** Everything the page knows, and how each message changes it. Nothing here touches the screen. */
 import type { NumberedEvent, Setup, Snapshot } from '../../server/loop/protocol.js';
+import type { StampedDecision } from '../../server/session/decisions.js';
 import type { StreamMessage } from '../../server/web/streamMessages.js';
 import { type Access, noAccess } from './access.js';
-import { type AlarmWatch, forgetAlarms, newAlarmWatch, watchEvent, watchState } from './alarms.js';
 import { LapStore, MARK, type Mark } from './laps.js';
 import { Profile } from './profile.js';
 import { type Stop, stopIdle } from './stop.js';
 import { SpeedTrace } from './trace.js';
 
 export const EVENTS_KEPT = 200;
+
+export type PredictedField = Extract<StampedDecision, { kind: 'field predicted' }>;
 
 export interface Live {
   access: Access;
@@ -29,9 +31,12 @@ export interface Live {
   /** The newest events that are told in words (licks are only drawn), oldest first. */
   readonly events: NumberedEvent[];
   lastEvent: number;
+  /** What the last induction is predicted to leave. */
+  field: PredictedField | undefined;
   /** Events that were never sent to this page. */
   unseen: number;
-  readonly alarms: AlarmWatch;
+  /** By choice: the lap in which the board was armed by its last change. */
+  readonly armedAnew: Map<string, number>;
   stop: Stop;
   /** The answer to the last thing asked. */
   notice:
@@ -55,8 +60,9 @@ export function emptyLive(): Live {
     profile: new Profile(),
     events: [],
     lastEvent: 0,
+    field: undefined,
     unseen: 0,
-    alarms: newAlarmWatch(),
+    armedAnew: new Map(),
     stop: stopIdle,
     notice: undefined,
   };
@@ -107,7 +113,6 @@ function takeState(live: Live, state: Snapshot, nowMs: number): void {
   if (state.boardUs !== live.state?.boardUs) live.movedAtMs = nowMs;
   live.state = state;
   live.trace.add(state.boardUs, state.speedCmPerS);
-  watchState(live.alarms, state);
   if (state.session !== 'running' || state.positionCm === null) return;
   live.laps.reach(state.lap);
   const lengthCm = live.setup?.beltLengthCm ?? 0;
@@ -124,9 +129,12 @@ function takeEvent(live: Live, numbered: NumberedEvent): void {
   }
   live.lastEvent = number;
   if (event.kind === 'session began') forgetSession(live);
+  if (event.kind === 'field predicted') live.field = event;
   if (event.kind === 'lap began') live.laps.reach(event.lap);
-  const water = event.kind === 'fired' && outputKind(live, event.output) === 'valve';
-  watchEvent(live.alarms, event, water);
+  if (event.kind === 'choice') {
+    if (event.state === 'armed anew') live.armedAnew.set(event.name, event.lap);
+    else live.armedAnew.delete(event.name);
+  }
   // A page that joined late learns the speeds of the laps before from the events' own stamps.
   const lengthCm = live.setup?.beltLengthCm ?? 0;
   if (lengthCm > 0 && event.positionCm !== null) {
@@ -182,6 +190,7 @@ function forgetLife(live: Live, life: string): void {
 function forgetSession(live: Live): void {
   live.laps.clear();
   live.profile.clear();
-  forgetAlarms(live.alarms);
+  live.armedAnew.clear();
+  live.field = undefined;
   live.events.length = 0;
 }

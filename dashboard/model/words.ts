@@ -1,6 +1,7 @@
 import type { StampedDecision } from '../../server/session/decisions.js';
 import type { OperatorAct } from '../../server/session/inputs.js';
 import { fixed, plural } from './format.js';
+import { endWords } from './phase.js';
 
 export type Tone = 'plain' | 'good' | 'warn' | 'bad' | 'stim' | 'water' | 'faint';
 
@@ -64,7 +65,20 @@ export function eventWords(
     case 'cell began':
       return say(`Cell ${event.index} began`, 'good');
     case 'note':
-      return say(`Note: ${event.text}`);
+      return say(noteWords(event));
+    case 'end foreseen':
+      return say(`The end is near: ${endWords(event) ?? ''} (${event.reason})`, 'warn');
+    case 'choice':
+      return say(
+        event.state === 'in force'
+          ? `${event.name} counts as changed`
+          : `The board is armed by ${event.name} as changed`,
+        'good',
+      );
+    case 'alarm':
+      return event.state === 'raised'
+        ? say(`Alarm: ${event.text}`, event.level === 'bad' ? 'bad' : 'warn')
+        : say(`Over: ${event.text}`, 'good');
     case 'operator':
       return say(`${event.who || event.from}: ${actWords(event.act)}`);
     case 'link':
@@ -105,6 +119,11 @@ function firedWords(
   const tone = event.output === null ? 'plain' : driven;
   const output = event.output === null ? '' : ` (${event.output})`;
   return say(`${event.rule} fired${output}${place}${error}, ${how}`, tone);
+}
+
+function noteWords({ text, mark }: Extract<StampedDecision, { kind: 'note' }>): string {
+  if (!mark) return `Note: ${text}`;
+  return text === '' ? `Mark ${mark}` : `Mark ${mark}: ${text}`;
 }
 
 function fieldWords(event: Extract<StampedDecision, { kind: 'field predicted' }>): string {
@@ -153,6 +172,18 @@ export function actWords(act: OperatorAct): string {
       return `excluded lap ${act.lap}`;
     case 'note':
       return `note: ${act.text}`;
+    case 'mark':
+      return 'made a mark';
+    case 'ask':
+      return act.laps === 0
+        ? `asked for ${act.rule} now`
+        : `asked for ${act.rule} in the next ${plural(act.laps, 'lap')}`;
+    case 'withdraw':
+      return `took back ${act.rule}`;
+    case 'put off':
+      return `put off the end by ${act.laps > 0 ? plural(act.laps, 'lap') : `${act.minutes} min`}`;
+    case 'acknowledge':
+      return act.alarm === 'all' ? 'saw the alarms' : `saw the alarm: ${act.alarm}`;
     case 'stop everything':
       return 'stopped everything';
     case 'allow stimulation':

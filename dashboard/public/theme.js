@@ -8,6 +8,13 @@
   }
   if (!['dark', 'red', 'light'].includes(theme)) theme = 'dark';
   document.documentElement.dataset.theme = theme;
+  let lamp = 1;
+  try {
+    lamp = Number(localStorage.getItem('lapwing.lamp') ?? 1);
+  } catch {
+    // As bright as it comes.
+  }
+  if (lamp >= 0.15 && lamp < 1) document.documentElement.style.setProperty('--lamp', String(lamp));
   const scheme = document.querySelector('meta[name="color-scheme"]');
   scheme?.setAttribute('content', theme === 'light' ? 'light' : 'dark');
 })();

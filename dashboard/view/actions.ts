@@ -1,4 +1,7 @@
+import type { AlarmView } from '../../server/loop/alarms/alarms.js';
 import type { OperatorAct } from '../../server/session/inputs.js';
+import type { Keymap } from '../model/keymap.js';
+import type { SoundWish } from '../model/sounds.js';
 import type { Answer, Beginning } from '../stream/api.js';
 
 export type Theme = 'dark' | 'red' | 'light';
@@ -16,7 +19,9 @@ export interface Actions {
   signOut(): Promise<void>;
   setTheme(theme: Theme): void;
   setKeys(on: boolean): void;
+  setLamp(lamp: number): void;
+  setSounds(wish: SoundWish): void;
+  trySound(level: AlarmView['level']): void;
+  setKeymap(map: Keymap): void;
   dismissNotice(): void;
-  /** An alarm was seen. */
-  acknowledge(alarm: string): void;
 }

@@ -37,15 +37,28 @@ export function BeltPanel({ live, charts }: { live: Live; charts: Charts }) {
         <span class="keys">
           <span class="dashed">first {PROFILE_LAPS} laps</span>
           <span class="solid">last {PROFILE_LAPS} laps</span>
-          <span class="bars">licks per lap</span>
         </span>
       </h3>
       <div
         class="stack profile"
         role="img"
-        aria-label="Mean speed and licks by position, the first laps beside the last ones"
+        aria-label="Mean speed by position, the first laps beside the last ones"
       >
         <Canvas name="profile" charts={charts} />
+      </div>
+      <h3>
+        Licks per lap by position{' '}
+        <span class="keys">
+          <span class="dashed">first {PROFILE_LAPS} laps</span>
+          <span class="bars">last {PROFILE_LAPS} laps</span>
+        </span>
+      </h3>
+      <div
+        class="stack profile licking"
+        role="img"
+        aria-label="Licks per lap by position, the first laps beside the last ones"
+      >
+        <Canvas name="licking" charts={charts} />
       </div>
     </section>
   );

@@ -1,7 +1,7 @@
 import type { Live } from '../model/live.js';
 import type { Actions } from './actions.js';
 import { HoldButton } from './holdButton.js';
-import { LONG_PRESS_MS } from './keys.js';
+import { keysOf, LONG_PRESS_MS } from './keys.js';
 import { LevelShape } from './shapes.js';
 
 /** Putting a hand on the belt is the safe direction and acts at once; taking it off wants longer. */
@@ -10,7 +10,7 @@ export function HandButton({ live, actions }: { live: Live; actions: Actions }) 
   return (
     <HoldButton
       holdMs={on ? LONG_PRESS_MS : 0}
-      shortcut="h"
+      shortcut="hand on belt"
       pressed={on}
       class={on ? 'is-held' : ''}
       onFire={() => void actions.act({ act: 'hand on belt', on: !on })}
@@ -30,9 +30,10 @@ export function HandBanner({ live }: { live: Live }) {
       <div>
         <strong>A hand is on the belt</strong>
         <p>
-          Nothing counts: no laps, no places, no licks. Water and stimulus are held. When the hand is
-          off, hold <b>H</b>; position is known again at the next seam mark. On a belt without one,
-          first turn it to its start: where it then stands is 0 cm.
+          Nothing counts: no laps, no places, no licks. Water and stimulus are held. When the hand
+          is off, hold <b>{keysOf('hand on belt')[0] ?? 'its button'}</b>; position is known again
+          at the next seam mark. On a belt without one, first turn it to its start: where it then
+          stands is 0 cm.
         </p>
       </div>
     </div>

@@ -1,14 +1,15 @@
 import type { ComponentChildren } from 'preact';
 import { useEffect, useRef, useState } from 'preact/hooks';
-import { bindKey } from './keys.js';
+import type { KeyAct } from '../model/keymap.js';
+import { bindKey, keysOf } from './keys.js';
 
 export interface HoldButtonProps {
   /** How long it must be held; 0 acts at once. Whatever drives an output wants a long press. */
   readonly holdMs: number;
   readonly onFire: () => void;
   readonly children: ComponentChildren;
-  /** A single key that does the same from anywhere on the page. */
-  readonly shortcut?: string;
+  /** The act whose keys do the same from anywhere on the page. */
+  readonly shortcut?: KeyAct;
   readonly class?: string;
   readonly pressed?: boolean;
   readonly disabled?: boolean;
@@ -23,6 +24,7 @@ export function HoldButton(props: HoldButtonProps) {
   const { holdMs, shortcut, disabled } = props;
   const [holding, setHolding] = useState(false);
   const timer = useRef<ReturnType<typeof setTimeout>>(undefined);
+  const button = useRef<HTMLButtonElement>(null);
   const fire = useRef(props.onFire);
   fire.current = props.onFire;
 
@@ -32,7 +34,8 @@ export function HoldButton(props: HoldButtonProps) {
     setHolding(false);
   };
   const begin = () => {
-    if (disabled || timer.current !== undefined) return;
+    // A fieldset switches its buttons off, too.
+    if (timer.current !== undefined || button.current?.matches(':disabled')) return;
     if (holdMs === 0) {
       fire.current();
       return;
@@ -58,10 +61,11 @@ export function HoldButton(props: HoldButtonProps) {
   return (
     <button
       type="button"
+      ref={button}
       class={`hold ${props.class ?? ''} ${holding ? 'holding' : ''} ${holdMs > 0 ? 'long' : ''}`}
       aria-pressed={props.pressed}
       aria-label={props.label}
-      aria-keyshortcuts={shortcut?.toUpperCase()}
+      aria-keyshortcuts={shortcut && keysOf(shortcut)[0]}
       disabled={disabled}
       onPointerDown={(event) => {
         if (event.button === 0) begin();
@@ -83,11 +87,18 @@ export function HoldButton(props: HoldButtonProps) {
       }}
     >
       <span class="hold-text">{props.children}</span>
-      {shortcut === undefined ? null : (
-        <span class="key" aria-hidden="true">
-          {shortcut.toUpperCase()}
-        </span>
-      )}
+      {shortcut === undefined ? null : <KeyCaps act={shortcut} />}
     </button>
+  );
+}
+
+/** The first key of an act, as it is written on the key. */
+export function KeyCaps({ act }: { act: KeyAct }) {
+  const [label] = keysOf(act);
+  if (label === undefined) return null;
+  return (
+    <span class="key" aria-hidden="true">
+      {label}
+    </span>
   );
 }

@@ -7,8 +7,11 @@ import type { Actions, Theme } from './actions.js';
 import { AlarmsPanel } from './alarmsPanel.js';
 import { Banners } from './banners.js';
 import { BeltPanel, SpeedPanel } from './beltPanel.js';
+import { BrowserPanel } from './browserPanel.js';
+import type { BrowserSettings } from './browserSettings.js';
 import { ControlsBar } from './controlsBar.js';
 import { EventsPanel } from './eventsPanel.js';
+import { FieldPanel } from './fieldPanel.js';
 import { HealthPanel } from './healthPanel.js';
 import { RulesPanel } from './rulesPanel.js';
 import { SessionPanel } from './sessionPanel.js';
@@ -25,6 +28,7 @@ export interface PageProps {
   readonly other: ComponentChild;
   readonly theme: Theme;
   readonly keys: boolean;
+  readonly settings: BrowserSettings;
   readonly escapeHeld: boolean;
   readonly actions: Actions;
   readonly charts: Charts;
@@ -49,26 +53,30 @@ export function Page(props: PageProps) {
   );
 }
 
-function Run({ live, actions, charts, stale }: PageProps & { stale: string }) {
+function Run({ live, actions, charts, settings, stale }: PageProps & { stale: string }) {
   return (
     <main>
       <div class={`shown now ${stale}`}>
         <Vitals live={live} />
       </div>
+      <fieldset class="acting alarm-place" disabled={!hasControls(live.access)}>
+        <AlarmsPanel live={live} actions={actions} />
+      </fieldset>
       <div class={`shown seen ${stale}`}>
         <BeltPanel live={live} charts={charts} />
         <SpeedPanel charts={charts} />
       </div>
       <div class="side">
         <fieldset class="acting" disabled={!hasControls(live.access)}>
-          <AlarmsPanel live={live} actions={actions} />
           <SessionPanel live={live} actions={actions} />
           <SteerPanel live={live} actions={actions} />
         </fieldset>
         <div class={`shown ${stale}`}>
           <RulesPanel live={live} />
+          <FieldPanel live={live} />
         </div>
         <HealthPanel live={live} />
+        <BrowserPanel settings={settings} actions={actions} />
       </div>
       <div class={`shown events ${stale}`}>
         <EventsPanel live={live} />

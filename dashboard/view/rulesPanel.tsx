@@ -1,9 +1,11 @@
 import type { Live } from '../model/live.js';
+import { askedWords } from '../model/phase.js';
 import { LevelShape } from './shapes.js';
 
 /** How often each rule did what. */
 export function RulesPanel({ live }: { live: Live }) {
   const rules = live.state?.rules ?? [];
+  const lap = live.state?.lap ?? 0;
   if (rules.length === 0) return null;
   return (
     <section class="panel rules-panel" aria-labelledby="rules-title">
@@ -25,8 +27,9 @@ export function RulesPanel({ live }: { live: Live }) {
                 <span class={`armed ${rule.armed ? 'yes' : ''}`}>
                   <LevelShape level={rule.armed ? 'good' : 'off'} />
                   {rule.name}
-                  <span class={rule.armed ? 'armed-word' : 'unseen'}>
+                  <span class={rule.armed || rule.asked ? 'armed-word' : 'unseen'}>
                     {rule.armed ? 'armed' : 'not armed'}
+                    {rule.asked ? `, ${askedWords(rule.asked, lap)}` : ''}
                   </span>
                 </span>
               </th>

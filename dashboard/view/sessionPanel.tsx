@@ -1,5 +1,7 @@
 import { useState } from 'preact/hooks';
+import { plural } from '../model/format.js';
 import type { Live } from '../model/live.js';
+import { endWords } from '../model/phase.js';
 import type { Actions } from './actions.js';
 import { AnimalField } from './animals/animalField.js';
 import { HoldButton } from './holdButton.js';
@@ -116,19 +118,60 @@ function EndPanel({ live, actions }: { live: Live; actions: Actions }) {
           </div>
         </form>
       ) : (
-        <div class="pair">
-          <HoldButton
-            holdMs={LONG_PRESS_MS}
-            shortcut="p"
-            onFire={() => void actions.act({ act: 'phase', to: 'next' })}
-          >
-            Next phase
-          </HoldButton>
-          <button type="button" onClick={() => setAsking(true)}>
+        <>
+          <Ending live={live} actions={actions} />
+          <Phases live={live} actions={actions} />
+          <button type="button" class="wide" onClick={() => setAsking(true)}>
             End session…
           </button>
-        </div>
+        </>
       )}
     </section>
+  );
+}
+
+/** The end as far as it can be foreseen, and what puts it off. */
+function Ending({ live, actions }: { live: Live; actions: Actions }) {
+  const { end, putOff } = live.state!;
+  const words = endWords(end);
+  // By what it is measured: a time is put off by minutes, the rest by laps.
+  const byTime = end !== null && end.s !== null;
+  const by = byTime ? { laps: 0, minutes: 5 } : { laps: 5, minutes: 0 };
+  const sofar = [
+    ...(putOff.laps > 0 ? [plural(putOff.laps, 'lap')] : []),
+    ...(putOff.minutes > 0 ? [`${putOff.minutes} min`] : []),
+  ];
+  return (
+    <div class="ending">
+      <p>
+        {words === undefined ? 'When it ends cannot be foreseen.' : `Ends ${words}.`}
+        {sofar.length > 0 ? ` Put off by ${sofar.join(' and ')}.` : ''}
+      </p>
+      <HoldButton
+        holdMs={0}
+        shortcut="put off"
+        onFire={() => void actions.act({ act: 'put off', ...by })}
+      >
+        Put off by {byTime ? '5 min' : '5 laps'}
+      </HoldButton>
+    </div>
+  );
+}
+
+function Phases({ live, actions }: { live: Live; actions: Actions }) {
+  if ((live.setup?.session?.phases.length ?? 0) < 1) return null;
+  const go = (to: 'next' | 'previous' | 'repeat') => void actions.act({ act: 'phase', to });
+  return (
+    <div class="three">
+      <HoldButton holdMs={LONG_PRESS_MS} shortcut="previous phase" onFire={() => go('previous')}>
+        Phase before
+      </HoldButton>
+      <HoldButton holdMs={LONG_PRESS_MS} shortcut="repeat phase" onFire={() => go('repeat')}>
+        Phase again
+      </HoldButton>
+      <HoldButton holdMs={LONG_PRESS_MS} shortcut="next phase" onFire={() => go('next')}>
+        Next phase
+      </HoldButton>
+    </div>
   );
 }

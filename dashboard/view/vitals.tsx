@@ -1,6 +1,7 @@
 import type { Snapshot } from '../../server/loop/protocol.js';
 import { fixed } from '../model/format.js';
 import type { Live } from '../model/live.js';
+import { nextWords, progressWords } from '../model/phase.js';
 import { LevelShape } from './shapes.js';
 
 /** The figures to be read from across the room. */
@@ -62,12 +63,18 @@ export function Vitals({ live }: { live: Live }) {
 function PhaseVital({ live }: { live: Live }) {
   const { state, setup } = live;
   const phases = setup?.session?.phases ?? [];
+  const next = nextWords(state, setup);
   return (
     <div class="vital phase">
       <dt>Phase</dt>
       <dd>
         <b>{state?.phase ?? '–'}</b>
-        {state?.phase ? <span class="unit">lap {state.phaseLap} of it</span> : null}
+        {state?.phase ? (
+          <span class="progress" title={state.progress?.what}>
+            {progressWords(state) ?? `lap ${state.phaseLap} of it`}
+          </span>
+        ) : null}
+        <span class="under next">{next === undefined ? '' : `next: ${next}`}</span>
         {phases.length > 1 ? (
           <ol class="phases">
             {phases.map((name) => (

@@ -1,7 +1,7 @@
 import fc from 'fast-check';
 import { describe, expect, test } from 'vitest';
 import { tickStep, xOf } from '../../dashboard/draw/axis.js';
-import { boundsProblem } from '../../dashboard/model/bounds.js';
+import { boundsProblem, typedValue } from '../../dashboard/model/bounds.js';
 import { bytesWords, clock, fixed } from '../../dashboard/model/format.js';
 import { LAPS_KEPT, LapStore, MARK, MARKS_A_LAP, type Mark } from '../../dashboard/model/laps.js';
 import { BINS, Profile } from '../../dashboard/model/profile.js';
@@ -14,6 +14,7 @@ import {
   stopIdle,
 } from '../../dashboard/model/stop.js';
 import { SpeedTrace, TRACE_S } from '../../dashboard/model/trace.js';
+import { shown } from '../../dashboard/model/units.js';
 
 describe('the laps kept', () => {
   test('hold exactly what a plain list of the newest laps would, whatever comes', () => {
@@ -135,7 +136,7 @@ describe('stop everything', () => {
 });
 
 describe('bounds of a choice', () => {
-  const target = { name: 'target', unit: 'uL', least: 1, most: 8 };
+  const target = { name: 'target', unit: 'nL', least: 1000, most: 8000 };
   test.each([
     ['1', ''],
     ['8', ''],
@@ -147,6 +148,22 @@ describe('bounds of a choice', () => {
     ['four', 'A number is wanted.'],
   ])('%j: %j', (draft, problem) => {
     expect(boundsProblem(target, draft)).toBe(problem);
+  });
+
+  test('on a step, where the file says steps', () => {
+    const stepped = { name: 'target', unit: 'cm', least: 20, most: 140, step: 2.5 };
+    expect(boundsProblem(stepped, '22.5')).toBe('');
+    expect(boundsProblem(stepped, '23')).toBe('In steps of 2.5 cm from 20.');
+  });
+
+  test('what is typed in the shown unit is sent in the base unit, without a rounding of its own', () => {
+    expect(typedValue({ unit: 'nL' }, '4.1')).toBe(4100);
+    expect(typedValue({ unit: 'us' }, '0.3')).toBe(300);
+    expect(typedValue({ unit: 'cm' }, '45.1')).toBe(45.1);
+    expect([shown(4100, 'nL'), shown(5000, 'us'), shown(45, 'cm'), shown('short', '')]).toEqual([
+      ...[4.1, 5, 45],
+      'short',
+    ]);
   });
 
   test('only the options offered', () => {

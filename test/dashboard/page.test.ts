@@ -28,13 +28,15 @@ async function inkOf(page: Page, selector: string): Promise<number> {
 }
 
 /** A key pressed and let go within one task: never long, however slow the machine. */
-async function tapKey(page: Page, key: string): Promise<void> {
+async function tapKey(page: Page, code: string): Promise<void> {
   await page.evaluate((name) => {
     const target = document.activeElement ?? document.body;
     for (const type of ['keydown', 'keyup']) {
-      target.dispatchEvent(new KeyboardEvent(type, { key: name, bubbles: true, cancelable: true }));
+      target.dispatchEvent(
+        new KeyboardEvent(type, { code: name, key: name, bubbles: true, cancelable: true }),
+      );
     }
-  }, key);
+  }, code);
 }
 
 describe('the page, in a real browser', () => {
@@ -55,6 +57,20 @@ describe('the page, in a real browser', () => {
     expect(loop.connections).toBe(1);
     // The policy forbids inline script and style: the page must not even try.
     expect(troubles).toEqual([]);
+  });
+
+  test('draws the field that the last induction is predicted to leave, and says it in words', async () => {
+    const { page, loop } = await openPage({}, running);
+    await page.locator('.field-panel .curve').waitFor();
+    const field = loop.animal.events.findLast(({ event }) => event.kind === 'field predicted')!;
+    const { event } = field as { event: Extract<typeof field.event, { kind: 'field predicted' }> };
+    await page
+      .getByText(`${event.widthCm.toFixed(0)} cm wide.`, { exact: false })
+      .first()
+      .waitFor();
+    const words = await page.locator('.field-panel svg').getAttribute('aria-label');
+    expect(words).toContain(`Peak at ${event.peakCm.toFixed(0)} cm`);
+    expect(await page.locator('.field-panel').textContent()).toContain('not measured');
   });
 
   test('says how old it is, and turns grey, when the board, the loop or the service is gone', async () => {
@@ -150,11 +166,11 @@ describe('the page, in a real browser', () => {
 
     // Out of the field, single keys act from anywhere; what drives an output wants a long press.
     await page.evaluate(() => (document.activeElement as HTMLElement | null)?.blur());
-    await tapKey(page, 's');
+    await tapKey(page, 'KeyS');
     await until(() => loop.acts().some((act) => act.act === 'hold'));
     expect(loop.acts()).toEqual([{ act: 'hold', what: 'stimulus', on: true }]);
     await page.getByText('Held: held by the operator', { exact: true }).waitFor();
-    await tapKey(page, 's');
+    await tapKey(page, 'KeyS');
     await page.waitForTimeout(600);
     expect(loop.acts()).toHaveLength(1);
     await page.keyboard.down('s');
@@ -164,7 +180,7 @@ describe('the page, in a real browser', () => {
       { act: 'hold', what: 'stimulus', on: false },
       { act: 'allow stimulation' },
     ]);
-    await tapKey(page, '1');
+    await tapKey(page, 'Digit1');
     await page.waitForTimeout(600);
     expect(loop.acts()).toHaveLength(3);
     await page.keyboard.down('1');
@@ -172,11 +188,15 @@ describe('the page, in a real browser', () => {
     await page.keyboard.up('1');
     expect(loop.acts()[3]).toEqual({ act: 'press', button: 'induce_now' });
 
+    // The mark is made by the key; its words come when there is time for them.
     await page.keyboard.press('n');
+    await until(() => loop.acts().length === 5);
+    expect(loop.acts()[4]).toEqual({ act: 'mark' });
+    await page.getByText('Mark 1: lap').waitFor();
     await page.keyboard.type('swims s1');
     await page.keyboard.press('Enter');
-    await until(() => loop.acts().length === 5);
-    expect(loop.acts()[4]).toEqual({ act: 'note', text: 'swims s1' });
+    await until(() => loop.acts().length === 6);
+    expect(loop.acts()[5]).toEqual({ act: 'note', text: 'swims s1', mark: 1 });
 
     await tabTo(/^End session/);
     await page.keyboard.press('Enter');
@@ -196,7 +216,7 @@ describe('the page, in a real browser', () => {
     await field.press('Enter');
     await field.fill('52');
     await field.press('Enter');
-    await page.getByText('45 to 52 cm from the next lap').waitFor();
+    await page.getByText(/^45 to 52 cm from lap \d+$/).waitFor();
     expect(loop.acts()).toEqual([{ act: 'choose', name: 'target', value: 52 }]);
   });
 

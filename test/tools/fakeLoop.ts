@@ -163,7 +163,13 @@ export class FakeLoop {
     const { act, who, from } = message;
     animal.tell({ kind: 'operator', act, who, from });
     if (act.act === 'hold') animal.hold(act.what, act.on);
-    if (act.act === 'note') animal.tell({ kind: 'note', text: act.text });
+    if (act.act === 'note') animal.note(act.text, act.mark);
+    if (act.act === 'mark') animal.mark();
+    if (act.act === 'ask') animal.ask(act.rule, act.laps);
+    if (act.act === 'withdraw') animal.ask(act.rule, undefined);
+    if (act.act === 'put off') animal.putOff(act.laps, act.minutes);
+    if (act.act === 'acknowledge') animal.acknowledge(act.alarm, who, from);
+    if (act.act === 'new cell') animal.state.cell++;
     if (act.act === 'choose' && typeof act.value === 'number') animal.choose(act.value);
     if (act.act === 'end') animal.end(act.reason);
     if (act.act === 'allow stimulation') animal.hold('stimulus', false);
