@@ -1,5 +1,7 @@
 /** What the simulated animal claims to do. Every range here is `common practice, no source`. */
 import { beforeAll, describe, expect, test } from 'vitest';
+import { Animal } from '../../hardware-sim/animal/animal.js';
+import { ANIMAL } from '../../hardware-sim/animal/parameters.js';
 import { aheadCm, lickIntervalsS, median, PLACE_CM, WaterHost } from './waterHost.js';
 
 const NO_GROOMING = { groomChance: 0 };
@@ -162,5 +164,40 @@ describe('an animal', () => {
     };
     expect(run(21)).toEqual(run(21));
     expect(run(21).travel).not.toBe(run(22).travel);
+  });
+});
+
+describe('a drop at the spout', () => {
+  /** So many animals of a kind, each given its first drop; those that took no notice of it. */
+  const unmoved = (trained: boolean, animals = 600) =>
+    Array.from({ length: animals }, (_, seed) => {
+      const animal = new Animal(ANIMAL, 180, seed + 1, trained, PLACE_CM);
+      const { skill } = animal;
+      animal.drop(4, PLACE_CM, 1_000_000);
+      return { animal, skill };
+    }).filter(({ animal }) => animal.licking.nextUs === Number.POSITIVE_INFINITY);
+
+  test('is missed by a naive animal now and then, by a trained one hardly ever', () => {
+    const naive = unmoved(false).length / 600;
+    expect(naive).toBeGreaterThan(0.1);
+    expect(naive).toBeLessThan(0.4);
+    expect(unmoved(true).length / 600).toBeLessThan(0.05);
+  });
+
+  test('that was missed hangs there, teaches nothing, and is drunk with the next licks', () => {
+    const missed = unmoved(false);
+    expect(missed.length).toBeGreaterThan(0);
+    for (const { animal, skill } of missed) {
+      expect(animal.skill).toBe(skill);
+      expect(animal.atSpoutUl).toBe(4);
+      for (let lick = 0; lick < 4; lick++) animal.licked();
+      expect(animal.drunkUl).toBeCloseTo(4, 9);
+    }
+  });
+
+  test('falls beside a spout at which as much hangs as can', () => {
+    const animal = new Animal({ ...ANIMAL, naiveMissChance: 1 }, 180, 3, false, PLACE_CM);
+    for (let drop = 0; drop < 10; drop++) animal.drop(4, PLACE_CM, 1_000_000);
+    expect(animal.atSpoutUl).toBe(15);
   });
 });

@@ -85,6 +85,14 @@ describe('the Rehearse page, in a real browser', () => {
         return data.some((value) => value > 0);
       }),
     );
+    // How several sessions differ, asked for from the same form.
+    await tabTo(page, /^Sessions/, 'Shift+Tab');
+    await page.keyboard.press('Control+A');
+    await page.keyboard.type('3');
+    await page.keyboard.press('Enter');
+    await page.locator('.result.many').waitFor({ timeout: 90_000 });
+    await page.getByRole('row', { name: /^water .*always|^water .*\(/ }).waitFor();
+    expect(await page.locator('.result.many svg.spread').count()).toBeGreaterThan(6);
     // The policy forbids inline style, script and unsafe sinks: the editor must not even try.
     expect(troubles).toEqual([]);
 
