@@ -46,7 +46,7 @@ function detailOf(d: StampedDecision): string {
     case 'drawn':
       return String(d.value);
     case 'note':
-      return d.text;
+      return d.mark ? `${d.text} (mark ${d.mark})`.trim() : d.text;
     case 'trust':
       return `${d.trust}: ${d.reason}`;
     default: {

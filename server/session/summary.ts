@@ -7,6 +7,8 @@ export interface SessionSummary {
   licks: number;
   waterNl: number;
   endedBecause: string;
+  /** Cells after the first, with what was noted of each and the lap in which it began. */
+  readonly cells: { readonly index: number; readonly lap: number; readonly fields: string }[];
   sessionUs: number;
 }
 export interface RuleSummary {
@@ -30,6 +32,7 @@ export class Summariser {
     licks: 0,
     waterNl: 0,
     endedBecause: '',
+    cells: [],
     sessionUs: 0,
   };
   #beganUs = 0;
@@ -52,6 +55,11 @@ export class Summariser {
       case 'lap began':
         summary.laps = decision.lap;
         return;
+      case 'cell began': {
+        const { index, lap, fields } = decision;
+        summary.cells.push({ index, lap, fields: fieldWords(fields) });
+        return;
+      }
       case 'lick':
         if (!decision.artefact) summary.licks++;
         return;
@@ -101,6 +109,13 @@ export class Summariser {
   }
 }
 
+/** What was noted of a cell: `depth (um): 350; file name: a12`. */
+export function fieldWords(fields: Readonly<Record<string, string>>): string {
+  return Object.entries(fields)
+    .map(([name, value]) => `${name}: ${value}`)
+    .join('; ');
+}
+
 /** The summary in words, a line a fact. */
 export function summaryLines(summary: SessionSummary): string[] {
   const minutes = (summary.sessionUs / 60_000_000).toFixed(1);
@@ -108,6 +123,9 @@ export function summaryLines(summary: SessionSummary): string[] {
     `${minutes} min, ${summary.laps} laps, ${summary.licks} licks, ${(summary.waterNl / 1_000).toFixed(1)} uL of water`,
     `ended: ${summary.endedBecause}`,
   ];
+  for (const { index, lap, fields } of summary.cells) {
+    lines.push(`  cell ${index} from lap ${lap}${fields === '' ? '' : `: ${fields}`}`);
+  }
   for (const [name, rule] of summary.rules) {
     const shams = rule.shams > 0 ? `, ${rule.shams} as sham` : '';
     lines.push(`  ${name}: fired ${rule.fired}${shams}${errors(rule)}`);

@@ -3,6 +3,7 @@ import type { MeasuredBack } from '../../analysis/loopback.js';
 import type { SessionData } from '../../analysis/readSession.js';
 import type { SessionDescription } from '../../session/description.js';
 import { describeTroubles } from '../../session/record/recordState.js';
+import { fieldWords } from '../../session/summary.js';
 import type { Shown } from './figures.js';
 import { counted, factsTable, fixed } from './htmlTable.js';
 import { escapeHtml } from './plot.js';
@@ -20,6 +21,7 @@ export function facts(session: SessionData): string {
     ['animal protocol', description.protocolNumber ?? ''],
     ['weight', weightInWords(description.animal)],
     ['water', waterInWords(session)],
+    ...cellsInWords(session),
     ['ended', ended === null ? 'not known' : `${ended.how}: ${ended.reason}`],
     ['rig', `${rig.name}, belt ${rig.belt.lengthCm} cm, board ${board?.model ?? 'not recorded'}`],
     ['software', `lapwing ${software.version}, seed ${seed}`],
@@ -30,6 +32,15 @@ export function facts(session: SessionData): string {
         [`${role} file`, `${source}, SHA-256 ${sha256.slice(0, 16)}...`] as const,
     ),
   ]);
+}
+
+/** Cells after the first, with what the operator noted of each. */
+function cellsInWords({ decisions }: SessionData): [string, string][] {
+  return decisions.flatMap((decision): [string, string][] => {
+    if (decision.kind !== 'cell began') return [];
+    const { index, lap, fields } = decision;
+    return [[`cell ${index}`, [`from lap ${lap}`, fieldWords(fields)].filter(Boolean).join('; ')]];
+  });
 }
 
 function weightInWords(animal: SessionDescription['animal']): string {
