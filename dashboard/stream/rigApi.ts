@@ -1,3 +1,4 @@
+import type { Preflight } from '../../server/session/preflight.js';
 import type {
   BenchTold,
   GuideTold,
@@ -17,6 +18,7 @@ export const rigApi = {
     ask<TriedTold>('POST', '/api/rig/try', wish),
   guide: () => ask<GuideTold>('GET', '/api/rig/guide'),
   begin: (guide: string, of: string) => ask<GuideTold>('POST', '/api/rig/guide', { guide, of }),
+  lastPreflight: () => ask<{ preflight: Preflight | null }>('GET', '/api/rig/preflight'),
   preflight: () => ask<GuideTold>('POST', '/api/rig/preflight', {}),
   answer: (number: number, answers: Answers) =>
     ask<GuideTold>('POST', '/api/rig/guide/answer', { number, answers }),

@@ -6,6 +6,7 @@ import type { Actions } from './actions.js';
 import { AnimalField } from './animals/animalField.js';
 import { HoldButton } from './holdButton.js';
 import { LONG_PRESS_MS } from './keys.js';
+import { PreflightLine } from './preflightLine.js';
 
 /** Before a session: what to begin. During one: how to end it. */
 export function SessionPanel({ live, actions }: { live: Live; actions: Actions }) {
@@ -39,6 +40,7 @@ function BeginPanel({ live, actions }: { live: Live; actions: Actions }) {
           The last session ended{state.endedBecause ? `: ${state.endedBecause}` : ''}.
         </p>
       ) : null}
+      <PreflightLine />
       <form
         onSubmit={(event) => {
           event.preventDefault();

@@ -118,6 +118,11 @@ export const ERRORS = {
     'A calibration could not be kept, or not be put in force.',
     'Check that the folder of the rig file can be written, then measure again or put the name into the rig file by hand.',
   ),
+  preflightAgainst: entry(
+    'PREFLIGHT_AGAINST',
+    'The pre-flight of this rig failed, or none was made.',
+    'Make one: on the Rig page, or `lapwing preflight --rig RIG`, a minute. Or give the reason to begin all the same (`--despite`); it is kept with the session.',
+  ),
   preflightUnstored: entry(
     'PREFLIGHT_UNSTORED',
     'The result of the pre-flight could not be kept.',
@@ -157,6 +162,11 @@ export const ERRORS = {
     'BENCH_WITHHELD',
     'The output was not tried: the guards or the board said no.',
     "The limit named is the rig file's. Wait, ask for less, or look at the output's settings on the Rig page.",
+  ),
+  benchLate: entry(
+    'BENCH_LATE',
+    'The pulse came to the board too late, and was not begun.',
+    'Something held this computer up for longer than a tenth of a second. Try again; close other programs if it recurs.',
   ),
   benchStopped: entry(
     'BENCH_STOPPED',

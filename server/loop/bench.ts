@@ -103,7 +103,7 @@ export class Bench {
 
   /**
    * One pulse, now. Resolves when the board has said what became of it.
-   * @throws LapwingError BENCH_WITHHELD with the guard's reason, BENCH_BUSY, BENCH_STOPPED
+   * @throws LapwingError BENCH_WITHHELD with the guard's reason, BENCH_LATE, BENCH_BUSY, BENCH_STOPPED
    */
   async attempt({ output: name, widthUs, into }: TryRequest): Promise<Tried> {
     if (this.#pending !== undefined || this.#onFrame !== undefined) {
@@ -189,13 +189,13 @@ export class Bench {
         return;
       case 'refused':
       case 'missed':
-      case 'uncertain':
+      case 'uncertain': {
         if (decision.serial !== pending.serial) return;
         this.#pending = undefined;
-        pending.reject(
-          new LapwingError('benchWithheld', `The board did not do it: ${decision.reason}.`),
-        );
+        const code = decision.kind === 'missed' ? 'benchLate' : 'benchWithheld';
+        pending.reject(new LapwingError(code, `The board did not do it: ${decision.reason}.`));
         return;
+      }
     }
   }
 

@@ -1,4 +1,5 @@
 import { type ChildProcess, fork } from 'node:child_process';
+import { copyFileSync, mkdirSync } from 'node:fs';
 import { homedir } from 'node:os';
 import { join, resolve } from 'node:path';
 import { Command } from 'commander';
@@ -29,7 +30,7 @@ export function demoCommand(): Command {
     .option('--no-earlier', 'make no earlier sessions for an empty records folder')
     .action(async (flags: DemoFlags) => {
       const folder = join(packageRoot, 'hardware-sim/demo');
-      const rigPath = join(folder, 'rig.yaml');
+      const rigPath = ownRig(join(folder, 'rig.yaml'), `${resolve(flags.records)}-rig`);
       // Looked at before the demo's own session has a folder.
       const newcomer = flags.earlier && wantsDemoSessions(flags.records);
       const animalsFolder = resolve(flags.animals ?? `${flags.records}-animals`);
@@ -40,6 +41,7 @@ export function demoCommand(): Command {
         rigPath,
         exitWhenEnded: false,
         recordFolder: flags.records,
+        rulesFolder: join(folder, 'sessions'),
         animalsFolder,
         begin: {
           rulesPath: join(folder, 'sessions/demo.yaml'),
@@ -58,6 +60,21 @@ export function demoCommand(): Command {
         },
       }).finally(() => making?.kill());
     });
+}
+
+/**
+ * The demo's own copy of its rig file, beside the records: calibrations are kept there and put in
+ * force. A copy that is there already is used as it stands, unless it is no rig file any more.
+ */
+function ownRig(from: string, folder: string): string {
+  const own = join(folder, 'rig.yaml');
+  try {
+    readRig(own);
+  } catch {
+    mkdirSync(folder, { recursive: true });
+    copyFileSync(from, own);
+  }
+  return own;
 }
 
 /** Earlier sessions to look at, in a process of their own that goes when it is done. */

@@ -17,7 +17,7 @@ export function ChecksList({ checks }: { checks: readonly CheckedItem[] }) {
         <li key={id} class={result.replace(' ', '-')}>
           <LevelShape level={LEVELS[result]} />
           <div>
-            <b>{title}</b>: <span class="result">{result}</span>
+            <b>{title}</b>: <span class="verdict">{result}</span>
             <p>{detail}</p>
             {result === 'passed' || remedy === '' ? null : <p class="remedy">{remedy}</p>}
             {reason === undefined ? null : <p>Overridden: {reason}</p>}

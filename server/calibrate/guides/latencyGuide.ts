@@ -4,7 +4,7 @@ import type { RigOutput } from '../../session/rig/rig.js';
 import { fitLatencies, type LatencyFit, latenessUs } from '../latency/latencyFit.js';
 import type { Distribution } from '../statistics/distribution.js';
 import { type Desk, type Draft, figures, numberField, numberFrom, type Picture } from './guide.js';
-import { gap, lineOf } from './waiting.js';
+import { gap, lineOf, pulse } from './waiting.js';
 
 const WARN_DAYS = 90;
 const TITLE = 'Latency';
@@ -63,7 +63,7 @@ export async function latencyGuide(desk: Desk): Promise<Draft> {
   try {
     for (let n = 1; n <= pulses; n++) {
       const widthUs = Math.min(PULSE_US, output.longestOnUs);
-      tried.push(await desk.bench.attempt({ output: output.name, widthUs, into: 'spout' }));
+      tried.push(await pulse(desk, { output: output.name, widthUs, into: 'spout' }));
       show(n);
       await gap(desk, output, 10);
     }

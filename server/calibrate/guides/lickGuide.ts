@@ -17,7 +17,7 @@ import {
   type Picture,
   textFrom,
 } from './guide.js';
-import { gap } from './waiting.js';
+import { gap, pulse } from './waiting.js';
 
 const WARN_DAYS = 30;
 const TITLE = 'Lick sensor';
@@ -198,7 +198,7 @@ async function watchEcho(desk: Desk, sensor: Sensor, name: string): Promise<Watc
   try {
     for (let n = 1; n <= ECHO_PULSES; n++) {
       const widthUs = Math.min(output.longestOnUs, ECHO_MS * 1_000);
-      await desk.bench.attempt({ output: name, widthUs, into: 'vial' });
+      await pulse(desk, { output: name, widthUs, into: 'vial' });
       show(n);
       await gap(desk, output, ECHO_GAP_MS);
     }

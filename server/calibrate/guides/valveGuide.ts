@@ -19,7 +19,7 @@ import {
   numberFrom,
   textFrom,
 } from './guide.js';
-import { gap } from './waiting.js';
+import { gap, pulse } from './waiting.js';
 
 const WARN_DAYS = 30;
 /** A check of one point is due every week. */
@@ -180,7 +180,7 @@ async function weigh(
   const openUs: number[] = [];
   for (let n = 1; n <= drops; n++) {
     const widthUs = Math.round(ms * 1_000);
-    const tried = await desk.bench.attempt({ output: output.name, widthUs, into: 'vial' });
+    const tried = await pulse(desk, { output: output.name, widthUs, into: 'vial' });
     openUs.push(tried.onUs);
     show(`${figures(ms)} ms open: drop ${n} of ${drops}.`, n);
     await gap(desk, output, GAP_MS);

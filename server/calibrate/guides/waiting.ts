@@ -1,4 +1,4 @@
-import type { BenchItem } from '../../loop/protocol.js';
+import type { BenchItem, Tried, TryRequest } from '../../loop/protocol.js';
 import type { Desk } from './guide.js';
 
 export type Edge = Extract<BenchItem, { is: 'edge' }>;
@@ -41,6 +41,24 @@ export async function collectEdges(
 export async function lookAnew(desk: Desk): Promise<void> {
   const fromUs = desk.bench.now.atUs;
   while (desk.bench.now.atUs < fromUs + 50_000) await desk.pause(LOOK_MS);
+}
+
+/** A pulse that came too late was not begun, so it may be asked again; so often. */
+const TRIES = 4;
+
+/**
+ * One pulse, asked again where the computer was held up on the way.
+ * @throws what `attempt` of the bench throws
+ */
+export async function pulse(desk: Desk, request: TryRequest): Promise<Tried> {
+  for (let tries = 1; ; tries++) {
+    try {
+      return await desk.bench.attempt(request);
+    } catch (error) {
+      if ((error as { code?: unknown }).code !== 'BENCH_LATE' || tries >= TRIES) throw error;
+      await desk.pause(LOOK_MS);
+    }
+  }
 }
 
 /** Frames come every 5 ms at least, so what the guard calls now may be that old. */

@@ -2,7 +2,7 @@ import { ageDays, isOld } from '../../session/rig/calibration.js';
 import { turnedWay } from '../belt/beltFit.js';
 import { type Pass, passesOf } from '../belt/passes.js';
 import { type Desk, figures, textFrom } from '../guides/guide.js';
-import { collectEdges, gap, lineOf, lookAnew } from '../guides/waiting.js';
+import { collectEdges, gap, lineOf, lookAnew, pulse } from '../guides/waiting.js';
 import { contactsOf } from '../lick/contacts.js';
 import {
   type Computer,
@@ -126,7 +126,7 @@ async function loopback(desk: Desk): Promise<Finding> {
   const riseUs: number[] = [];
   try {
     for (let n = 0; n < WIRE_PULSES; n++) {
-      const tried = await desk.bench.attempt({
+      const tried = await pulse(desk, {
         ...{ output: output.name, widthUs: Math.min(2_000, output.longestOnUs), into: 'spout' },
       });
       if (tried.riseUs !== null) riseUs.push(tried.riseUs);
@@ -236,7 +236,7 @@ async function drops(desk: Desk): Promise<Finding> {
   const widthUs = Math.round(valve.deadUs + middleNl * valve.usPerNl);
   await desk.hands?.('vial on');
   for (let n = 0; n < DROPS; n++) {
-    await desk.bench.attempt({ output: output.name, widthUs, into: 'spout' });
+    await pulse(desk, { output: output.name, widthUs, into: 'spout' });
     await gap(desk, output, DROP_GAP_MS);
   }
   await desk.hands?.('vial off');

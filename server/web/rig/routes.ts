@@ -125,7 +125,8 @@ export function addRigRoutes(app: FastifyInstance, options: RigRouteOptions): vo
   });
 
   app.get('/api/rig/preflight', async () => ({
-    preflight: latestPreflight(fresh(), new Date()) ?? null,
+    // A page without a rig file has none, and need not be told so as an error.
+    preflight: (first && latestPreflight(first, new Date())) ?? null,
   }));
   app.post('/api/rig/preflight', { schema: { body: rigBodies.nothing } }, (request) =>
     begin(request, 'preflight', ''),
