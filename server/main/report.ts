@@ -34,23 +34,15 @@ export function reportCommand(): Command {
     )
     .option('--loopback <output=input>', 'an output that is wired back to an input', loopbackOf)
     .option('--json', 'print what was written as JSON')
-    .action(async (folders: string[], flags: ReportFlags) => {
-      const folder = folders[0]!;
+    .action(async (folders: string[], flags: ReportFlags, command: Command) => {
       // The same session twice would count twice.
       const different = [...new Set(folders.map((each) => resolve(each)))];
       if (different.length > 1) {
-        const days = await daysOf(different);
-        const { animals, across, change } = animalsSummary(days);
-        if (animals.length === 1)
-          write(flags.into ?? 'learning.html', learningPage(days), flags, { sessions: days });
-        else
-          write(flags.into ?? 'animals.html', animalsPage(days), flags, {
-            animals,
-            across,
-            change,
-          });
+        if (flags.loopback) command.error('error: --loopback is for one session');
+        reportOnSeveral(await daysOf(different), flags);
         return;
       }
+      const folder = different[0]!;
       const bar = progressBar('reading');
       const data = await readSession(folder, (done) => bar.show(done));
       bar.clear();
@@ -58,6 +50,13 @@ export function reportCommand(): Command {
       const session = learningDay(data);
       write(flags.into ?? join(derivedFolder(folder), 'report.html'), page, flags, { session });
     });
+}
+
+function reportOnSeveral(days: readonly LearningDay[], flags: ReportFlags): void {
+  const { animals, across, change } = animalsSummary(days);
+  if (animals.length === 1)
+    write(flags.into ?? 'learning.html', learningPage(days), flags, { sessions: days });
+  else write(flags.into ?? 'animals.html', animalsPage(days), flags, { animals, across, change });
 }
 
 function write(into: string, page: string, { json }: ReportFlags, more: object = {}): void {

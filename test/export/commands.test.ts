@@ -60,6 +60,8 @@ describe('what a script would call', { timeout: 120_000 }, () => {
       across: { lapsPerMinute: { n: 2 }, lickShare: { n: 2 } },
     });
     expect(readFileSync(into, 'utf8')).toContain('2 animals, 2 sessions');
+    const wired = await run('report', folder, other, '--loopback', 'gate=spikes');
+    expect(wired).toMatchObject({ status: 1, err: 'error: --loopback is for one session\n' });
   });
 
   it('aligns with the edges of another instrument', async () => {

@@ -13,7 +13,7 @@ import { MEASURE_WORDS, MEASURES_EXPLAINED } from './measures.js';
 import { STYLE } from './page.js';
 import { escapeHtml, INK, Plot, type Point } from './plot.js';
 
-/** Fewer animals than this say little of others: their interval is too narrow. */
+/** Fewer animals than this say little of others: their interval is too narrow (common practice). */
 const FEW = 6;
 
 /** What several animals have in common, the unit being the animal: for people and for scripts. */
