@@ -14,6 +14,7 @@ import type { SessionSetup } from '../session/core/sessionCore.js';
 import type { StampedDecision } from '../session/decisions.js';
 import { readDescription } from '../session/description.js';
 import type { Actor, OperatorAct, RareInput } from '../session/inputs.js';
+import { preflightAgainst } from '../session/preflight.js';
 import { idleRules, newSeed, type PreparedRules, prepareRules } from '../session/prepare.js';
 import { finish } from '../session/record/finish.js';
 import { readRecord } from '../session/record/readRecord.js';
@@ -22,7 +23,13 @@ import type { TroubleKind } from '../session/record/segmentLog.js';
 import { readRig } from '../session/rig/readRig.js';
 import type { Rig } from '../session/rig/rig.js';
 import { SessionRunner } from '../session/runner.js';
-import { describeEnd, nextSessionNumber, openSession, recordHeaderOf } from '../session/store.js';
+import {
+  describeEnd,
+  nextSessionNumber,
+  openSession,
+  recordHeaderOf,
+  type SessionCard,
+} from '../session/store.js';
 import { CAPABILITY, type Sample } from '../wire/messages.js';
 import { ALARMS } from './alarms/alarms.js';
 import { AlarmWatch } from './alarms/alarmWatch.js';
@@ -330,10 +337,12 @@ export class Loop implements LinkHandler, LoopService {
       await frames();
       const { rulesPath: _, ...who } = begin;
       const seed = begin.seed ?? newSeed();
+      if (this.#link.identity === undefined) await this.#linkIsUp();
+      const override = this.#preflightOverride(begin.despite);
       const known = await this.#book.before(who.subject, begin.despite);
       const arm = this.#armFor(rules, who);
       const startedAt = new Date();
-      const card = { ...who, seed, startedAt, ...known, ...arm };
+      const card = { ...who, seed, startedAt, ...known, ...arm, ...override };
       await frames();
       const board = this.#link.identity ?? null;
       const opened = openSession(this.#recordFolder, this.#rigFile, rules, card, board, {
@@ -345,6 +354,19 @@ export class Loop implements LinkHandler, LoopService {
     } finally {
       this.#beginning = false;
     }
+  }
+
+  /** @throws LapwingError PREFLIGHT_AGAINST unless there is a reason to begin in spite of it */
+  #preflightOverride(despite: string | undefined): Pick<SessionCard, 'preflightOverride'> {
+    const { identity } = this.#link;
+    // Without a board no session begins anyway.
+    if (identity === undefined) return {};
+    const { port } = this.#rigFile;
+    const simulated = (identity.capabilities & CAPABILITY.simulated) !== 0 || port === 'emulated';
+    const against = preflightAgainst(this.#rigFile, simulated, new Date());
+    if (against === undefined) return {};
+    if (despite) return { preflightOverride: { against, reason: despite } };
+    throw new LapwingError('preflightAgainst', `${against}.`);
   }
 
   /** The arm of a blinded session; nothing where the rules have no sealed draw. */

@@ -25,7 +25,7 @@ export interface BeginOptions {
   readonly sessionNumber?: number;
   /** The seed of every draw; made up and recorded where nothing is said. */
   readonly seed?: string;
-  /** Why it is to begin whatever the animals folder says against it. */
+  /** Why it is to begin whatever the animals folder or the pre-flight has against it. */
   readonly despite?: string;
 }
 

@@ -42,7 +42,7 @@ export type ClientMessage = { readonly request?: number; readonly saidMs?: numbe
       /** Counted on from the subject's last where nothing is said. */
       readonly sessionNumber?: number;
       readonly seed?: string;
-      /** Why it is to begin whatever the animals folder says against it. */
+      /** Why it is to begin whatever the animals folder or the pre-flight has against it. */
       readonly despite?: string;
     }
   | { readonly say: 'act'; readonly act: OperatorAct; readonly who: string; readonly from: string }

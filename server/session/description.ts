@@ -37,6 +37,8 @@ export interface SessionDescription {
   }[];
   /** The newest pre-flight of the rig, if one was made in the twelve hours before. */
   readonly preflight?: Preflight;
+  /** What the pre-flight, or the lack of one, had against the session, and why it was begun. */
+  readonly preflightOverride?: { readonly against: string; readonly reason: string };
   readonly files: readonly StoredFile[];
   readonly ended: SessionEnd | null;
   /** Given earlier that day, which the day's limit counts. */

@@ -78,6 +78,22 @@ export function latestPreflight(rig: Rig, now: Date): Preflight | undefined {
   return undefined;
 }
 
+/**
+ * What a rig's pre-flight has against a session that begins now; undefined where it has nothing. No
+ * animal hangs on a simulated board, so that one needs none; but one that failed counts there too.
+ */
+export function preflightAgainst(rig: Rig, simulated: boolean, now: Date): string | undefined {
+  const preflight = latestPreflight(rig, now);
+  if (preflight?.passed) return undefined;
+  if (preflight !== undefined) {
+    const failed = preflight.checks.filter(({ result }) => result === 'failed');
+    const what = failed.map(({ title }) => title.toLowerCase()).join(', ') || 'not all was passed';
+    return `the pre-flight of ${preflight.madeAt.slice(11, 16)} failed: ${what}`;
+  }
+  if (simulated) return undefined;
+  return `no pre-flight of this rig was made in the last ${PREFLIGHT_HOURS} hours`;
+}
+
 /** undefined for a file that is none: it is of no use to a session, and no harm. */
 function readPreflight(file: string): Preflight | undefined {
   try {

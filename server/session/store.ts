@@ -28,6 +28,7 @@ export interface SessionCard {
   readonly protocolNumber?: string;
   /** Which session of this subject; counted on from the subject's last where nothing is said. */
   readonly sessionNumber?: number;
+  readonly preflightOverride?: SessionDescription['preflightOverride'];
   readonly seed: string;
   readonly startedAt: Date;
   /** Given to this animal earlier today. */
@@ -73,6 +74,7 @@ export function openSession(
     seed,
     calibrations: calibrationsOf(rig),
     ...(preflight === undefined ? {} : { preflight }),
+    ...(card.preflightOverride === undefined ? {} : { preflightOverride: card.preflightOverride }),
     files,
     ended: null,
     waterEarlierUl: card.waterTodayNl / 1_000,
