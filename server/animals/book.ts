@@ -86,7 +86,10 @@ export async function began({ sessionFolder }: BeganQuestion): Promise<void> {
  * Files what a session gave; one that is in the book already with the same water is left as it is.
  * @returns what it gave, or undefined where its animal is not kept
  */
-export async function ended({ sessionFolder, folder }: EndedQuestion) {
+export async function ended(
+  { sessionFolder, folder }: EndedQuestion,
+  progress: (done: number) => void = () => {},
+) {
   const { subject, startedAt, experimenter, animal } = readDescription(sessionFolder);
   const into = folder ?? (animal?.kept === true ? animal.folder : undefined);
   if (into === undefined) return undefined;
@@ -95,7 +98,7 @@ export async function ended({ sessionFolder, folder }: EndedQuestion) {
   const history = historyIn(reading, subject);
   if (history === undefined) throw unknownAnimal(subject, [...reading.entries.keys()]);
   const session = basename(sessionFolder);
-  const water = await sessionWaterOf(sessionFolder);
+  const water = await sessionWaterOf(sessionFolder, progress);
   const there = history.sessions.find((one) => one.session === session);
   if (there?.correction === null && JSON.stringify(there.water) === JSON.stringify(water))
     return water;

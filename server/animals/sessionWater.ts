@@ -1,10 +1,9 @@
 import { needArm } from '../session/blinding/arms.js';
-import { SessionCore } from '../session/core/sessionCore.js';
 import type { StampedDecision } from '../session/decisions.js';
-import { readDescription } from '../session/description.js';
+import { readDescription, type SessionDescription } from '../session/description.js';
 import { loadSession } from '../session/loadSession.js';
 import { readRecord } from '../session/record/readRecord.js';
-import { waterOf } from '../session/store.js';
+import { replaySession } from '../session/replay.js';
 import type { SessionWater } from './entry.js';
 
 /** A drop without a lick for so long after the valve opened was perhaps not drunk. */
@@ -61,43 +60,47 @@ export class DropCount {
  * What the session in a folder gave, whole or torn, ended or not. Where it was never ended, what was
  * under way when its program died is uncertain; where the record cannot be read, the description's
  * own sums stand, and nothing is known of licks.
+ * @param progress told the share of the record that has been read
  * @throws LapwingError when neither can be read
  */
-export async function sessionWaterOf(folder: string): Promise<SessionWater> {
-  const { water } = readDescription(folder);
+export async function sessionWaterOf(
+  folder: string,
+  progress: (done: number) => void = () => {},
+): Promise<SessionWater> {
+  const { water, record } = readDescription(folder);
+  const most = record?.lastInput ?? Number.POSITIVE_INFINITY;
   try {
-    return water === undefined ? await fromInputs(folder) : await fromDecisions(folder, water);
+    const given = water ?? (await replayed(folder, (inputs) => progress(inputs / most / 2)));
+    return await counted(folder, given, (input) => progress(Math.min(1, input / most)));
   } catch (error) {
     if (water === undefined) throw error;
     return { ...water, drops: 0, notLickedUl: 0, notLickedDrops: 0, licksUnknown: true };
   }
 }
 
-async function fromDecisions(
+type Given = NonNullable<SessionDescription['water']>;
+
+async function counted(
   folder: string,
-  { givenUl, uncertainUl }: { readonly givenUl: number; readonly uncertainUl: number },
+  { givenUl, uncertainUl }: Given,
+  progress: (input: number) => void,
 ): Promise<SessionWater> {
   const count = new DropCount();
   const reader = await readRecord(folder);
-  reader.visit({ decision: (decision) => count.take(decision) });
-  const counted = count.water(uncertainUl);
+  reader.visit({
+    decision: (decision) => {
+      count.take(decision);
+      progress(decision.input);
+    },
+  });
+  const water = count.water(uncertainUl);
   // A record with a hole tells fewer drops than the session counted when it ended.
-  return { ...counted, givenUl: Math.max(givenUl, counted.givenUl) };
+  return { ...water, givenUl: Math.max(givenUl, water.givenUl) };
 }
 
-async function fromInputs(folder: string): Promise<SessionWater> {
-  const count = new DropCount();
+/** Of a session whose program died before it could say. */
+async function replayed(folder: string, progress: (inputs: number) => void): Promise<Given> {
   const { setup, description } = loadSession(folder);
   needArm(description.blinding, setup.arm);
-  const decision = (what: StampedDecision) => count.take(what);
-  const core = new SessionCore(setup, { command: () => {}, decision });
-  const reader = await readRecord(folder);
-  reader.visit({
-    sample: (_, sample) => core.sample(sample),
-    input: (_, input) => core.take(input),
-  });
-  const reason = 'its program died';
-  core.take({ kind: 'link down', reason });
-  core.take({ kind: 'operator', act: { act: 'end', reason }, by: { who: 'Lapwing', from: '' } });
-  return count.water(waterOf(core).uncertainUl);
+  return (await replaySession(folder, setup, progress)).water;
 }

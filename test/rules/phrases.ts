@@ -146,6 +146,7 @@ const habit = any(
   seq('at most', NUMBER, 'in a row'),
   seq('at least', any(amount, NUMBER), 'from the last'),
   seq('in steps of', any(amount, NUMBER)),
+  seq('sealed'),
 );
 const length = any(seq(count, any('lap', 'laps')), amount);
 

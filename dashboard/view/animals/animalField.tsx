@@ -4,11 +4,14 @@ import { dueWords, LEVEL_WORDS, LEVELS, weightWords } from '../../model/animals.
 import { animalsApi } from '../../stream/animalsApi.js';
 import { LevelShape } from '../shapes.js';
 
+/** Told why a session of the animal will want a reason, and its card where it is kept. */
+type Standing = (why: string | undefined, card: AnimalRow['card'] | undefined) => void;
+
 /**
- * Which animal is to run, with its weight and water today; and, where something speaks against it,
- * the reason to begin all the same. The loop decides: this only says it beforehand.
+ * Which animal is to run, with its weight and water today, and what speaks against it; its weight of
+ * the day can be entered here. The loop decides: this only says it beforehand.
  */
-export function AnimalField() {
+export function AnimalField({ onStanding }: { onStanding: Standing }) {
   const [list, setList] = useState<AnimalsTold>();
   const [name, setName] = useState('');
   useEffect(() => {
@@ -26,6 +29,9 @@ export function AnimalField() {
     };
   }, []);
   const row = list?.animals.find(({ animal }) => animal === name.trim());
+  const named = list !== undefined && name.trim() !== '';
+  const why = named ? whyNot(name.trim(), row) : undefined;
+  useEffect(() => onStanding(why, row?.card), [why, row?.card.protocol]);
   return (
     <>
       <label>
@@ -49,13 +55,17 @@ export function AnimalField() {
             </option>
           ))}
       </datalist>
-      {list !== undefined && name.trim() !== '' ? <Standing name={name.trim()} row={row} /> : null}
+      {named ? <StandingLine name={name.trim()} row={row} why={why} /> : null}
     </>
   );
 }
 
-function Standing({ name, row }: { name: string; row: AnimalRow | undefined }) {
-  const why = whyNot(name, row);
+function StandingLine(props: {
+  name: string;
+  row: AnimalRow | undefined;
+  why: string | undefined;
+}) {
+  const { name, row, why } = props;
   return (
     <>
       <p class="animal-standing" role="status">
@@ -67,21 +77,25 @@ function Standing({ name, row }: { name: string; row: AnimalRow | undefined }) {
             {row.water.due === null ? '' : `; still due ${dueWords(row.water)}`}{' '}
           </>
         )}
-        {why === undefined ? null : (
-          <>
-            {why}{' '}
-            {row === undefined ? null : (
-              <a href={`#animals/${encodeURIComponent(name)}`}>Weigh it first.</a>
-            )}
-          </>
-        )}
+        {why}{' '}
+        {row !== undefined && why !== undefined ? (
+          <a href={`#animals/${encodeURIComponent(name)}`}>Its page</a>
+        ) : null}
       </p>
-      {why === undefined ? null : (
+      {row !== undefined && row.today === null ? (
         <label>
-          Reason to begin all the same (kept with the session)
-          <input name="despite" maxLength={500} autocomplete="off" />
+          Weight today, g
+          <input
+            name="grams"
+            type="number"
+            inputMode="decimal"
+            step="any"
+            min="0.1"
+            max="10000"
+            autocomplete="off"
+          />
         </label>
-      )}
+      ) : null}
     </>
   );
 }

@@ -14,6 +14,8 @@ import { Caution } from './caution.js';
 /** Every animal today: weight, water, what is due. */
 export function AnimalsList({ desk, state }: AnimalsProps) {
   const { list, trouble } = state;
+  const kept = list?.animals.filter(({ card }) => card.state !== 'left') ?? [];
+  const gone = list?.animals.filter(({ card }) => card.state === 'left') ?? [];
   return (
     <section class="panel" aria-labelledby="animals-title">
       <h2 id="animals-title">Animals</h2>
@@ -44,11 +46,21 @@ export function AnimalsList({ desk, state }: AnimalsProps) {
                 </tr>
               </thead>
               <tbody>
-                {list.animals.map((row) => (
+                {kept.map((row) => (
                   <Row key={row.animal} row={row} open={state.open === row.animal} />
                 ))}
               </tbody>
             </table>
+          )}
+          {gone.length === 0 ? null : (
+            <details>
+              <summary>Not here any more: {gone.length}</summary>
+              {gone.map(({ animal }) => (
+                <a key={animal} class="gone" href={`#animals/${encodeURIComponent(animal)}`}>
+                  {animal}
+                </a>
+              ))}
+            </details>
           )}
           {list.troubles.map(({ animal, what }) => (
             <p key={`${animal} ${what}`} class="missing">

@@ -4,6 +4,7 @@ import { ended } from '../../animals/book.js';
 import { eveningList } from '../../animals/overview.js';
 import { waterOn } from '../../animals/waterBook.js';
 import { LapwingError } from '../../errors/codes.js';
+import { progressBar } from '../progressBar.js';
 import { overviewAt } from './animals.js';
 import { CAUTION, deskAt, print, volumeUl, type WhereFlags, whereAnimals } from './options.js';
 import { type EntryFlags, whenAndNote } from './weigh.js';
@@ -47,7 +48,10 @@ export function waterCommand(): Command {
         const sessionFolder = resolve(session);
         const said = flags.animals !== undefined || flags.rig !== undefined;
         const folder = said ? { folder: deskAt(flags).folder.folder } : {};
-        const water = await ended({ ask: 'ended', sessionFolder, ...folder });
+        const bar = progressBar('reading the record');
+        const share = (done: number) => bar.show(done);
+        const water = await ended({ ask: 'ended', sessionFolder, ...folder }, share);
+        bar.clear();
         if (water === undefined) {
           const what = `${session} names no animals folder that keeps its animal.`;
           throw new LapwingError('animalsNoFolder', what);

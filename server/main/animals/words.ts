@@ -45,18 +45,25 @@ export function overviewWords({ animals, day, zone, troubles }: Overview): strin
   if (animals.length === 0) {
     return 'No animal is kept here yet: lapwing animals add NAME --baseline GRAMS --target VOLUME';
   }
-  const rows = animals.map(({ animal, card, today, water, lastSession }) => [
+  const kept = animals.filter(({ card }) => card.state !== 'left');
+  const gone = animals.length - kept.length;
+  const rows = kept.map(({ animal, card, today, water, lastSession }) => [
     animal,
     card.state,
     weightWords(today, card.leastPercent),
     hadWords(water),
     dueWords(water),
-    lastSession?.session.slice(0, 16).replace('_', ' ') ?? '',
+    lastSession?.at.slice(0, 16).replace('T', ' ') ?? '',
   ]);
   const head = ['animal', 'state', 'weight today', 'water today', 'due', 'last session'];
-  return [`${day}, ${zone}`, columns([head, ...rows]), ...troubleWords(troubles), CAUTION].join(
-    '\n',
-  );
+  const left = gone === 0 ? [] : [`${gone} not here any more: lapwing animals show NAME`];
+  return [
+    `${day}, ${zone}`,
+    columns([head, ...rows]),
+    ...left,
+    ...troubleWords(troubles),
+    CAUTION,
+  ].join('\n');
 }
 
 export function eveningWords(
