@@ -1,10 +1,13 @@
 import { userInfo } from 'node:os';
 import { InvalidArgumentError, Option } from 'commander';
 import { DEFAULT_PORT } from '../web/webProcess.js';
+import { rigFile } from './builtInRigs.js';
 
 /** `--rig RIG`, which every command that needs a rig takes. */
 export function rigOption(): Option {
-  return new Option('--rig <file>', 'the rig file').makeOptionMandatory();
+  return new Option('--rig <file>', 'the rig file; or one that comes along: simulated, emulated')
+    .argParser(rigFile)
+    .makeOptionMandatory();
 }
 
 /** A whole number from `least` to `most`. */

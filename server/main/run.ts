@@ -3,6 +3,7 @@ import { Command } from 'commander';
 import { prepareRules } from '../session/prepare.js';
 import { readRig } from '../session/rig/readRig.js';
 import { loginName, portOption, rigOption, wholeNumber } from './arguments.js';
+import { foldersFor } from './builtInRigs.js';
 import { runLive } from './live.js';
 import { tellWarnings } from './tellWarnings.js';
 
@@ -39,7 +40,7 @@ export function runCommand(): Command {
     .option('--animals <folder>', "instead of the rig file's animals folder")
     .option(
       '--despite <reason>',
-      'begin though the animal was not weighed today, or something else speaks against it',
+      'begin though the animal was not weighed today, the pre-flight failed, or the like',
     )
     .option('--web', 'serve the page too')
     .addOption(portOption())
@@ -48,6 +49,7 @@ export function runCommand(): Command {
       // Mistakes in the file are told before any process starts.
       tellWarnings(prepareRules(resolve(rules), rig));
       const { subject, experimenter, protocol, sessionNumber, seed, despite } = flags;
+      const { records, animals } = { ...foldersFor(flags.rig), ...flags };
       await runLive({
         rig,
         rigPath: flags.rig,
@@ -59,8 +61,8 @@ export function runCommand(): Command {
           ...(seed ? { seed } : {}),
           ...(despite ? { despite } : {}),
         },
-        ...(flags.animals === undefined ? {} : { animalsFolder: resolve(flags.animals) }),
-        ...(flags.records === undefined ? {} : { recordFolder: resolve(flags.records) }),
+        ...(animals === undefined ? {} : { animalsFolder: resolve(animals) }),
+        ...(records === undefined ? {} : { recordFolder: resolve(records) }),
         ...(flags.web ? { web: { host: '127.0.0.1', port: flags.port } } : {}),
       });
     });

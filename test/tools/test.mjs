@@ -74,6 +74,16 @@ function ensureCurl() {
   );
 }
 
+/** The hobby platform's own sources, against which the firmware's sketch is built; Debian's when root. */
+function ensureBoardSources() {
+  if (fs.existsSync('/usr/share/arduino/hardware/arduino/avr')) return;
+  if (process.getuid?.() === 0 && onPath('apt-get') !== undefined) {
+    console.log('test: no board sources here; installing the Debian package');
+    const env = { DEBIAN_FRONTEND: 'noninteractive' };
+    run('apt-get', ['install', '-q', '-y', '--no-install-recommends', 'arduino-core-avr'], env);
+  }
+}
+
 /** What reads an NWB file back and checks it: Debian's packages are installed when root. */
 function ensureNwbReaders() {
   const python = fs.existsSync('/usr/bin/python3') ? '/usr/bin/python3' : 'python3';
@@ -168,6 +178,7 @@ function main() {
   ensureLanguages();
   ensureCurl();
   ensureCompiler();
+  ensureBoardSources();
   step('lint (biome check)', tool('@biomejs/biome/bin/biome', ['check', '.']));
   step('the type check (tsc)', tool('typescript/bin/tsc', ['--noEmit']));
   const filters = process.argv.slice(2);

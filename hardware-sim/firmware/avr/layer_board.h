@@ -123,6 +123,7 @@ static inline void hal_schedule(uint16_t ticks) {
 }
 static inline void hal_poke(void) { EECR |= _BV(EERIE); }
 #define hal_count_low() COUNT_LOW
+#define hal_wait() /* the interrupts go on */
 int16_t hal_receive(void);
 void hal_send(void);
 void hal_alive(uint8_t fresh);

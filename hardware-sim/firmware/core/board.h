@@ -2,7 +2,7 @@
  * The portable core: everything that WIRE.md asks of a board and that is not a register.
  *
  * Three contexts run it. The encoder's interrupt moves the count and raises the output of a slot
- * (avr/encoder.S, or encoder.c). The service, an interrupt with interrupts on, keeps the books of
+ * (avr/encoder.S). The service, an interrupt with interrupts on, keeps the books of
  * the outputs (outputs.c). The main loop obeys the host and talks (commands.c, voice.c); it holds
  * the service off while it touches the outputs. See layer.h for what a board's layer must give.
  */

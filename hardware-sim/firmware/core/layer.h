@@ -13,6 +13,7 @@
  *   hal_permits                       a byte that the encoder's interrupt clears bits of
  *   hal_schedule(ticks)               then make the head of `falls` idle if it is due, and call the
  *                                     service; soon, if that is past (interrupts off)
+ *   hal_wait()                        the service waits for a moment that is near
  *   HAL_FALL_TICKS                    so much later than asked for is a fall at least
  *   hal_poke()                        call the service soon
  *   hal_receive() hal_send()          a byte or -1; there is something in `tx_ring`

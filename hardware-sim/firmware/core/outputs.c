@@ -489,7 +489,7 @@ void bank_service(void) {
     }
     if (rise_us <= EARLY_US && rise_us < wake_us) {
       uint32_t until_us = now_us + rise_us;
-      while ((int32_t)(until_us - hal_now_us()) > 0 && !bank_wanted && !slots_hit_waiting()) continue;
+      while ((int32_t)(until_us - hal_now_us()) > 0 && !bank_wanted && !slots_hit_waiting()) hal_wait();
       continue;
     }
     if (rise_us < wake_us) wake_us = rise_us - EARLY_US;
