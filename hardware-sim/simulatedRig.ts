@@ -41,6 +41,8 @@ export interface SimulatedRigOptions {
   readonly valve?: Partial<ValveParameters>;
   /** Extra changes at the beginning of a lick's contact. */
   readonly lickBounces?: number;
+  /** The encoder counts down as the animal runs. */
+  readonly reversed?: boolean;
   /** How long the animal keeps a speed, microseconds, in whole milliseconds; 1000 unless said. */
   readonly strideUs?: number;
   /** A wire from an output to an input. */
@@ -91,7 +93,9 @@ export class SimulatedRig<B extends RigBoard = Board> {
   #lookDownCount = -NEVER;
   #lookUs = NEVER;
   #cmPerUs = 0;
-  /** Whole counts told to the board so far, not wrapped. */
+  /** -1: the board counts down as the belt runs forwards. */
+  readonly #sense: 1 | -1;
+  /** Whole counts that the belt has run so far, not wrapped. */
   #count: number;
   #valveOpenedUs = 0;
 
@@ -107,6 +111,7 @@ export class SimulatedRig<B extends RigBoard = Board> {
     this.#dice = new Dice(seed + 5);
     this.#weights = new Dice(seed + 6);
     this.#loopback = options.loopback;
+    this.#sense = options.reversed === true ? -1 : 1;
     this.#strideUs = options.strideUs ?? GRID_US;
     this.#strideEndUs = this.#strideUs;
     this.#segmentUs = options.board?.reportUs ?? GRID_US;
@@ -261,9 +266,14 @@ export class SimulatedRig<B extends RigBoard = Board> {
   #followEncoder(): void {
     const count = Math.floor(this.belt.encoder);
     if (count !== this.#count) {
-      this.board.move(count - this.#count);
+      this.#turn(count - this.#count);
       this.#count = count;
     }
+  }
+
+  /** The encoder turns by so many counts, as the belt runs forwards. */
+  #turn(counts: number): void {
+    this.board.move(this.#sense === 1 ? counts : -counts);
   }
 
   /** When the encoder comes to the nearest armed slot in its direction; Infinity: not by `atUs`. */
@@ -272,7 +282,7 @@ export class SimulatedRig<B extends RigBoard = Board> {
     const countsPerUs = this.#cmPerUs * belt.countsPerTravelCm;
     const counts = Math.floor(belt.encoder + countsPerUs * (atUs - this.nowUs)) - this.#count;
     if (counts > 0) {
-      const gap = board.countsToSlot(1);
+      const gap = board.countsToSlot(this.#sense);
       if (counts < gap) return Number.POSITIVE_INFINITY;
       return Math.min(
         atUs,
@@ -280,7 +290,7 @@ export class SimulatedRig<B extends RigBoard = Board> {
       );
     }
     if (counts < 0) {
-      const gap = board.countsToSlot(-1);
+      const gap = board.countsToSlot(this.#sense === 1 ? -1 : 1);
       if (-counts < gap) return Number.POSITIVE_INFINITY;
       return Math.min(
         atUs,
@@ -310,12 +320,12 @@ export class SimulatedRig<B extends RigBoard = Board> {
   #fireSlotAt(atUs: number): void {
     const { belt, board } = this;
     const forwards = this.#cmPerUs > 0;
-    const gap = board.countsToSlot(forwards ? 1 : -1);
+    const gap = board.countsToSlot(forwards === (this.#sense === 1) ? 1 : -1);
     belt.move(this.#cmPerUs * (atUs - this.nowUs));
     const target = this.#count + (forwards ? gap : -gap);
-    board.move(target - this.#count - (forwards ? 1 : -1));
+    this.#turn(target - this.#count - (forwards ? 1 : -1));
     board.advanceTo(atUs);
-    board.move(forwards ? 1 : -1);
+    this.#turn(forwards ? 1 : -1);
     this.nowUs = atUs;
     this.#count = target;
     // Rounding must not set the encoder back over the count that it has just passed.

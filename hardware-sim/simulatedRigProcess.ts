@@ -26,6 +26,7 @@ const HELP = `Options:
   --belt-cm X         belt length (default 180)
   --counts-per-cm X   encoder counts per cm of belt (default 20)
   --slip-mm X         what the encoder reads too much per lap (default 1)
+  --reversed          the encoder counts down as the animal runs
   --no-mark           the belt has no seam mark
   --mark-miss P       chance that a mark is missed
   --lick-input N      input of the lick sensor (default 0)
@@ -53,6 +54,7 @@ const { values } = parseArgs({
     'belt-cm': { type: 'string' },
     'counts-per-cm': { type: 'string' },
     'slip-mm': { type: 'string' },
+    reversed: { type: 'boolean' },
     'no-mark': { type: 'boolean' },
     'mark-miss': { type: 'string' },
     'lick-input': { type: 'string' },
@@ -84,6 +86,7 @@ function rigOptions(): SimulatedRigOptions {
   return {
     ...number('seed', 'seed'),
     trained: values.trained === true,
+    reversed: values.reversed === true,
     ...number('spout-cm', 'spoutCm'),
     ...number('start-cm', 'startCm'),
     belt: {

@@ -27,7 +27,11 @@ export function simulatedRigFor(
   const simulated = new SimulatedRig({
     ...animal,
     ...(brisk ? { strideUs: BRISK_REPORT_US, board: { reportUs: BRISK_REPORT_US } } : {}),
-    belt: { lengthCm: belt.lengthCm, countsPerCm: belt.countsPerCm },
+    reversed: belt.reversed,
+    belt: {
+      ...{ lengthCm: belt.lengthCm, countsPerCm: belt.countsPerCm },
+      mark: belt.seam !== undefined,
+    },
     wiring: {
       ...(rig.lick === undefined ? {} : { lickInput: rig.lick.line }),
       ...(belt.seam === undefined ? {} : { seamInput: belt.seam.line }),
@@ -64,7 +68,12 @@ export function simulatedRigArguments(rig: Rig): string[] {
     'valve-us-per-ul': valve?.valve && valve.valve.usPerNl * 1_000,
   };
   const given = Object.entries(options).filter(([, value]) => value !== undefined);
-  return [...given.flatMap(([name, value]) => [`--${name}`, String(value)]), ...loopback(rig)];
+  return [
+    ...given.flatMap(([name, value]) => [`--${name}`, String(value)]),
+    ...(belt.reversed ? ['--reversed'] : []),
+    ...(belt.seam === undefined ? ['--no-mark'] : []),
+    ...loopback(rig),
+  ];
 }
 
 function loopback({ loopback, outputs, inputs }: Rig): string[] {
