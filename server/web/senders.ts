@@ -81,7 +81,8 @@ export function plainAddress(address: string | undefined): string {
  */
 export function callerOf(address: string): string {
   if (isIP(address) !== 6) return address;
-  const [head = '', tail] = address.split('::');
+  // The last two groups may be written as an IPv4 address.
+  const [head = '', tail] = address.replace(/\d+\.[\d.]+$/, '0:0').split('::');
   const front = head === '' ? [] : head.split(':');
   const back = tail === undefined || tail === '' ? [] : tail.split(':');
   const gap = Array.from({ length: Math.max(0, 8 - front.length - back.length) }, () => '0');
