@@ -40,6 +40,30 @@ async function hold(page: Page, code: string, until: () => Promise<unknown>): Pr
   await send('keyup');
 }
 
+interface Filling {
+  readonly text: string;
+  readonly outlineStyle: string;
+  readonly moves: string;
+}
+
+/** Every button that has shown that it is being held, and how: seen even when it is soon over. */
+async function watchFilling(page: Page): Promise<() => Promise<Filling[]>> {
+  await page.evaluate(() => {
+    const seen: Filling[] = [];
+    (window as unknown as { filling: Filling[] }).filling = seen;
+    new MutationObserver((changes) => {
+      for (const { target } of changes) {
+        const button = target as HTMLElement;
+        if (!button.matches('.hold.long.holding')) continue;
+        const text = button.querySelector('.hold-text')?.textContent?.trim() ?? '';
+        const moves = getComputedStyle(button, '::before').transitionDuration;
+        seen.push({ text, outlineStyle: getComputedStyle(button).outlineStyle, moves });
+      }
+    }).observe(document.body, { subtree: true, attributes: true, attributeFilter: ['class'] });
+  });
+  return () => page.evaluate(() => (window as unknown as { filling: Filling[] }).filling);
+}
+
 const alarm = (name: AlarmView['alarm'], level: AlarmView['level'], text: string): AlarmView => ({
   ...{ alarm: name, level, text, remedy: 'Look at it.', sinceUs: 1, seenBy: null },
 });
@@ -55,12 +79,9 @@ describe('asking for a rule', () => {
     await tap(page, 'Numpad3');
     await page.waitForTimeout(600);
     expect(loop.acts()).toEqual([]);
-    const filled = page.locator('.hold.long.holding');
-    await hold(page, 'Numpad3', async () => {
-      // The bar that fills is there at once.
-      await filled.waitFor();
-      await until(() => loop.acts().length === 1);
-    });
+    const filled = await watchFilling(page);
+    await hold(page, 'Numpad3', () => until(() => loop.acts().length === 1));
+    expect(await filled()).toMatchObject([{ text: 'Next lap' }]);
     expect(loop.acts()).toEqual([{ act: 'ask', rule: 'induce', laps: 1 }]);
     await page.getByText(/^induce: asked for lap \d+$/).waitFor();
     await page.getByRole('button', { name: 'Take back: induce' }).press('Enter');
@@ -85,7 +106,7 @@ describe('asking for a rule', () => {
 describe('steering by keys alone', () => {
   test('phases, laps to exclude, the end put off, the next cell with its fields', async () => {
     const { page, loop } = await openPage({}, running);
-    await page.getByText('Phase again').waitFor();
+    await page.getByRole('button', { name: /^Phase again/ }).waitFor();
     const lap = loop.animal.state.lap;
     loop.freeze();
     await tap(page, 'KeyX');
@@ -166,7 +187,7 @@ describe('the keys panel', () => {
 
     await open();
     await page.getByRole('button', { name: 'Stop everything, beside Esc: add' }).press('Enter');
-    await page.keyboard.press('F13');
+    await tap(page, 'F13');
     await page.getByRole('button', { name: 'Stop everything, beside Esc: F13' }).waitFor();
     await tap(page, 'F13');
     await page.waitForTimeout(500);
@@ -181,7 +202,7 @@ describe('alarms', () => {
   test('are told with their remedy, seen by key, and then stay in one quiet line with who saw them', async () => {
     const { page, loop } = await openPage({}, running);
     raise(loop, alarm('drops', 'warn', '3 drops were given and not licked'));
-    await page.getByText('3 drops were given and not licked').waitFor();
+    await page.getByText('3 drops were given and not licked', { exact: true }).waitFor();
     await page.getByText('Look at it.').waitFor();
     await tap(page, 'KeyA');
     await page.getByText('seen by').waitFor();
@@ -210,7 +231,7 @@ describe('alarms', () => {
     });
     const tones = () => page.evaluate(() => (window as unknown as { tones: number }).tones);
     raise(loop, alarm('seam', 'warn', 'A mark was missed'));
-    await page.getByText('A mark was missed').waitFor();
+    await page.getByText('A mark was missed', { exact: true }).waitFor();
     expect(await tones()).toBe(0);
     await page.locator('.browser-panel summary').click();
     await page.getByLabel('Alarms sound here').click();
@@ -225,8 +246,11 @@ describe('alarms', () => {
 });
 
 /** The greenest and the bluest pixel of a picture of the page. */
-async function mostGreenAndBlue(page: Page): Promise<{ green: number; blue: number; red: number }> {
-  const png = (await page.screenshot({ fullPage: true })).toString('base64');
+async function mostGreenAndBlue(
+  page: Page,
+  fullPage = true,
+): Promise<{ green: number; blue: number; red: number }> {
+  const png = (await page.screenshot({ fullPage })).toString('base64');
   return page.evaluate(async (text) => {
     const bytes = Uint8Array.from(atob(text), (letter) => letter.charCodeAt(0));
     const picture = await createImageBitmap(new Blob([bytes], { type: 'image/png' }));
@@ -254,7 +278,7 @@ describe('in the dark', () => {
     await page.unroute('**/assets/*.js');
     raise(loop, alarm('link', 'bad', 'No board'), alarm('still', 'warn', 'The belt stands'));
     await page.goto(url);
-    await page.getByText('The belt stands').waitFor();
+    await page.getByText('The belt stands', { exact: true }).waitFor();
     await page.locator('.browser-panel summary').click();
     await page.getByLabel('Alarms sound here').click();
     await page.getByRole('spinbutton', { name: 'target' }).fill('161');
@@ -272,11 +296,11 @@ describe('in the dark', () => {
     await page.locator('.browser-panel summary').click();
     await page.getByLabel('Brightness').fill('0.3');
     await page.getByText('30 %').waitFor();
-    const dim = await mostGreenAndBlue(page);
+    const dim = await mostGreenAndBlue(page, false);
     expect(dim.red).toBeLessThan(90);
     await page.route('**/assets/*.js', (route) => route.abort());
     await page.goto(url);
-    expect((await mostGreenAndBlue(page)).red).toBeLessThan(90);
+    expect((await mostGreenAndBlue(page, false)).red).toBeLessThan(90);
     await page.unroute('**/assets/*.js');
     await page.goto(url);
     await page.locator('.session-running').waitFor();
@@ -288,17 +312,11 @@ describe('in the dark', () => {
 
 describe('for everybody', () => {
   test('nothing moves where the system asks for stillness, and being held still shows', async () => {
-    const { page } = await openPage({ reducedMotion: 'reduce' }, running);
+    const { page, loop } = await openPage({ reducedMotion: 'reduce' }, running);
     await page.getByText('Ask for induce').waitFor();
-    await hold(page, 'Digit3', async () => {
-      const button = page.locator('.hold.long.holding');
-      await button.waitFor();
-      const style = await button.evaluate((held) => {
-        const { outlineStyle } = getComputedStyle(held);
-        return { outlineStyle, moves: getComputedStyle(held, '::before').transitionDuration };
-      });
-      expect(style).toEqual({ outlineStyle: 'solid', moves: '0s' });
-    });
+    const filled = await watchFilling(page);
+    await hold(page, 'Digit3', () => until(() => loop.acts().length === 1));
+    expect(await filled()).toEqual([{ text: 'Next lap', outlineStyle: 'solid', moves: '0s' }]);
   });
 
   test.each([

@@ -127,7 +127,7 @@ describe('the page about it', () => {
     }
     expect(loop.acts().map((act) => act.act)).toEqual([
       ...['choose', 'press', 'hold', 'phase', 'note', 'exclude lap', 'new cell'],
-      'allow stimulation',
+      ...['ask', 'withdraw', 'mark', 'put off', 'acknowledge', 'allow stimulation'],
     ]);
   });
 

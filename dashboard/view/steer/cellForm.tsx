@@ -1,4 +1,4 @@
-import { useRef, useState } from 'preact/hooks';
+import { useEffect, useRef, useState } from 'preact/hooks';
 import type { Actions } from '../actions.js';
 import { HoldButton } from '../holdButton.js';
 import { LONG_PRESS_MS } from '../keys.js';
@@ -8,6 +8,9 @@ export function CellForm(props: { cell: number; fields: readonly string[]; actio
   const { cell, fields, actions } = props;
   const [asking, setAsking] = useState(false);
   const form = useRef<HTMLFormElement>(null);
+  useEffect(() => {
+    if (asking) form.current?.querySelector('input')?.focus();
+  }, [asking]);
   const begin = async () => {
     const said = form.current ? [...new FormData(form.current)] : [];
     const filled = said.map(([name, value]) => [name, String(value).trim()] as const);
@@ -43,15 +46,10 @@ export function CellForm(props: { cell: number; fields: readonly string[]; actio
       }}
     >
       <h3 id="cell-title">Cell {cell + 1}: phases and counts begin anew</h3>
-      {fields.map((field, n) => (
+      {fields.map((field) => (
         <label key={field}>
           {field}
-          <input
-            name={field}
-            maxLength={200}
-            autocomplete="off"
-            ref={n === 0 ? (first) => first?.focus() : null}
-          />
+          <input name={field} maxLength={200} autocomplete="off" />
         </label>
       ))}
       <div class="pair">

@@ -81,7 +81,7 @@ function WishRow({ wish, rule, lap, nextLapKey, nowKey, actions }: WishRowProps)
       </div>
       {wish.laps > 1 ? (
         <label class="laps">
-          for
+          for{' '}
           <input
             type="number"
             min={1}
@@ -92,7 +92,7 @@ function WishRow({ wish, rule, lap, nextLapKey, nowKey, actions }: WishRowProps)
               const wanted = Math.floor(Number(event.currentTarget.value));
               if (wanted >= 1 && wanted <= wish.laps) setLaps(wanted);
             }}
-          />
+          />{' '}
           of at most {wish.laps} laps
         </label>
       ) : null}
