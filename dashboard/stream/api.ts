@@ -10,6 +10,7 @@ export interface Beginning {
   readonly rules: string;
   readonly subject: string;
   readonly experimenter?: string;
+  readonly protocolNumber?: string;
   readonly seed?: string;
   /** Why it is to begin whatever speaks against it. */
   readonly despite?: string;

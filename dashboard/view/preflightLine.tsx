@@ -1,38 +1,41 @@
 import { useEffect, useState } from 'preact/hooks';
 import type { Preflight } from '../../server/session/preflight.js';
+import { preflightStanding } from '../model/begin.js';
 import { rigApi } from '../stream/rigApi.js';
 import { LevelShape } from './shapes.js';
 
-/** Whether the rig was checked before this session, and where that is done. */
-export function PreflightLine() {
+/** It may be made meanwhile, here or elsewhere. */
+const LOOK_MS = 10_000;
+
+/**
+ * Whether the rig was checked before this session, and where that is done.
+ * @param props.onAgainst told whether a session will want a reason for it
+ */
+export function PreflightLine(props: {
+  simulated: boolean;
+  onAgainst: (against: boolean) => void;
+}) {
   const [preflight, setPreflight] = useState<Preflight | null>();
   useEffect(() => {
     let gone = false;
-    void rigApi.lastPreflight().then((told) => {
+    const look = async () => {
+      const told = await rigApi.lastPreflight();
       if (!gone && told.done) setPreflight(told.value.preflight);
-    });
+    };
+    void look();
+    const timer = setInterval(() => void look(), LOOK_MS);
     return () => {
       gone = true;
+      clearInterval(timer);
     };
   }, []);
+  const { level, words, against } = preflightStanding(preflight, props.simulated);
+  useEffect(() => props.onAgainst(against), [against]);
   if (preflight === undefined) return null;
-  if (preflight === null) {
-    return (
-      <p class="preflight-line">
-        <LevelShape level="warn" /> No pre-flight in the last twelve hours.{' '}
-        <a href="#rig">Check the rig</a>
-      </p>
-    );
-  }
-  const failed = preflight.checks.filter(({ result }) => result === 'failed').length;
-  const at = new Date(preflight.madeAt).toLocaleTimeString([], {
-    hour: '2-digit',
-    minute: '2-digit',
-  });
   return (
     <p class="preflight-line">
-      <LevelShape level={preflight.passed ? 'good' : 'bad'} /> Pre-flight at {at}:{' '}
-      {preflight.passed ? 'ready' : `${failed} failed`}. <a href="#rig">See it</a>
+      <LevelShape level={level} /> {words}{' '}
+      <a href="#rig">{preflight === null ? 'Check the rig' : 'See it'}</a>
     </p>
   );
 }

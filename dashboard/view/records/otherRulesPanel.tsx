@@ -1,6 +1,7 @@
 import type { FiringSeen } from '../../../server/session/whatIf.js';
 import type { WhatIfTold } from '../../../server/web/records/recordsMessages.js';
 import { clock, fixed } from '../../model/format.js';
+import { ScrollBox } from '../animals/scrollBox.js';
 import { JobLine } from './jobLine.js';
 import type { SessionProps } from './sessionPanel.js';
 
@@ -54,7 +55,7 @@ function Outcome({ told }: { told: WhatIfTold }) {
         else might have moved otherwise.
       </p>
       {told.rows.length > 0 ? (
-        <section class="rows-box" aria-label="Firings compared">
+        <ScrollBox label="Firings compared">
           <table class="small-rows">
             <thead>
               <tr>
@@ -82,7 +83,7 @@ function Outcome({ told }: { told: WhatIfTold }) {
               ))}
             </tbody>
           </table>
-        </section>
+        </ScrollBox>
       ) : null}
       {told.rowsLeftOut > 0 ? (
         <p class="soft">{told.rowsLeftOut} more: `lapwing replay --rules` tells them all.</p>

@@ -4,6 +4,7 @@ import type {
   RuleTold,
 } from '../../../server/web/records/recordsMessages.js';
 import { clock, fixed, plural } from '../../model/format.js';
+import { ScrollBox } from '../animals/scrollBox.js';
 import { JobLine } from './jobLine.js';
 import type { SessionProps } from './sessionPanel.js';
 
@@ -96,7 +97,7 @@ function errorWords(errors: ErrorsTold | null): string {
 
 function Firings({ firings }: { firings: readonly FiringTold[] }) {
   return (
-    <section class="rows-box" aria-label="Firings">
+    <ScrollBox label="Firings">
       <table class="small-rows">
         <thead>
           <tr>
@@ -125,6 +126,6 @@ function Firings({ firings }: { firings: readonly FiringTold[] }) {
           ))}
         </tbody>
       </table>
-    </section>
+    </ScrollBox>
   );
 }
