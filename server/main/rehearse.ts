@@ -41,7 +41,7 @@ export function rehearseCommand(): Command {
     .option('--record [folder]', 'write the record too, below this folder')
     .addOption(
       new Option('--runs <number>', 'this many sessions, and how they differ')
-        .argParser(wholeNumber(1, 100_000))
+        .argParser(wholeNumber(1, 10_000))
         .conflicts(['events', 'record', 'animalSeed']),
     )
     .addHelpText('after', HELP)

@@ -223,10 +223,11 @@ function phaseReport(name: string, runs: readonly RunResult[], n: number): Phase
 function drawReport(runs: readonly RunResult[], n: number): DrawReport {
   const draws = runs.map(({ draws: all }) => all[n]!);
   const distinct = [...new Set(draws.flatMap(({ values }) => values.map(([value]) => value)))];
-  const numbers = distinct.filter((value) => typeof value === 'number');
+  // Hundreds of thousands: too many to be the arguments of one call.
+  const numbers = distinct.filter((value) => typeof value === 'number').sort((a, b) => a - b);
   const inParts = distinct.length > MOST_WORDS && numbers.length > 0;
-  const least = Math.min(...numbers);
-  const width = (Math.max(...numbers) - least) / PARTS;
+  const least = numbers[0] ?? 0;
+  const width = ((numbers.at(-1) ?? 0) - least) / PARTS;
   const nameOf = (value: number | string): string => {
     if (!inParts || typeof value !== 'number') return String(value);
     const part = Math.min(PARTS - 1, Math.floor((value - least) / width));
@@ -234,7 +235,7 @@ function drawReport(runs: readonly RunResult[], n: number): DrawReport {
     return `${edge(part)} to ${edge(part + 1)}`;
   };
   const names = inParts
-    ? [...numbers].sort((a, b) => a - b).map(nameOf)
+    ? numbers.map(nameOf)
     : distinct.map(nameOf).sort((a, b) => a.localeCompare(b, 'en', { numeric: true }));
   const timesIn = (draw: (typeof draws)[number], name: string) =>
     sum(draw.values.filter(([value]) => nameOf(value) === name).map(([, times]) => times));

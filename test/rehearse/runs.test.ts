@@ -152,6 +152,21 @@ end: lap >= 8 or time >= 50 min
     expect(report.minutes.bins.reduce((sum, runs) => sum + runs, 0)).toBe(6);
   });
 
+  test('tells a draw of many numbers in fifths of their range', () => {
+    const text = WATER.replace('rules:', 'draws:\n  spot: 20 to 140 cm, every lap\nrules:');
+    const [draw] = reportOf(settingOf(text, { minutes: 10 }), 4).draws;
+    expect(draw!.name).toBe('spot');
+    expect(draw!.values.length).toBeLessThanOrEqual(5);
+    const ranges = draw!.values.map(({ value }) => value.split(' to ').map(Number));
+    for (const [from, to] of ranges) {
+      expect(from).toBeGreaterThanOrEqual(20);
+      expect(to).toBeLessThanOrEqual(140);
+      expect(to).toBeGreaterThan(from!);
+    }
+    const shares = draw!.values.reduce((sum, { share }) => sum + share, 0);
+    expect(shares).toBeCloseTo(1, 9);
+  });
+
   test('counts what the guard withheld under one reason, however much was asked', () => {
     const outputs = demoRig.outputs.map((output) =>
       output.name === 'laser' ? { ...output, perSession: 3 } : output,

@@ -241,13 +241,16 @@ describe('a check', () => {
   });
 });
 
-describe('a rehearsal', () => {
+const SLOW_MS = 100_000;
+
+describe('a rehearsal', { timeout: 3 * SLOW_MS }, () => {
   const begin = (app: FastifyInstance, payload: object) =>
     app.inject({ method: 'POST', url: '/api/rehearse', payload });
   const state = async (app: FastifyInstance): Promise<RehearsalState> =>
     (await app.inject('/api/rehearse')).json();
   const ended = async (app: FastifyInstance): Promise<RehearsalState> => {
-    await until(async () => (await state(app)).state !== 'running');
+    // A process is started for it, which starts threads for many sessions.
+    await until(async () => (await state(app)).state !== 'running', SLOW_MS);
     return state(app);
   };
 

@@ -42,9 +42,12 @@ export async function startWeb(
   return rigged;
 }
 
-/** Waits for something to become true, however slow the machine; fails after 20 s. */
-export async function until(holds: () => boolean | Promise<boolean>): Promise<void> {
-  const giveUpMs = performance.now() + 20_000;
+/** Waits for something to become true, however slow the machine; fails after 20 s unless said. */
+export async function until(
+  holds: () => boolean | Promise<boolean>,
+  mostMs = 20_000,
+): Promise<void> {
+  const giveUpMs = performance.now() + mostMs;
   while (!(await holds())) {
     if (performance.now() > giveUpMs) throw new Error(`never came true: ${holds}`);
     await new Promise((resolve) => setTimeout(resolve, 10));
