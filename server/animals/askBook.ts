@@ -4,7 +4,7 @@ import type { AnimalBefore } from '../session/description.js';
 import { type BeforeAnswer, type BeforeQuestion, NOBODY } from './book.js';
 
 /** Longer than a slow share takes; one that hangs must not keep an animal waiting on the belt. */
-const ASKED_MS = 15_000;
+const ASKED_MS = 20_000;
 /** Reading an hour's record takes seconds. */
 const TOLD_MS = 120_000;
 

@@ -19,7 +19,8 @@ async function answer(question: Question): Promise<object> {
   if (question.ask === 'before') return before(question);
   if (question.ask === 'began') await began(question);
   else await ended(question);
-  return { done: true };
+  // Not `done`, which `askChild` takes for progress.
+  return { told: true };
 }
 
 try {

@@ -177,6 +177,8 @@ export class Loop implements LinkHandler, LoopService {
     clearInterval(this.#tick);
     await this.#link.close();
     this.#server.close();
+    // The record is finished, and the water book told, before the program is gone.
+    await this.#closing;
   }
 
   // ---- the board -----------------------------------------------------------------------------

@@ -3,6 +3,7 @@ import { basename, join } from 'node:path';
 import { afterAll, beforeAll, describe, expect, it } from 'vitest';
 import { AnimalsDesk } from '../../server/animals/animalsDesk.js';
 import { AnimalsFolder } from '../../server/animals/animalsFolder.js';
+import { askBefore, tellBegan, tellEnded } from '../../server/animals/askBook.js';
 import { before, ended } from '../../server/animals/book.js';
 import { sessionWaterOf } from '../../server/animals/sessionWater.js';
 import { waterOn } from '../../server/animals/waterBook.js';
@@ -104,6 +105,25 @@ describe('before a session', () => {
     expect((await ask(folder, 'nobody')).animal.against).toEqual([]);
     rmSync(folder, { recursive: true });
     expect((await ask(folder)).animal.against[0]).toMatch(/ENOENT/);
+  });
+});
+
+describe('the book’s own process', { timeout: 120_000 }, () => {
+  it('answers who asks before a session, and files what it is told', async () => {
+    const at = await desk();
+    const { folder } = at.folder;
+    const question = { folder, subject: 'm07', rig: 'demo', recordFolder: session.root };
+    await expect(askBefore(question, undefined)).rejects.toMatchObject({ code: 'ANIMALS_AGAINST' });
+    const { animal } = await askBefore(question, 'a guest');
+    expect(animal).toMatchObject({ kept: true, despite: 'a guest' });
+    const kept = readDescription(session.folder);
+    updateDescription(session.folder, { animal: { ...animal, against: ['x'] } });
+    await tellBegan(session.folder);
+    await tellEnded(session.folder);
+    updateDescription(session.folder, kept);
+    const { history } = await at.history('m07');
+    expect(history.sessions[0]!.override).toEqual({ reason: 'a guest', against: ['x'] });
+    expect(history.sessions[0]!.water!.drops).toBeGreaterThan(5);
   });
 });
 
