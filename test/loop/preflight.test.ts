@@ -33,7 +33,7 @@ function preflightAt(madeAt: string, name: string, passed: boolean): Preflight {
 const left = (child: ReturnType<LiveRig['run']>) =>
   new Promise<number | null>((resolve) => child.once('close', resolve));
 
-describe('the pre-flight before a session', () => {
+describe('the pre-flight before a session', { timeout: 120_000 }, () => {
   test('that failed lets none begin without a reason, and the reason is kept', async () => {
     rig = await LiveRig.start({ rules: RULES });
     const file = readRig(rig.rigPath);
