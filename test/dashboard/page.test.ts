@@ -156,7 +156,7 @@ describe('the page, in a real browser', () => {
       throw new Error(`Tab never came to ${name}`);
     };
     await page.getByRole('button', { name: 'Begin' }).waitFor();
-    await tabTo(/^Animal/);
+    await tabTo(/^Animal$/);
     await page.keyboard.type('M12');
     await tabTo(/^Begin$/);
     await page.keyboard.press('Enter');

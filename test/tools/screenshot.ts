@@ -38,9 +38,31 @@ async function pictureRehearsal(page: Page, url: string, file: string): Promise<
   return file;
 }
 
+/** One session of those that the demo makes for a newcomer, with what happened in it. */
+async function pictureRecords(page: Page, url: string, file: string): Promise<string> {
+  await page.goto(`${url}/#records`);
+  const session = page.getByRole('link', { name: 'Induction with sham laps' });
+  await session.waitFor({ timeout: 240_000 });
+  await session.click();
+  await page.locator('.rules-table').waitFor({ timeout: 120_000 });
+  await page.evaluate(() => window.scrollTo(0, 0));
+  await page.waitForTimeout(300);
+  await page.screenshot({ path: file });
+  return file;
+}
+
+/** A page as it is when it is opened. */
+async function picturePage(page: Page, url: string, name: string, file: string): Promise<string> {
+  await page.goto(`${url}/#${name}`);
+  await page.locator(`main.${name}`).waitFor();
+  await page.waitForTimeout(2500);
+  await page.screenshot({ path: file });
+  return file;
+}
+
 /**
- * Writes `run-THEME-desk.png`, `run-THEME-phone.png`, and the same of the Rehearse page, into `out`,
- * and returns their paths.
+ * Writes `run-THEME-desk.png`, `run-THEME-phone.png`, and the same of the Rehearse page, and of the other
+ * pages in the first theme, into `out`, and returns their paths.
  */
 export async function takePictures(wanted: Pictures): Promise<string[]> {
   const { url, out, laps = 0, themes = ['dark', 'light', 'red'], timeoutMs = 300_000 } = wanted;
@@ -66,6 +88,12 @@ export async function takePictures(wanted: Pictures): Promise<string[]> {
         await page.screenshot({ path: file });
         files.push(file);
         files.push(await pictureRehearsal(page, url, join(out, `rehearse-${theme}-${name}.png`)));
+        if (theme === themes[0]) {
+          const at = (of: string) => join(out, `${of}-${theme}-${name}.png`);
+          files.push(await pictureRecords(page, url, at('records')));
+          files.push(await picturePage(page, url, 'animals', at('animals')));
+          files.push(await picturePage(page, url, 'rig', at('rig')));
+        }
         await page.close();
       }
     }
