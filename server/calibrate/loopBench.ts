@@ -4,7 +4,7 @@ import type { BenchItem, BenchNow, Snapshot, Tried, TryRequest } from '../loop/p
 import type { RigAddress } from '../loop/rigLock.js';
 import type { GuideBench } from './guides/guide.js';
 
-/** The board has to be answering within this, or a guide has nothing to talk to. */
+/** The board has to be answering within this, or there is nothing to talk to. */
 const BOARD_MS = 8_000;
 
 /** The bench of a running loop, over the loop's local socket. */
@@ -38,14 +38,17 @@ export class LoopBench implements GuideBench {
    * Connects, and waits until the board answers and the bench shows.
    * @throws LapwingError LOOP_AWAY without a loop, LOOP_NO_BOARD without a board
    */
-  static async open(address: Pick<RigAddress, 'socketPath' | 'tokenFile'>): Promise<LoopBench> {
+  static async open(
+    address: Pick<RigAddress, 'socketPath' | 'tokenFile'>,
+    withinMs = BOARD_MS,
+  ): Promise<LoopBench> {
     const bench = new LoopBench(address);
     bench.#client.start();
     try {
       await bench.#client.ready();
       bench.#client.watch(10);
       await bench.#client.bench(true);
-      await bench.#until(() => bench.#state?.link.state === 'up' && bench.#now.atUs > 0);
+      await bench.#until(() => bench.#state?.link.state === 'up' && bench.#now.atUs > 0, withinMs);
       return bench;
     } catch (error) {
       bench.close();
@@ -93,7 +96,7 @@ export class LoopBench implements GuideBench {
     this.#client.close();
   }
 
-  #until(holds: () => boolean): Promise<void> {
+  #until(holds: () => boolean, withinMs: number): Promise<void> {
     return new Promise((resolve, reject) => {
       const done = (error?: Error) => {
         clearInterval(looking);
@@ -109,7 +112,7 @@ export class LoopBench implements GuideBench {
       const late = setTimeout(() => {
         const why = this.#state?.link.reason || 'It has said nothing yet.';
         done(new LapwingError('loopNoBoard', why));
-      }, BOARD_MS);
+      }, withinMs);
       this.#changed.add(look);
       look();
     });

@@ -38,6 +38,7 @@ const STATUS = new Map<string, number>([
   [ERRORS.animalsExists.code, 409],
   [ERRORS.animalsEntryBad.code, 422],
   [ERRORS.animalsUnlikely.code, 422],
+  [ERRORS.calibrateAnswer.code, 422],
   [ERRORS.animalsAgainst.code, 409],
   [ERRORS.webInternal.code, 500],
   [ERRORS.loopAway.code, 503],

@@ -144,6 +144,11 @@ export class FakeLoop {
       say({ tell: 'error', ...withRequest(message), ...this.refusal });
       return;
     }
+    if (message.say === 'bench') {
+      const { boardUs: atUs } = this.animal.state;
+      const board = { model: 'scripted', boardId: 0, firmware: 1, simulated: false };
+      say({ tell: 'bench', now: { atUs: atUs + 1, count: 0, board }, items: [] });
+    }
     this.obey(message);
     if (message.request !== undefined) say({ tell: 'done', request: message.request });
     this.show();

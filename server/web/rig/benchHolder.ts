@@ -6,6 +6,8 @@ import type { RigAddress } from '../../loop/rigLock.js';
 import type { BenchTold } from './rigMessages.js';
 
 const ITEMS_KEPT = 5_000;
+/** A page asks again by itself. */
+const BOARD_MS = 3_000;
 /** Nobody has asked for so long: the bench is given back, and outputs that were tried go idle. */
 const UNUSED_MS = 6_000;
 
@@ -70,7 +72,7 @@ export class BenchHolder {
 
   async #open(): Promise<LoopBench> {
     try {
-      const bench = await LoopBench.open(this.#address);
+      const bench = await LoopBench.open(this.#address, BOARD_MS);
       this.#items = new EventRing<BenchItem>(ITEMS_KEPT);
       bench.listen((item) => {
         if (item.is !== 'frames') this.#items.push(item);
