@@ -175,6 +175,10 @@ describe('a session on a real pseudo-terminal', { timeout: 120_000 }, () => {
       30_000,
       () => live.output,
     );
+    const alarm = () => live.state?.alarms.find((one) => one.alarm === 'restart');
+    await until('the alarm', () => alarm() !== undefined);
+    await live.client.act({ act: 'acknowledge', alarm: 'restart' }, 'a test', 'here');
+    await until('that it was seen', () => alarm()?.seenBy?.who === 'a test');
     const lap = live.state!.lap;
     await until('laps with a known position', () => live.state!.lap >= lap + 3);
     const after = live.events.slice(
@@ -185,8 +189,13 @@ describe('a session on a real pseudo-terminal', { timeout: 120_000 }, () => {
     await live.client.act({ act: 'allow stimulation' }, 'a test', 'here');
     const firings = fired(live.events, 'gate').length;
     await until('the gate again', () => fired(live.events, 'gate').length > firings);
+    await until('the alarm to be over', () => alarm() === undefined);
     await live.end('SIGINT');
     await replayed(live.session);
+    const told = (await live.recorded()).flatMap((one) =>
+      one.kind === 'alarm' && one.alarm === 'restart' ? [one.state] : [],
+    );
+    expect(told).toEqual(['raised', 'cleared']);
   });
 
   it('goes idle while the loop is stopped for 3 s, refuses what is stale, and shakes hands anew', async () => {
@@ -204,6 +213,7 @@ describe('a session on a real pseudo-terminal', { timeout: 120_000 }, () => {
       30_000,
       () => live.output,
     );
+    await until('the alarm', () => live.state!.alarms.some((one) => one.alarm === 'silence'));
     const lap = live.state!.lap;
     await until('more laps', () => live.state!.lap >= lap + 2);
     expect(Math.max(...perLap(live.events, 'gate'))).toBe(1);

@@ -106,7 +106,7 @@ function WishRow({ wish, rule, lap, nextLapKey, nowKey, actions }: WishRowProps)
               type="button"
               onClick={() => void actions.act({ act: 'withdraw', rule: wish.rule })}
             >
-              Take back<span class="unseen">: {name}</span>
+              Take back<span class="unseen"> what was asked of {name}</span>
             </button>
           </>
         )}
