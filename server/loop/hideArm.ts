@@ -11,9 +11,14 @@ export function hideArm(state: Snapshot, mask: LiveMask, rig: Rig): Snapshot {
   rig.outputs.forEach(({ name }, index) => {
     if (mask.mask.hidesOutput(name)) hidden |= 1 << index;
   });
+  // An input that is wired back from one of them tells as much.
+  const { loopback } = rig;
+  const listens = loopback !== undefined && mask.mask.hidesOutput(loopback.output);
+  const back = listens ? 1 << rig.inputs.findIndex(({ name }) => name === loopback.input) : 0;
   return {
     ...state,
     outputs: state.outputs & ~hidden,
+    inputs: state.inputs & ~back,
     // Only a real firing has anything for the board to confirm.
     choices: state.choices.map((choice) => ({ ...choice, waits: false })),
     rules: state.rules.map((rule) =>

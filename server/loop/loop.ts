@@ -189,12 +189,12 @@ export class Loop implements LinkHandler, LoopService {
   }
   edge(message: Extract<RareInput, { kind: 'edge' }>['message']): void {
     this.#take({ kind: 'edge', message });
-    this.bench.edge(message, this.#runner.core.tracker.stampUs);
+    // An input may be wired back from an output, which tells the arm of a blinded session.
+    if (this.#mask === undefined) this.bench.edge(message, this.#runner.core.tracker.stampUs);
   }
   outcome(message: Extract<RareInput, { kind: 'outcome' }>['message']): void {
     this.#highestId = Math.max(this.#highestId, message.id);
     this.#take({ kind: 'outcome', message });
-    // What the board did tells the arm of a blinded session.
     if (this.#mask !== undefined) return;
     this.bench.outcome(message, this.#runner.core.tracker.extend(message.boardUs));
   }
