@@ -17,15 +17,15 @@ interface ServeFlags {
   rules?: string;
   records?: string;
   listen?: string;
-  name: string[];
+  name?: string[];
   tlsCert?: string;
   tlsKey?: string;
-  behindProxy: string[];
+  behindProxy?: string[];
   signIn?: boolean;
   viewers: number;
 }
 
-const several = (value: string, before: string[]) => [...before, value];
+const several = (value: string, before: string[] = []) => [...before, value];
 
 /** `lapwing serve --rig RIG`: the page, from which sessions are begun and ended. */
 export function serveCommand(): Command {
@@ -40,14 +40,13 @@ export function serveCommand(): Command {
       'open the page to the network: 0.0.0.0:8711; people sign in, and the first time their secrets are printed',
     )
     .option('--viewers <n>', 'viewers made that first time', wholeNumber(0, 50), 1)
-    .option('--name <host>', 'a host name that the page is opened under; repeatable', several, [])
+    .option('--name <host>', 'a host name that the page is opened under; repeatable', several)
     .option('--tls-cert <file>', 'serve over TLS: the certificate with its chain, PEM')
     .option('--tls-key <file>', 'and its key, PEM')
     .option(
       '--behind-proxy <address>',
       'believe what a reverse proxy at this address says of callers; repeatable',
       several,
-      [],
     )
     .option('--sign-in', 'people sign in on this machine too')
     .action(async (flags: ServeFlags) => {
@@ -74,7 +73,7 @@ export function serveCommand(): Command {
 function listeningOf(flags: ServeFlags): Listening {
   const at = flags.listen === undefined ? undefined : parseListen(flags.listen);
   const { host, port } = at ?? { host: '127.0.0.1', port: flags.port };
-  const { name: names, behindProxy: proxies, tlsCert, tlsKey } = flags;
+  const { name: names = [], behindProxy: proxies = [], tlsCert, tlsKey } = flags;
   // Wrong addresses are told now.
   new Senders(proxies);
   const signIn = flags.signIn === true || !isLoopback(host) || proxies.length > 0;
@@ -96,7 +95,7 @@ async function firstPeople(rigName: string, rigPath: string, viewers: number): P
     const name = viewers === 1 ? 'viewer' : `viewer-${n}`;
     made.push({ name, secret: await people.add(name, 'viewer') });
   }
-  console.log(`${secretLines(made)}\n${secretsNote(rigPath)}`);
+  console.log(`May sign in from now on:\n${secretLines(made)}\n${secretsNote(rigPath)}`);
 }
 
 function cautions(web: Listening): void {

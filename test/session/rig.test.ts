@@ -17,6 +17,17 @@ function problemsOf(text: string): string[] {
   return parseRig('rig.yaml', text).problems.map((p) => `${p.line}:${p.column} ${p.message}`);
 }
 
+describe('what viewers may', () => {
+  it('is to look, unless the file lets them hold the stimulus, and nothing else', () => {
+    const may = (line: string) => parseRig('rig.yaml', `${demo}\n${line}`).rig?.viewersMayHold;
+    expect(may('')).toBe(false);
+    expect(may('viewers_may: only look')).toBe(false);
+    expect(may('viewers_may: hold stimulus')).toBe(true);
+    const [problem] = problemsOf(`${demo}\nviewers_may: end the session`);
+    expect(problem).toContain('expected only look or hold stimulus');
+  });
+});
+
 describe('the demo rig file', () => {
   const rig = readRig(demoPath);
 

@@ -27,7 +27,7 @@ async function run(...args: string[]): Promise<{ status: number | null; said: st
 
 const SECRET = /[2-9a-z]{4}(?:-[2-9a-z]{4}){4}/;
 
-describe('lapwing serve --listen', { timeout: 120_000 }, () => {
+describe('lapwing serve --listen', { timeout: 240_000 }, () => {
   test('makes people the first time, lets them in over the network, and nobody else', async () => {
     let said = '';
     const where = ['--rig', rigPath, '--records', join(folder, 'records')];
@@ -50,7 +50,7 @@ describe('lapwing serve --listen', { timeout: 120_000 }, () => {
     await until(
       'the page',
       () => /dashboard: http/.test(said),
-      90_000,
+      180_000,
       () => said,
     );
     const secretOf = (name: string) =>
