@@ -19,6 +19,8 @@ export interface SummaryStamp {
   readonly version: string;
   readonly recordBytes: number;
   readonly recordMs: number;
+  /** The description says whether the arm of a blinded session may be shown. */
+  readonly descriptionMs: number;
 }
 export interface KeptSummary {
   readonly of: SummaryStamp;
@@ -50,7 +52,9 @@ export async function recordStat(folder: string): Promise<{ bytes: number; ms: n
 /** The stamp that a summary of the record as it is now would carry. */
 export async function summaryStamp(folder: string, version: string): Promise<SummaryStamp> {
   const { bytes, ms } = await recordStat(folder);
-  return { version, recordBytes: bytes, recordMs: ms };
+  const description = await fs.stat(path.join(folder, 'session.json')).catch(() => undefined);
+  const descriptionMs = description?.mtimeMs ?? 0;
+  return { version, recordBytes: bytes, recordMs: ms, descriptionMs };
 }
 
 /** What there is, and whether it is older than what it was made from. */
@@ -58,21 +62,20 @@ export async function madeOf(
   folder: string,
   version: string,
 ): Promise<Pick<SessionTold, 'recordBytes' | 'made' | 'summary'>> {
-  const record = await recordStat(folder);
-  const look = (what: keyof typeof WHERE) => lookAt(madePath(folder, what), record.ms);
+  const stamp = await summaryStamp(folder, version);
+  const fromMs = Math.max(stamp.recordMs, stamp.descriptionMs);
+  const look = (what: keyof typeof WHERE) => lookAt(madePath(folder, what), fromMs);
   const [report, tables, parquet, nwb] = await Promise.all([
     ...[look('report'), look('tables'), look('parquet'), look('nwb')],
   ]);
   return {
-    recordBytes: record.bytes,
+    recordBytes: stamp.recordBytes,
     made: { report: report!, tables: tables!, parquet: parquet!, nwb: nwb! },
-    summary: await keptSummary(folder, {
-      ...{ version, recordBytes: record.bytes, recordMs: record.ms },
-    }),
+    summary: await keptSummary(folder, stamp),
   };
 }
 
-async function lookAt(file: string, recordMs: number): Promise<Made | null> {
+async function lookAt(file: string, fromMs: number): Promise<Made | null> {
   const stat = await fs.lstat(file).catch(() => undefined);
   if (!stat || stat.isSymbolicLink()) return null;
   let bytes = stat.size;
@@ -82,7 +85,7 @@ async function lookAt(file: string, recordMs: number): Promise<Made | null> {
       bytes += (await fs.stat(path.join(file, name)).catch(() => undefined))?.size ?? 0;
     }
   }
-  return { bytes, at: rfc3339(stat.mtime), old: stat.mtimeMs < recordMs };
+  return { bytes, at: rfc3339(stat.mtime), old: stat.mtimeMs < fromMs };
 }
 
 async function keptSummary(folder: string, stamp: SummaryStamp): Promise<SummaryTold | null> {
