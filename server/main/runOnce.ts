@@ -57,6 +57,11 @@ export class Runs {
       { seed: animalSeed, trained, animal: parameters },
       !everyFrame,
     );
+    const { belt } = simulated.simulated;
+    const offsetCm = rig.belt.seam?.offsetCm ?? 0;
+    simulated.simulated.board.probe((_, on, us) => {
+      if (on) collector.rose(us, belt.positionCm + offsetCm);
+    });
     rehearse(setup, simulated, {
       mostUs: minutes * 60_000_000,
       onDecision: collector.take,

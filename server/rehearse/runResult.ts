@@ -32,7 +32,10 @@ export interface RunRule extends Declines {
   readonly byPhase: readonly number[];
   /** Times withheld, missed, refused or uncertain, by reason; numbers that vary are left out. */
   readonly not: readonly (readonly [reason: string, times: number])[];
-  /** Distance from the place intended, mm: started by the board, and by the host after its latency. */
+  /**
+   * True distance of the belt from the place intended, the encoder's slip included, mm: started by
+   * the board, and by the host after its latency.
+   */
   readonly boardMm: readonly number[];
   readonly hostMm: readonly number[];
 }
@@ -58,11 +61,13 @@ export class RunCollector {
   #phase = -1;
   #phaseUs = 0;
   #hostFirings = 0;
+  /** Where the belt truly was at rises not yet told of, by time. */
+  readonly #rises = new Map<number, number>();
 
   /** @param latency added to firings that the host decided, drawn anew for each from `seed` */
   constructor(
     file: RulesFile,
-    rig: Rig,
+    private readonly rig: Rig,
     private readonly run: number,
     private readonly seed: string,
     private readonly latency: Latency,
@@ -81,6 +86,11 @@ export class RunCollector {
     this.#phases = file.phases.map(() => ({ entered: 0, left: 0, seconds: 0 }));
     this.#phaseIndex = new Map(file.phases.map(({ name }, n) => [name.name, n]));
     this.#draws = new Map(file.draws.map(({ name }) => [name.name, new Map()]));
+  }
+
+  /** An output rose, at board time `us`, where the belt truly stood at `cm`. */
+  rose(us: number, cm: number): void {
+    this.#rises.set(us, cm);
   }
 
   readonly take = (decision: StampedDecision): void => {
@@ -127,7 +137,8 @@ export class RunCollector {
     const rule = this.#rules[this.#index.get(decision.rule) ?? -1];
     if (rule === undefined || summary === undefined) return;
     if (summary.fired > before) rule.byPhase[Math.max(0, this.#phase)]!++;
-    const { errorMm, armed, speedCmPerS } = decision;
+    const { armed, speedCmPerS } = decision;
+    const errorMm = this.#errorMm(decision);
     if (errorMm === null) return;
     if (armed) {
       rule.boardMm.push(errorMm);
@@ -136,6 +147,16 @@ export class RunCollector {
     const share = uniform(this.seed, 'latency', '', this.#hostFirings++, 0);
     const lateS = latencyAt(this.latency, share) / 1e6;
     rule.hostMm.push(errorMm + speedCmPerS * lateS * 10);
+  }
+
+  #errorMm({ riseUs, placeCm, errorMm }: Extract<StampedDecision, { kind: 'fired' }>) {
+    const cm = riseUs === null ? undefined : this.#rises.get(riseUs);
+    if (riseUs === null || placeCm === null || cm === undefined) return errorMm;
+    this.#rises.delete(riseUs);
+    const half = this.rig.belt.lengthCm / 2;
+    const off = cm - placeCm;
+    // The nearer way round: a place at the seam may be met on either side of it.
+    return 10 * (off > half ? off - 2 * half : off < -half ? off + 2 * half : off);
   }
 
   #leavePhase(us: number, left: boolean): void {

@@ -42,7 +42,7 @@ export interface RuleReport {
   readonly moments: number;
   /** Most frequent first. */
   readonly why: readonly Hindrance[];
-  /** Distance from the place intended, mm; null where nothing fired at a place that way. */
+  /** True distance from the place intended, slip included, mm; null where none fired at a place so. */
   readonly boardMm: Spread | null;
   readonly hostMm: Spread | null;
 }
