@@ -128,7 +128,7 @@ function amountOf(
 export function animalText({ name, parameters }: AnimalFile, head: readonly string[] = []): string {
   const lines = Object.entries(PARAMETERS).map(([key, parameter]) => {
     const amount = amountText(parameter, parameters[key as Key]);
-    return `${`${parameter.name}: ${amount}`.padEnd(32)} # ${parameter.meaning}\n`;
+    return `${parameter.name}: ${amount} # ${parameter.meaning}\n`;
   });
   const comments = head.map((line) => `# ${line}\n`).join('');
   return `${comments}animal: ${/^[\w .,()-]+$/.test(name) ? name : JSON.stringify(name)}\n${lines.join('')}`;
