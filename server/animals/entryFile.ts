@@ -31,10 +31,8 @@ export function readEntryText(text: string, id: string): Entry | { readonly why:
   } catch {
     return { why: text === '' ? 'it is empty' : 'it stops in the middle' };
   }
-  if (!schema(value)) {
-    const [first] = schema.errors ?? [];
-    return { why: `${first?.instancePath || 'it'} ${first?.message}` };
-  }
+  const problem = problemWith(value);
+  if (problem !== undefined) return { why: problem };
   const { sha256, ...entry } = value;
   if (digestOf(entry as Entry) !== sha256) return { why: 'it was altered after it was written' };
   if (entry.id !== id) return { why: `it calls itself ${entry.id}` };
@@ -68,16 +66,14 @@ function digestOf(entry: Entry): string {
   return createHash('sha256').update(JSON.stringify(entry)).digest('hex');
 }
 
-let compiled: ValidateFunction | undefined;
+let validate: ValidateFunction | undefined;
 
-function schema(value: unknown): boolean {
-  compiled ??= new Ajv2020({ allowUnionTypes: true, strict: false }).compile(
+/** What is against the schema, in words; undefined where nothing is. */
+function problemWith(value: unknown): string | undefined {
+  validate ??= new Ajv2020({ strict: false }).compile(
     JSON.parse(readFileSync(entrySchemaFile(), 'utf8')) as object,
   );
-  schema.errors = undefined as ValidateFunction['errors'];
-  const good = compiled(value);
-  // The first complaint about a kind's own fields helps; that no kind fits does not.
-  schema.errors = compiled.errors;
-  return good;
+  if (validate(value)) return undefined;
+  const [first] = validate.errors ?? [];
+  return `${first?.instancePath || 'it'} ${first?.message}`;
 }
-schema.errors = undefined as ValidateFunction['errors'];

@@ -64,8 +64,9 @@ export function armFor(
       `\`${sealed.draw}\` is sealed, and no allocation is set.`,
     );
   }
-  const { id, slots, commitment, ...rest } = readAllocation(where.allocation);
-  const slot = slotFor({ id, slots, commitment, ...rest }, subject, session);
+  const allocation = readAllocation(where.allocation);
+  const slot = slotFor(allocation, subject, session);
+  const { id, commitment } = allocation;
   const blinding = { allocation: id, commitment, file: where.allocation, key: where.key, slot };
   return { arm: wordOf(sealed, openSlot(id, slot, readKey(where.key))), blinding };
 }

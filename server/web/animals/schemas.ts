@@ -5,20 +5,20 @@ import { list, orNull, shape } from '../rules/answerSchemas.js';
 import { closed, text } from '../schemas.js';
 
 const { $defs } = JSON.parse(readFileSync(entrySchemaFile(), 'utf8')) as {
-  $defs: { card: { properties: Record<string, unknown> }; day: object; grams: object; ul: object };
+  $defs: Record<string, { properties?: Record<string, unknown> }>;
 };
 const { day, grams, ul } = $defs;
 
-/** The card of the entries' own schema, with its references resolved. */
-const card = closed(
-  [],
-  JSON.parse(
-    JSON.stringify($defs.card.properties).replace(
-      /\{"\$ref":"#\/\$defs\/(\w+)"(?:,"description":"[^"]*")?\}/g,
-      (_, name: string) => JSON.stringify(($defs as unknown as Record<string, object>)[name]),
-    ),
-  ) as Record<string, unknown>,
-);
+/** A piece of the entries' own schema, with what it refers to in its place. */
+function resolved(node: unknown): unknown {
+  if (Array.isArray(node)) return node.map(resolved);
+  if (typeof node !== 'object' || node === null) return node;
+  const { $ref } = node as { $ref?: string };
+  if ($ref !== undefined) return resolved($defs[$ref.slice('#/$defs/'.length)]);
+  return Object.fromEntries(Object.entries(node).map(([key, value]) => [key, resolved(value)]));
+}
+
+const card = closed([], resolved($defs.card!.properties) as Record<string, unknown>);
 
 const animal = text(40, 1);
 const said = { by: text(64), at: text(40), note: text(500), sure: { type: 'boolean' } };
