@@ -127,8 +127,12 @@ async function whatIfWith(
   tell(0, 'reading the rules');
   const other = loadSession(folder, rulesPath);
   refuseSealed(other.description.blinding, 'Another rules file compared with this one');
-  tell(0.1, 'running the other rules');
-  const { counts, rows } = await whatIf(other, (hear) => new SimulatedLedBoard(hear));
+  const most = other.description.record?.lastInput ?? 0;
+  const { counts, rows } = await whatIf(
+    other,
+    (hear) => new SimulatedLedBoard(hear),
+    (inputs) => tell(most > 0 ? inputs / most : 0, 'running the other rules'),
+  );
   const rowsLeftOut = Math.max(0, rows.length - MOST_ROWS);
   const { title } = other.rules.file;
   return { rules, title, counts, rows: rows.slice(0, MOST_ROWS), rowsLeftOut };

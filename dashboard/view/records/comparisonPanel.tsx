@@ -35,6 +35,7 @@ export function ComparisonPanel({ desk, state }: { desk: RecordsDesk; state: Rec
                 <th scope="col">lick share</th>
                 <th scope="col">slowing</th>
                 <th scope="col">water, µL</th>
+                <th scope="col">learned at lap</th>
               </tr>
             </thead>
             <tbody>
@@ -51,6 +52,7 @@ export function ComparisonPanel({ desk, state }: { desk: RecordsDesk; state: Rec
                   <td>{fixed(day.lickShare, 2)}</td>
                   <td>{fixed(day.slowing, 2)}</td>
                   <td>{fixed(day.waterUl, 1)}</td>
+                  <td>{fixed(day.learnedAtLap, 0)}</td>
                 </tr>
               ))}
             </tbody>

@@ -156,11 +156,12 @@ export interface MendTold {
   readonly identical: boolean | null;
 }
 /** Numbers that cannot be had (no lick, no lap) are null on their way through JSON. */
-export type DayTold = {
-  readonly [key in keyof LearningDay]: LearningDay[key] extends number
-    ? number | null
-    : LearningDay[key];
-};
+type Told<T> = T extends number
+  ? number | null
+  : T extends object
+    ? { [K in keyof T]: Told<T[K]> }
+    : T;
+export type DayTold = Told<LearningDay>;
 export interface LearningTold {
   readonly days: readonly DayTold[];
 }
