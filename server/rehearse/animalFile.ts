@@ -131,7 +131,8 @@ export function animalText({ name, parameters }: AnimalFile, head: readonly stri
     return `${parameter.name}: ${amount} # ${parameter.meaning}\n`;
   });
   const comments = head.map((line) => `# ${line}\n`).join('');
-  return `${comments}animal: ${/^[\w .,()-]+$/.test(name) ? name : JSON.stringify(name)}\n${lines.join('')}`;
+  const plain = /^\w(?:[\w .,()-]*[\w.)])?$/.test(name);
+  return `${comments}animal: ${plain ? name : JSON.stringify(name)}\n${lines.join('')}`;
 }
 
 /** A parameter's value as it stands in a file, four significant digits. */
