@@ -205,7 +205,7 @@ const connection = new Connection(stream, {
   after: () => ({ number: live.lastEvent, life: live.life }),
   status: (status) => {
     live.stream = status;
-    if (status === 'lost') void leaveIfSignedOut();
+    if (status === 'lost' && live.access.you?.signedIn !== false) void leaveIfSignedOut();
     touch();
   },
   message: (message) => {

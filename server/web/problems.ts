@@ -14,6 +14,7 @@ const STATUS = new Map<string, number>([
   [ERRORS.webTooManyRequests.code, 429],
   [ERRORS.webTooManyViewers.code, 503],
   [ERRORS.webNotFound.code, 404],
+  [ERRORS.webPeopleFile.code, 503],
   [ERRORS.webSignInNeeded.code, 401],
   [ERRORS.webSignInWrong.code, 401],
   [ERRORS.webSignInWait.code, 429],
