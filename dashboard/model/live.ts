@@ -3,6 +3,7 @@ import type { NumberedEvent, Setup, Snapshot } from '../../server/loop/protocol.
 import type { StampedDecision } from '../../server/session/decisions.js';
 import type { StreamMessage } from '../../server/web/streamMessages.js';
 import { type Access, noAccess } from './access.js';
+import { FiringErrors } from './firingErrors.js';
 import { LapStore, MARK, type Mark } from './laps.js';
 import { Profile } from './profile.js';
 import { type Stop, stopIdle } from './stop.js';
@@ -28,6 +29,7 @@ export interface Live {
   readonly laps: LapStore;
   readonly trace: SpeedTrace;
   readonly profile: Profile;
+  readonly errors: FiringErrors;
   /** The newest events that are told in words (licks are only drawn), oldest first. */
   readonly events: NumberedEvent[];
   lastEvent: number;
@@ -58,6 +60,7 @@ export function emptyLive(): Live {
     laps: new LapStore(),
     trace: new SpeedTrace(),
     profile: new Profile(),
+    errors: new FiringErrors(),
     events: [],
     lastEvent: 0,
     field: undefined,
@@ -130,6 +133,7 @@ function takeEvent(live: Live, numbered: NumberedEvent): void {
   live.lastEvent = number;
   if (event.kind === 'session began') forgetSession(live);
   if (event.kind === 'field predicted') live.field = event;
+  if (event.kind === 'fired' && event.errorMm !== null) live.errors.add(event.armed, event.errorMm);
   if (event.kind === 'lap began') live.laps.reach(event.lap);
   if (event.kind === 'choice') {
     if (event.state === 'armed anew') live.armedAnew.set(event.name, event.lap);
@@ -190,6 +194,7 @@ function forgetLife(live: Live, life: string): void {
 function forgetSession(live: Live): void {
   live.laps.clear();
   live.profile.clear();
+  live.errors.clear();
   live.armedAnew.clear();
   live.field = undefined;
   live.events.length = 0;

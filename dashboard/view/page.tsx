@@ -10,6 +10,7 @@ import { BeltPanel, SpeedPanel } from './beltPanel.js';
 import { BrowserPanel } from './browserPanel.js';
 import type { BrowserSettings } from './browserSettings.js';
 import { ControlsBar } from './controlsBar.js';
+import { ErrorsPanel } from './errorsPanel.js';
 import { EventsPanel } from './eventsPanel.js';
 import { FieldPanel } from './fieldPanel.js';
 import { HealthPanel } from './healthPanel.js';
@@ -74,6 +75,7 @@ function Run({ live, actions, charts, settings, stale }: PageProps & { stale: st
         <div class={`shown ${stale}`}>
           <RulesPanel live={live} />
           <FieldPanel live={live} />
+          <ErrorsPanel live={live} />
         </div>
         <HealthPanel live={live} />
         <BrowserPanel settings={settings} actions={actions} />
