@@ -7,6 +7,8 @@ import { observe } from '../../server/rehearse/fit/observe.js';
 import { simulatedSession } from './simulated.js';
 
 type Key = keyof AnimalParameters;
+/** Hours of session are simulated: many seconds on a busy machine. */
+const SLOW = { timeout: 120_000 };
 
 function fitted(animal: AnimalParameters, trained: boolean, sessions: number, minutes = 25) {
   const observed = Array.from({ length: sessions }, (_, n) =>
@@ -46,7 +48,7 @@ const OTHER: AnimalParameters = {
   ...{ dryLicks: 6, trainedBoutsPerS: 0.03, groomChance: 0.15, backChance: 0.15, burstCmPerS: 55 },
 };
 
-describe('the fit of a trained animal', () => {
+describe('the fit of a trained animal', SLOW, () => {
   test.each([
     ['the usual one', ANIMAL],
     ['another one', OTHER],
@@ -59,7 +61,7 @@ describe('the fit of a trained animal', () => {
   });
 });
 
-describe('the fit of a naive animal', () => {
+describe('the fit of a naive animal', SLOW, () => {
   const slow = { ...ANIMAL, naiveMissChance: 0, naiveBoutsPerS: 0.5, learningPerDrop: 0.03 };
   test.each([
     ['as fast as usual', { ...ANIMAL, naiveMissChance: 0 }],
@@ -73,7 +75,7 @@ describe('the fit of a naive animal', () => {
   });
 });
 
-describe('the fit of several animals', () => {
+describe('the fit of several animals', SLOW, () => {
   const of = (kind: AnimalParameters) => {
     const observed = Array.from({ length: 12 }, (_, n) => {
       const animal = individual(kind, n);

@@ -16,7 +16,8 @@ function reportOf(setting: RunsSetting, runs: number): RunsReport {
 const ruleOf = (report: RunsReport, name: string) =>
   report.rules.find((rule) => rule.name === name)!;
 
-describe('many runs of one file', () => {
+// Each thread that is started takes some seconds on a busy machine.
+describe('many runs of one file', { timeout: 120_000 }, () => {
   test('come out the same, byte by byte, on one, two and three threads', async () => {
     const setting = settingOf(WATER, { minutes: 2 });
     const tables: string[] = [];
