@@ -3,7 +3,7 @@
  * has an entry for each (a test holds the two together).
  *
  * The code's first part says where it comes from: WIRE, LINK, RIG, RULES, GUARD, RECORD, EXPORT,
- * ALIGN, REPORT, ANIMALS, REHEARSE, PLAN, LOOP, WEB, CLI.
+ * ALIGN, REPORT, ANIMALS, BLINDING, REHEARSE, PLAN, LOOP, WEB, CLI.
  */
 export interface ErrorEntry {
   readonly code: string;
