@@ -8,8 +8,8 @@ export function SettingsPanel({ rig }: { rig: RigTold }) {
     <section class="panel settings-panel" aria-labelledby="settings-title">
       <h2 id="settings-title">Settings</h2>
       <p class="soft">
-        From {rig.path}. Change the file, and start Lapwing again; `lapwing check` says what is
-        wrong with it.
+        From {rig.path}. Change the file, and start Lapwing again; <code>lapwing check</code> says
+        what is wrong with it.
       </p>
       {sections.map((section) => {
         const all = rig.settings.filter(({ path }) => path[0] === section);

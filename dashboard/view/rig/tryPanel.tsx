@@ -78,10 +78,10 @@ function TryRow(props: {
       <HoldButton
         holdMs={kind === 'mark' ? 0 : LONG_PRESS_MS}
         disabled={disabled || !good}
-        label={`Try ${name}`}
         onFire={() => onTry(ms)}
       >
         {kind === 'mark' ? 'Pulse' : 'Hold to pulse'}
+        <span class="unseen"> {name}</span>
       </HoldButton>
     </div>
   );
