@@ -10,7 +10,9 @@ import { LONG_PRESS_MS } from './keys.js';
 /** Before a session: what to begin. During one: how to end it. */
 export function SessionPanel({ live, actions }: { live: Live; actions: Actions }) {
   const { state } = live;
-  if (state?.session === 'running') return <EndPanel live={live} actions={actions} />;
+  // Before the loop has said a word, nobody knows which of the two it is.
+  if (state === undefined) return null;
+  if (state.session === 'running') return <EndPanel live={live} actions={actions} />;
   return <BeginPanel live={live} actions={actions} />;
 }
 

@@ -15,16 +15,16 @@ import {
   WIRE_TIMES,
 } from '../../wire/messages.js';
 import type { Decision } from '../decisions.js';
-import type { Actor, OperatorAct, RareInput } from '../inputs.js';
+import type { RareInput } from '../inputs.js';
 import { beltOf, guardConfigOf } from '../rig/parts.js';
 import type { Rig, RigOutput } from '../rig/rig.js';
 import { configureOutputs, syncSeed } from './boardSetup.js';
-import { ButtonBox } from './buttonBox.js';
 import { ChoiceWatch } from './choiceWatch.js';
 import type { CoreOutput } from './coreOutput.js';
 import { BY_HAND, Firings } from './firings.js';
 import { Holds } from './holds.js';
-import { Marks } from './marks.js';
+import type { Marks } from './marks.js';
+import { EVERYTHING, Steering } from './steering.js';
 
 export interface SessionSetup {
   readonly rig: Rig;
@@ -44,8 +44,6 @@ export interface SessionSetup {
 const DRAIN_US = 500_000;
 /** Ids that a killed loop may have sent after the last that it recorded. */
 const RESUME_SKIP = 1_000;
-const EVERYTHING = 0xffff;
-const HAND = 'nothing can be asked for at once while a hand is on the belt';
 
 /**
  * The whole of a session between its inputs and its commands: track, decide, guard, command.
@@ -61,7 +59,6 @@ export class SessionCore {
   readonly guard: Guard;
   readonly holds: Holds;
   readonly firings: Firings;
-  readonly marks = new Marks();
   /** Which of the operator's changes the board has yet to confirm. */
   readonly changes: ChoiceWatch;
   readonly rig: Rig;
@@ -80,8 +77,7 @@ export class SessionCore {
   #configureDue = false;
   #drainedUs = 0;
   #licks = 0;
-  #handOnBelt = false;
-  readonly #buttons: ButtonBox;
+  readonly #steering: Steering;
 
   constructor(setup: SessionSetup, out: CoreOutput) {
     this.#setup = setup;
@@ -96,7 +92,17 @@ export class SessionCore {
       (rule) => this.firings.armedSinceUs(rule),
       (decision) => this.#tell(decision),
     );
-    this.#buttons = this.#buttonBox();
+    this.#steering = new Steering({
+      instant: this.instant,
+      tracker: this.tracker,
+      holds: this.holds,
+      firings: this.firings,
+      rig: this.rig,
+      out,
+      engine: () => this.engine,
+      tell: (decision) => this.#tell(decision),
+      end: (reason) => this.#end(reason, 'operator'),
+    });
     this.engine = new RulesEngine(
       withArm(setup.program, setup.arm),
       setup.seed,
@@ -133,7 +139,11 @@ export class SessionCore {
   }
   /** A hand turns the belt: rules are not asked, and nothing counts. */
   get handOnBelt(): boolean {
-    return this.#handOnBelt;
+    return this.#steering.handOnBelt;
+  }
+  /** Notes that were stamped by a key and have no words yet. */
+  get marks(): Marks {
+    return this.#steering.marks;
   }
 
   // ---- inputs --------------------------------------------------------------------------------
@@ -180,7 +190,8 @@ export class SessionCore {
         this.#tell({ kind: 'frames lost', frames: 1, why: input.why });
         break;
       case 'operator':
-        this.#operator(input.act, input.by);
+        this.#steering.take(input.act, input.by);
+        this.#beat(this.instant.nowUs);
         break;
       case 'alarm': {
         const { kind, alarm, raised, level, text, remedy } = input;
@@ -201,8 +212,8 @@ export class SessionCore {
   #advance(): void {
     const { instant } = this;
     if (this.#state === 'running') {
-      this.#buttons.step(instant);
-      if (!this.#handOnBelt) this.engine.step(instant);
+      this.#steering.step();
+      if (!this.#steering.handOnBelt) this.engine.step(instant);
       this.firings.check(instant.nowUs);
       this.changes.step(instant.nowUs);
       // Allowances are right only while nothing is under way.
@@ -231,7 +242,7 @@ export class SessionCore {
     this.#state = 'running';
     this.#configure();
     this.#tell({ kind: 'session began', title: this.#setup.title, seed: this.#setup.seed });
-    this.#buttons.begin(this.instant);
+    this.#steering.begin();
     this.engine.begin(this.instant);
   }
 
@@ -311,121 +322,12 @@ export class SessionCore {
     this.#tell({ kind: 'session ended', reason: this.#endReason });
   }
 
-  // ---- the operator --------------------------------------------------------------------------
-
-  #operator(act: OperatorAct, by: Actor): void {
-    this.#tell({ kind: 'operator', act, who: by.who, from: by.from });
-    switch (act.act) {
-      case 'press':
-        this.engine.press(act.button);
-        break;
-      case 'choose':
-        this.engine.choose(act.name, act.value);
-        break;
-      case 'hold':
-        this.#hold(act.what, act.on, `held by ${by.who}`);
-        if (act.on) this.#quietKind(act.what === 'water' ? 'valve' : 'stimulus');
-        break;
-      case 'phase':
-        this.engine.goTo(act.to);
-        break;
-      case 'new cell':
-        this.engine.newCell();
-        this.#tell({ kind: 'cell began', index: this.engine.cell, fields: act.fields });
-        break;
-      case 'exclude lap':
-      case 'controls':
-      case 'acknowledge':
-        break;
-      case 'note': {
-        const { mark = null, boardUs: markedUs = null } = this.marks.word(act.mark) ?? {};
-        this.#tell({ kind: 'note', text: act.text, mark, markedUs });
-        break;
-      }
-      case 'mark': {
-        const { nowUs: boardUs, lap, placed, positionCm } = this.instant;
-        const { mark } = this.marks.make({ boardUs, lap, positionCm: placed ? positionCm : null });
-        this.#tell({ kind: 'note', text: '', mark, markedUs: boardUs });
-        break;
-      }
-      case 'ask':
-        if (this.#handOnBelt && act.laps === 0) this.#remark(HAND);
-        else if (!this.engine.ask(act.rule, act.laps)) {
-          this.#remark(`the rules file does not let ${act.rule} be asked for so`);
-        }
-        break;
-      case 'withdraw':
-        this.engine.withdraw(act.rule);
-        break;
-      case 'put off':
-        if (!this.engine.putOff(act.laps, act.minutes)) {
-          this.#remark('the end has been put off as far as it may be');
-        }
-        break;
-      case 'stop everything':
-        this.#quiet();
-        this.#hold('stimulus', true, `everything stopped by ${by.who}`);
-        this.#hold('water', true, `everything stopped by ${by.who}`);
-        break;
-      case 'allow stimulation':
-        this.holds.release('stimulus', 'restart');
-        break;
-      case 'hand on belt':
-        this.#hand(act.on, by.who);
-        break;
-      case 'end':
-        this.#end(act.reason, 'operator');
-        break;
-    }
-    this.#beat(this.instant.nowUs);
-  }
-
-  /** The sync train goes on: it harms nobody, and without it the record cannot be aligned. */
-  #quiet(): void {
-    const syncBit = this.rig.sync === undefined ? 0 : 1 << this.rig.sync.line;
-    this.#out.command('quiet', { outputs: EVERYTHING & ~syncBit });
-  }
-
-  /** What has begun ends now, too. */
-  #quietKind(kind: RigOutput['kind']): void {
-    const outputs = this.rig.outputs
-      .filter((output) => output.kind === kind)
-      .reduce((mask, { line }) => mask | (1 << line), 0);
-    if (outputs !== 0) this.#out.command('quiet', { outputs });
-  }
-
-  #hand(on: boolean, who: string): void {
-    if (on === this.#handOnBelt) return;
-    this.#handOnBelt = on;
-    this.tracker.hand(on);
-    this.tracker.unmoved(this.instant);
-    if (on) {
-      const reason = `the hand of ${who} is on the belt`;
-      this.holds.set('stimulus', 'hand', reason);
-      this.holds.set('water', 'hand', reason);
-      this.firings.disarmAll(reason);
-      this.#quiet();
-    } else {
-      this.holds.release('stimulus', 'hand');
-      this.holds.release('water', 'hand');
-    }
-  }
-
-  #hold(what: 'stimulus' | 'water', on: boolean, reason: string): void {
-    if (!on) {
-      this.holds.release(what, 'operator');
-      return;
-    }
-    this.holds.set(what, 'operator', reason);
-    this.firings.disarmKind(what === 'water', reason);
-  }
-
   // ---- the parts speak to each other -----------------------------------------------------------
 
   #tracked(event: TrackEvent): void {
     switch (event.kind) {
       case 'lick':
-        if (this.#handOnBelt) return;
+        if (this.handOnBelt) return;
         if (!event.artefact) this.#licks++;
         this.#tell({ kind: 'lick', artefact: event.artefact });
         return;
@@ -442,24 +344,6 @@ export class SessionCore {
       default:
         this.#tell(event);
     }
-  }
-
-  #buttonBox(): ButtonBox {
-    const { instant } = this;
-    const state = {
-      get lap() {
-        return instant.lap;
-      },
-      isHeld: (what: 'stimulus' | 'water') => this.holds.isHeldBy(what, 'operator'),
-    };
-    return new ButtonBox(this.rig.buttons, state, (act, from) =>
-      this.#operator(act, { who: 'button box', from }),
-    );
-  }
-
-  /** What Lapwing says of itself among the notes. */
-  #remark(text: string): void {
-    this.#tell({ kind: 'note', text, mark: null, markedUs: null });
   }
 
   #tell(decision: Decision): void {
@@ -527,7 +411,7 @@ export class SessionCore {
       phaseBegan: (phase, index, reason) =>
         this.#tell({ kind: 'phase began', phase, index, reason }),
       cellBegan: () => {},
-      noted: (rule, serial) => this.#remark(`${name(rule)} ${serial}`),
+      noted: (rule, serial) => this.#steering.remark(`${name(rule)} ${serial}`),
       chosen: (choice, value) => this.changes.inForce(choice, value, this.instant.nowUs),
       fieldPredicted: (rule, serial, field, curve) =>
         this.#tell({ kind: 'field predicted', rule: name(rule), serial, ...field, curve }),
