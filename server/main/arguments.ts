@@ -1,6 +1,6 @@
 import { userInfo } from 'node:os';
 import { InvalidArgumentError, Option } from 'commander';
-import { DEFAULT_PORT } from '../web/webProcess.js';
+import { DEFAULT_PORT } from '../web/port.js';
 import { rigFile } from './builtInRigs.js';
 
 /** `--rig RIG`, which every command that needs a rig takes. */

@@ -12,9 +12,8 @@ import { accessFiles } from './access/people.js';
 import { buildWeb } from './buildWeb.js';
 import { isLoopback } from './gates.js';
 import { notifyOf } from './notices/notices.js';
+import { DEFAULT_PORT } from './port.js';
 import { certificateWarning, readTls } from './tls.js';
-
-export const DEFAULT_PORT = 8711;
 
 /**
  * Serves until SIGTERM or SIGINT. Prints one JSON line, `{"listening":"http://127.0.0.1:8711"}`, to
