@@ -1,12 +1,14 @@
 import axe from 'axe-core';
 import type { Page } from 'playwright-core';
-import { describe, expect, test } from 'vitest';
+import { describe, expect, test, vi } from 'vitest';
 import { People, type Role } from '../../server/web/access/people.js';
 import { CHEAP, newFiles } from '../web/access/signedIn.js';
 import { until } from '../web/webRig.js';
 import { openPage, type PageRig, useBrowser } from './pageRig.js';
 
 useBrowser();
+// Several browsers at once, on a machine that may have much else to do.
+vi.setConfig({ testTimeout: 120_000 });
 
 interface GuardedPage extends PageRig {
   /** In a browser of its own. */
@@ -25,6 +27,7 @@ async function openGuarded(names: Readonly<Record<string, Role>>): Promise<Guard
   const another = async (name: string, theme = 'dark') => {
     const context = await browser.newContext({ viewport: { width: 1440, height: 1000 } });
     const page = await context.newPage();
+    page.setDefaultTimeout(60_000);
     await page.addInitScript((one) => localStorage.setItem('lapwing.theme', one), theme);
     await page.goto(rig.url);
     await signIn(page, name, secrets.get(name)!);
