@@ -73,6 +73,16 @@ describe('the page, in a real browser', () => {
     expect(await page.locator('.field-panel').textContent()).toContain('not measured');
   });
 
+  test('draws how far firings were from their places, the board’s and the host’s apart', async () => {
+    const { page } = await openPage({}, running);
+    await page.locator('.errors-panel .bars').first().waitFor();
+    const words = await page.locator('.errors-panel svg').getAttribute('aria-label');
+    expect(words).toMatch(
+      /firings? started by the board: median \d+\.\d\d mm, most \d+\.\d\d mm; /,
+    );
+    expect(words).toMatch(/by the host/);
+  });
+
   test('says how old it is, and turns grey, when the board, the loop or the service is gone', async () => {
     const { page, loop, app } = await openPage({}, running);
     await page.locator('.session-running').waitFor();
