@@ -16,6 +16,9 @@ import {
 import type { BoardLine } from './boardLine.js';
 import { FrameHost, NotConforming, type Tagged } from './frameHost.js';
 
+/** Samples come every 5 ms at least, and a USB line or a busy computer keeps bytes back as long again. */
+const UNSEEN_US = 15_000;
+
 type Heard<T> = Tagged<T> & { readonly sequence: number };
 
 /** The host of the conformance scripts: speaks in frames alone, and keeps all that it hears. */
@@ -107,11 +110,15 @@ export class ConformanceHost extends FrameHost {
    */
   async wait(us: number): Promise<void> {
     if (this.line.realTime !== true) return this.line.wait(us);
+    // What lies in the computer's buffers was said before anything that was just asked for came there.
+    for (let heardUs = Number.NaN; heardUs !== this.boardUs; ) {
+      heardUs = this.boardUs;
+      for (let turn = 0; turn < 4; turn++) await this.line.wait(0);
+    }
     const fromUs = this.boardUs;
     for (let turn = 0; turn < us / 250 + 2_000; turn++) {
       await this.line.wait(1_000);
-      // Samples come every 5 ms at least: what the newest shows may be so much behind.
-      if (((this.boardUs - fromUs) | 0) >= us + 5_000) return;
+      if (((this.boardUs - fromUs) | 0) >= us + UNSEEN_US) return;
     }
   }
 

@@ -61,6 +61,7 @@ export const pulseScripts: readonly Script[] = [
       for (const [about, change] of Object.entries(bad)) {
         const id = host.pulse(change);
         await host.silent(3_000);
+        host.beat();
         host.expectTold(id, 'refused badShape', about);
       }
       host.outcomes.length = 0;
@@ -106,12 +107,12 @@ export const pulseScripts: readonly Script[] = [
     rules: '17, 19',
     async run(host) {
       await host.connect();
-      host.configure({ leastGapUs: 20_000 });
+      host.configure({ leastGapUs: 150_000 });
       const first = host.pulse({ widthUs: 5_000 });
       const busy = host.pulse({ widthUs: 5_000 });
       await host.live(10_000);
       const soon = host.pulse({ widthUs: 5_000 });
-      await host.live(25_000);
+      await host.live(160_000);
       const later = host.pulse({ widthUs: 5_000 });
       await host.live(10_000);
       host.expectTold(first, 'fired, done');
@@ -125,14 +126,14 @@ export const pulseScripts: readonly Script[] = [
     rules: '17, 20, 21',
     async run(host) {
       await host.connect();
-      host.configure({ allowanceUs: 25_000, allowanceRises: 9 });
-      const fits = host.pulse({ widthUs: 20_000 });
+      host.configure({ allowanceUs: 250_000, allowanceRises: 9 });
+      const fits = host.pulse({ widthUs: 200_000 });
       await host.live(5_000);
       host.send('quiet', { outputs: 1 });
       await host.live(5_000);
-      const back = host.pulse({ widthUs: 12_000 });
-      await host.live(20_000);
-      const over = host.pulse({ widthUs: 12_000 });
+      const back = host.pulse({ widthUs: 130_000 });
+      await host.live(150_000);
+      const over = host.pulse({ widthUs: 130_000 });
       await host.live(5_000);
       host.expectTold(fits, 'fired, done cut');
       host.expectTold(back, 'fired, done');
@@ -164,10 +165,10 @@ export const pulseScripts: readonly Script[] = [
     rules: '5, 28',
     async run(host) {
       await host.connect();
-      const on = host.pulse({ widthUs: 300_000 });
+      const on = host.pulse({ widthUs: 900_000 });
       const waits = host.pulse({
-        ...{ output: 1, flags: 1, startUs: host.boardUs + 60_000 },
-        expiryUs: host.boardUs + 70_000,
+        ...{ output: 1, flags: 1, startUs: host.boardUs + 400_000 },
+        expiryUs: host.boardUs + 500_000,
       });
       const armed = host.arm({ slot: 2, output: 1, count: host.count + 100 });
       await host.live(10_000);
@@ -186,16 +187,16 @@ export const pulseScripts: readonly Script[] = [
     rules: '21, 22',
     async run(host) {
       await host.connect();
-      const cut = host.pulse({ widthUs: 300_000 });
-      const shortened = host.pulse({ output: 1, widthUs: 300_000 });
+      const cut = host.pulse({ widthUs: 900_000 });
+      const shortened = host.pulse({ output: 1, widthUs: 900_000 });
       await host.live(10_000);
       host.configure({ longestOnUs: 0 });
-      host.configure({ output: 1, longestOnUs: 60_000 });
-      await host.live(70_000);
+      host.configure({ output: 1, longestOnUs: 250_000 });
+      await host.live(260_000);
       host.expectTold(cut, 'fired, done cut');
       host.expectTold(shortened, 'fired, done longestOn');
       const { boardUs } = host.outcome(shortened, 'fired');
-      host.near(host.outcome(shortened, 'done').boardUs - boardUs, 60_000, 20, 'the cut-off');
+      host.near(host.outcome(shortened, 'done').boardUs - boardUs, 250_000, 20, 'the cut-off');
     },
   },
   {
