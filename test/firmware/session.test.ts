@@ -1,5 +1,5 @@
 /** A whole session on the real firmware, as a user runs one: processes, a pseudo-terminal, a record. */
-import { mkdtempSync, readdirSync, readFileSync, rmSync, writeFileSync } from 'node:fs';
+import { mkdtempSync, readdirSync, rmSync, writeFileSync } from 'node:fs';
 import { tmpdir } from 'node:os';
 import { join } from 'node:path';
 import { afterAll, expect, test } from 'vitest';
@@ -7,6 +7,7 @@ import { rigFile } from '../../server/main/builtInRigs.js';
 import { packageRoot } from '../../server/packageRoot.js';
 import type { StampedDecision } from '../../server/session/decisions.js';
 import { readRecord } from '../../server/session/record/readRecord.js';
+import { readRig } from '../../server/session/rig/readRig.js';
 import { Summariser, summaryLines } from '../../server/session/summary.js';
 import { finished, lapwing } from '../tools/liveRig.js';
 
@@ -67,11 +68,12 @@ test('`lapwing run --rig emulated` fires armed triggers, gives water, ends, and 
 }, 240_000);
 
 test('the emulated rig is the demo rig on another board', () => {
-  const lines = (name: string) =>
-    readFileSync(rigFile(name), 'utf8')
-      .split('\n')
-      .filter((line) => !line.startsWith('#') && !/^(rig| {2}port):/.test(line));
-  expect(lines('emulated')).toEqual(lines('simulated'));
+  const wired = (name: string) => {
+    const { belt, inputs, outputs, lick, water, sync, loopback } = readRig(rigFile(name));
+    return { belt, inputs, outputs, lick, water, sync, loopback };
+  };
+  expect(readRig(rigFile('emulated')).port).toBe('emulated');
+  expect(wired('emulated')).toEqual(wired('simulated'));
 });
 
 test('a rig that comes along yields to a file of its name', () => {
