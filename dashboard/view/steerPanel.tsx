@@ -13,6 +13,7 @@ export function SteerPanel({ live, actions }: { live: Live; actions: Actions }) 
   const session = live.setup?.session;
   const { state } = live;
   if (!session || state?.session !== 'running') return null;
+  const box = live.setup?.buttonBox ?? [];
   const exclude = (lap: number) => void actions.act({ act: 'exclude lap', lap });
   return (
     <section class="panel steer-panel" aria-labelledby="steer-title">
@@ -47,6 +48,12 @@ export function SteerPanel({ live, actions }: { live: Live; actions: Actions }) 
       </div>
       <CellForm cell={state.cell} fields={live.setup?.cellFields ?? []} actions={actions} />
       <HandButton live={live} actions={actions} />
+      {box.length > 0 ? (
+        <p class="hint">
+          Button box:{' '}
+          {box.map(({ input, does }) => `${input.replaceAll('_', ' ')} (${does})`).join(', ')}.
+        </p>
+      ) : null}
       <p class="hint">
         Keys act when <em>Keys</em> is ticked above; they can be changed below. Press long for
         whatever drives an output or lets one go.

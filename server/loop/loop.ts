@@ -33,6 +33,7 @@ import {
 import { CAPABILITY, type Sample } from '../wire/messages.js';
 import { ALARMS } from './alarms/alarms.js';
 import { AlarmWatch } from './alarms/alarmWatch.js';
+import { StallWatch } from './alarms/stallWatch.js';
 import { Bench } from './bench.js';
 import { BookTalk } from './bookTalk.js';
 import { checkAct } from './checkAct.js';
@@ -49,8 +50,6 @@ import { type RunningSession, setupOf, snapshotOf } from './view.js';
 const EVENTS_KEPT = 20_000;
 const TICK_MS = 20;
 const LOOK_MS = 250;
-/** A stall is remembered so long. */
-const STALL_KEPT_MS = 60_000;
 const HANDSHAKE_MS = 3_000;
 /** Ids of a loop that was killed, which the board may know and has not told. */
 const ID_MARGIN = 1_000;
@@ -107,9 +106,8 @@ export class Loop implements LinkHandler, LoopService {
   #framesAtMs = performance.now();
   #framesPerS = 0;
   readonly #alarms: AlarmWatch;
-  #tickedMs = Number.NaN;
+  readonly #stalls = new StallWatch(TICK_MS);
   #lookedMs = 0;
-  #stall = { ms: 0, atMs: 0 };
   #closing: Promise<void> = Promise.resolve();
 
   constructor(
@@ -402,9 +400,7 @@ export class Loop implements LinkHandler, LoopService {
     this.#session = session;
     this.#mask = this.#maskFor(session.rules);
     this.#ended = null;
-    // What it took to begin is no stall of the session.
-    this.#tickedMs = Number.NaN;
-    this.#stall = { ms: 0, atMs: 0 };
+    this.#stalls.restart();
     this.#runner = new SessionRunner(
       setupFor(this.#rigFile, session),
       this.#send,
@@ -567,14 +563,11 @@ export class Loop implements LinkHandler, LoopService {
 
   /** How long this computer held the loop up; and, now and then, every alarm. */
   #minds(nowMs: number): void {
-    const lateMs = nowMs - this.#tickedMs - TICK_MS;
-    this.#tickedMs = nowMs;
-    const old = nowMs - this.#stall.atMs > STALL_KEPT_MS;
-    if (lateMs > this.#stall.ms || old) this.#stall = { ms: Math.max(0, lateMs), atMs: nowMs };
+    this.#stalls.tick(nowMs);
     if (nowMs - this.#lookedMs < LOOK_MS) return;
     this.#lookedMs = nowMs;
     const behindMs = this.#record.recorder?.behindMs ?? 0;
-    const measured = { stallMs: this.#stall.ms, behindMs };
+    const measured = { stallMs: this.#stalls.worstMs, behindMs };
     const changes = this.#alarms.look(this.snapshot(), measured, nowMs);
     for (const { alarm, raised, text } of changes) {
       const { level, remedy } = ALARMS[alarm];

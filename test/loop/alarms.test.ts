@@ -3,6 +3,7 @@ import { describe, expect, test } from 'vitest';
 import { ALARMS, type AlarmName } from '../../server/loop/alarms/alarms.js';
 import { AlarmWatch, type Measured } from '../../server/loop/alarms/alarmWatch.js';
 import { endWords } from '../../server/loop/alarms/conditions.js';
+import { StallWatch } from '../../server/loop/alarms/stallWatch.js';
 import type { Snapshot } from '../../server/loop/protocol.js';
 import { packageRoot } from '../../server/packageRoot.js';
 import type { Decision } from '../../server/session/decisions.js';
@@ -300,6 +301,33 @@ describe('alarms', () => {
     expect(w.told.at(-1)).toBe('+ unsure');
     expect(w.on).toEqual(['unsure']);
   });
+});
+
+test('a computer that holds the loop up: the worst of the last minute, and nothing of before a session', () => {
+  const stalls = new StallWatch(20);
+  let nowMs = 70_000;
+  const ticks = (count: number, everyMs = 20) => {
+    for (let n = 0; n < count; n++) {
+      nowMs += everyMs;
+      stalls.tick(nowMs);
+    }
+  };
+  ticks(10);
+  expect(stalls.worstMs).toBe(0);
+  ticks(1, 200);
+  ticks(1, 150);
+  expect(stalls.worstMs).toBe(180);
+  ticks(2990);
+  expect(stalls.worstMs).toBe(180);
+  ticks(20);
+  expect(stalls.worstMs).toBe(0);
+  ticks(1, 500);
+  stalls.restart();
+  nowMs += 900;
+  ticks(5);
+  expect(stalls.worstMs).toBe(0);
+  ticks(1, 320);
+  expect(stalls.worstMs).toBe(300);
 });
 
 test.each([
