@@ -36,7 +36,7 @@ const told = async (...args: string[]) => {
   return { status, out, said: out + err };
 };
 
-describe('blinded sessions on a real pseudo-terminal', { timeout: 180_000 }, () => {
+describe('blinded sessions on a real pseudo-terminal', { timeout: 240_000 }, () => {
   it('look alike on the status line, in events and in state, and are opened by the key alone', async () => {
     rig = await LiveRig.start({
       rules: RULES,

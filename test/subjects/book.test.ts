@@ -108,7 +108,7 @@ describe('before a session', () => {
   });
 });
 
-describe('the book’s own process', { timeout: 120_000 }, () => {
+describe('the book’s own process', { timeout: 240_000 }, () => {
   it('answers who asks before a session, and files what it is told', async () => {
     const at = await desk();
     const { folder } = at.folder;

@@ -5,7 +5,7 @@ import { finished, lapwing } from '../tools/liveRig.js';
 import { newFolder } from './helpers.js';
 
 // Processes start slowly on a machine with other work.
-describe('the commands', { timeout: 120_000 }, () => {
+describe('the commands', { timeout: 240_000 }, () => {
   it('keep, weigh, list for the evening and correct, with JSON for scripts', async () => {
     const folder = newFolder();
     const run = async (...args: string[]) => {

@@ -183,7 +183,7 @@ function rig(folder: string, computer: string, aheadMs: number, count: number, k
   });
 }
 
-describe('two rigs that write to one shared folder at once', { timeout: 120_000 }, () => {
+describe('two rigs that write to one shared folder at once', { timeout: 240_000 }, () => {
   it('lose no entry and overwrite none, with clocks an hour apart and one killed in between', async () => {
     const { folder } = await withM31();
     const [a, b, c] = await Promise.all([

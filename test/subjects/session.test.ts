@@ -26,7 +26,7 @@ afterEach(async () => {
   rig = undefined;
 });
 
-describe('a real session with an animal that is kept', { timeout: 120_000 }, () => {
+describe('a real session with an animal that is kept', { timeout: 240_000 }, () => {
   it('does not begin without the weight of the day, unless there is a reason, and fills the book', async () => {
     const folder = newFolder();
     const animals = ['--animals', folder];
