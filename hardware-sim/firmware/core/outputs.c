@@ -1,6 +1,7 @@
 /*
  * The outputs: who owns each, its limits, and when it changes next. Falls are set up ahead in the
- * timer (falls.c); this file keeps the books.
+ * timer (falls.c); this file keeps the books. It is long because it is one thing: owner, limits, pin
+ * and next change of an output change together, and nowhere else.
  *
  * `bank_service` runs in the timer's interrupt, with interrupts on, or in the main loop. Whoever
  * runs it has `bank_held` set; an interrupt that finds it set leaves `bank_wanted` and goes.
