@@ -142,6 +142,8 @@ describe('live licking', () => {
     expect(fit.lockout.us).toBeGreaterThan(6_000);
     expect(fit.lockout.us).toBeLessThan(0.8 * 131_000);
     expect(fit.lockout.because).toContain('bounces end within 6 ms');
+    // Two bounces 6 ms apart and 40 ms of tongue are one contact of 52 ms.
+    expect(fit.contactMs).toMatchObject({ n: 80, median: 52 });
   });
 
   it('without bounces proposes what is usual: 50 ms (common practice, no source)', () => {

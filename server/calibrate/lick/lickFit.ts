@@ -36,7 +36,7 @@ export function fitLicks(contacts: readonly Contact[]): LickFit {
   const intervalsUs = intervalsOf(contacts);
   const inBout = intervalsUs.filter((us) => us <= IN_BOUT_US && us >= FASTEST_INTERVAL_US);
   const bouncesUs = intervalsUs.filter((us) => us < FASTEST_INTERVAL_US);
-  const lastsUs = contacts.map((contact) => contact.lastsUs);
+  const lastsUs = withoutBounces(contacts).map((contact) => contact.lastsUs);
   return {
     contacts: contacts.length,
     contactMs: distribution(
@@ -52,6 +52,20 @@ export function fitLicks(contacts: readonly Contact[]): LickFit {
     stuck: proposeStuck(lastsUs),
     lickHz: 1_000_000 / quantile(inBout, 0.5),
   };
+}
+
+/** Contacts too near to be two licks are one, from the first touch to the last. */
+function withoutBounces(contacts: readonly Contact[]): Contact[] {
+  const licks: Contact[] = [];
+  for (const { fromUs, lastsUs } of contacts) {
+    const last = licks.at(-1);
+    if (last === undefined || fromUs - last.fromUs >= FASTEST_INTERVAL_US) {
+      licks.push({ fromUs, lastsUs });
+    } else {
+      licks[licks.length - 1] = { fromUs: last.fromUs, lastsUs: fromUs + lastsUs - last.fromUs };
+    }
+  }
+  return licks;
 }
 
 /** Above the bounces, and well below the time from one lick to the next. */
