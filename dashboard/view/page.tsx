@@ -60,7 +60,7 @@ function Run({ live, actions, charts, settings, stale }: PageProps & { stale: st
       <div class={`shown now ${stale}`}>
         <Vitals live={live} />
       </div>
-      <fieldset class="acting alarm-place" disabled={!hasControls(live.access)}>
+      <fieldset class="acting" disabled={!hasControls(live.access)}>
         <AlarmsPanel live={live} actions={actions} />
       </fieldset>
       <div class={`shown seen ${stale}`}>
