@@ -1,6 +1,6 @@
 import { type ChildProcess, fork } from 'node:child_process';
 import { randomBytes } from 'node:crypto';
-import { ERRORS, LapwingError } from '../../errors/codes.js';
+import { LapwingError } from '../../errors/codes.js';
 import { rfc3339 } from '../../session/description.js';
 import type { JobReport, JobState, JobTold } from './jobMessages.js';
 
@@ -179,7 +179,7 @@ function unended({ state }: Job): boolean {
 
 function fail(job: Job, detail: string): void {
   if (!unended(job)) return;
-  const { code, remedy } = ERRORS.webJobDied;
+  const { code, remedy } = new LapwingError('webJobDied', detail);
   job.state = { state: 'failed', code, detail, remedy };
 }
 
