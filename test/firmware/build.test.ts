@@ -31,7 +31,7 @@ test('two builds, one of them from another folder, give the committed bytes', ()
     expect(fs.readFileSync(path.join(here, `${board}.hex`), 'utf8')).toBe(committed);
     expect(fs.readFileSync(path.join(there, `${board}.hex`), 'utf8')).toBe(committed);
   }
-});
+}, 180_000);
 
 test('the firmware leaves room for a boot loader of 2 KB', () => {
   const hex = fs.readFileSync(path.join(FIRMWARE, 'hex', 'atmega328p.hex'), 'utf8');

@@ -67,7 +67,7 @@ test('the sketch is compiled without a warning against what it asks of the platf
   const include = [path.join(packageRoot, 'test/firmware/platform')];
   const out = fs.mkdtempSync(path.join(folder, 'declared-'));
   expect(compileSketch({ chip: 'atmega328p', include }, out).length).toBeGreaterThan(9);
-});
+}, 180_000);
 
 test.each(
   installed
@@ -99,4 +99,5 @@ test.each(
     expect(text! + data!).toBeLessThan(flash);
     expect(data! + bss!).toBeLessThan(memory - 128);
   },
+  180_000,
 );
