@@ -8,9 +8,7 @@ import { fileURLToPath } from 'node:url';
 import { type LearningDay, learningDay } from '../analysis/learning.js';
 import { readSession } from '../analysis/readSession.js';
 import { derivedFolder } from '../export/exportFolder.js';
-import { writeNwb } from '../export/nwb/writeNwb.js';
 import { reportPage } from '../export/report/page.js';
-import { writeParquet } from '../export/writeParquet.js';
 import { writeTables } from '../export/writeTables.js';
 import { needArm, refuseSealed } from '../session/blinding/arms.js';
 import { rfc3339 } from '../session/description.js';
@@ -113,8 +111,14 @@ async function exportTo(folder: string, to: ExportFormat, tell: Tell): Promise<{
   const writing = (done: number) => tell(0.25 + 0.75 * done, 'writing');
   writing(0);
   if (to === 'tables') writeTables(session, into, writing);
-  else if (to === 'parquet') writeParquet(session, into, writing);
-  else await writeNwb(session, into, rfc3339(new Date()));
+  else if (to === 'parquet') {
+    const { writeParquet } = await import('../export/writeParquet.js');
+    writeParquet(session, into, writing);
+  } else {
+    // Loaded by whoever wants one: HDF5 takes longer to load than most of the other work takes.
+    const { writeNwb } = await import('../export/nwb/writeNwb.js');
+    await writeNwb(session, into, rfc3339(new Date()));
+  }
   return { path: into };
 }
 
