@@ -90,6 +90,8 @@ describe('animals over HTTP', () => {
   it('say that no folder was named, rather than that there are none', async () => {
     const { app } = await startWeb();
     const answer = await app.inject('/api/animals');
-    expect([answer.statusCode, answer.json().code]).toEqual([503, 'ANIMALS_NO_FOLDER']);
+    expect(answer.json()).toMatchObject({ folder: null, animals: [] });
+    const one = await app.inject('/api/animals/m31');
+    expect([one.statusCode, one.json().code]).toEqual([503, 'ANIMALS_NO_FOLDER']);
   });
 });

@@ -18,7 +18,7 @@ export function AnimalField({ onStanding }: { onStanding: Standing }) {
     let gone = false;
     const look = async () => {
       const told = await animalsApi.list();
-      if (told.done && !gone) setList(told.value);
+      if (told.done && !gone && told.value.folder !== null) setList(told.value);
     };
     void look();
     // It may be weighed meanwhile, here or elsewhere.

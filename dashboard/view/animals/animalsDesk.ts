@@ -4,6 +4,11 @@ import { type Animals, emptyAnimals } from '../../model/animals.js';
 import { type AnimalsApi, animalsApi } from '../../stream/animalsApi.js';
 
 const LIST_MS = 10_000;
+const NO_FOLDER = {
+  text: 'The rig file names no animals folder, so weights and water are in no book here.',
+  remedy: 'Add `animals: FOLDER` to the rig file, the same folder for every rig of the group.',
+};
+
 /** What looks mistyped is answered so; it may be sent again by whoever is sure. */
 const DOUBTED = 422;
 
@@ -77,8 +82,9 @@ export class AnimalsDesk {
       this.api.list(),
       open === undefined ? undefined : this.api.animal(open),
     ]);
-    this.state.list = list.done ? list.value : undefined;
-    this.state.trouble = list.done ? undefined : list;
+    const isKept = list.done && list.value.folder !== null;
+    this.state.list = isKept ? list.value : undefined;
+    this.state.trouble = isKept ? undefined : list.done ? NO_FOLDER : list;
     if (open === this.state.open) {
       this.state.animal = animal?.done ? animal.value : undefined;
       if (animal && !animal.done && list.done) {

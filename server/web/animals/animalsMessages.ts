@@ -8,7 +8,8 @@ export type { AnimalPage, AnimalRow } from '../../animals/overview.js';
 export type { DayWater } from '../../animals/waterBook.js';
 export type { WeighedOn, WeightLevel } from '../../animals/weight.js';
 
-export type AnimalsTold = Overview & { readonly folder: string };
+/** `folder` is null where the rig file names none: no animal is kept then. */
+export type AnimalsTold = Overview & { readonly folder: string | null };
 export type AnimalTold = AnimalPage;
 
 /** One entry to be written down. */

@@ -2,7 +2,7 @@
 import type { FastifyInstance } from 'fastify';
 import { AnimalsDesk } from '../../animals/animalsDesk.js';
 import { AnimalsFolder } from '../../animals/animalsFolder.js';
-import { checkDay } from '../../animals/days.js';
+import { checkDay, ownZone } from '../../animals/days.js';
 import type { Entry } from '../../animals/entry.js';
 import { historiesOf, overviewOf, pageOf } from '../../animals/overview.js';
 import { LapwingError } from '../../errors/codes.js';
@@ -15,7 +15,7 @@ const DAYS_SHOWN = 30;
 /** Weighing is done while another operator holds the rig's controls. */
 const OPERATOR = { needs: 'operator' } as const;
 
-/** @param folder where animals are kept, absolute; without it these routes answer ANIMALS_NO_FOLDER */
+/** @param folder where animals are kept, absolute; without it the list says so and the others answer ANIMALS_NO_FOLDER */
 export function addAnimalsRoutes(app: FastifyInstance, folder: string | undefined): void {
   const kept = folder === undefined ? undefined : new AnimalsDesk(new AnimalsFolder(folder));
 
@@ -25,7 +25,8 @@ export function addAnimalsRoutes(app: FastifyInstance, folder: string | undefine
   };
 
   app.get('/api/animals', async (): Promise<AnimalsTold> => {
-    const desk = need();
+    if (kept === undefined) return { folder: null, ...overviewOf([], [], new Date(), ownZone()) };
+    const desk = kept;
     const { zone, entries, troubles } = await desk.folder.read();
     const overview = overviewOf(historiesOf(entries, zone), troubles, new Date(), zone);
     return { folder: desk.folder.folder, ...overview };

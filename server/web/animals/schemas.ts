@@ -87,7 +87,7 @@ export const animalsSchemas = {
   AnimalEntry: animalsBody,
   AnimalWritten: shape({ done: { const: true }, id: string }),
   Animals: shape({
-    ...{ folder: string, zone: string, day: string, animals: list(shape(row)), troubles },
+    ...{ folder: orNull(string), zone: string, day: string, animals: list(shape(row)), troubles },
   }),
   Animal: shape({
     ...{ ...row, zone: string, day: string, weights: list(weighed), days: list(dayWater) },
