@@ -1,10 +1,8 @@
-import { mkdtempSync, rmSync } from 'node:fs';
-import { tmpdir } from 'node:os';
 import { join } from 'node:path';
 import type { FastifyInstance } from 'fastify';
 import type { Browser, BrowserContextOptions, Page } from 'playwright-core';
-import { build } from 'vite';
 import { afterAll, afterEach, beforeAll } from 'vitest';
+import { packageRoot } from '../../server/packageRoot.js';
 import { buildWeb, type WebOptions } from '../../server/web/buildWeb.js';
 import { launchBrowser } from '../tools/browser.js';
 import { FakeLoop } from '../tools/fakeLoop.js';
@@ -19,15 +17,13 @@ export interface PageRig {
 }
 
 let browser: Browser;
-let built: string;
+/** What `npm run build` made: the test command does so before any test. */
+const built = join(packageRoot, 'dist/dashboard');
 let end: (() => Promise<void>) | undefined;
 
-/** Builds the dashboard and starts a browser once for the file's tests. */
+/** Starts a browser once for the file's tests. */
 export function useBrowser(): void {
   beforeAll(async () => {
-    built = mkdtempSync(join(tmpdir(), 'lapwing-page-'));
-    const configFile = new URL('../../dashboard/vite.config.ts', import.meta.url).pathname;
-    await build({ configFile, logLevel: 'warn', build: { outDir: built, emptyOutDir: true } });
     browser = await launchBrowser();
   });
   afterEach(async () => {
@@ -36,7 +32,6 @@ export function useBrowser(): void {
   });
   afterAll(async () => {
     await browser?.close();
-    rmSync(built, { recursive: true, force: true });
   });
 }
 

@@ -220,8 +220,8 @@ describe('a full disk', { timeout: 120_000 }, () => {
         );
         expect(live.state!.held.stimulus).toMatch(/disk/);
         // What had begun is over.
-      await delay(200);
-      const [valve, gate] = [await live.rises(0), await live.rises(1)];
+        await delay(200);
+        const [valve, gate] = [await live.rises(0), await live.rises(1)];
         const lap = live.state!.lap;
         await until('more laps', () => live.state!.lap >= lap + 3);
         expect(await live.rises(1)).toBe(gate);
