@@ -80,5 +80,5 @@ function ownRig(from: string, folder: string): string {
 /** Earlier sessions to look at, in a process of their own that goes when it is done. */
 function makeDemoSessions(records: string, rigPath: string): ChildProcess {
   const script = compiledScript(import.meta.url, './demoSessions.js');
-  return fork(script, [records, rigPath], { stdio: 'ignore' });
+  return fork(script, [records, rigPath], { stdio: ['ignore', 'ignore', 'inherit', 'ipc'] });
 }

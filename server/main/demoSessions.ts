@@ -6,6 +6,7 @@ import fs from 'node:fs';
 import { constants, setPriority } from 'node:os';
 import path from 'node:path';
 import { fileURLToPath } from 'node:url';
+import { packageRoot } from '../packageRoot.js';
 import { describeBoard, rfc3339, updateDescription } from '../session/description.js';
 import { prepareRules } from '../session/prepare.js';
 import { mend } from '../session/record/mend.js';
@@ -35,6 +36,7 @@ export const DEMO_SESSIONS: readonly DemoSession[] = [
   { subject: 'sim1', daysAgo: 1, rules: 'demo.yaml', trained: true, minutes: 25 },
 ];
 
+const DEMO_RULES = path.join(packageRoot, 'hardware-sim/demo/sessions');
 const DAY_MS = 86_400_000;
 const FIRST_HOUR = 9;
 
@@ -50,7 +52,8 @@ export async function makeDemoSession(
   demo: DemoSession,
   number: number,
 ): Promise<string> {
-  const rules = prepareRules(path.join(rig.rulesFolder, demo.rules), rig);
+  // The rig file may be a copy that lies elsewhere; the demo's rules lie where they came.
+  const rules = prepareRules(path.join(DEMO_RULES, demo.rules), rig);
   const startedAt = new Date(Date.now() - demo.daysAgo * DAY_MS);
   startedAt.setHours(FIRST_HOUR + (demo.subject === 'sim1' ? 0 : 1), 7 * number, 0, 0);
   const seed = `demo-${demo.subject}-${number}`;
