@@ -11,13 +11,12 @@ import { derivedFolder } from '../export/exportFolder.js';
 import { reportPage } from '../export/report/page.js';
 import { writeTables } from '../export/writeTables.js';
 import { needArm, refuseSealed } from '../session/blinding/arms.js';
+import { closeRecord } from '../session/closeRecord.js';
 import { rfc3339 } from '../session/description.js';
 import { loadSession } from '../session/loadSession.js';
-import { mend } from '../session/record/mend.js';
 import { refuseWhileRecording } from '../session/record/recordLock.js';
 import { describeTroubles } from '../session/record/recordState.js';
 import { replaySession } from '../session/replay.js';
-import { noteReplay } from '../session/selfCheck.js';
 import { whatIf } from '../session/whatIf.js';
 import { writeFileWhole } from '../session/writeFileWhole.js';
 import { serveJob, type Tell } from '../web/jobs/serveJob.js';
@@ -95,13 +94,13 @@ async function replay(folder: string, tell: Tell): Promise<ReplayTold> {
 }
 
 async function mendAndCheck(folder: string, tell: Tell): Promise<MendTold> {
-  tell(0.1, 'closing the record');
-  const { state, bytes } = await mend(folder);
-  tell(0.6, 'replaying');
-  const note = await noteReplay(folder);
+  const { finished, replay } = await closeRecord(folder, (done) =>
+    tell(done, done < 0.5 ? 'closing the record' : 'replaying'),
+  );
+  const { state, bytes } = finished;
   const { messages, lastInput } = state;
   const missing = describeTroubles(state);
-  return { messages, lastInput, bytes, missing, identical: note?.identical ?? null };
+  return { messages, lastInput, bytes, missing, identical: replay?.identical ?? null };
 }
 
 async function exportTo(folder: string, to: ExportFormat, tell: Tell): Promise<{ path: string }> {

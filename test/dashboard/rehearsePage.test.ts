@@ -1,13 +1,13 @@
 import { copyFileSync, mkdtempSync, readFileSync, rmSync } from 'node:fs';
 import { tmpdir } from 'node:os';
 import { join } from 'node:path';
-import axe from 'axe-core';
 import type { Page } from 'playwright-core';
 import { afterAll, describe, expect, test } from 'vitest';
 import { packageRoot } from '../../server/packageRoot.js';
 import { readRig } from '../../server/session/rig/readRig.js';
 import { until } from '../web/webRig.js';
 import { openPage, useBrowser } from './pageRig.js';
+import { axeFinds, tabTo as tabWithin } from './pageTools.js';
 
 useBrowser();
 
@@ -24,22 +24,8 @@ async function openDesk(context = {}) {
   return opened;
 }
 
-/** Presses Tab until the focus is on what is named so, in the editor's shadow root too. */
-async function tabTo(page: Page, name: RegExp, key = 'Tab'): Promise<void> {
-  for (let n = 0; n < 60; n++) {
-    await page.keyboard.press(key);
-    const there = await page.evaluate(() => {
-      let active = document.activeElement as HTMLElement | null;
-      while (active?.shadowRoot?.activeElement) {
-        active = active.shadowRoot.activeElement as HTMLElement;
-      }
-      const label = (active as HTMLInputElement | null)?.labels?.[0]?.textContent;
-      return (active?.getAttribute('aria-label') ?? label ?? active?.textContent ?? '').trim();
-    });
-    if (name.test(there)) return;
-  }
-  throw new Error(`${key} never came to ${name}`);
-}
+/** Within the 60 presses that the page's own keys take at most. */
+const tabTo = (page: Page, name: RegExp, key = 'Tab') => tabWithin(page, name, key, 60);
 
 const lineOfCursor = (page: Page) =>
   page.locator('.cm-lineNumbers .cm-activeLineGutter').textContent();
@@ -96,19 +82,7 @@ describe('the Rehearse page, in a real browser', () => {
     // The policy forbids inline style, script and unsafe sinks: the editor must not even try.
     expect(troubles).toEqual([]);
 
-    await page.evaluate(axe.source);
-    for (const theme of ['Dark', 'Red', 'Light']) {
-      await page.getByText(theme, { exact: true }).click();
-      const found = await page.evaluate(async () => {
-        const run = (window as unknown as { axe: typeof axe }).axe.run;
-        const tags = ['wcag2a', 'wcag2aa', 'wcag21a', 'wcag21aa', 'wcag22aa', 'best-practice'];
-        const { violations } = await run(document, { runOnly: tags });
-        return violations.map(
-          (one) => `${one.id}: ${one.nodes.map((node) => node.html).join(' | ')}`,
-        );
-      });
-      expect(found).toEqual([]);
-    }
+    expect(await axeFinds(page)).toEqual([]);
   });
 
   test('completes a name, saves under a new one, and keeps the text while the Run page is open', async () => {

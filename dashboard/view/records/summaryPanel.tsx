@@ -5,6 +5,7 @@ import type {
 } from '../../../server/web/records/recordsMessages.js';
 import { clock, fixed, plural } from '../../model/format.js';
 import { ScrollBox } from '../animals/scrollBox.js';
+import { RuleCounts } from '../ruleCounts.js';
 import { JobLine } from './jobLine.js';
 import type { SessionProps } from './sessionPanel.js';
 
@@ -65,26 +66,13 @@ function RulesTable({ rules }: { rules: readonly RuleTold[] }) {
         </tr>
       </thead>
       <tbody>
-        {rules.map((rule) => {
-          const not = rule.not.reduce((sum, { times }) => sum + times, 0);
-          return (
-            <tr key={rule.name}>
-              <th scope="row">
-                {rule.name}
-                {rule.not.map(({ why, times }) => (
-                  <span key={why} class="why">
-                    {times} times {why}
-                  </span>
-                ))}
-              </th>
-              <td>{rule.fired}</td>
-              <td>{rule.shams}</td>
-              <td class={not > 0 ? 'some' : ''}>{not}</td>
-              <td>{errorWords(rule.armed)}</td>
-              <td>{errorWords(rule.host)}</td>
-            </tr>
-          );
-        })}
+        {rules.map((rule) => (
+          <tr key={rule.name}>
+            <RuleCounts rule={rule} />
+            <td>{errorWords(rule.armed)}</td>
+            <td>{errorWords(rule.host)}</td>
+          </tr>
+        ))}
       </tbody>
     </table>
   );

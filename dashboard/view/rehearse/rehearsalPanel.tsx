@@ -8,6 +8,7 @@ import { LAPS_KEPT, LapStore } from '../../model/laps.js';
 import { lapsInto, lastLap, minutesWords, placesOf, type Rehearse } from '../../model/rehearse.js';
 import type { Theme } from '../actions.js';
 import { Legend } from '../beltPanel.js';
+import { RuleCounts } from '../ruleCounts.js';
 import type { Desk } from './desk.js';
 import { ManyResults } from './manyResults.js';
 
@@ -179,25 +180,12 @@ function Result({ state, desk, theme, result }: Props & { result: RehearsalResul
           </tr>
         </thead>
         <tbody>
-          {result.rules.map((rule) => {
-            const not = rule.not.reduce((sum, { times }) => sum + times, 0);
-            return (
-              <tr key={rule.name}>
-                <th scope="row">
-                  {rule.name}
-                  {rule.not.map(({ why, times }) => (
-                    <span key={why} class="why">
-                      {times} times {why}
-                    </span>
-                  ))}
-                </th>
-                <td>{rule.fired}</td>
-                <td>{rule.shams}</td>
-                <td class={not > 0 ? 'some' : ''}>{not}</td>
-                <td>{errorWords(rule.medianErrorMm, rule.worstErrorMm)}</td>
-              </tr>
-            );
-          })}
+          {result.rules.map((rule) => (
+            <tr key={rule.name}>
+              <RuleCounts rule={rule} />
+              <td>{errorWords(rule.medianErrorMm, rule.worstErrorMm)}</td>
+            </tr>
+          ))}
         </tbody>
       </table>
       <Legend />

@@ -1,5 +1,6 @@
 import { isArmable } from '../armable.js';
 import { alternativesOf, type PhaseDecl, type RuleDecl, type RulesFile, termsOf } from '../ast.js';
+import { measuresIn } from '../checks/walk.js';
 import type { RigFacts } from '../facts.js';
 import { sealedOf } from '../sealed.js';
 import { boundsOf } from './bounds.js';
@@ -92,7 +93,7 @@ function compileRule(b: Builder, decl: RuleDecl, index: number, waiters: Waiters
     chance: decl.chance?.value,
     sham: decl.sham ? compileCondition(b, decl.sham) : undefined,
     actions: decl.do.map((action) => compileAction(b, action)),
-    amountsVary: readsAnyMeasure(decl.do),
+    amountsVary: measuresIn(decl.do).length > 0,
     caps,
     induces: induces(b, decl),
     realTally: b.tally('real firings', index, { windowUs }),
@@ -139,16 +140,6 @@ function placesShown(b: Builder, placeNames: ReadonlySet<string>): PlaceView[] {
   });
   return [...named, ...unnamed];
 }
-
-function readsAnyMeasure(node: unknown): boolean {
-  let reads = false;
-  visit(node, (inner) => {
-    const { kind } = inner as { kind?: string };
-    if (kind !== undefined && MEASURES.has(kind)) reads = true;
-  });
-  return reads;
-}
-const MEASURES = new Set(['measure', 'scoped', 'firings', 'since', 'predicted']);
 
 /** It drives what the rig file says evokes a plateau, or the file reads its predicted field. */
 function induces(b: Builder, decl: RuleDecl): boolean {
